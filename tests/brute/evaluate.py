@@ -1,0 +1,416 @@
+"""Every evaluation of a rulebook, over the points that stand for all projects and human inputs.
+
+The meaning that is followed here, beyond the language's own page:
+
+* Reaching a branch point asks all conditions written in it, without short circuit: every quantity
+  compared is evaluated (which reaches its branch points), every target of ``takes`` and ``follows`` is
+  reached (its body is not evaluated by that). An expression evaluates everything it mentions.
+* Where something that a branch point asks has no result itself, the branch point is stuck: it takes
+  no branch and reports no gap. A gap is reported at a branch point that is reached (also where another part of the
+  same evaluation has a gap), whose questions all have a value, and that has no branch open.
+* A lookup that no row answers is a gap of the innermost branch point whose branch holds the
+  expression, else of the quantity (with its element); inside a condition, of the branch point that asks.
+* Two ``when`` of plain cases overlap where both hold in some evaluation that reaches them with every question
+  answered, complete or not.
+* ``applies when``: facts, human inputs and routes for which one fails, or asks something that has no
+  result, are outside: not counted, no gap, overlap or dead branch is told of them. What it asks
+  is evaluated, so its branch points are on the route. A project counts for the figures per project when some
+  evaluation of it is inside.
+
+How. What is asked next depends on nothing but the branches taken before, so one pass along given branches does for
+all points at once: an array holds, for each point, what a condition or an expression comes to, and a
+mask those points that go along. Each pass starts from the beginning; nothing is carried over but the answers to
+conditions that mention no quantity.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, field
+
+import numpy as np
+
+from brute.linear import TooLarge
+from brute.points import Points
+from brute.rulebooks import (
+    And,
+    Band,
+    Body,
+    Call,
+    Cases,
+    Chain,
+    Compare,
+    Condition,
+    Expression,
+    Follows,
+    Formula,
+    Holds,
+    Is,
+    Lookup,
+    Neg,
+    Not,
+    Num,
+    OneOf,
+    Op,
+    Or,
+    Over,
+    Position,
+    Ref,
+    Rulebook,
+    Takes,
+    at,
+    branches,
+)
+
+Elements = dict[str, int]
+Array = np.ndarray
+MOST_ROUTES = 3_000
+
+# Points are exact fractions with small denominators and comparisons are linear, so a difference that is not zero
+# is far from it; floats stray by less than this.
+SAME = 1e-9
+
+
+@dataclass(frozen=True)
+class Value:
+    """What an expression or condition comes to at each point; ``has`` is None where it always has a
+    value. Both may be single values that stand for every point."""
+
+    it: Array | float | bool
+    has: Array | None = None
+
+
+@dataclass
+class Pass:
+    """One evaluation along given branches, for all points at once.
+
+    ``states``: branch point reached → branch, None where it has a gap or is stuck. ``asked``: branch
+    point → where all its questions have an answer, and where each branch is open. ``missing``: gaps
+    of lookups, by the id they are reported under."""
+
+    mask: Array
+    states: dict[str, str | None] = field(default_factory=dict)
+    asked: dict[str, tuple[Array | None, dict[str, Array]]] = field(default_factory=dict)
+    missing: list[tuple[str, Array]] = field(default_factory=list)
+    inside: Array | None = None
+    result: Value | None = None
+
+    @property
+    def complete(self) -> Array:
+        """Points that go this way, inside the rulebook, without any gap."""
+        found = self.mask & self.inside
+        if None in self.states.values():
+            return found & False
+        for _, where in self.missing:
+            found = found & ~where
+        return found
+
+
+def both(one: Array | None, other: Array | None) -> Array | None:
+    if one is None or other is None:
+        return other if one is None else one
+    return one & other
+
+
+class Evaluator:
+    """Evaluates ``rulebook`` at ``points``. ``passes()`` gives every evaluation."""
+
+    def __init__(self, rulebook: Rulebook, points: Points) -> None:
+        self.rulebook = rulebook
+        self.points = points
+        self.quantities = {q.name: q for q in rulebook.quantities}
+        self.tables = {t.name: t for t in rulebook.tables}
+        self.constants = {c.name: float(c.value) for c in rulebook.constants}
+        self.indices = {f.name: f.index for f in rulebook.facts} | {q.name: q.index for q in rulebook.quantities}
+        self.domains = {
+            d.name: d.domain.values for d in (*rulebook.facts, *rulebook.settings) if isinstance(d.domain, OneOf)
+        }
+        self.written = dict(written(rulebook))
+        self.all = np.ones(points.rows, dtype=bool)
+        self.plain: dict[tuple[int, int], Value] = {}
+
+    # --- passes --------------------------------------------------------------------------
+
+    def passes(self) -> Iterator[Pass]:
+        """Every evaluation that some point goes along, each once."""
+        waiting: list[tuple[str | None, ...]] = [()]
+        count = 0
+        while waiting:
+            self.script = waiting.pop()
+            self.step = 0
+            self.others: list[tuple[str | None, ...]] = []
+            self.values: dict[str, Value] = {}
+            self.now = Pass(self.all)
+            self.now.inside = self.all
+            for applies in self.rulebook.applies:
+                answer = self.condition(applies, {}, "")
+                self.now.inside = self.now.inside & answer.it
+                if answer.has is not None:
+                    self.now.inside = self.now.inside & answer.has
+            self.now.result = self.quantity(self.rulebook.result, {})
+            waiting += self.others
+            count += 1
+            if count > MOST_ROUTES:
+                raise TooLarge("too many routes")
+            yield self.now
+
+    def decide(self, ways: dict[str | None, Array]) -> str | None:
+        """The way this pass takes; the others that some point goes wait for a pass of their own."""
+        if self.step < len(self.script):
+            taken = self.script[self.step]
+        else:
+            possible = [name for name, where in ways.items() if (self.now.mask & where).any()]
+            taken = possible[0] if possible else None
+            so_far = (*self.script,)
+            self.others += [(*so_far, name) for name in possible[1:]]
+            self.script = (*so_far, taken)
+        self.step += 1
+        self.now.mask = self.now.mask & ways[taken]
+        return taken
+
+    # --- branch points -------------------------------------------------------------------
+
+    def reach(self, id: str, body: Body, elements: Elements) -> str | None:
+        """Reaches the branch point ``id``, if it has not been, and gives its branch."""
+        if id in self.now.states:
+            return self.now.states[id]
+        has: Array | None = None
+        holds: dict[str, Array] = {}
+        target: str | None = ""
+        if isinstance(body, Follows):
+            target = self.target(body.quantity, elements)
+        for name, condition, _ in branches(body):
+            if condition is None:
+                holds[name] = self.all
+            else:
+                answer = self.condition(condition, elements, id)
+                holds[name] = self.all & answer.it
+                has = both(has, answer.has)
+        if isinstance(body, Follows):
+            has = self.all & False if target is None else has
+            holds = {name: where if name == target else where & False for name, where in holds.items()}
+        open_ = _first(holds) if isinstance(body, Cases) and body.in_order else holds
+        if isinstance(body, Cases) and "otherwise" in open_:
+            others = [where for name, where in holds.items() if name != "otherwise"]
+            open_ = {**open_, "otherwise": ~np.logical_or.reduce(others)}
+        self.now.asked[id] = (has, open_)
+        ways: dict[str | None, Array] = {name: where if has is None else where & has for name, where in open_.items()}
+        ways[None] = ~np.logical_or.reduce(list(ways.values()))
+        self.now.states[id] = self.decide(ways)
+        return self.now.states[id]
+
+    def target(self, name: str, elements: Elements) -> str | None:
+        """Reaches the choice of a quantity, without evaluating what stands under it."""
+        quantity = self.quantities[name]
+        element = elements[quantity.index] if quantity.index else 0
+        inside = {quantity.index: element} if quantity.index else {}
+        return self.reach(at(name, element), quantity.body, inside)
+
+    def quantity(self, name: str, elements: Elements) -> Value:
+        quantity = self.quantities[name]
+        element = elements[quantity.index] if quantity.index else 0
+        here = at(name, element)
+        if here not in self.values:
+            inside = {quantity.index: element} if quantity.index else {}
+            self.values[here] = self.body(quantity.body, here, here, inside)
+        return self.values[here]
+
+    def body(self, body: Body, id: str, owner: str, elements: Elements) -> Value:
+        """The value of a body. ``id`` is its own as a branch point, ``owner`` what a missing row is reported
+        under."""
+        if isinstance(body, Formula):
+            return self.expression(body.expression, elements, owner)
+        taken = self.reach(id, body, elements)
+        for name, _, inner in branches(body):
+            if name == taken:
+                return self.body(inner, f"{id}/{name}", id, elements)
+        return Value(0.0, self.all & False)
+
+    # --- conditions ----------------------------------------------------------------------
+
+    def condition(self, c: Condition, elements: Elements, owner: str) -> Value:
+        key = (id(c), next(iter(elements.values()), 0))
+        if key not in self.plain:
+            answer = self.answer(c, elements, owner)
+            if answer.has is not None or not self.is_plain(c):
+                return answer
+            self.plain[key] = answer
+        return self.plain[key]
+
+    def is_plain(self, c: Condition) -> bool:
+        if isinstance(c, Compare):
+            return not (self.mentions(c.left) or self.mentions(c.right))
+        if isinstance(c, Chain):
+            return not (self.mentions(c.low) or self.mentions(c.middle) or self.mentions(c.high))
+        if isinstance(c, And | Or):
+            return all(self.is_plain(part) for part in c.parts)
+        if isinstance(c, Not):
+            return self.is_plain(c.part)
+        return not isinstance(c, Takes)
+
+    def mentions(self, e: Expression) -> bool:
+        """Whether an expression mentions a quantity."""
+        return any(name in self.quantities for name in names(e))
+
+    def answer(self, c: Condition, elements: Elements, owner: str) -> Value:
+        if isinstance(c, Compare):
+            left, right = self.expression(c.left, elements, owner), self.expression(c.right, elements, owner)
+            return Value(compared(left.it, c.operator, right.it), both(left.has, right.has))
+        if isinstance(c, Chain):
+            low, middle, high = (self.expression(e, elements, owner) for e in (c.low, c.middle, c.high))
+            holds = compared(low.it, c.first, middle.it) & compared(middle.it, c.second, high.it)
+            return Value(holds, both(both(low.has, middle.has), high.has))
+        if isinstance(c, Is):
+            wanted = [self.domains[c.name].index(v) for v in c.values]
+            return Value(np.isin(self.outside(c.name, elements), wanted))
+        if isinstance(c, Holds):
+            return Value(self.outside(c.name, elements))
+        if isinstance(c, Takes):
+            taken = self.target(c.quantity, elements)
+            return Value(taken == c.option, self.all & False if taken is None else None)
+        if isinstance(c, Not):
+            part = self.condition(c.part, elements, owner)
+            return Value(np.logical_not(part.it), part.has)
+        parts = [self.condition(part, elements, owner) for part in c.parts]
+        holds, has = parts[0].it, parts[0].has
+        for part in parts[1:]:
+            holds = holds & part.it if isinstance(c, And) else holds | part.it
+            has = both(has, part.has)
+        return Value(holds, has)
+
+    def outside(self, name: str, elements: Elements) -> Array:
+        """A fact, setting or judgement at every point."""
+        index = self.indices.get(name, "")
+        return self.points.columns[at(name, elements[index]) if index else name]
+
+    # --- expressions ---------------------------------------------------------------------
+
+    def expression(self, e: Expression, elements: Elements, owner: str) -> Value:
+        if isinstance(e, Num):
+            return Value(float(e.value))
+        if isinstance(e, Position):
+            return Value(float(elements[e.index]))
+        if isinstance(e, Ref):
+            if e.name in self.quantities:
+                return self.quantity(e.name, elements)
+            if e.name in self.constants:
+                return Value(self.constants[e.name])
+            return Value(self.outside(e.name, elements))
+        if isinstance(e, Lookup):
+            return self.lookup(e, elements, owner)
+        if isinstance(e, Neg):
+            operand = self.expression(e.operand, elements, owner)
+            return Value(-operand.it, operand.has)
+        if isinstance(e, Over):
+            each = [self.expression(e.body, {**elements, e.index: k}, owner) for k in self.rulebook.elements(e.index)]
+            return reduced(e.name, each)
+        if isinstance(e, Call):
+            return reduced(e.name, [self.expression(a, elements, owner) for a in e.arguments])
+        left, right = self.expression(e.left, elements, owner), self.expression(e.right, elements, owner)
+        has = both(left.has, right.has)
+        with np.errstate(all="ignore"):
+            return Value(_ARITHMETIC[e.operator](left.it, right.it), has)
+
+    def lookup(self, e: Lookup, elements: Elements, owner: str) -> Value:
+        table = self.tables[e.table]
+        has: Array | None = None
+        found, values = self.all & False, np.zeros(self.points.rows)
+        given: list[tuple[Array | float, tuple[str, ...]]] = []
+        for argument, key in zip(e.arguments, table.keys, strict=True):
+            if isinstance(argument, Ref) and argument.name in self.domains:
+                given.append((self.outside(argument.name, elements), self.domains[argument.name]))
+            else:
+                value = self.expression(argument, elements, owner)
+                has = both(has, value.has)
+                given.append((value.it, self.domains.get(key, ())))
+        for row in reversed(table.rows):
+            here = self.all
+            for label, (value, domain) in zip(row.labels, given, strict=True):
+                here = here & (in_band(value, label) if isinstance(label, Band) else value == domain.index(label))
+            found, values = found | here, np.where(here, float(row.value), values)
+        lacking = ~found if has is None else ~found & has
+        if lacking.any():
+            self.now.missing.append((owner, lacking))
+            has = found if has is None else found & has
+        return Value(values, has)
+
+
+def _first(holds: dict[str, Array]) -> dict[str, Array]:
+    found: dict[str, Array] = {}
+    before: Array | bool = False
+    for name, where in holds.items():
+        found[name] = where & np.logical_not(before)
+        before = before | where
+    return found
+
+
+def compared(left: Array | float, operator: str, right: Array | float) -> Array:
+    difference = np.subtract(left, right)
+    size = np.abs(difference)
+    if ((size > SAME) & (size < 100 * SAME)).any():
+        raise TooLarge("a difference too small to tell from zero")
+    if operator == "=":
+        return size <= SAME
+    if operator == "<>":
+        return size > SAME
+    if operator == "<":
+        return difference < -SAME
+    if operator == "<=":
+        return difference <= SAME
+    return difference > SAME if operator == ">" else difference >= -SAME
+
+
+def in_band(value: Array | float, band: Band) -> Array | bool:
+    inside: Array | bool = True
+    if band.low is not None:
+        inside = compared(value, ">", float(band.low))
+    if band.high is not None:
+        inside = inside & compared(value, "<=", float(band.high))
+    return inside
+
+
+_ARITHMETIC = {"+": np.add, "-": np.subtract, "*": np.multiply, "/": np.divide, "^": np.power}
+_FUNCTIONS = {"abs": np.abs, "sqrt": np.sqrt, "exp": np.exp, "ln": np.log, "floor": np.floor, "ceil": np.ceil}
+
+
+def reduced(name: str, each: list[Value]) -> Value:
+    it, has = each[0].it, each[0].has
+    if name in _FUNCTIONS:
+        with np.errstate(all="ignore"):
+            return Value(_FUNCTIONS[name](it), has)
+    if name == "round":
+        return Value(np.floor(np.add(it, 0.5)), has)
+    for value in each[1:]:
+        it = np.add(it, value.it) if name in ("sum", "mean") else getattr(np, f"{name}imum")(it, value.it)
+        has = both(has, value.has)
+    return Value(it / len(each) if name == "mean" else it, has)
+
+
+def names(e: Expression) -> Iterator[str]:
+    """Every name in an expression but tables."""
+    if isinstance(e, Ref):
+        yield e.name
+    elif isinstance(e, Op):
+        yield from names(e.left)
+        yield from names(e.right)
+    elif isinstance(e, Neg):
+        yield from names(e.operand)
+    elif isinstance(e, Over):
+        yield from names(e.body)
+    elif isinstance(e, Call | Lookup):
+        for argument in e.arguments:
+            yield from names(argument)
+
+
+def written(rulebook: Rulebook) -> Iterator[tuple[str, Body]]:
+    """Every branch point with its body, in the order written, element by element."""
+
+    def inside(body: Body, id: str) -> Iterator[tuple[str, Body]]:
+        if not isinstance(body, Formula):
+            yield id, body
+            for name, _, inner in branches(body):
+                yield from inside(inner, f"{id}/{name}")
+
+    for quantity in rulebook.quantities:
+        for element in rulebook.elements(quantity.index):
+            yield from inside(quantity.body, at(quantity.name, element))
