@@ -20,11 +20,11 @@ columns over them show the same patterns.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Iterator
+from collections.abc import Iterator
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
-from itertools import combinations, pairwise
+from itertools import combinations, groupby, pairwise
 
 import numpy as np
 
@@ -33,6 +33,7 @@ from brute.rulebooks import Domain, OneOf, Range, Rulebook, at
 
 MOST_ROWS = 30_000
 MOST_VARIABLES = 3
+SAME = 1e-9
 FACT, FIXED, FREE = 0, 1, 2  # project; setting or judgement of verifier or programme; of developer
 
 
@@ -42,10 +43,11 @@ FACT, FIXED, FREE = 0, 1, 2  # project; setting or judgement of verifier or prog
 # coefficients in the component's order, then the constant.
 Variable = tuple[Fraction | None, Fraction | None, int]
 Vector = tuple[Fraction, ...]
+Point = tuple[float, ...]
 
 
 @lru_cache(maxsize=4096)
-def columns(variables: tuple[Variable, ...], forms: frozenset[Vector]) -> tuple[tuple[int, int, Vector], ...]:
+def columns(variables: tuple[Variable, ...], forms: frozenset[Vector]) -> tuple[tuple[int, int, Point], ...]:
     """Representative points of ``variables`` (facts first, then FIXED, then FREE) under ``forms``.
 
     Gives (project, fixed, point) for each point: equal numbers stand for equal values of the facts, and
@@ -59,38 +61,49 @@ def columns(variables: tuple[Variable, ...], forms: frozenset[Vector]) -> tuple[
             layers.insert(0, {f for f in met if any(f[:-1])})
             if len(layers[0]) > 200:
                 raise TooLarge("too many forms over one component")
-    signs = sorted(forms)
     sizes = [sum(1 for v in variables if v[2] == group) for group in (FACT, FIXED, FREE)]
-
-    def lift(point: Vector, until: int) -> Iterator[Vector]:
-        k = len(point)
-        if k == until:
-            yield point
-            return
-        for value in _column(variables[k], layers[k], point):
-            yield from lift((*point, value), until)
-
-    def patterns(point: Vector, group: int) -> tuple[object, tuple[Vector, ...]]:
-        """What can be seen over ``point``, and one point for each different thing seen."""
-        if group > FREE:
-            return tuple(_sign(f, point) for f in signs), (point,)
-        seen: dict[object, tuple[Vector, ...]] = {}
-        for longer in lift(point, len(point) + sizes[group]):
-            pattern, points = patterns(longer, group + 1)
-            seen.setdefault(pattern, points)
-        return frozenset(seen), tuple(p for points in seen.values() for p in points)
-
-    _, points = patterns((), FACT)
-    project: dict[Vector, int] = {}
-    fixed: dict[Vector, int] = {}
+    found: list[Point] = [()]
+    for variable, layer in zip(variables, layers, strict=True):
+        k = len(found[0])
+        ending = [tuple(float(a) for a in f) for f in layer if f[k]]
+        found = [(*point, value) for point in found for value in _column(variable, ending, point)]
+        if len(found) > MOST_ROWS:
+            raise TooLarge("too many points over one component")
+    seen = _thinned(list(zip(found, _patterns(found, forms), strict=True)), sizes)[1]
+    project: dict[Point, int] = {}
+    fixed: dict[Point, int] = {}
     return tuple(
         (
             project.setdefault(p[: sizes[FACT]], len(project)),
             fixed.setdefault(p[: sizes[FACT] + sizes[FIXED]], len(fixed)),
             p,
         )
-        for p in points
+        for p in seen
     )
+
+
+def _patterns(points: list[Point], forms: frozenset[Vector]) -> list[bytes]:
+    """The signs of all forms at each point. Sums of a few small fractions that are not zero are far from it, so
+    floats tell them."""
+    if not forms:
+        return [b""] * len(points)
+    vectors = np.array([[float(a) for a in f] for f in sorted(forms)])
+    values = np.array(points) @ vectors[:, :-1].T + vectors[:, -1]
+    signs = np.where(np.abs(values) <= SAME, 0, np.sign(values)).astype(np.int8)
+    return [row.tobytes() for row in signs]
+
+
+def _thinned(points: list[tuple[Point, bytes]], sizes: list[int], before: int = 0) -> tuple[object, list[Point]]:
+    """What can be seen over points that agree in the first ``before`` values, and one point for each
+    different thing seen. ``sizes``: how many values each group from here inwards has."""
+    if not sizes:
+        return points[0][1], [points[0][0]]
+    until = before + sizes[0]
+    seen: dict[object, list[Point]] = {}
+    for _, over in groupby(points, key=lambda each: each[0][:until]):
+        pattern, kept = _thinned(list(over), sizes[1:], until)
+        seen.setdefault(pattern, kept)
+    return frozenset(seen), [p for kept in seen.values() for p in kept]
 
 
 def _end(k: int, n: int, bound: Fraction) -> Vector:
@@ -103,25 +116,20 @@ def _meet(f: Vector, g: Vector, k: int) -> Vector:
     return tuple(a / first for a in met)
 
 
-def _sign(f: Vector, point: Vector) -> int:
-    value = sum((a * x for a, x in zip(f, point, strict=False) if a), f[-1])
-    return (value > 0) - (value < 0)
-
-
-def _column(variable: Variable, forms: Iterable[Vector], point: Vector) -> list[Fraction]:
+def _column(variable: Variable, forms: list[Point], point: Point) -> list[float]:
     """Every root over ``point`` inside the variable's range, one value between each two, and one
     beyond the ends where there is no bound."""
-    low, high, _ = variable
+    low, high = (None if bound is None else float(bound) for bound in variable[:2])
     k = len(point)
-    roots = set()
+    roots: list[float] = [bound for bound in (low, high) if bound is not None]
     for f in forms:
-        if f[k] and not any(f[k + 1 : -1]):
-            root = -sum((a * x for a, x in zip(f, point, strict=False) if a), f[-1]) / f[k]
-            if (low is None or root >= low) and (high is None or root <= high):
-                roots.add(root)
+        root = -(sum(a * x for a, x in zip(f, point, strict=False)) + f[-1]) / f[k]
+        if (low is None or root > low) and (high is None or root < high):
+            roots.append(root)
     if not roots:
-        return [Fraction(0)]
-    found = sorted(roots)
+        return [0.0]
+    roots.sort()
+    found = [roots[0], *(b for a, b in pairwise(roots) if b - a > SAME)]
     values = [v for a, b in pairwise(found) for v in (a, (a + b) / 2)] + [found[-1]]
     return ([found[0] - 1] if low is None else []) + values + ([found[-1] + 1] if high is None else [])
 
