@@ -170,22 +170,28 @@ def asked(point: BranchPoint, graph: DecisionGraph) -> Iterator[tuple[m.Conditio
             yield condition, elements
 
 
-def quantities_in(
-    node: m.Expression | m.Condition, elements: Element, sizes: Mapping[str, int]
-) -> Iterator[tuple[Literal["value", "takes"], str]]:
-    """Which instances an expression or condition evaluates (``value``), and which branch points
-    it asks by ``takes``; reductions are spread out over their elements."""
+Mention = tuple[Literal["fact", "setting", "judgement", "value", "takes"], str]
+
+
+def mentions(node: m.Expression | m.Condition, elements: Element, sizes: Mapping[str, int]) -> Iterator[Mention]:
+    """What an expression or condition mentions, in reading order: facts, settings and judgements by
+    name and element, instances it evaluates (``value``), instances whose choice it asks (``takes``).
+    Reductions are spread out over their elements."""
     match node:
         case m.Reference(kind="quantity", name=name, index=index):
             yield "value", instance_id(name, index, elements)
+        case m.Reference(kind="fact" | "setting" as kind, name=name, index=index):
+            yield kind, instance_id(name, index, elements)
+        case m.Holds(kind=kind, name=name, index=index):
+            yield kind, instance_id(name, index, elements)
         case m.Takes(quantity=name, index=index):
             yield "takes", instance_id(name, index, elements)
         case m.Reduction(body=body, index=index):
             for element in range(1, sizes.get(index, 0) + 1):
-                yield from quantities_in(body, {**elements, index: element}, sizes)
+                yield from mentions(body, {**elements, index: element}, sizes)
         case _:
             for part in walk.parts(node):
-                yield from quantities_in(part, elements, sizes)
+                yield from mentions(part, elements, sizes)
 
 
 def links(graph: DecisionGraph) -> networkx.DiGraph[str]:

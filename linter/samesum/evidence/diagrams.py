@@ -241,6 +241,49 @@ class Diagrams:
         """Whether ``a`` is the constant ``value``."""
         return self.level[a] == END and type(self.content[a]) is type(value) and bool(self.content[a] == value)
 
+    def choose(self, condition: int, a: int, b: int) -> int:
+        """``a`` where the condition holds, else ``b``."""
+        memo = self._memo.setdefault("choose", {})
+        levels, kids = self.level, self.kids
+
+        def walk(c: int, a: int, b: int) -> int:
+            if levels[c] == END:
+                return a if self.content[c] else b
+            if a == b:
+                return a
+            key = (c, a, b)
+            found = memo.get(key)
+            if found is None:
+                top = min(levels[c], levels[a], levels[b])
+                parts = [kids[each] if levels[each] == top else (each,) * self.size[top] for each in (c, a, b)]
+                found = self.node(top, tuple([walk(x, y, z) for x, y, z in zip(*parts, strict=True)]))
+                memo[key] = found
+            return found
+
+        return walk(condition, a, b)
+
+    def exchange(self, name: str, replacement: Callable[[int], tuple[int, Sequence[int]] | None], a: int) -> int:
+        """Variables exchanged for others: ``replacement(level)`` gives the new level and, for each of
+        its values, the old variable's value; None leaves the variable."""
+        memo = self._memo.setdefault(name, {})
+
+        def walk(a: int) -> int:
+            level = self.level[a]
+            if level == END:
+                return a
+            found = memo.get(a)
+            if found is None:
+                below = [walk(kid) for kid in self.kids[a]]
+                new = replacement(level)
+                if new is not None:
+                    level, old = new
+                    below = [below[value] for value in old]
+                found = self._select(level, below)
+                memo[a] = found
+            return found
+
+        return walk(a)
+
     # -- conditions ---------------------------------------------------------------------
 
     def both(self, a: int, b: int) -> int:
@@ -248,7 +291,7 @@ class Diagrams:
         yes, no = self.end(True), self.end(False)
         if a == no or b == no:
             return no
-        if a == yes or a == b:
+        if a in (yes, b):
             return b
         if b == yes:
             return a
@@ -259,7 +302,7 @@ class Diagrams:
         yes, no = self.end(True), self.end(False)
         if a == yes or b == yes:
             return yes
-        if a == no or a == b:
+        if a in (no, b):
             return b
         if b == no:
             return a
@@ -316,6 +359,7 @@ COMBINE: Mapping[str, Callable[[Any, Any], Any]] = {
     "most": max,
     "least": _least,
     "exists": lambda x, y: 1 if x or y else 0,
+    "all": lambda x, y: 1 if x and y else 0,
 }
 
 
@@ -405,7 +449,8 @@ def take_out(diagrams: Diagrams, factors: Sequence[int], level: int, how: str) -
         products[product] = products.get(product, 0) + 1
     if how == "sum":
         parts = [
-            product if times == 1 else diagrams.times(product, diagrams.end(times)) for product, times in products.items()
+            product if times == 1 else diagrams.times(product, diagrams.end(times))
+            for product, times in products.items()
         ]
     else:
         parts = list(products)
@@ -443,9 +488,7 @@ def number(diagrams: Diagrams, factors: Sequence[int]) -> Any:
     return result
 
 
-def read_back(
-    diagrams: Diagrams, trail: Sequence[Eliminated], held: Mapping[int, int] | None = None
-) -> dict[int, int]:
+def read_back(diagrams: Diagrams, trail: Sequence[Eliminated], held: Mapping[int, int] | None = None) -> dict[int, int]:
     """A value for every eliminated variable, last eliminated first, such that the whole product
     is what the elimination found: the first value of the best kind (largest for ``most`` and
     ``sum``, smallest for ``least``, not 0 for ``exists``)."""

@@ -1,0 +1,545 @@
+"""What expressions and conditions amount to, as diagrams over branch points, named values and signs.
+
+Takes the decision graph, gives for each expression a diagram with exact sums at its ends (one
+for each way that choices and named values lead to), and for each condition a diagram of True and
+False over states of branch points, values of facts, and the signs of sums.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterator
+from dataclasses import dataclass, field
+from fractions import Fraction
+from typing import Any
+
+from samesum.evidence import symbols
+from samesum.evidence.diagrams import Diagrams, OutOfLimits
+from samesum.evidence.symbols import Bounds, Sum
+from samesum.graph import BranchPoint, DecisionGraph, Element, instance_id, mentions
+from samesum.reading import model as m
+from samesum.reading import walk
+
+OPAQUE = "opaque"  # a number that could not be written out exactly
+SPACE = 1 << 24  # levels between two variables, for signs that must stand near their facts
+MOST_NODES = 30_000  # a quantity whose ways need more is opaque
+
+SIGNS = {"<": (0,), "<=": (0, 1), "=": (1,), "<>": (0, 2), ">=": (1, 2), ">": (2,)}
+FLIPPED = {"<": ">", "<=": ">=", "=": "=", "<>": "<>", ">=": "<=", ">": "<"}
+
+
+@dataclass(frozen=True, slots=True)
+class Variable:
+    """What a level of the diagrams stands for. ``kind``: ``point`` (state of a branch point), ``named``
+    (a fact or setting with named or yes/no values), ``judgement``, ``numeric`` (the cell of a fact or
+    setting), ``sign`` (of ``sum``), ``unsure`` (a condition that could be neither shown nor refuted)."""
+
+    kind: str
+    name: str
+    setting: bool = False
+    sum: Sum | None = None
+
+
+@dataclass(slots=True)
+class Readings:
+    """The workshop that reads expressions and conditions; remembers what it has read."""
+
+    graph: DecisionGraph
+    diagrams: Diagrams
+    variables: dict[int, Variable] = field(default_factory=dict)
+    levels: dict[str, int] = field(default_factory=dict)
+    signs: dict[Sum, int] = field(default_factory=dict)
+    borders: dict[Sum, set[str]] = field(default_factory=dict)
+    domains: dict[str, Bounds] = field(default_factory=dict)
+    values: dict[str, tuple[str, ...]] = field(default_factory=dict)
+    settings: set[str] = field(default_factory=set)
+    unsure: dict[int, m.Condition | m.Expression] = field(default_factory=dict)
+    _declared: dict[str, Any] = field(default_factory=dict)
+    _expressions: dict[Any, int] = field(default_factory=dict)
+    _hulls: dict[Any, Bounds] = field(default_factory=dict)
+    _results: dict[str, int] = field(default_factory=dict)
+    _sound: dict[str, int] = field(default_factory=dict)
+    _next: int = SPACE
+    _beside: dict[int, int] = field(default_factory=dict)
+
+    def __post_init__(self) -> None:
+        model = self.graph.model
+        both: tuple[m.Fact | m.Setting, ...] = (*model.facts, *model.settings)
+        for declared in both:
+            index = declared.index if isinstance(declared, m.Fact) else ""
+            for element in range(1, self.graph.sizes.get(index, 0) + 1) if index else (0,):
+                id = f"{declared.name}@{element}" if index else declared.name
+                if isinstance(declared, m.Setting):
+                    self.settings.add(id)
+                if isinstance(declared.domain, m.Range):
+                    self.domains[id] = Bounds(declared.domain.low, declared.domain.high)
+                else:
+                    self.values[id] = declared.domain.values if isinstance(declared.domain, m.OneOf) else ("no", "yes")
+        shared: tuple[m.Constant | m.Table, ...] = (*model.constants, *model.tables)
+        for each in shared:
+            self._declared[each.name] = each
+        for id in reading_order(self.graph):
+            self.level(id)
+
+    # -- variables ----------------------------------------------------------------------
+
+    def level(self, id: str) -> int:
+        """The level of a fact, setting, judgement (by id) or branch point (``point:`` before its id)."""
+        found = self.levels.get(id)
+        if found is not None:
+            return found
+        found = self._next
+        self._next += SPACE
+        self.levels[id] = found
+        if id.startswith("point:"):
+            name = id.removeprefix("point:")
+            self.variables[found] = Variable("point", name)
+            self.diagrams.size[found] = len(self.graph.branch_points[name].branches) + 2
+        elif id in self.domains:
+            self.variables[found] = Variable("numeric", id, id in self.settings)
+        elif id in self.values:
+            self.variables[found] = Variable("named", id, id in self.settings)
+            self.diagrams.size[found] = len(self.values[id])
+        else:
+            self.variables[found] = Variable("judgement", id)
+            self.diagrams.size[found] = 2
+        return found
+
+    def state(self, point: str, values: tuple[int, ...]) -> int:
+        """True where the branch point is in one of these states."""
+        return self.diagrams.literal(self.level(f"point:{point}"), values)
+
+    def reached(self, point: str) -> int:
+        """True where the branch point is reached (a branch taken, or stuck)."""
+        count = len(self.graph.branch_points[point].branches)
+        return self.state(point, (*range(count), count + 1))
+
+    def _new_sign(self, sum: Sum) -> int:
+        base = max(self.level(name) for name in symbols.generators(sum))
+        self._beside[base] = self._beside.get(base, 0) + 1
+        level = base + self._beside[base]
+        settings = any(name in self.settings for name in symbols.generators(sum))
+        self.variables[level] = Variable("sign", "", settings, sum)
+        self.diagrams.size[level] = 3
+        self.signs[sum] = level
+        return level
+
+    # -- conditions ---------------------------------------------------------------------
+
+    def compared(self, difference: int, operator: str, where: m.Condition | m.Expression, hull: Bounds) -> int:
+        """True where ``difference OPERATOR 0``; ``hull`` are bounds of the difference for the case
+        that it could not be written out."""
+        d = self.diagrams
+
+        def decide(end: Any) -> int:
+            if end == OPAQUE:
+                decided = self._by_bounds(hull, operator)
+                return self._unsure(where) if decided is None else decided
+            constant = end.constant
+            if constant is not None:
+                sign = 0 if constant < 0 else 1 if constant == 0 else 2
+                return d.end(sign in SIGNS[operator])
+            decided = self._by_bounds(symbols.bounds(end, self.domains), operator)
+            if decided is not None:
+                return decided
+            leading = end.terms[-1][1]
+            normal = symbols.scale(end, 1 / leading)
+            way = operator if leading > 0 else FLIPPED[operator]
+            level = self.signs.get(normal)
+            if level is None:
+                level = self._new_sign(normal)
+            self.borders.setdefault(normal, set()).add(
+                "above" if way in ("<", ">=") else "below" if way in ("<=", ">") else "apart"
+            )
+            return d.literal(level, SIGNS[way])
+
+        return d.graft(f"compared {operator} {id(where)} {hull}", decide, difference)
+
+    def _by_bounds(self, found: Bounds, operator: str) -> int | None:
+        possible = []
+        if found.low is None or found.low < 0:
+            possible.append(0)
+        zero_low = found.low is None or found.low < 0 or (found.low == 0 and not found.low_open)
+        zero_high = found.high is None or found.high > 0 or (found.high == 0 and not found.high_open)
+        if zero_low and zero_high:
+            possible.append(1)
+        if found.high is None or found.high > 0:
+            possible.append(2)
+        holds = [sign in SIGNS[operator] for sign in possible]
+        return self.diagrams.end(True) if all(holds) else self.diagrams.end(False) if not any(holds) else None
+
+    def _unsure(self, where: m.Condition | m.Expression) -> int:
+        level = self._next
+        self._next += SPACE
+        self.variables[level] = Variable("unsure", f"unsure {level}")
+        self.diagrams.size[level] = 2
+        self.unsure[level] = where
+        return self.diagrams.literal(level, (1,))
+
+    def condition(self, node: m.Condition, elements: Element) -> int:
+        """Where the condition holds, given that everything it asks has a value."""
+        d = self.diagrams
+        match node:
+            case m.Comparison(operator=operator, left=left, right=right):
+                difference = self._minus(self.expression(left, elements), self.expression(right, elements))
+                hull = Bounds(None, None)
+                if OPAQUE in d.ends(difference):
+                    a, b = self.hull(left, elements), self.hull(right, elements)
+                    hull = Bounds(
+                        None if a.low is None or b.high is None else a.low - b.high,
+                        None if a.high is None or b.low is None else a.high - b.low,
+                    )
+                return self.compared(difference, operator, node, hull)
+            case m.Is(subject=subject, values=values):
+                id = instance_id(subject.name, subject.index, elements)
+                known = self.values[id]
+                return d.literal(self.level(id), [known.index(value) for value in values if value in known])
+            case m.Holds(name=name, index=index):
+                return d.literal(self.level(instance_id(name, index, elements)), (1,))
+            case m.Takes(quantity=name, index=index, option=option):
+                target = instance_id(name, index, elements)
+                return self.state(target, (self.graph.branch_points[target].branches.index(option),))
+            case m.All(parts=parts):
+                return d.every(self.condition(part, elements) for part in parts)
+            case m.Some(parts=parts):
+                return d.some(self.condition(part, elements) for part in parts)
+            case m.Not(part=part):
+                return d.negate(self.condition(part, elements))
+            case m.Unknown():
+                return self._unsure(node)
+
+    def sound(self, node: m.Expression | m.Condition, elements: Element, own: bool = False) -> int:
+        """Where everything asked has a value: quantities are not stuck, tables have a row, nothing is
+        divided by zero. ``own`` leaves the quantities' own insides out."""
+        d = self.diagrams
+        match node:
+            case m.Takes() if own:
+                return d.end(True)
+            case m.Takes(quantity=name, index=index):
+                target = instance_id(name, index, elements)
+                stuck = len(self.graph.branch_points[target].branches) + 1
+                return d.negate(self.state(target, (stuck,)))
+            case m.Reference(kind="quantity", name=name, index=index):
+                return d.end(True) if own else self.sound_quantity(instance_id(name, index, elements))
+            case m.Reduction(body=body, index=index):
+                return d.every(
+                    self.sound(body, {**elements, index: element}, own)
+                    for element in range(1, self.graph.sizes.get(index, 0) + 1)
+                )
+            case _:
+                result = d.every(self.sound(part, elements, own) for part in walk.parts(node))
+                if isinstance(node, m.Lookup):
+                    result = d.both(result, d.some(match for match, _ in self._rows(node, elements)))
+                return d.both(result, self._defined(node, elements))
+
+    def _defined(self, node: m.Expression | m.Condition, elements: Element) -> int:
+        """Where the operation itself has a value."""
+        match node:
+            case m.Arithmetic(operator="/", right=operand):
+                operator = "<>"
+            case m.Arithmetic(operator="^", left=operand, right=m.Negation() | m.Scaled()):
+                operator = "<>"
+            case m.Function(name="ln", arguments=(operand,)):
+                operator = ">"
+            case m.Function(name="sqrt", arguments=(operand,)):
+                operator = ">="
+            case _:
+                return self.diagrams.end(True)
+        if isinstance(operand, m.Number):
+            return self.diagrams.end(operand.value != 0 if operator == "<>" else operand.value >= 0)
+        hull = self.hull(operand, elements)
+        decided = self._by_bounds(hull, operator)
+        if decided is not None:
+            return decided
+        value = self.expression(operand, elements)
+        if OPAQUE in self.diagrams.ends(value):
+            return self.diagrams.end(True)
+        return self.compared(value, operator, operand, hull)
+
+    def sound_quantity(self, id: str) -> int:
+        """Where an instance has a value when it is evaluated."""
+        found = self._sound.get(id)
+        if found is None:
+            instance = self.graph.instances[id]
+            found = self._through(id, instance.quantity.body, (), lambda e: self.sound(e, instance.elements), False)
+            self._sound[id] = found
+        return found
+
+    # -- values -------------------------------------------------------------------------
+
+    def quantity(self, id: str) -> int:
+        """The value of an instance (meaningless where it is stuck or not evaluated)."""
+        found = self._results.get(id)
+        if found is None:
+            instance = self.graph.instances[id]
+            found = self._bounded(
+                lambda: self._through(
+                    id, instance.quantity.body, (), lambda e: self.expression(e, instance.elements), None
+                )
+            )
+            self._results[id] = found
+        return found
+
+    def _through(
+        self, id: str, body: m.Body, path: tuple[str, ...], leaf: Callable[[m.Expression], int], otherwise: bool | None
+    ) -> int:
+        if isinstance(body, m.Unknown):
+            return self.diagrams.end(OPAQUE) if otherwise is None else self.diagrams.end(True)
+        if isinstance(body, m.Formula):
+            return leaf(body.expression)
+        below = [
+            self._through(id, branch.body, (*path, branch.name), leaf, otherwise) for branch in walk.branches(body)
+        ]
+        result = below[0] if otherwise is None else self.diagrams.end(otherwise)
+        level = self.level("point:" + "/".join((id, *path)))
+        for number, part in enumerate(below):
+            if part != result:
+                result = self.diagrams.choose(self.diagrams.literal(level, (number,)), part, result)
+        return result
+
+    def _bounded(self, work: Callable[[], int]) -> int:
+        """``work``, or opaque when it alone needs more than its share of nodes."""
+        limits = self.diagrams.limits
+        before = limits.nodes
+        limits.nodes = share = min(before, len(self.diagrams.level) + MOST_NODES)
+        try:
+            return work()
+        except OutOfLimits as error:
+            if str(error) == "time" or share == before:
+                raise
+        finally:
+            limits.nodes = before
+        return self.diagrams.end(OPAQUE)
+
+    def expression(self, node: m.Expression, elements: Element) -> int:
+        """The number an expression amounts to, on each way."""
+        key = (id(node), tuple(sorted(elements.items())))
+        found = self._expressions.get(key)
+        if found is None:
+            found = self._bounded(lambda: self._expression(node, elements))
+            self._expressions[key] = found
+        return found
+
+    def _expression(self, node: m.Expression, elements: Element) -> int:
+        d = self.diagrams
+        match node:
+            case m.Number(value=value):
+                return d.end(symbols.number(value))
+            case m.Reference(kind="constant", name=name):
+                return self.expression(self._declared[name].expression, {})
+            case m.Reference(kind="quantity", name=name, index=index):
+                return self.quantity(instance_id(name, index, elements))
+            case m.Reference(name=name, index=index):
+                id = instance_id(name, index, elements)
+                return d.end(symbols.name(id) if id in self.domains else OPAQUE)
+            case m.Position(index=index):
+                return d.end(symbols.number(elements[index]))
+            case m.Lookup():
+                result = d.end(OPAQUE)
+                for matches, number in reversed(list(self._rows(node, elements))):
+                    result = number if result == d.end(OPAQUE) else d.choose(matches, number, result)
+                return result
+            case m.Arithmetic(operator=operator, left=left, right=right):
+                a, b = self.expression(left, elements), self.expression(right, elements)
+                return d.apply(f"number {operator}", lambda x, y: _arithmetic(operator, x, y), a, b)
+            case m.Negation(operand=operand):
+                return d.map("negative", lambda x: _each(_negative, x), self.expression(operand, elements))
+            case m.Scaled(operand=operand, factor=factor):
+                inner = self.expression(operand, elements)
+                return d.map(f"scaled {factor}", lambda x: _each(lambda y: symbols.scale(y, factor), x), inner)
+            case m.Function(name=name, arguments=arguments):
+                parts = [self.expression(argument, elements) for argument in arguments]
+                return self._called(name, parts)
+            case m.Reduction(name=name, body=body, index=index):
+                count = self.graph.sizes.get(index, 0)
+                parts = [self.expression(body, {**elements, index: element}) for element in range(1, count + 1)]
+                if name in ("min", "max"):
+                    return self._called(name, parts)
+                result = d.end(symbols.ZERO)
+                for part in parts:
+                    result = d.apply("number +", lambda x, y: _arithmetic("+", x, y), result, part)
+                if name == "mean":
+                    share = Fraction(1, count)
+                    result = d.map(f"scaled {share}", lambda x: _each(lambda y: symbols.scale(y, share), x), result)
+                return result
+            case _:
+                return d.end(OPAQUE)
+
+    def _called(self, name: str, parts: list[int]) -> int:
+        d = self.diagrams
+        if len(parts) == 1:
+            return d.map(f"call {name}", lambda x: _each(lambda y: symbols.call(name, (y,)), x), parts[0])
+        result = d.map("alone", lambda x: x if x == OPAQUE else (x,), parts[0])
+        for part in parts[1:]:
+            result = d.apply("beside", lambda x, y: OPAQUE if OPAQUE in (x, y) else (*x, y), result, part)
+        return d.map(f"call {name}", lambda x: x if x == OPAQUE else symbols.call(name, x) or OPAQUE, result)
+
+    def _minus(self, a: int, b: int) -> int:
+        return self._bounded(lambda: self.diagrams.apply("number -", lambda x, y: _arithmetic("-", x, y), a, b))
+
+    def _rows(self, node: m.Lookup, elements: Element) -> Iterator[tuple[int, int]]:
+        """Each row of a table: where its labels match the arguments, and its value."""
+        d = self.diagrams
+        table: m.Table = self._declared[node.table]
+        for row in table.rows:
+            match = d.end(True)
+            for label, key, argument in zip(row.labels, table.keys, node.arguments, strict=True):
+                if isinstance(label, m.Band):
+                    match = d.both(match, self._in_band(label, argument, elements))
+                elif isinstance(argument, m.Value):
+                    match = d.both(match, d.end(argument.name == label))
+                elif isinstance(argument, m.Reference):
+                    id = instance_id(argument.name, argument.index, elements)
+                    known = self.values.get(id, key.values)
+                    match = d.both(match, d.literal(self.level(id), [known.index(label)] if label in known else []))
+                else:
+                    match = d.both(match, self._unsure(node))
+            yield match, d.end(symbols.number(row.value))
+
+    def _in_band(self, band: m.Band, argument: m.Expression, elements: Element) -> int:
+        d = self.diagrams
+        value = self.expression(argument, elements)
+        hull = self.hull(argument, elements) if OPAQUE in d.ends(value) else Bounds(None, None)
+        result = d.end(True)
+        for bound, operator in ((band.low, ">"), (band.high, "<=")):
+            if bound is not None:
+                less = symbols.number(-bound)
+                shifted = d.map(f"less {bound}", partial(_each, partial(symbols.add, less)), value)
+                moved = Bounds(
+                    None if hull.low is None else hull.low - bound, None if hull.high is None else hull.high - bound
+                )
+                result = d.both(result, self.compared(shifted, operator, argument, moved))
+        return result
+
+    # -- bounds -------------------------------------------------------------------------
+
+    def hull(self, node: m.Expression, elements: Element) -> Bounds:
+        """Bounds of an expression over all projects and all routes (not sharp)."""
+        key = (id(node), tuple(sorted(elements.items())))
+        found = self._hulls.get(key)
+        if found is None:
+            found = self._hull(node, elements)
+            self._hulls[key] = found
+        return found
+
+    def _hull(self, node: m.Expression, elements: Element) -> Bounds:
+        match node:
+            case m.Number(value=value):
+                return Bounds(value, value)
+            case m.Reference(kind="constant", name=name):
+                return self.hull(self._declared[name].expression, {})
+            case m.Reference(kind="quantity", name=name, index=index):
+                instance = self.graph.instances[instance_id(name, index, elements)]
+                leaves = self.graph.leaves[instance.id]
+                return _around([self.hull(leaf.expression, instance.elements) for leaf in leaves])
+            case m.Reference(name=name, index=index):
+                return self.domains.get(instance_id(name, index, elements), Bounds(None, None))
+            case m.Position(index=index):
+                return Bounds(Fraction(elements[index]), Fraction(elements[index]))
+            case m.Lookup(table=name):
+                values = [row.value for row in self._declared[name].rows]
+                return Bounds(min(values), max(values)) if values else Bounds(None, None)
+            case m.Scaled(operand=operand, factor=factor):
+                return _of(lambda a: symbols.scale(a, factor), self.hull(operand, elements))
+            case m.Negation(operand=operand):
+                return _of(_negative, self.hull(operand, elements))
+            case m.Arithmetic(operator=operator, left=left, right=right):
+                return _of(
+                    lambda a, b: _arithmetic(operator, a, b), self.hull(left, elements), self.hull(right, elements)
+                )
+            case m.Function(name=name, arguments=arguments):
+                return _of(
+                    lambda *each: symbols.call(name, each), *(self.hull(argument, elements) for argument in arguments)
+                )
+            case m.Reduction(name=name, body=body, index=index):
+                count = self.graph.sizes.get(index, 0)
+                parts = [self.hull(body, {**elements, index: element}) for element in range(1, count + 1)]
+                if name in ("min", "max"):
+                    return _of(lambda *each: symbols.call(name, each), *parts)
+                total = _of(lambda *each: symbols.total(each), *parts)
+                return total if name == "sum" else _of(lambda a: symbols.scale(a, Fraction(1, count)), total)
+            case _:
+                return Bounds(None, None)
+
+
+def _of(build: Callable[..., Any], *parts: Bounds) -> Bounds:
+    """Bounds of an operation on independent parts."""
+    names = [f"p{number}" for number in range(len(parts))]
+    made = build(*(symbols.name(name) for name in names))
+    if made is None or made == OPAQUE:
+        return Bounds(None, None)
+    return symbols.bounds(made, dict(zip(names, parts, strict=True)))
+
+
+def _around(parts: list[Bounds]) -> Bounds:
+    lows = [part.low for part in parts]
+    highs = [part.high for part in parts]
+    return Bounds(
+        None if None in lows or not lows else min(low for low in lows if low is not None),
+        None if None in highs or not highs else max(high for high in highs if high is not None),
+    )
+
+
+def _negative(a: Sum) -> Sum:
+    return symbols.scale(a, Fraction(-1))
+
+
+def _each(operation: Callable[[Sum], Sum | None], a: Any) -> Any:
+    if a == OPAQUE:
+        return OPAQUE
+    result = operation(a)
+    return OPAQUE if result is None else result
+
+
+def _arithmetic(operator: str, a: Any, b: Any) -> Any:
+    if OPAQUE in (a, b):
+        return OPAQUE
+    operation: Callable[[Sum, Sum], Sum | None] = {
+        "+": symbols.add,
+        "-": symbols.subtract,
+        "*": symbols.multiply,
+        "/": symbols.divide,
+        "^": symbols.power,
+    }[operator]
+    result = operation(a, b)
+    return OPAQUE if result is None or len(result.terms) > 400 else result
+
+
+def reading_order(graph: DecisionGraph) -> list[str]:
+    """Facts, settings, judgements and branch points (``point:ID``) in the order in which an evaluation
+    of the result first meets them: what is asked together stands together."""
+    order: dict[str, None] = {}
+    seen: set[str] = set()
+    points: dict[str, list[BranchPoint]] = {}
+    for point in graph.branch_points.values():
+        points.setdefault(point.instance, []).append(point)
+
+    def visit_all(node: m.Expression | m.Condition, elements: Element) -> None:
+        for kind, id in mentions(node, elements, graph.sizes):
+            if kind in ("value", "takes"):
+                visit(id)
+            else:
+                order.setdefault(id)
+
+    def visit(id: str) -> None:
+        if id in seen or id not in graph.instances:
+            return
+        seen.add(id)
+        elements = graph.instances[id].elements
+        for point in points.get(id, ()):
+            for condition in point.conditions:
+                if condition is not None:
+                    visit_all(condition, elements)
+            if point.leader:
+                visit(point.leader)
+            order.setdefault(f"point:{point.id}")
+            for leaf in graph.leaves[id]:
+                if leaf.under is not None and leaf.under[0] == point.id:
+                    visit_all(leaf.expression, elements)
+        for leaf in graph.leaves[id]:
+            visit_all(leaf.expression, elements)
+
+    for applies in graph.model.applies:
+        visit_all(applies.condition, {})
+    if graph.model.result is not None:
+        visit(graph.model.result.name)
+    return list(order)
