@@ -482,3 +482,26 @@ def rulebook(seed: int) -> Rulebook:
 def rulebooks(draw: Callable[[st.SearchStrategy[int]], int]) -> Rulebook:
     """The same as a hypothesis strategy."""
     return _Maker(Drawn(draw)).rulebook()
+
+
+def case(made: Rulebook, chance: Chance) -> dict[str, object]:
+    """A project for the rulebook: a value for each fact (quarters, so that floats hold them exactly), with as many
+    elements as the index has or fewer, and now and then for a setting or judgement."""
+
+    def value(domain: object) -> object:
+        if isinstance(domain, Range):
+            low = domain.low if domain.low is not None else Fraction(-2)
+            high = domain.high if domain.high is not None else Fraction(6)
+            return low + Fraction(chance.between(0, int((high - low) * 4)), 4)
+        if isinstance(domain, OneOf):
+            return domain.values[chance.between(0, len(domain.values) - 1)]
+        return bool(chance.between(0, 1))
+
+    sizes = {i.name: i.most if chance.between(0, 3) else chance.between(1, i.most) for i in made.indices}
+    found: dict[str, object] = {}
+    for fact in made.facts:
+        found[fact.name] = [value(fact.domain) for _ in range(sizes[fact.index])] if fact.index else value(fact.domain)
+    for human in (*made.settings, *made.judgements):
+        if chance.between(0, 9) >= 7:
+            found[human.name] = value(human.domain if isinstance(human, Setting) else None)
+    return found

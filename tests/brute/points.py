@@ -170,11 +170,8 @@ def representative(rulebook: Rulebook, given: dict[str, Fraction | int | bool] |
     parts: list[tuple[list[int], list[int], dict[str, list[object]]]] = []
     numeric: dict[str, Variable] = {}
     for name, domain, group in variables(rulebook):
-        if isinstance(domain, Range):
-            low, high = domain.low, domain.high
-            if name in given:
-                low = high = Fraction(given[name])
-            numeric[name] = (low, high, group)
+        if isinstance(domain, Range) and name not in given:
+            numeric[name] = (domain.low, domain.high, group)
             continue
         if name in given:
             values: list[object] = [given[name]]
@@ -183,7 +180,9 @@ def representative(rulebook: Rulebook, given: dict[str, Fraction | int | bool] |
         own = list(range(len(values)))
         none = [0] * len(values)
         parts.append((own if group == FACT else none, own if group != FREE else none, {name: values}))
-    for names, forms in _components(numeric, atoms(rulebook)):
+    settled = {name: value for name, value in given.items() if isinstance(value, Fraction)}
+    left = frozenset(form for f in atoms(rulebook) if (form := _settled(f, settled))[0])
+    for names, forms in _components(numeric, left):
         ordered = sorted(names, key=lambda n: numeric[n][2])
         vectors = frozenset((*(dict(f[0]).get(n, Fraction(0)) for n in ordered), f[1]) for f in forms)
         found = columns(tuple(numeric[n] for n in ordered), vectors)
@@ -191,6 +190,12 @@ def representative(rulebook: Rulebook, given: dict[str, Fraction | int | bool] |
             ([p[0] for p in found], [p[1] for p in found], {n: [p[2][k] for p in found] for k, n in enumerate(ordered)})
         )
     return _table(parts)
+
+
+def _settled(form: Form, values: dict[str, Fraction]) -> Form:
+    """The form with the values of some variables put in."""
+    rest = tuple((v, a) for v, a in form[0] if v not in values)
+    return rest, form[1] + sum((a * values[v] for v, a in form[0] if v in values), Fraction(0))
 
 
 def _components(numeric: dict[str, Variable], forms: frozenset[Form]) -> Iterator[tuple[list[str], list[Form]]]:
