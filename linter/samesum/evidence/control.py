@@ -110,7 +110,7 @@ def _movers(
             yield Mover(point.by, "choice", point.general_id, chain)
     starts = list(dict.fromkeys([*valued, *_tables(condition)]))
     seen = set(starts)
-    queue = deque((name, (name,)) for name in starts)
+    queue: deque[tuple[str, tuple[str, ...]]] = deque((name, (name,)) for name in starts)
     while queue:
         name, chain = queue.popleft()
         for each in sources.get(name, ()):
