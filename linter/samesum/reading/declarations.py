@@ -1,0 +1,248 @@
+"""Each kind of declaration: tree → model."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import replace
+from fractions import Fraction
+from typing import Literal
+
+from samesum.reading import tree
+from samesum.reading.bodies import resolve_body
+from samesum.reading.conditions import resolve_condition
+from samesum.reading.expressions import fit, resolve_expression
+from samesum.reading.model import (
+    PLAIN,
+    About,
+    Applies,
+    Constant,
+    Domain,
+    Fact,
+    Index,
+    Judgement,
+    OneOf,
+    Quantity,
+    Range,
+    Result,
+    Setting,
+    Spread,
+    Table,
+    Unit,
+    YesNo,
+)
+from samesum.reading.names import Placed, head_unit
+from samesum.reading.phrases import decider_of, in_unit, read_phrases, text_of, whole_number
+from samesum.reading.scope import Scope
+from samesum.reading.tables import resolve_rows
+from samesum.reading.units import same_dimension
+from samesum.reading.words import RESERVED, listing, nearest
+
+MOST_ELEMENTS = 10_000
+MOST_PERIODS = 10_000
+_ROUNDINGS: tuple[Literal["down", "up", "nearest"], ...] = ("down", "up", "nearest")
+
+
+def about(block: Placed, phrases: Mapping[str, tree.Phrase], scope: Scope) -> About:
+    """What every declaration may say of itself."""
+    declaration = block.declaration
+    name = declaration.name
+    return About(
+        clause=text_of(phrases, "clause"),
+        source=text_of(phrases, "source"),
+        note=" ".join(note.text for note in declaration.notes),
+        span=scope.place.span(0, block.last),
+        name_span=scope.span(name) if name is not None else scope.span(declaration),
+    )
+
+
+def _name(block: Placed) -> tree.Word:
+    assert block.declaration.name is not None
+    return block.declaration.name
+
+
+def _unit(block: Placed, scope: Scope) -> Unit | None:
+    """The unit of the name declared here, as found when the names were collected."""
+    declared = scope.names.get(_name(block).text)
+    return declared.unit if declared is not None else None
+
+
+def resolve_result(block: Placed, scope: Scope) -> Result | None:
+    """The result; None, with a problem noted, when there is no such quantity."""
+    word = _name(block)
+    phrases = read_phrases("result", block.declaration.phrases, scope)
+    declared = scope.names.get(word.text)
+    unit = head_unit(block.declaration, scope)
+    step: Fraction | None = None
+    rounding: Literal["down", "up", "nearest", ""] = ""
+    if "rounded" in phrases:
+        how = phrases["rounded"].words[0]
+        rounding = next((each for each in _ROUNDINGS if each == how.text), "")
+        if not rounding:
+            close = nearest(how.text, _ROUNDINGS)
+            scope.report(how, f"a result is rounded {listing(_ROUNDINGS)}, not `{how.text}`",
+                         f"did you mean `{close}`?" if close else "")  # fmt: skip
+        literal = phrases["rounded"].numbers[0]
+        step = in_unit(literal, unit if block.declaration.units else _unit(block, scope), scope)
+        if step is not None and step <= 0:
+            scope.report(literal, "a result is rounded to a number above zero", "write for instance `rounded down to 1`",
+                         "value")  # fmt: skip
+            step = None
+        rounding = rounding if step is not None else ""
+    if declared is None or declared.kind == "unreadable":
+        scope.find(word, ("quantity",))
+        return None
+    scope.find(word)
+    if declared.kind != "quantity":
+        scope.report(word, f"`{word.text}` is a {declared.kind}; the result is a quantity",
+                     f"declare `quantity {word.text}` and what it is made of")  # fmt: skip
+        return None
+    if declared.index:
+        scope.report(word, f"the result cannot be per {declared.index}",
+                     f"declare a quantity that sums it: `= sum({word.text} over {declared.index})`")  # fmt: skip
+        return None
+    if block.declaration.units and unit is not None and declared.unit is not None:
+        if not same_dimension(unit, declared.unit):
+            theirs = f"[{declared.unit.text}]" if declared.unit.text else "no unit"
+            scope.report(block.declaration.units[0], f"the quantity `{word.text}` is in {theirs}, the result in [{unit.text}]",
+                         "give both the same unit", "unit")  # fmt: skip
+        else:
+            return Result(word.text, unit, rounding, step, about(block, phrases, scope))
+    return Result(word.text, declared.unit or PLAIN, rounding, step, about(block, phrases, scope))
+
+
+def resolve_periods(block: Placed, scope: Scope) -> int:
+    """The number of periods."""
+    read_phrases("periods", block.declaration.phrases, scope)
+    number = block.declaration.expression
+    assert isinstance(number, tree.Literal)
+    return whole_number(number, "the number of periods", MOST_PERIODS, scope) or 1
+
+
+def resolve_applies(block: Placed, scope: Scope) -> Applies:
+    phrases = read_phrases("applies", block.declaration.phrases, scope)
+    condition = block.declaration.expression
+    assert condition is not None
+    return Applies(resolve_condition(condition, scope), about(block, phrases, scope))
+
+
+def resolve_index(block: Placed, scope: Scope) -> Index:
+    phrases = read_phrases("index", block.declaration.phrases, scope)
+    most = 1
+    if "at_most" in phrases:
+        most = whole_number(phrases["at_most"].numbers[0], "the most elements", MOST_ELEMENTS, scope) or 1
+    else:
+        word = _name(block)
+        scope.report(word, f"the index `{word.text}` does not say how many elements there can be",
+                     f"write `index {word.text}, at most 4`")  # fmt: skip
+    return Index(_name(block).text, most, about(block, phrases, scope))
+
+
+def resolve_fact(block: Placed, scope: Scope) -> Fact:
+    phrases = read_phrases("fact", block.declaration.phrases, scope)
+    declared = scope.names[_name(block).text]
+    unit = _unit(block, scope)
+    domain = _domain(block, phrases, unit, scope)
+    spread = None
+    if "spread" in phrases:
+        mean, scatter = (in_unit(number, unit, scope) for number in phrases["spread"].numbers)
+        if not isinstance(domain, Range):
+            scope.report(phrases["spread"], "named values have no mean and spread", "leave it out")
+        elif scatter is not None and scatter < 0:
+            scope.report(phrases["spread"], "a spread is not negative", kind="value")
+        elif mean is not None and scatter is not None:
+            spread = Spread(mean, scatter)
+    return Fact(declared.name, unit or PLAIN, declared.index, domain, about(block, phrases, scope), spread)
+
+
+def resolve_setting(block: Placed, scope: Scope) -> Setting:
+    phrases = read_phrases("setting", block.declaration.phrases, scope)
+    word = _name(block)
+    unit = _unit(block, scope)
+    domain = _domain(block, phrases, unit, scope)
+    by = decider_of(phrases, f"the setting `{word.text}`", word, scope)
+    return Setting(word.text, unit or PLAIN, domain, by, about(block, phrases, scope))
+
+
+def _domain(block: Placed, phrases: Mapping[str, tree.Phrase], unit: Unit | None, scope: Scope) -> Domain:
+    units = block.declaration.units
+    if "range" in phrases:
+        phrase = phrases["range"]
+        low, high = (in_unit(number, unit, scope) for number in phrase.numbers)
+        if low is not None and high is not None and low > high:
+            scope.report(phrase, "the domain ends below its start", "write the smaller number first", "value")
+            return Range(None, None)
+        return Range(low, high)
+    if "yes_no" in phrases or "one_of" in phrases:
+        for word in units:
+            scope.report(word, "only numbers have a unit", "leave the unit out", "unit")
+    if "yes_no" in phrases:
+        return YesNo()
+    if "one_of" in phrases:
+        values: dict[str, None] = {}
+        for word in phrases["one_of"].words:
+            if word.text in RESERVED:
+                scope.report(word, f"`{word.text}` is a word of the language and cannot be a name",
+                             f"call it something else, such as `{word.text}_1`", "name")  # fmt: skip
+            if word.text in values:
+                scope.report(word, f"`{word.text}` is listed twice", "leave one of the two out", "name")
+            values[word.text] = None
+        return OneOf(tuple(values))
+    return Range(None, None)
+
+
+def resolve_judgement(block: Placed, scope: Scope) -> Judgement:
+    phrases = read_phrases("judgement", block.declaration.phrases, scope)
+    word = _name(block)
+    for unit in block.declaration.units:
+        scope.report(unit, "a judgement is yes or no and has no unit", "leave the unit out", "unit")
+    if "wording" not in phrases:
+        scope.report(word, f"the judgement `{word.text}` does not give the wording that is read",
+                     f"write `judgement {word.text}, \"where …\", by developer`")  # fmt: skip
+    by = decider_of(phrases, f"the judgement `{word.text}`", word, scope)
+    return Judgement(word.text, text_of(phrases, "wording"), by, about(block, phrases, scope))
+
+
+def resolve_constant(block: Placed, scope: Scope) -> Constant:
+    """A constant. A plain number is in the constant's own unit already."""
+    phrases = read_phrases("constant", block.declaration.phrases, scope)
+    node = block.declaration.expression
+    assert node is not None
+    unit = _unit(block, scope)
+    typed = resolve_expression(node, replace(scope, only_constants=True))
+    if typed.unit == PLAIN or typed.unit is None:
+        expression = typed.expression
+    else:
+        expression = fit(typed, unit, node, scope, "the constant is in")
+    return Constant(_name(block).text, unit or PLAIN, expression, about(block, phrases, scope))
+
+
+def resolve_table(block: Placed, scope: Scope) -> Table:
+    phrases = read_phrases("table", block.declaration.phrases, scope)
+    word = _name(block)
+    unit = _unit(block, scope)
+    keys = scope.keys.get(word.text)
+    rows = resolve_rows(block.declaration, keys, unit, scope) if keys is not None else ()
+    if not block.declaration.rows:
+        scope.report(word, f"the table `{word.text}` has no rows", "write them below it, as in `mineral = 62`")
+    return Table(word.text, unit or PLAIN, keys or (), rows, about(block, phrases, scope))
+
+
+def resolve_quantity(block: Placed, scope: Scope) -> Quantity:
+    phrases = read_phrases("quantity", block.declaration.phrases, scope)
+    declared = scope.names[_name(block).text]
+    unit = declared.unit
+    body = block.declaration.body
+    assert body is not None
+    inside = scope.over(declared.index) if declared.index else scope
+    resolved = resolve_body(body, unit, inside)
+    return Quantity(declared.name, unit or PLAIN, declared.index, resolved, about(block, phrases, scope))
+
+
+def resolve_quietly(block: Placed, scope: Scope) -> None:
+    """Looks a declaration through that is left out of the model, so that its own mistakes are told."""
+    body = block.declaration.body
+    if body is not None:
+        per = next((phrase.words[0].text for phrase in block.declaration.phrases if phrase.kind == "per"), "")
+        resolve_body(body, None, replace(scope.over(per), notebook=scope.notebook))
+
+

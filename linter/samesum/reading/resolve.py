@@ -1,0 +1,199 @@
+"""Trees → model: names, kinds, domains, units; everything that is wrong, once."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, replace
+from typing import TypeVar
+
+from samesum.problems import Problem
+from samesum.reading.cycles import cycles, knotted
+from samesum.reading.declarations import (
+    resolve_applies,
+    resolve_constant,
+    resolve_fact,
+    resolve_index,
+    resolve_judgement,
+    resolve_periods,
+    resolve_quantity,
+    resolve_quietly,
+    resolve_result,
+    resolve_setting,
+    resolve_table,
+)
+from samesum.reading.model import Constant, Key, Model, Quantity, Unknown
+from samesum.reading.names import Placed, bare_scope, declare
+from samesum.reading.phrases import read_phrases, text_of
+from samesum.reading.scope import Declared, Notebook, Scope, undeclared_problems
+from samesum.reading.tables import resolve_keys
+from samesum.reading.units import UnitTable
+from samesum.spans import START, Span
+
+_Made = TypeVar("_Made")
+
+
+@dataclass(frozen=True, slots=True)
+class Unreadable:
+    """A block with a mistake in it: what it would have declared, as far as a glance can tell."""
+
+    first_word: str
+    name: str
+    span: Span
+
+
+def resolve(
+    file: str, blocks: list[Placed], unreadable: list[Unreadable], units: UnitTable
+) -> tuple[Model, list[Problem]]:
+    """The model of the blocks, and every problem found on the way.
+
+    Names that ``unreadable`` blocks would have declared count as declared, and are silent.
+    """
+    notebook = Notebook()
+    silent = [Declared(each.name, "unreadable", each.span) for each in unreadable if each.name]
+    names, kept = declare(blocks, silent, file, notebook, units)
+    keys = _all_keys(kept, names, file, notebook, units)
+
+    def scope(block: Placed) -> Scope:
+        return replace(bare_scope(block, file, notebook, units), names=names, keys=keys)
+
+    def every(kind: str, make: Callable[[Placed, Scope], _Made]) -> tuple[_Made, ...]:
+        made = []
+        for block in kept:
+            if block.declaration.kind != kind:
+                continue
+            name = block.declaration.name
+            if name is not None and kind in ("fact", "quantity") and names[name.text].kind == "unreadable":
+                resolve_quietly(block, scope(block))
+            else:
+                made.append(make(block, scope(block)))
+        return tuple(made)
+
+    needs: dict[str, tuple[str, ...]] = {}
+
+    def noting(make: Callable[[Placed, Scope], _Made]) -> Callable[[Placed, Scope], _Made]:
+        def make_and_note(block: Placed, inner: Scope) -> _Made:
+            before = len(notebook.mentions)
+            made = make(block, inner)
+            name = block.declaration.name
+            assert name is not None
+            needs[name.text] = tuple(dict.fromkeys(each for each, _ in notebook.mentions[before:]))
+            return made
+
+        return make_and_note
+
+    title, draft, title_span = _title(blocks, unreadable, notebook, file, units)
+    periods = every("periods", resolve_periods)
+    _once("periods", blocks, notebook, file, units)
+    results = every("result", resolve_result)
+    _once("result", blocks, notebook, file, units)
+    if not results and not any(each.first_word == "result" for each in unreadable):
+        notebook.problems.append(
+            Problem(file, title_span, "the rulebook has no result", "write `result NAME [UNIT]` for what is credited", "shape")
+        )
+    constants = every("constant", noting(resolve_constant))
+    quantities = every("quantity", noting(resolve_quantity))
+    model = Model(
+        file=file,
+        title=title,
+        draft=draft,
+        title_span=title_span,
+        result=results[0] if results else None,
+        periods=periods[0] if periods else 1,
+        applies=every("applies", resolve_applies),
+        indices=every("index", resolve_index),
+        facts=every("fact", resolve_fact),
+        settings=every("setting", resolve_setting),
+        judgements=every("judgement", resolve_judgement),
+        constants=constants,
+        tables=every("table", resolve_table),
+        quantities=quantities,
+    )
+    model = _without_cycles(model, needs, notebook)
+    _one_currency(file, notebook)
+    return model, [*notebook.problems, *undeclared_problems(notebook, file)]
+
+
+def _all_keys(
+    kept: list[Placed], names: dict[str, Declared], file: str, notebook: Notebook, units: UnitTable
+) -> dict[str, tuple[Key, ...]]:
+    keys: dict[str, tuple[Key, ...]] = {}
+    for block in kept:
+        name = block.declaration.name
+        if block.declaration.kind == "table" and name is not None:
+            scope = replace(bare_scope(block, file, notebook, units), names=names)
+            found = resolve_keys(block.declaration, scope)
+            if found is not None:
+                unit = names[name.text].unit
+                keys[name.text] = found
+                names[name.text] = replace(names[name.text], unit=unit)
+    return keys
+
+
+def _title(
+    blocks: list[Placed], unreadable: list[Unreadable], notebook: Notebook, file: str, units: UnitTable
+) -> tuple[str, str, Span]:
+    """Title, draft and where the title stands; reports a first line that is missing or elsewhere."""
+    title, draft, span = "", "", START
+    found = [block for block in blocks if block.declaration.kind == "rulebook"]
+    first_line = min([block.place.first_line for block in blocks] + [each.span.line for each in unreadable], default=1)
+    for number, block in enumerate(found):
+        scope = bare_scope(block, file, notebook, units)
+        phrases = read_phrases("rulebook", block.declaration.phrases, scope)
+        name = block.declaration.name
+        if number:
+            scope.report(block.declaration, "the file has a second `rulebook` line", "one file holds one rulebook")
+        elif name is not None:
+            title, draft, span = name.text, text_of(phrases, "draft"), scope.span(block.declaration)
+            if block.place.first_line != first_line:
+                scope.report(block.declaration, "the `rulebook` line is not the first", "move it to the top of the file")
+    if not found and not any(each.first_word == "rulebook" for each in unreadable):
+        notebook.problems.append(
+            Problem(file, Span(first_line, 1, first_line, 2), "the file does not start with its `rulebook` line",
+                    "write `rulebook \"TITLE\", draft \"VERSION\"` at the top", "shape")
+        )  # fmt: skip
+    return title, draft, span
+
+
+def _once(kind: str, blocks: list[Placed], notebook: Notebook, file: str, units: UnitTable) -> None:
+    found = [block for block in blocks if block.declaration.kind == kind]
+    for block in found[1:]:
+        scope = bare_scope(block, file, notebook, units)
+        line = found[0].place.first_line
+        scope.report(block.declaration, f"a second `{kind}` stands here; the first is on line {line}", "keep one of the two")
+
+
+def _without_cycles(model: Model, needs: dict[str, tuple[str, ...]], notebook: Notebook) -> Model:
+    """The model with what needs itself made unknown."""
+    named: dict[str, Constant | Quantity] = {each.name: each for each in (*model.constants, *model.quantities)}
+    for chain in cycles(needs):
+        first = named[chain[0]]
+        way = " needs ".join(f"`{name}`" for name in (*chain, chain[0]))
+        says = f"{way}: none of them can be worked out first" if len(chain) > 1 else f"`{chain[0]}` needs itself"
+        notebook.problems.append(
+            Problem(model.file, first.about.name_span, says, "break the circle at one of them", "cycle")
+        )
+    knot = knotted(needs)
+    return replace(
+        model,
+        constants=tuple(
+            replace(each, expression=Unknown(each.expression.span)) if each.name in knot else each
+            for each in model.constants
+        ),
+        quantities=tuple(
+            replace(each, body=Unknown(each.body.span)) if each.name in knot else each for each in model.quantities
+        ),
+    )
+
+
+def _one_currency(file: str, notebook: Notebook) -> None:
+    if not notebook.currencies:
+        return
+    in_order = sorted(notebook.currencies, key=lambda each: each[1])
+    first, span = in_order[0]
+    for currency, at in in_order:
+        if currency != first:
+            notebook.problems.append(
+                Problem(file, at, f"this cost is in {currency}, that on line {span.line} in {first}",
+                        "write all costs in one currency, so that they can be compared", "unit")
+            )  # fmt: skip
+            return
