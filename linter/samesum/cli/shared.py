@@ -1,0 +1,64 @@
+"""What several commands share: arguments, problems on standard error, output."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Iterable
+from typing import TYPE_CHECKING
+
+if TYPE_CHECKING:
+    from samesum.problems import Problem
+
+UNUSABLE = 2
+
+
+def add_seconds(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--seconds",
+        type=_seconds,
+        default=10.0,
+        metavar="N",
+        help="how long the analysis of one file may take (10); what is not settled by then is said to be open",
+    )
+
+
+def add_json(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument("--json", action="store_true", help="write one JSON object instead of text for people")
+
+
+def _seconds(text: str) -> float:
+    try:
+        value = float(text)
+    except ValueError:
+        value = 0.0
+    if not 0 < value < 1e7:
+        raise argparse.ArgumentTypeError(f"{text!r} is no time in seconds; write a number above 0")
+    return value
+
+
+def report(problems: Iterable[Problem]) -> None:
+    """Problems on standard error, one a line: ``file:line:column: what is wrong; what to write instead``."""
+    from samesum.outputs.page import clean
+
+    if sys.stderr is None:
+        return
+    for problem in problems:
+        remedy = f"; {problem.remedy}" if problem.remedy else ""
+        place = f"{problem.file}:{problem.span.line}:{problem.span.column}"
+        print(clean(f"{place}: {problem.says}{remedy}"), file=sys.stderr)
+
+
+def refuse(says: str) -> int:
+    """A call that cannot be carried out: one line on standard error, and the exit status."""
+    from samesum.outputs.page import clean
+
+    if sys.stderr is not None:
+        print(clean(f"samesum: {says}"), file=sys.stderr)
+    return UNUSABLE
+
+
+def write(text: str) -> None:
+    """Standard output, whole; nothing when it is closed."""
+    if sys.stdout is not None:
+        sys.stdout.write(text)
