@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import random
 import time
-from collections.abc import Mapping, Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 
@@ -99,13 +99,15 @@ class Listing:
     """All combinations: a vector holds the cell of each name, then the sign of each sum.
 
     ``shown`` can occur (a point was found); ``open`` could be neither shown nor refuted;
-    ``complete`` is False when the listing was cut short, so that combinations are missing.
+    ``complete`` is False when the listing was cut short, so that combinations are missing;
+    ``points`` are then points at which the shown ones were seen.
     """
 
     cells: tuple[tuple[Bounds, ...], ...]
     shown: tuple[Vector, ...]
     open: tuple[Vector, ...]
     complete: bool
+    points: tuple[tuple[Fraction, ...], ...] = ()
 
 
 def list_group(group: Group, deadline: float) -> Listing:
@@ -119,7 +121,7 @@ def list_group(group: Group, deadline: float) -> Listing:
     for each in cells:
         count *= len(each)
     if count > MOST_BOXES:
-        return _sampled(group, cells)
+        return _sampled(group, cells, deadline)
     try:
         made = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
         constraints = [
@@ -127,6 +129,7 @@ def list_group(group: Group, deadline: float) -> Listing:
         ]
     except s.Unsuitable:
         made, constraints = None, []
+    straight = [_straight(each) if symbols.is_linear(each) else None for each in group.sums]
     shown: list[Vector] = []
     unsure: list[Vector] = []
     box: dict[str, Bounds] = {}
@@ -150,11 +153,19 @@ def list_group(group: Group, deadline: float) -> Listing:
 
     def in_box() -> bool:
         decided: list[tuple[int, ...]] = [
-            _possible(symbols.bounds(each, box), signs) for each, signs in zip(group.sums, group.signs, strict=True)
+            _possible(linear(box) if linear else symbols.bounds(each, box), signs)
+            for each, signs, linear in zip(group.sums, group.signs, straight, strict=True)
         ]
-        if all(len(each) == 1 for each in decided):
+        unsettled = [number for number, each in enumerate(decided) if len(each) > 1]
+        if not unsettled:
             shown.append((*chosen, *(each[0] for each in decided)))
             return True
+        if len(unsettled) == 1 and straight[unsettled[0]]:
+            # the bounds of one linear sum over a box are sharp: it takes every sign between them
+            number = unsettled[0]
+            for sign in decided[number]:
+                shown.append((*chosen, *(sign if k == number else each[0] for k, each in enumerate(decided))))
+            return len(shown) + len(unsure) < MOST_BOXES
         if made is None:
             _all_open(chosen, decided, unsure)
             return len(unsure) < MOST_BOXES
@@ -186,6 +197,33 @@ def list_group(group: Group, deadline: float) -> Listing:
     return Listing(cells, tuple(shown), tuple(unsure), complete)
 
 
+def _straight(a: Sum) -> Callable[[Mapping[str, Bounds]], Bounds]:
+    """The sharp bounds of a linear sum over a box, as a function of the box."""
+    start = sum((value for monomial, value in a.terms if not monomial), Fraction(0))
+    parts = []
+    for monomial, value in a.terms:
+        for generator, _power in monomial:
+            assert isinstance(generator, str)
+            parts.append((generator, value))
+
+    def over(box: Mapping[str, Bounds]) -> Bounds:
+        low: Fraction | None = start
+        high: Fraction | None = start
+        low_open = high_open = False
+        for name, factor in parts:
+            cell = box[name]
+            first, last, first_open, last_open = cell.low, cell.high, cell.low_open, cell.high_open
+            if factor < 0:
+                first, last, first_open, last_open = last, first, last_open, first_open
+            low = None if low is None or first is None else low + factor * first
+            high = None if high is None or last is None else high + factor * last
+            low_open = low_open or first_open
+            high_open = high_open or last_open
+        return Bounds(low, high, low_open, high_open)
+
+    return over
+
+
 def _possible(found: Bounds, signs: tuple[int, ...]) -> tuple[int, ...]:
     """The signs that bounds leave possible."""
     positive = found.high is None or found.high > 0
@@ -214,11 +252,14 @@ def _all_open(chosen: list[int], decided: list[tuple[int, ...]], unsure: list[Ve
     go(0, [])
 
 
-def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], draws: int = 2_000) -> Listing:
+def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float, draws: int = 1_000) -> Listing:
     """Combinations seen at seeded random points: true as far as they go, never complete."""
     random_numbers = random.Random(20_06)
-    shown: dict[Vector, None] = {}
+    shown: dict[Vector, tuple[Fraction, ...]] = {}
+    until = time.monotonic() + max(0.0, (deadline - time.monotonic()) / 3)
     for _ in range(draws):
+        if time.monotonic() > until:
+            break
         chosen = [random_numbers.randrange(len(each)) for each in cells]
         point = {
             name: _inside(each[number], random_numbers)
@@ -226,8 +267,8 @@ def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], draws: int = 2
         }
         signs = signs_at(group, point)
         if signs is not None:
-            shown[(*chosen, *signs)] = None
-    return Listing(cells, tuple(shown), (), False)
+            shown.setdefault((*chosen, *signs), tuple(point.values()))
+    return Listing(cells, tuple(shown), (), False, tuple(shown.values()))
 
 
 def _inside(cell: Bounds, random_numbers: random.Random) -> Fraction:

@@ -168,6 +168,13 @@ def _assembled(
         most = ceiling**periods if name == "over_periods_most" else ceiling
         upper.setdefault(name, most)
         lower.setdefault(name, 0)
+    # what one project has is reachable; what the developer alone has is open to the project
+    upper["per_project_most"] = min(upper["per_project_most"], upper["reachable"])
+    upper["developer_most"] = min(upper["developer_most"], upper["per_project_most"])
+    upper["over_periods_most"] = min(upper["over_periods_most"], upper["per_project_most"] ** periods)
+    upper["per_project_least"] = min(upper["per_project_least"], upper["per_project_most"])
+    lower["per_project_most"] = max(lower["per_project_most"], lower["developer_most"])
+    lower["reachable"] = max(lower["reachable"], lower["per_project_most"])
     exact = all(upper[name] == lower[name] for name in FIGURES)
     return Counts(
         on_paper=upper["on_paper"],
@@ -255,7 +262,10 @@ def _per_project(side: _Side, name: str, others: set[str]) -> tuple[int, bool, W
         return 0, layout.exact, None
     witness = None
     if layout.exact and (value or least):
-        witness = witness_from(network, read_back(d, trail))
+        found = read_back(d, trail)
+        if not value:  # a project without a route: its facts are the witness
+            found = {level: each for level, each in found.items() if level in layout.facts}
+        witness = witness_from(network, found)
     return int(value), layout.exact, witness
 
 
@@ -304,6 +314,10 @@ class Layout:
     def of(network: Network, others: set[str], loose: bool, generous: bool | None = None) -> Layout:
         """``others`` names those whose decisions count as facts. ``loose`` admits projects that were not
         refuted, ``generous`` (as ``loose`` unless given) human inputs that were not."""
+        key = (tuple(sorted(others)), loose, loose if generous is None else generous)
+        known = network.memory.get(key)
+        if isinstance(known, Layout):
+            return known
         d = network.diagrams
         model = network.graph.model
         free = {each.name for each in model.settings if each.by not in others}
@@ -337,9 +351,11 @@ class Layout:
             else:
                 (humans if variable.name in free else facts).append(level)
         states = [level for level in states if network.variables[level].name in network.points]
-        return Layout(
+        made_layout = Layout(
             tuple(facts + kinds), tuple(humans), tuple(states), tuple(unsure), tuple(projects), tuple(inputs), exact
         )
+        network.memory[key] = made_layout
+        return made_layout
 
 
 def free_values(network: Network) -> tuple[str, ...]:

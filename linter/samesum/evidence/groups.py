@@ -42,10 +42,10 @@ class ListedGroup:
 
 
 def collect(
-    readings: Readings, single: Mapping[int, str], cells: Mapping[int, tuple[Bounds, ...]]
+    readings: Readings, signs: Mapping[Sum, int], cells: Mapping[int, tuple[Bounds, ...]]
 ) -> tuple[ListedGroup, ...]:
-    """The groups of all signs that are not one linear fact's, each listed. Like groups are listed once."""
-    sums = [(each, level) for each, level in readings.signs.items() if level not in single]
+    """The groups of ``signs`` (those that are not one linear fact's), each listed. Like groups are listed once."""
+    sums = list(signs.items())
     if not sums:
         return ()
     root: dict[str, str] = {}

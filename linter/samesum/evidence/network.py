@@ -68,6 +68,7 @@ class Network:
     values: Mapping[str, tuple[str, ...]]
     groups: tuple[groups.ListedGroup, ...]
     unsure: Mapping[int, m.Condition | m.Expression]
+    memory: dict[object, object] = field(default_factory=dict, compare=False, repr=False)
 
     def levels_of(self, *kinds: str) -> list[int]:
         return [level for level, variable in self.variables.items() if variable.kind in kinds]
@@ -304,10 +305,18 @@ def _settle(
     flows: Sequence[tuple[Leaf, int]],
     applies: int,
 ) -> Network:
-    """Signs of one linear fact become that fact's cells; the rest become groups, listed later."""
+    """Signs of one linear fact become that fact's cells; the rest become groups. Signs that no
+    condition depends on in the end are left out."""
+    used: set[int] = set()
+    for each in relations.values():
+        for part in (each.factor, each.reach, each.sound, each.own_sound, each.parts_sound, *each.open):
+            used |= d.support(part)
+    for part in (applies, *(part for _, *parts in (*leaves, *flows) for part in parts)):
+        used |= d.support(part)
     thresholds: dict[str, list[Fraction]] = {}
     single: dict[int, tuple[str, Fraction]] = {}
-    for each, level in readings.signs.items():
+    signs = {each: level for each, level in readings.signs.items() if level in used}
+    for each, level in signs.items():
         names = sorted(generators(each))
         if len(names) == 1 and is_linear(each):
             threshold = -each.terms[0][1] if not each.terms[0][0] else Fraction(0)
@@ -322,7 +331,7 @@ def _settle(
     for sign_level, (name, threshold) in single.items():
         level = readings.level(name)
         exchanged[sign_level] = (level, tuple(sign_over(cell, threshold) for cell in cells[level]))
-    listed = groups.collect(readings, {level: single[level][0] for level in single}, cells)
+    listed = groups.collect(readings, {each: level for each, level in signs.items() if level not in single}, cells)
     for name in (name for group in listed for name in group.names):
         level = readings.level(name)
         if level not in cells:
@@ -349,7 +358,9 @@ def _settle(
     variables = {
         level: variable
         for level, variable in sorted(readings.variables.items())
-        if level not in exchanged and (variable.kind != "numeric" or level in cells)
+        if level not in exchanged
+        and (variable.kind != "numeric" or level in cells)
+        and (variable.kind not in ("sign", "unsure") or level in used)
     }
     return Network(
         graph,
@@ -364,7 +375,7 @@ def _settle(
         dict(readings.domains),
         dict(readings.values),
         listed,
-        dict(readings.unsure),
+        {level: node for level, node in readings.unsure.items() if level in used},
     )
 
 

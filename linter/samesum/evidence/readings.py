@@ -115,9 +115,14 @@ class Readings:
         return self.state(point, (*range(count), count + 1))
 
     def _new_sign(self, sum: Sum) -> int:
-        base = max(self.level(name) for name in symbols.generators(sum))
-        self._beside[base] = self._beside.get(base, 0) + 1
-        level = base + self._beside[base]
+        names = symbols.generators(sum)
+        if len(names) == 1:  # beside its fact, whose cell it will become
+            base = max(self.level(name) for name in names)
+            self._beside[base] = self._beside.get(base, 0) + 1
+            level = base + self._beside[base]
+        else:  # below whatever selects among sums, or the diagram of the selection would explode
+            level = self._next
+            self._next += SPACE
         settings = any(name in self.settings for name in symbols.generators(sum))
         self.variables[level] = Variable("sign", "", settings, sum)
         self.diagrams.size[level] = 3
@@ -131,6 +136,9 @@ class Readings:
         that it could not be written out."""
         d = self.diagrams
 
+        def decide_sign(sum: Sum, operator: str) -> int:
+            return self.compared(d.end(sum), operator, where, hull)
+
         def decide(end: Any) -> int:
             if end == OPAQUE:
                 decided = self._by_bounds(hull, operator)
@@ -142,6 +150,10 @@ class Readings:
             decided = self._by_bounds(symbols.bounds(end, self.domains), operator)
             if decided is not None:
                 return decided
+            parts = _spread(end, operator)
+            if parts is not None:
+                joined = d.every if parts[0] else d.some
+                return joined(decide_sign(each, parts[2]) for each in parts[1])
             leading = end.terms[-1][1]
             normal = symbols.scale(end, 1 / leading)
             way = operator if leading > 0 else FLIPPED[operator]
@@ -228,7 +240,7 @@ class Readings:
                 )
             case _:
                 result = d.every(self.sound(part, elements, own) for part in walk.parts(node))
-                if isinstance(node, m.Lookup):
+                if isinstance(node, m.Lookup) and not self._covered(node, elements):
                     result = d.both(result, d.some(match for match, _ in self._rows(node, elements)))
                 return d.both(result, self._defined(node, elements))
 
@@ -396,6 +408,21 @@ class Readings:
                     match = d.both(match, self._unsure(node))
             yield match, d.end(symbols.number(row.value))
 
+    def _covered(self, node: m.Lookup, elements: Element) -> bool:
+        """Whether a table of one key of bands plainly has a row for every number the argument can be."""
+        table: m.Table = self._declared[node.table]
+        if len(table.keys) != 1 or not table.keys[0].bands:
+            return False
+        hull = self.hull(node.arguments[0], elements)
+        bands = [label for row in table.rows for label in row.labels if isinstance(label, m.Band)]
+        bands.sort(key=lambda band: (band.low is not None, band.low or 0))
+        first, last = bands[0], bands[-1]
+        if first.low is not None and (hull.low is None or hull.low <= first.low):
+            return False
+        if last.high is not None and (hull.high is None or hull.high > last.high):
+            return False
+        return all(a.high is not None and a.high == b.low for a, b in zip(bands, bands[1:], strict=False))
+
     def _in_band(self, band: m.Band, argument: m.Expression, elements: Element) -> int:
         d = self.diagrams
         value = self.expression(argument, elements)
@@ -460,6 +487,24 @@ class Readings:
                 return total if name == "sum" else _of(lambda a: symbols.scale(a, Fraction(1, count)), total)
             case _:
                 return Bounds(None, None)
+
+
+def _spread(a: Sum, operator: str) -> tuple[bool, list[Sum], str] | None:
+    """A comparison of one minimum, maximum or absolute value with a number, as comparisons of its parts:
+    whether all of them (else some) must hold, the parts, and the operator. None when it is no such thing."""
+    terms = [(monomial, value) for monomial, value in a.terms if monomial]
+    if len(terms) != 1 or len(terms[0][0]) != 1 or operator in ("=", "<>"):
+        return None
+    (generator, exponent), coefficient = terms[0][0][0], terms[0][1]
+    if exponent != 1 or isinstance(generator, str) or generator.function not in ("min", "max", "abs"):
+        return None
+    arguments = list(generator.arguments)
+    if generator.function == "abs":
+        arguments.append(_negative(arguments[0]))
+    rest = Sum(tuple((monomial, value) for monomial, value in a.terms if not monomial))
+    parts = [symbols.add(symbols.scale(argument, coefficient), rest) for argument in arguments]
+    smallest = (generator.function == "min") == (coefficient > 0)
+    return smallest == (operator in (">", ">=")), parts, operator
 
 
 def _of(build: Callable[..., Any], *parts: Bounds) -> Bounds:

@@ -107,6 +107,14 @@ def group_point(network: Network, listed: ListedGroup, values: Mapping[int, int]
         found = signs_at(group, point)
         return found is not None and all(b is None or a == b for a, b in zip(found, signs, strict=True))
 
+    for vector, seen in zip(listed.listing.shown, listed.listing.points, strict=False):
+        cells_fit = all(
+            level not in values or values[level] == cell
+            for level, cell in zip(listed.name_levels, vector, strict=False)
+        )
+        found = dict(zip(group.names, seen, strict=True))
+        if cells_fit and fits(found):
+            return dict(found)
     middle = {name: representative(cell) for name, cell in wanted.items()}
     if fits(middle):
         return dict(middle)
