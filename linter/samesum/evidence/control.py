@@ -106,8 +106,8 @@ def _movers(
         while point is not None and point.leader:
             point = general.get(point.leader.split("@")[0])
         if point is not None and point.by is not None:
-            chain = (name,) if point.quantity == name else (name, point.quantity)
-            yield Mover(point.by, "choice", point.general_id, chain)
+            direct: tuple[str, ...] = (name,) if point.quantity == name else (name, point.quantity)
+            yield Mover(point.by, "choice", point.general_id, direct)
     starts = list(dict.fromkeys([*valued, *_tables(condition)]))
     seen = set(starts)
     queue: deque[tuple[str, tuple[str, ...]]] = deque((name, (name,)) for name in starts)

@@ -311,15 +311,15 @@ def _settle(
     for each in relations.values():
         for part in (each.factor, each.reach, each.sound, each.own_sound, each.parts_sound, *each.open):
             used |= d.support(part)
-    for part in (applies, *(part for _, *parts in (*leaves, *flows) for part in parts)):
+    for part in (applies, *(part for _, *parts in leaves for part in parts), *(flow for _, flow in flows)):
         used |= d.support(part)
     thresholds: dict[str, list[Fraction]] = {}
     single: dict[int, tuple[str, Fraction]] = {}
     signs = {each: level for each, level in readings.signs.items() if level in used}
-    for each, level in signs.items():
-        names = sorted(generators(each))
-        if len(names) == 1 and is_linear(each):
-            threshold = -each.terms[0][1] if not each.terms[0][0] else Fraction(0)
+    for sum, level in signs.items():
+        names = sorted(generators(sum))
+        if len(names) == 1 and is_linear(sum):
+            threshold = -sum.terms[0][1] if not sum.terms[0][0] else Fraction(0)
             single[level] = (names[0], threshold)
             thresholds.setdefault(names[0], []).append(threshold)
     cells: dict[int, tuple[Bounds, ...]] = {}

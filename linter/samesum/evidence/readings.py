@@ -11,6 +11,7 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import partial
+from itertools import pairwise
 from typing import Any
 
 from samesum.evidence import symbols
@@ -421,7 +422,7 @@ class Readings:
             return False
         if last.high is not None and (hull.high is None or hull.high > last.high):
             return False
-        return all(a.high is not None and a.high == b.low for a, b in zip(bands, bands[1:], strict=False))
+        return all(a.high is not None and a.high == b.low for a, b in pairwise(bands))
 
     def _in_band(self, band: m.Band, argument: m.Expression, elements: Element) -> int:
         d = self.diagrams
