@@ -43,7 +43,8 @@ def declare(
     """
     found: dict[str, Declared] = {}
     kept: list[Placed] = []
-    everything = sorted([*blocks, *unreadable], key=_line)
+    everything: list[Placed | Declared] = [*blocks, *unreadable]
+    everything.sort(key=_line)
     for each in everything:
         if isinstance(each, Declared):
             found.setdefault(each.name, each)

@@ -21,7 +21,7 @@ from samesum.reading.declarations import (
     resolve_setting,
     resolve_table,
 )
-from samesum.reading.model import Constant, Key, Model, Quantity, Unknown
+from samesum.reading.model import About, Key, Model, Unknown
 from samesum.reading.names import Placed, bare_scope, declare
 from samesum.reading.phrases import read_phrases, text_of
 from samesum.reading.scope import Declared, Notebook, Scope, undeclared_problems
@@ -164,13 +164,14 @@ def _once(kind: str, blocks: list[Placed], notebook: Notebook, file: str, units:
 
 def _without_cycles(model: Model, needs: dict[str, tuple[str, ...]], notebook: Notebook) -> Model:
     """The model with what needs itself made unknown."""
-    named: dict[str, Constant | Quantity] = {each.name: each for each in (*model.constants, *model.quantities)}
+    named: dict[str, About] = {each.name: each.about for each in model.constants}
+    named |= {each.name: each.about for each in model.quantities}
     for chain in cycles(needs):
         first = named[chain[0]]
         way = " needs ".join(f"`{name}`" for name in (*chain, chain[0]))
         says = f"{way}: none of them can be worked out first" if len(chain) > 1 else f"`{chain[0]}` needs itself"
         notebook.problems.append(
-            Problem(model.file, first.about.name_span, says, "break the circle at one of them", "cycle")
+            Problem(model.file, first.name_span, says, "break the circle at one of them", "cycle")
         )
     knot = knotted(needs)
     return replace(

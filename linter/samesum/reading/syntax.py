@@ -18,8 +18,9 @@ from lark.exceptions import LarkError
 from lark.lark import PostLex
 
 from samesum.reading import tree
-from samesum.reading.explain import Mistake, Upset, explain
+from samesum.reading.explain import Upset, explain
 from samesum.reading.layout import logical_lines
+from samesum.reading.slips import Mistake
 from samesum.shipped import shipped_folder
 
 REMEMBERED_BLOCKS = 20_000
@@ -67,14 +68,15 @@ def _parse(text: str, start: str, parser: Parser) -> object:
     try:
         return parser.lark.parse(lines + "\n" if start == "block" else lines, start=start)
     except _UnevenIndent as uneven:
-        return explain(text, lines, Upset("UNEVEN", "", uneven.position, frozenset()))
+        return explain(lines, Upset("UNEVEN", "", uneven.position, frozenset()))
     except UnexpectedToken as upset:
         token = cast(Token, upset.token)
-        expected = frozenset(cast("set[str]", upset.accepts or upset.expected))
+        expected = frozenset(upset.accepts or upset.expected)
         position = len(lines) if token.type == "$END" or token.start_pos is None else token.start_pos
-        return explain(text, lines, Upset(token.type, str(token), position, expected))
+        return explain(lines, Upset(token.type, str(token), position, expected))
     except UnexpectedCharacters as upset:
-        return explain(text, lines, Upset("", upset.char, upset.pos_in_stream, frozenset(upset.allowed or ())))
+        position = cast(int, upset.pos_in_stream)
+        return explain(lines, Upset("", upset.char, position, frozenset(upset.allowed or ())))
 
 
 # --- making the parser -----------------------------------------------------------------------
