@@ -12,6 +12,7 @@ import time
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import lru_cache
 
 from samesum.evidence import solver as s
 from samesum.evidence import symbols
@@ -46,6 +47,7 @@ def sign_over(cell: Bounds, threshold: Fraction) -> int:
     return s.NEGATIVE
 
 
+@lru_cache(maxsize=4096)
 def representative(cell: Bounds) -> Fraction:
     """A plain value inside a cell: its only point, or a short decimal near its middle."""
     low, high = cell.low, cell.high

@@ -12,7 +12,7 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 
 from samesum.evidence.counting import Layout, deep
-from samesum.evidence.diagrams import Eliminated, OutOfLimits, eliminate, number, read_back
+from samesum.evidence.diagrams import Eliminated, OutOfLimits, eliminate, number, possible_values, read_back
 from samesum.evidence.network import Network, PointRelation, cone
 from samesum.evidence.witness import Witness, witness_from
 from samesum.reading import model as m
@@ -85,6 +85,7 @@ def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
     undecided: list[Undecided] = []
     d = network.diagrams
     with deep():
+        states = _possible_states(network)
         for relation in network.points.values():
             point = relation.point
             working = _working(network, relation)
@@ -99,15 +100,18 @@ def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
                             overlaps.append(Overlap(point.id, branches, answer.witness))
                         elif answer.says == "cannot tell":
                             undecided.append(Undecided(point.id, "overlap", branches))
-            if not point.leader or any(point.conditions):
+            seen = None if states is None else states[relation.level]
+            if (not point.leader or any(point.conditions)) and (seen is None or relation.stuck in seen):
                 nothing = d.negate(d.some(relation.open))
                 answer = _ask(network, [working, nothing], relation, relation.stuck)
                 if answer.says == "yes":
                     gaps.append(Gap(point.id, answer.witness))
                 elif answer.says == "cannot tell":
                     undecided.append(Undecided(point.id, "gap"))
-            if not point.leader:
+            if not point.leader and (seen is None or seen == {relation.stuck}):
                 dead += _dead(network, relation, working, undecided)
+            elif not point.leader and seen is not None and any(k < relation.not_reached for k in seen):
+                dead += [DeadBranch(point.id, name) for k, name in enumerate(point.branches) if k not in seen]
             gaps += _rowless_conditions(network, relation, undecided)
         gaps += _rowless_formulas(network, undecided)
     order = {id: place for place, id in enumerate([*network.graph.instances, *network.graph.branch_points])}
@@ -118,6 +122,25 @@ def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
         tuple(dead),
         tuple(dict.fromkeys(undecided)),
     )
+
+
+def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
+    """Every state that each branch point can be in, inside the rulebook; None when it cannot be told for all."""
+    d = network.diagrams
+    layout = Layout.of(network, set(), True)
+    if not layout.exact:
+        return None
+    factors = [d.numbers(each.factor) for each in network.points.values()]
+    factors += [d.numbers(network.applies), *layout.projects, *layout.inputs]
+    limits = d.limits
+    before = limits.deadline, limits.nodes
+    limits.deadline = time.monotonic() + max(0.0, (limits.deadline - time.monotonic()) / 2)
+    try:
+        return possible_values(d, factors, [each.level for each in network.points.values()])
+    except OutOfLimits:
+        return None
+    finally:
+        limits.deadline, limits.nodes = before
 
 
 def _working(network: Network, relation: PointRelation) -> int:
@@ -131,10 +154,10 @@ def _dead(network: Network, relation: PointRelation, working: int, undecided: li
     for k, branch in enumerate(relation.point.branches):
         if d.is_end(relation.open[k], True) and d.is_end(working, True):
             continue
-        answer = _ask(network, [working, relation.open[k]], relation, k)
+        answer = _ask(network, [working, relation.open[k]], relation, k, show=False)
         if answer.says == "no":
             if reachable is None:
-                reachable = _ask(network, [working], relation, None)
+                reachable = _ask(network, [working], relation, None, show=False)
             if reachable.says == "yes":
                 found.append(DeadBranch(relation.point.id, branch))
             elif reachable.says == "cannot tell":
@@ -172,8 +195,10 @@ def _rowless_formulas(network: Network, undecided: list[Undecided]) -> list[Gap]
     return found
 
 
-def _ask(network: Network, parts: Sequence[int], relation: PointRelation | None, state: int | None) -> _Answer:
-    """Whether the parts can hold together somewhere inside the rulebook."""
+def _ask(
+    network: Network, parts: Sequence[int], relation: PointRelation | None, state: int | None, show: bool = True
+) -> _Answer:
+    """Whether the parts can hold together somewhere inside the rulebook; ``show`` asks for the witness too."""
     d = network.diagrams
     together = d.end(True)
     for part in parts:
@@ -182,7 +207,6 @@ def _ask(network: Network, parts: Sequence[int], relation: PointRelation | None,
         return _Answer("no")
     start = [together, network.applies]
     factors = [d.numbers(together), d.numbers(network.applies), *cone(network, start)]
-    certain = True
     try:
         for loose in (False, True):
             layout = Layout.of(network, set(), loose)
@@ -198,12 +222,13 @@ def _ask(network: Network, parts: Sequence[int], relation: PointRelation | None,
             rest = sorted(levels - set(unsure))
             found = number(d, eliminate(d, remaining, rest, "exists", trail))
             if found and (layout.exact or not loose):
+                if not show:
+                    return _Answer("yes")
                 held = {relation.level: state} if relation is not None and state is not None else {}
                 values = read_back(d, trail)
                 return _Answer("yes", witness_from(network, {**values, **held}))
             if not found and loose:
                 return _Answer("no")
-            certain = certain and layout.exact
     except OutOfLimits:
         pass
     return _Answer("cannot tell")

@@ -261,7 +261,7 @@ def _per_project(side: _Side, name: str, others: set[str]) -> tuple[int, bool, W
     if value == OUTSIDE:
         return 0, layout.exact, None
     witness = None
-    if layout.exact and (value or least):
+    if layout.exact and name in ("per_project_most", "per_project_least") and (value or least):
         found = read_back(d, trail)
         if not value:  # a project without a route: its facts are the witness
             found = {level: each for level, each in found.items() if level in layout.facts}

@@ -13,6 +13,7 @@ as the branch points hang together loosely, and every figure stays an exact whol
 
 from __future__ import annotations
 
+import heapq
 import time
 from collections.abc import Callable, Hashable, Iterable, Mapping, Sequence
 from dataclasses import dataclass, field
@@ -370,6 +371,7 @@ class Eliminated:
     level: int
     factors: tuple[int, ...]
     how: str
+    result: int
 
 
 def eliminate(
@@ -403,34 +405,37 @@ def eliminate(
         return (len(together), level)
 
     costs = {level: cost(level) for level in remaining}
+    queue = sorted(costs.values())
     while remaining:
         diagrams.limits.check()
-        level = min(remaining, key=lambda each: costs[each])
+        entry = heapq.heappop(queue)
+        level = entry[1]
+        if costs.get(level) != entry:
+            continue  # its cost has changed since; the newer entry counts
         remaining.discard(level)
         del costs[level]
         numbers = sorted(where.pop(level, set()))
         involved = tuple(alive.pop(number) for number in numbers)
-        if trail is not None:
-            trail.append(Eliminated(level, involved, how))
         touched: set[int] = set()
         for number, factor in zip(numbers, involved, strict=True):
             for other in diagrams.support(factor):
                 touched.add(other)
                 if other in where:
                     where[other].discard(number)
-        if not involved:
-            if how == "sum":
-                alive[counter] = diagrams.end(diagrams.size[level])
-                counter += 1
-            continue
-        result = take_out(diagrams, involved, level, how)
+        if involved:
+            result = take_out(diagrams, involved, level, how)
+        else:
+            result = diagrams.end(diagrams.size[level] if how == "sum" else 1)
+        if trail is not None:
+            trail.append(Eliminated(level, involved, how, result))
         if result != one:
             alive[counter] = result
             for other in diagrams.support(result):
                 where.setdefault(other, set()).add(counter)
             counter += 1
-        for other in touched & remaining:
+        for other in sorted(touched & remaining):
             costs[other] = cost(other)
+            heapq.heappush(queue, costs[other])
     return [alive[number] for number in sorted(alive)]
 
 
@@ -516,3 +521,46 @@ def evaluate(diagrams: Diagrams, a: int, values: Mapping[int, int]) -> Any:
     while diagrams.level[a] != END:
         a = diagrams.kids[a][values.get(diagrams.level[a], 0)]
     return diagrams.content[a]
+
+
+def possible_values(diagrams: Diagrams, factors: Sequence[int], levels: Sequence[int]) -> dict[int, frozenset[int]]:
+    """For each of ``levels``, the values it has somewhere in a product of 0s and 1s.
+
+    One elimination of everything, then the way back: what each step handed on meets what came from
+    elsewhere (belief propagation on the tree of eliminations). Twice the cost of one elimination,
+    for all variables together. Raises ``OutOfLimits``.
+    """
+    support = sorted({level for factor in factors for level in diagrams.support(factor)} | set(levels))
+    trail: list[Eliminated] = []
+    rest = eliminate(diagrams, factors, support, "exists", trail)
+    if not number(diagrams, rest):
+        return {level: frozenset() for level in levels}
+    wanted = set(levels)
+    found: dict[int, frozenset[int]] = {}
+    # each step's message is an operand of exactly one later step: hand back to it what that step knows
+    sent: dict[int, list[int]] = {}
+    for position, step in enumerate(trail):
+        sent.setdefault(step.result, []).append(position)
+    from_above: dict[int, int] = {}
+    one = diagrams.end(1)
+    for position in range(len(trail) - 1, -1, -1):
+        step = trail[position]
+        above = from_above.get(position, one)
+        operands = [*step.factors, above]
+        for place, factor in enumerate(step.factors):
+            senders = [each for each in sent.get(factor, ()) if each < position and each not in from_above]
+            if not senders:
+                continue
+            others = [other for k, other in enumerate(operands) if k != place]
+            scope = diagrams.support(factor)
+            outside = sorted({level for other in others for level in diagrams.support(other)} - scope)
+            back = product_of(diagrams, eliminate(diagrams, others, outside, "exists"))
+            for each in senders:
+                from_above[each] = back
+        if step.level in wanted:
+            outside = sorted({level for factor in operands for level in diagrams.support(factor)} - {step.level})
+            belief = product_of(diagrams, eliminate(diagrams, operands, outside, "exists"))
+            found[step.level] = frozenset(
+                value for value in range(diagrams.size[step.level]) if evaluate(diagrams, belief, {step.level: value})
+            )
+    return found

@@ -70,8 +70,12 @@ class Network:
     unsure: Mapping[int, m.Condition | m.Expression]
     memory: dict[object, object] = field(default_factory=dict, compare=False, repr=False)
 
-    def levels_of(self, *kinds: str) -> list[int]:
-        return [level for level, variable in self.variables.items() if variable.kind in kinds]
+    def by_level(self) -> dict[int, PointRelation]:
+        """The branch points' relations by the level of their state."""
+        found = self.memory.get("by level")
+        if not isinstance(found, dict):
+            found = self.memory["by level"] = {each.level: each for each in self.points.values()}
+        return found
 
 
 @dataclass(slots=True)
@@ -398,7 +402,7 @@ def cone(network: Network, start: Iterable[int]) -> Iterator[int]:
     The rest can be left out of a question: whatever the inputs, each branch point has some state.
     """
     d = network.diagrams
-    by_level = {each.level: each for each in network.points.values()}
+    by_level = network.by_level()
     todo = sorted({level for each in start for level in d.support(each) if level in by_level})
     seen: set[int] = set()
     while todo:
