@@ -11,7 +11,7 @@ import time
 from collections.abc import Sequence
 from dataclasses import dataclass
 
-from samesum.evidence.counting import Layout, deep
+from samesum.evidence.counting import NOTHING, Layout, deep
 from samesum.evidence.diagrams import Eliminated, OutOfLimits, eliminate, number, possible_values, read_back
 from samesum.evidence.network import Network, PointRelation, cone
 from samesum.evidence.witness import Witness, witness_from
@@ -127,7 +127,7 @@ def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
 def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
     """Every state that each branch point can be in, inside the rulebook; None when it cannot be told for all."""
     d = network.diagrams
-    layout = Layout.of(network, set(), True)
+    layout = Layout.of(network, NOTHING, True)
     if not layout.exact:
         return None
     factors = [d.numbers(each.factor) for each in network.points.values()]
@@ -209,7 +209,7 @@ def _ask(
     factors = [d.numbers(together), d.numbers(network.applies), *cone(network, start)]
     try:
         for loose in (False, True):
-            layout = Layout.of(network, set(), loose)
+            layout = Layout.of(network, NOTHING, loose)
             if layout.exact and not loose:
                 continue
             relevant = {level for factor in factors for level in d.support(factor)}

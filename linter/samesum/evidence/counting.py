@@ -65,6 +65,20 @@ class Counts:
     why_inexact: tuple[str, ...] = ()
 
 
+@dataclass(frozen=True, slots=True)
+class Given:
+    """What counts as a fact instead of somebody's decision: all that some ``deciders`` decide, settings and
+    judgements by their ``names``, branch points by their general id (``points``, all elements together)."""
+
+    deciders: frozenset[str] = frozenset()
+    names: frozenset[str] = frozenset()
+    points: frozenset[str] = frozenset()
+
+
+NOTHING = Given()
+ALL_BUT_DEVELOPER = Given(frozenset({"verifier", "programme"}))
+
+
 @contextmanager
 def deep() -> Iterator[None]:
     """Room for recursion over long chains of variables."""
@@ -77,7 +91,7 @@ def deep() -> Iterator[None]:
 
 
 @dataclass(slots=True)
-class _Side:
+class Side:
     """One of the two networks: what is admitted when something could not be told."""
 
     network: Network
@@ -135,7 +149,7 @@ def _count(graph: DecisionGraph, network: Network, paper: int | None, deadline: 
             limits.deadline = min(deadline, time.monotonic() + max(share * (1.0 if certain else 0.5), 0.05))
             limits.nodes = len(network.diagrams.level) + base // 2
             try:
-                value, exact, witness = _figure(name, _Side(network, loose))
+                value, exact, witness = _figure(name, Side(network, loose))
             except OutOfLimits:
                 reasons.append("counting ran into its limits")
                 continue
@@ -205,19 +219,18 @@ def all_states(graph: DecisionGraph) -> int:
 # --- one figure --------------------------------------------------------------------------
 
 
-def _figure(name: str, side: _Side) -> tuple[int, bool, Witness | None]:
+def _figure(name: str, side: Side) -> tuple[int, bool, Witness | None]:
     """The figure on one side, and whether it is exact (then both sides are equal)."""
     if name == "reachable":
         value, exact = _reachable(side)
         return value, exact, None
-    others = {"verifier", "programme"} if name == "developer_most" else set()
-    return _per_project(side, name, others)
+    return per_project(side, name, ALL_BUT_DEVELOPER if name == "developer_most" else NOTHING)
 
 
-def _reachable(side: _Side) -> tuple[int, bool]:
+def _reachable(side: Side) -> tuple[int, bool]:
     network = side.network
     d = network.diagrams
-    layout = Layout.of(network, set(), side.loose)
+    layout = Layout.of(network, NOTHING, side.loose)
     factors = complete_factors(network) + list(layout.projects) + list(layout.inputs)
     factors = eliminate(d, factors, layout.unsure, "exists" if side.loose else "all")
     factors = eliminate(d, factors, [*layout.humans, *layout.facts], "exists")
@@ -225,17 +238,19 @@ def _reachable(side: _Side) -> tuple[int, bool]:
     return int(number(d, factors)), layout.exact
 
 
-def _per_project(side: _Side, name: str, others: set[str]) -> tuple[int, bool, Witness | None]:
+def per_project(side: Side, name: str, given: Given) -> tuple[int, bool, Witness | None]:
+    """A figure of one project when what is ``given`` counts as a fact: the figure on this side, whether it is
+    exact, and a project that has it. ``name`` is any figure but ``on_paper`` and ``reachable``."""
     network = side.network
     d = network.diagrams
     least = name == "per_project_least"
     generous = side.loose != least
-    layout = Layout.of(network, others, side.loose, generous)
+    layout = Layout.of(network, given, side.loose, generous)
     trail: list[Eliminated] = []
     factors = complete_factors(network) + list(layout.inputs)
     extra: list[int] = []
-    if others:
-        linked, extra = _held_by_others(network, others)
+    if given != NOTHING:
+        linked, extra = _held(network, given)
         factors += linked
     factors = eliminate(d, factors, layout.unsure, "exists" if generous else "all", trail)
     factors = eliminate(d, factors, layout.humans, "exists", trail)
@@ -269,13 +284,13 @@ def _per_project(side: _Side, name: str, others: set[str]) -> tuple[int, bool, W
     return int(value), layout.exact, witness
 
 
-def _held_by_others(network: Network, others: set[str]) -> tuple[list[int], list[int]]:
-    """What the verifier or the programme chooses, as a fact: a variable for the option, tied to the state."""
+def _held(network: Network, given: Given) -> tuple[list[int], list[int]]:
+    """What somebody else chooses, as a fact: a variable for the branch, tied to the state."""
     d = network.diagrams
     factors: list[int] = []
     levels: list[int] = []
     for each in network.points.values():
-        if each.point.kind == "choice" and each.point.by in others:
+        if each.point.general_id in given.points or (each.point.kind == "choice" and each.point.by in given.deciders):
             level = each.level - 2
             count = len(each.open)
             d.size[level] = count
@@ -311,17 +326,17 @@ class Layout:
     exact: bool
 
     @staticmethod
-    def of(network: Network, others: set[str], loose: bool, generous: bool | None = None) -> Layout:
-        """``others`` names those whose decisions count as facts. ``loose`` admits projects that were not
+    def of(network: Network, given: Given, loose: bool, generous: bool | None = None) -> Layout:
+        """What is ``given`` counts among the facts. ``loose`` admits projects that were not
         refuted, ``generous`` (as ``loose`` unless given) human inputs that were not."""
-        key = (tuple(sorted(others)), loose, loose if generous is None else generous)
+        key = (given.deciders, given.names, loose, loose if generous is None else generous)
         known = network.memory.get(key)
         if isinstance(known, Layout):
             return known
         d = network.diagrams
         model = network.graph.model
-        free = {each.name for each in model.settings if each.by not in others}
-        free |= {each.name for each in model.judgements if each.by not in others}
+        free = {each.name for each in (*model.settings, *model.judgements) if each.by not in given.deciders}
+        free -= given.names
         facts: list[int] = []
         humans: list[int] = []
         states: list[int] = []
@@ -375,7 +390,7 @@ def free_values(network: Network) -> tuple[str, ...]:
 def _can_be(network: Network, condition: int) -> bool:
     """Whether some complete route meets the condition (yes when it could not be told)."""
     d = network.diagrams
-    layout = Layout.of(network, set(), True)
+    layout = Layout.of(network, NOTHING, True)
     factors = [*complete_factors(network), d.numbers(condition), *layout.projects, *layout.inputs]
     try:
         levels: Iterable[int] = [*layout.unsure, *layout.humans, *layout.facts, *layout.states]
