@@ -335,7 +335,8 @@ class Layout:
             return known
         d = network.diagrams
         model = network.graph.model
-        free = {each.name for each in (*model.settings, *model.judgements) if each.by not in given.deciders}
+        free = {each.name for each in model.settings if each.by not in given.deciders}
+        free |= {each.name for each in model.judgements if each.by not in given.deciders}
         free -= given.names
         facts: list[int] = []
         humans: list[int] = []
