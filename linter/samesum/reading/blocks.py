@@ -28,7 +28,7 @@ def blocks_of(text: str) -> tuple[Block, ...]:
     if any(each.strip() and not each.lstrip().startswith("#") for each in head.split("\n")):
         found.append(Block(_trimmed(head), 1))
     line += head.count("\n")
-    for start, end in zip(starts, [*starts[1:], len(text)], strict=True):
+    for start, end in zip(starts, [*starts, len(text)][1:], strict=True):
         whole = text[start:end]
         found.append(Block(_trimmed(whole), line))
         line += whole.count("\n")

@@ -8,7 +8,7 @@ from typing import Literal
 
 from samesum.reading import tree
 from samesum.reading.conditions import resolve_condition
-from samesum.reading.expressions import fit, index_is_known, resolve_expression, say_unit
+from samesum.reading.expressions import resolve_expression
 from samesum.reading.model import (
     Body,
     Cases,
@@ -23,6 +23,7 @@ from samesum.reading.model import (
 )
 from samesum.reading.phrases import decider_of, plain_number, read_phrases
 from samesum.reading.scope import Scope
+from samesum.reading.typed import fit, index_is_known, say_unit
 from samesum.reading.units import MONEY, money_of
 from samesum.reading.words import RESERVED, listing, nearest
 
@@ -32,7 +33,8 @@ DEEPEST_BODY = 100
 def resolve_body(body: tree.BodyTree, unit: Unit | None, scope: Scope, level: int = 0) -> Body:
     """The body, its formulas in ``unit`` (None when the quantity's unit is unknown)."""
     if level > DEEPEST_BODY:
-        scope.report(body, f"bodies are nested more than {DEEPEST_BODY} deep", "give a part of it a quantity of its own")
+        remedy = "give a part of it a quantity of its own"
+        scope.report(body, f"bodies are nested more than {DEEPEST_BODY} deep", remedy)
         return Unknown(scope.span(body))
     match body:
         case tree.FormulaTree():
@@ -133,7 +135,8 @@ def _options(body: tree.ChoiceTree, unit: Unit | None, scope: Scope, level: int)
         if found.name in RESERVED:
             scope.report(option.name, f"`{found.name}` is a word of the language and cannot be a name", kind="name")
         if found.name in options:
-            scope.report(option.name, f"`{found.name}` is an option of this choice already", "give it another name", "name")
+            says = f"`{found.name}` is an option of this choice already"
+            scope.report(option.name, says, "give it another name", "name")
             continue
         if found.reference and reference:
             scope.report(option, f"`{reference}` is the reference already; a choice has at most one",
@@ -180,5 +183,3 @@ def _cost(phrase: tree.Phrase, scope: Scope) -> Expression:
     scope.notebook.currencies.append((currency, scope.span(node)))
     unit = Unit(currency, Fraction(1), ((MONEY + currency, Fraction(1)),))
     return fit(typed, unit, node, scope, "a cost is in")
-
-

@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Literal, cast
 
 from samesum.reading import tree
-from samesum.reading.expressions import agreed, index_is_known, resolve_expression
+from samesum.reading.expressions import resolve_expression
 from samesum.reading.model import (
     PLAIN,
     All,
@@ -20,9 +20,12 @@ from samesum.reading.model import (
     Unknown,
 )
 from samesum.reading.scope import Declared, Scope
+from samesum.reading.typed import agreed, index_is_known
 from samesum.reading.words import listing, nearest
 
 _Operator = Literal["<", "<=", ">", ">=", "=", "<>"]
+_Asked = Literal["fact", "setting", "judgement"]
+_Valued = Literal["fact", "setting"]
 
 
 def resolve_condition(node: tree.Tree, scope: Scope) -> Condition:
@@ -76,7 +79,7 @@ def _holds(word: tree.Word, scope: Scope) -> Condition:
         return Unknown(span)
     if not index_is_known(word, declared, scope):
         return Unknown(span)
-    return Holds(word.text, cast(Literal["fact", "setting", "judgement"], declared.kind), declared.index, span)
+    return Holds(word.text, cast(_Asked, declared.kind), declared.index, span)
 
 
 def _how_to_ask(declared: Declared) -> str:
@@ -84,7 +87,7 @@ def _how_to_ask(declared: Declared) -> str:
     if declared.values:
         return f"ask for its value, as in `{name} is {declared.values[0]}`"
     if declared.kind == "quantity" and declared.options:
-        return f"ask for the option taken, as in `{name} takes {declared.options[0]}`, or compare it, as in `{name} > 0`"
+        return f"ask for its option, as in `{name} takes {declared.options[0]}`, or compare it, as in `{name} > 0`"
     if declared.kind in ("table", "index"):
         return f"it is {'an index' if declared.kind == 'index' else 'a table'}; compare a number instead"
     return f"compare it with something, as in `{name} > 0`"
@@ -123,7 +126,7 @@ def _is_value(node: tree.IsValue, scope: Scope) -> Condition:
         seen.add(value.text)
     if not good:
         return Unknown(span)
-    kind = cast(Literal["fact", "setting"], declared.kind)
+    kind = cast(_Valued, declared.kind)
     reference = Reference(declared.name, kind, declared.index, PLAIN, scope.span(subject))
     found = Is(reference, tuple(dict.fromkeys(value.text for value in node.values)), span)
     return Not(found, span) if node.negated else found
@@ -135,7 +138,7 @@ def _is_yes(node: tree.IsValue, word: tree.Word, declared: Declared, scope: Scop
         scope.report(node.values[0], f"`{word.text}` is yes or no",
                      f"write `{word.text}` or `not {word.text}`")  # fmt: skip
         return Unknown(span)
-    kind = cast(Literal["fact", "setting", "judgement"], declared.kind)
+    kind = cast(_Asked, declared.kind)
     holds = Holds(word.text, kind, declared.index, span)
     return holds if (node.values[0].text == "yes") != node.negated else Not(holds, span)
 

@@ -10,7 +10,7 @@ from typing import Literal
 from samesum.reading import tree
 from samesum.reading.bodies import resolve_body
 from samesum.reading.conditions import resolve_condition
-from samesum.reading.expressions import fit, resolve_expression
+from samesum.reading.expressions import resolve_expression
 from samesum.reading.model import (
     PLAIN,
     About,
@@ -34,6 +34,7 @@ from samesum.reading.names import Placed, head_unit
 from samesum.reading.phrases import decider_of, in_unit, read_phrases, text_of, whole_number
 from samesum.reading.scope import Scope
 from samesum.reading.tables import resolve_rows
+from samesum.reading.typed import fit
 from samesum.reading.units import same_dimension
 from samesum.reading.words import RESERVED, listing, nearest
 
@@ -84,8 +85,8 @@ def resolve_result(block: Placed, scope: Scope) -> Result | None:
         literal = phrases["rounded"].numbers[0]
         step = in_unit(literal, unit if block.declaration.units else _unit(block, scope), scope)
         if step is not None and step <= 0:
-            scope.report(literal, "a result is rounded to a number above zero", "write for instance `rounded down to 1`",
-                         "value")  # fmt: skip
+            remedy = "write for instance `rounded down to 1`"
+            scope.report(literal, "a result is rounded to a number above zero", remedy, "value")
             step = None
         rounding = rounding if step is not None else ""
     if declared is None or declared.kind == "unreadable":
@@ -103,8 +104,8 @@ def resolve_result(block: Placed, scope: Scope) -> Result | None:
     if block.declaration.units and unit is not None and declared.unit is not None:
         if not same_dimension(unit, declared.unit):
             theirs = f"[{declared.unit.text}]" if declared.unit.text else "no unit"
-            scope.report(block.declaration.units[0], f"the quantity `{word.text}` is in {theirs}, the result in [{unit.text}]",
-                         "give both the same unit", "unit")  # fmt: skip
+            says = f"the quantity `{word.text}` is in {theirs}, the result in [{unit.text}]"
+            scope.report(block.declaration.units[0], says, "give both the same unit", "unit")
         else:
             return Result(word.text, unit, rounding, step, about(block, phrases, scope))
     return Result(word.text, declared.unit or PLAIN, rounding, step, about(block, phrases, scope))
@@ -244,5 +245,3 @@ def resolve_quietly(block: Placed, scope: Scope) -> None:
     if body is not None:
         per = next((phrase.words[0].text for phrase in block.declaration.phrases if phrase.kind == "per"), "")
         resolve_body(body, None, replace(scope.over(per), notebook=scope.notebook))
-
-

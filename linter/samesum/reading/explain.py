@@ -6,8 +6,9 @@ from collections.abc import Mapping
 from dataclasses import dataclass
 
 from samesum.reading.phrases import ALLOWED, WRITTEN
-from samesum.reading.slips import PHRASE_STARTS, SLIPS, Mistake, Sight
-from samesum.reading.words import listing, nearest
+from samesum.reading.sight import Mistake, Sight
+from samesum.reading.slips import PHRASE_STARTS, SLIPS
+from samesum.reading.words import PHRASE_WORDS, listing, nearest
 
 
 @dataclass(frozen=True, slots=True)
@@ -22,14 +23,16 @@ class Upset:
 
 
 _DECLARATIONS = (
-    "applies", "constant", "fact", "index", "judgement", "periods", "quantity", "result", "rulebook", "setting", "table",
+    "applies", "constant", "fact", "index", "judgement", "periods", "quantity", "result", "rulebook", "setting",
+    "table",
 )  # fmt: skip
 _SIGN_WORDS: Mapping[str, str] = {
     "EQUAL": "`=`", "LESS": "`<`", "LESS_OR_EQUAL": "`<=`", "MORE": "`>`", "MORE_OR_EQUAL": "`>=`", "UNEQUAL": "`<>`",
     "PLUS": "`+`", "MINUS": "`-`", "STAR": "`*`", "SLASH": "`/`", "CARET": "`^`", "PERCENT": "`%`",
     "COMMA": "a comma", "LEFT_BRACKET": "`(`", "RIGHT_BRACKET": "`)`", "NAME": "a name", "NUMBER": "a number",
-    "STRING": "a text in quotation marks", "UNIT": "a unit in square brackets", "CLAUSE_NUMBER": "the clause's number",
-    "_NEWLINE": "the end of the line", "$END": "the end", "_INDENT": "an indented line", "_DEDENT": "the end of this part",
+    "STRING": "a text in quotation marks", "UNIT": "a unit in square brackets", "CLAUSE_NUMBER": "`clause`",
+    "_NEWLINE": "the end of the line", "$END": "the end", "_INDENT": "an indented line",
+    "_DEDENT": "the end of this part",
 }  # fmt: skip
 # Sets of terminals that together are one thing to a writer, largest first.
 _TOGETHER: tuple[tuple[frozenset[str], str], ...] = (
@@ -41,6 +44,9 @@ _TOGETHER: tuple[tuple[frozenset[str], str], ...] = (
     (frozenset(("MINUS", "NUMBER")), "a number"),
     (frozenset(("IS", "TAKES")), "`is` or `takes`"),
 )
+
+
+_WORDS = frozenset(PHRASE_WORDS)
 
 
 def word_of(terminal: str) -> str:
@@ -56,9 +62,10 @@ def explain(lines: str, upset: Upset) -> Mistake:
     position = upset.position
     if upset.found in ("_NEWLINE", "$END"):
         position = len(lines[:position].rstrip())
-    sight = Sight(lines, position, upset.found, upset.text.strip("\n"), upset.expected)
-    if sight.found in ("_NEWLINE", "$END"):
-        sight = Sight(lines, position, upset.found, "", upset.expected)
+    text = "" if upset.found in ("_NEWLINE", "$END") else upset.text
+    # A word of the language where it cannot stand comes as a name.
+    found = text.upper() if upset.found == "NAME" and text in _WORDS else upset.found
+    sight = Sight(lines, position, found, text, upset.expected)
     for slip in SLIPS:
         mistake = slip(sight)
         if mistake is not None:
@@ -111,7 +118,11 @@ def _found(sight: Sight) -> str:
 
 
 def _listed(sight: Sight) -> list[str]:
-    left = set(sight.expected) - {"_NEWLINE", "_DEDENT", "$END"}
+    left = set(sight.expected) - {"_NEWLINE", "_DEDENT", "$END", "CLAUSE_NUMBER"}
+    if "by" not in ALLOWED.get(sight.first_word, ("by",)) and sight.first_word != "table":
+        left.discard("BY")
+    if "per" not in ALLOWED.get(sight.first_word, ("per",)):
+        left.discard("PER")
     words: list[str] = []
     if {"CLAUSE", "SOURCE", "BIAS"} <= left:
         left -= PHRASE_STARTS | {"MINUS", "NUMBER", "STRING"}
@@ -124,6 +135,4 @@ def _listed(sight: Sight) -> list[str]:
     order = list(_SIGN_WORDS)
     rest = sorted(left, key=lambda term: (order.index(term) if term in order else -1, term))
     words += [word_of(term) for term in rest]
-    if sight.expected & {"_NEWLINE"} and not words:
-        words.append("nothing more on this line")
     return words

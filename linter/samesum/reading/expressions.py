@@ -5,7 +5,6 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
 from fractions import Fraction
 from typing import Literal, cast
 
@@ -22,13 +21,13 @@ from samesum.reading.model import (
     Position,
     Reduction,
     Reference,
-    Scaled,
     Unit,
     Unknown,
     Value,
 )
 from samesum.reading.scope import Declared, Scope
-from samesum.reading.units import conversion, multiplied, raised, same_dimension
+from samesum.reading.typed import Typed, agreed, fit, index_is_known, say_unit, scaled, unknown
+from samesum.reading.units import multiplied, raised
 from samesum.reading.words import FUNCTIONS, listing, nearest
 
 _REDUCTIONS = ("sum", "mean", "min", "max")
@@ -40,20 +39,15 @@ LARGEST_POWER = 1000
 LARGEST_UNIT_POWER = 12
 
 
-@dataclass(frozen=True, slots=True)
-class Typed:
-    """An expression and its unit: None when unknown (a problem was reported), ``zero`` when it is a
-    literal zero, which has every unit."""
-
-    expression: Expression
-    unit: Unit | None
-    zero: bool = False
+_Operator = Literal["+", "-", "*", "/"]
+_Named = Literal["fact", "setting", "constant", "quantity"]
+_Over = Literal["sum", "mean", "min", "max"]
 
 
 def resolve_expression(node: tree.Tree, scope: Scope) -> Typed:
     """The expression that ``node`` writes; reports what is wrong with it."""
     if scope.too_deep(node):
-        return _unknown(scope, node)
+        return unknown(scope, node)
     inner = scope.deeper()
     match node:
         case tree.Literal():
@@ -78,48 +72,7 @@ def resolve_expression(node: tree.Tree, scope: Scope) -> Typed:
             return _reduction(node, inner)
         case _:
             scope.report(node, "a condition stands where a number belongs", "conditions belong after `when`")
-            return _unknown(scope, node)
-
-
-def say_unit(unit: Unit) -> str:
-    return f"[{unit.text}]" if unit.text else "a plain number"
-
-
-def fit(typed: Typed, unit: Unit | None, node: tree.Node, scope: Scope, what: str) -> Expression:
-    """The expression in ``unit``; reports a mismatch as "``what`` …"."""
-    if typed.unit is None or unit is None:
-        return typed.expression
-    if typed.zero and not same_dimension(typed.unit, unit):
-        return _rezero(typed.expression, unit)
-    if not same_dimension(typed.unit, unit):
-        remedy = _bridge(typed.unit, unit, scope)
-        scope.report(node, f"{what} {say_unit(unit)}, but this is {say_unit(typed.unit)}", remedy, "unit")
-        return typed.expression
-    return _scaled(typed.expression, typed.unit, unit)
-
-
-def _bridge(found: Unit, wanted: Unit, scope: Scope) -> str:
-    if not found.text and wanted.text:
-        return f"write the unit behind the number, as in [{wanted.text}], or multiply by something in [{wanted.text}]"
-    factor = multiplied(wanted, found, scope.units, -1)
-    return f"check the formula, or multiply by something in {say_unit(factor)}" if factor.text else ""
-
-
-def _scaled(expression: Expression, source: Unit, target: Unit) -> Expression:
-    factor = conversion(source, target)
-    if factor == 1:
-        return expression
-    if isinstance(expression, Number):
-        return Number(expression.value * factor, target, expression.span)
-    return Scaled(expression, factor, target, expression.span)
-
-
-def _rezero(expression: Expression, unit: Unit) -> Expression:
-    return Number(Fraction(0), unit, expression.span)
-
-
-def _unknown(scope: Scope, node: tree.Node) -> Typed:
-    return Typed(Unknown(scope.span(node)), None)
+            return unknown(scope, node)
 
 
 # --- leaves ----------------------------------------------------------------------------------
@@ -128,31 +81,30 @@ def _unknown(scope: Scope, node: tree.Node) -> Typed:
 def _number(node: tree.Literal, scope: Scope) -> Typed:
     value = scope.number(node)
     if value is None:
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if node.unit is None:
         return Typed(Number(value, PLAIN, scope.span(node)), PLAIN, zero=value == 0 and not node.percent)
     unit = scope.unit(node.unit)
     if node.percent and unit is not None:
         scope.report(node.unit, "a number in % has no other unit", "leave out the % or the unit", "unit")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     return Typed(Number(value, unit or PLAIN, scope.span(node)), unit)
 
 
 def _name(word: tree.Word, scope: Scope) -> Typed:
     declared = scope.find(word, ("fact", "setting", "constant", "quantity"))
     if declared is None or declared.kind == "unreadable":
-        return _unknown(scope, word)
+        return unknown(scope, word)
     if (trouble := _no_number(declared)) is not None:
         scope.report(word, *trouble)
-        return _unknown(scope, word)
+        return unknown(scope, word)
     if scope.only_constants and declared.kind != "constant":
-        article = "a" if declared.kind != "index" else "an"
-        scope.report(word, f"`{word.text}` is {article} {declared.kind}: a constant may use numbers and other constants only",
-                     "make it a quantity instead")  # fmt: skip
-        return _unknown(scope, word)
+        says = f"`{word.text}` is a {declared.kind}: a constant may use numbers and other constants only"
+        scope.report(word, says, "make it a quantity instead")
+        return unknown(scope, word)
     if not index_is_known(word, declared, scope):
-        return _unknown(scope, word)
-    kind = cast(Literal["fact", "setting", "constant", "quantity"], declared.kind)
+        return unknown(scope, word)
+    kind = cast(_Named, declared.kind)
     unit = declared.unit or PLAIN
     return Typed(Reference(word.text, kind, declared.index, unit, scope.span(word)), declared.unit)
 
@@ -172,18 +124,6 @@ def _no_number(declared: Declared) -> tuple[str, str] | None:
             f"ask it in a condition, as in `when {name} is {declared.values[0]}`, or look it up in a table",
         )
     return None
-
-
-def index_is_known(word: tree.Word, declared: Declared, scope: Scope) -> bool:
-    """Whether the element meant by a name per index is known here; reports it when not."""
-    if not declared.index or declared.index in scope.indices:
-        return True
-    scope.report(
-        word,
-        f"`{word.text}` is per {declared.index}, and here it is not said for which {declared.index}",
-        f"write for instance `sum({word.text} over {declared.index})`, or use it in a quantity per {declared.index}",
-    )
-    return False
 
 
 def _grouped(node: tree.Grouped, scope: Scope) -> Typed:
@@ -226,7 +166,7 @@ def _chain(node: tree.Chain, scope: Scope) -> Typed:
     expression = parts[0]
     for sign, part, unit, term in zip(signs, parts[1:], units[1:], [term for _, term in node.rest], strict=True):
         total = _joined(total, unit, sign, scope)
-        operator = cast(Literal["+", "-", "*", "/"], sign)
+        operator = cast(_Operator, sign)
         span = scope.place.span(node.start, term.end)
         expression = Arithmetic(operator, expression, part, total or PLAIN, span)
     return Typed(expression, total, zero and plus == "+")
@@ -258,7 +198,7 @@ def _balanced(
         half = len(items) // 2
         (left, left_unit), (right, right_unit) = tree_of(items[:half]), tree_of(items[half:])
         unit = _joined(left_unit, right_unit, plus, scope)
-        return Arithmetic(cast(Literal["+", "*"], plus), left, right, unit or PLAIN, span), unit
+        return Arithmetic(cast(_Operator, plus), left, right, unit or PLAIN, span), unit
 
     pairs = list(zip(parts, units, strict=True))
     above = [pairs[0]] + [pair for pair, sign in zip(pairs[1:], signs, strict=True) if sign == plus]
@@ -268,33 +208,7 @@ def _balanced(
         return left, left_unit
     right, right_unit = tree_of(below)
     unit = _joined(left_unit, right_unit, minus, scope)
-    return Arithmetic(cast(Literal["-", "/"], minus), left, right, unit or PLAIN, span), unit
-
-
-def agreed(
-    terms: list[tuple[Typed, tree.Tree]], scope: Scope, how: str
-) -> tuple[list[Expression], Unit | None, bool]:
-    """The expressions in one unit, that of the first that has one; reports those that do not fit."""
-    known = [(typed.unit, node) for typed, node in terms if typed.unit is not None and not typed.zero]
-    if not known:
-        unknown = any(typed.unit is None for typed, _ in terms)
-        return [typed.expression for typed, _ in terms], None if unknown else PLAIN, not unknown
-    unit = known[0][0]
-    parts: list[Expression] = []
-    fits = all(typed.unit is not None for typed, _ in terms)
-    for typed, node in terms:
-        if typed.unit is None:
-            parts.append(typed.expression)
-        elif typed.zero:
-            parts.append(_rezero(typed.expression, unit) if typed.unit != unit else typed.expression)
-        elif not same_dimension(typed.unit, unit):
-            scope.report(node, f"{say_unit(unit)} and {say_unit(typed.unit)} cannot be {how}",
-                         _bridge(typed.unit, unit, scope), "unit")  # fmt: skip
-            parts.append(typed.expression)
-            fits = False
-        else:
-            parts.append(_scaled(typed.expression, typed.unit, unit))
-    return parts, unit if fits else None, False
+    return Arithmetic(cast(_Operator, minus), left, right, unit or PLAIN, span), unit
 
 
 def _power(node: tree.Power, scope: Scope) -> Typed:
@@ -303,16 +217,17 @@ def _power(node: tree.Power, scope: Scope) -> Typed:
     span = scope.span(node)
     power = _constant(exponent.expression)
     if exponent.unit is not None and exponent.unit.dimension:
-        scope.report(node.exponent, f"an exponent is a plain number, but this is {say_unit(exponent.unit)}", kind="unit")
+        says = f"an exponent is a plain number, but this is {say_unit(exponent.unit)}"
+        scope.report(node.exponent, says, kind="unit")
         return Typed(Arithmetic("^", base.expression, exponent.expression, PLAIN, span), None)
     if power is not None and abs(power) > LARGEST_POWER:
         scope.report(node.exponent, f"the exponent is too large; {LARGEST_POWER} is the most", kind="value")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     above = fit(exponent, PLAIN, node.exponent, scope, "an exponent is")
     if base.unit is None or exponent.unit is None:
         return Typed(Arithmetic("^", base.expression, above, PLAIN, span), None)
     if not base.unit.dimension:
-        below = _scaled(base.expression, base.unit, PLAIN)
+        below = scaled(base.expression, base.unit, PLAIN)
         return Typed(Arithmetic("^", below, above, PLAIN, span), PLAIN)
     if power is None or abs(power) > LARGEST_UNIT_POWER or power.denominator > LARGEST_UNIT_POWER:
         scope.report(
@@ -364,28 +279,28 @@ def _call(node: tree.Call, scope: Scope) -> Typed:
     for argument in node.arguments:
         if not (isinstance(argument, tree.Use) and argument.name.text not in scope.names):
             resolve_expression(argument, scope)
-    return _unknown(scope, node)
+    return unknown(scope, node)
 
 
 def _position(node: tree.Call, scope: Scope) -> Typed:
     argument = node.arguments[0]
     if len(node.arguments) != 1 or not isinstance(argument, tree.Use):
         scope.report(node, "position takes the name of one index", "write it as in `position(stratum)`")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     declared = scope.find(argument.name, ("index",))
     if declared is None or declared.kind == "unreadable":
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if declared.kind != "index":
         scope.report(argument, f"`{declared.name}` is a {declared.kind}, not an index",
                      "position takes the name of an index")  # fmt: skip
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if declared.name not in scope.indices:
         scope.report(
             node,
             f"here it is not said which {declared.name} is meant",
             f"`position({declared.name})` stands in a quantity per {declared.name} or in a sum over it",
         )
-        return _unknown(scope, node)
+        return unknown(scope, node)
     return Typed(Position(declared.name, PLAIN, scope.span(node)), PLAIN)
 
 
@@ -400,10 +315,10 @@ def _function(node: tree.Call, scope: Scope) -> Typed:
         example = f"{name}(… over INDEX)"
         both = f" or {name}(a, b)" if name in ("min", "max") else ""
         scope.report(node, f"`{name}` lacks what it goes over", f"write it as in `{example}`{both}")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if len(terms) != 1:
         scope.report(node, f"`{name}` takes one number, not {len(terms)}")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     typed, argument = terms[0]
     if name in _NEED_PLAIN:
         inner = fit(typed, PLAIN, argument, scope, f"`{name}` takes")
@@ -412,7 +327,7 @@ def _function(node: tree.Call, scope: Scope) -> Typed:
         if typed.unit is None:
             return Typed(Function(name, (typed.expression,), PLAIN, span), None)
         plain = not typed.unit.dimension
-        inner = _scaled(typed.expression, typed.unit, PLAIN) if plain else typed.expression
+        inner = scaled(typed.expression, typed.unit, PLAIN) if plain else typed.expression
         unit = PLAIN if plain else raised(typed.unit, Fraction(1, 2), scope.units)
         return Typed(Function(name, (inner,), unit, span), unit)
     return Typed(Function(name, (typed.expression,), typed.unit or PLAIN, span), typed.unit, typed.zero)
@@ -425,25 +340,25 @@ def _reduction(node: tree.Reduce, scope: Scope) -> Typed:
         close = nearest(name, _REDUCTIONS)
         scope.report(node.name, f"`{name}` cannot go over an index",
                      f"did you mean `{close}`?" if close else f"only {listing(_REDUCTIONS)} can")  # fmt: skip
-        return _unknown(scope, node)
+        return unknown(scope, node)
     declared = scope.find(node.index, ("index",))
     if declared is None or declared.kind == "unreadable":
         known = {other.name: other for other in scope.names.values() if other.kind == "index"}
         for each in known:  # so that names per index do not complain on top
             scope = scope.over(each)
         resolve_expression(node.body, scope)
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if declared.kind != "index":
         indices = [other.name for other in scope.names.values() if other.kind == "index"]
         scope.report(node.index, f"`{declared.name}` is a {declared.kind}, not an index",
                      f"the indices are {listing(indices, 'and')}" if indices else "declare an index first")  # fmt: skip
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if _goes_over(node.body, declared.name):
         scope.report(node, f"one reduction over `{declared.name}` stands inside another over the same index",
                      "give the inner one a quantity of its own")  # fmt: skip
-        return _unknown(scope, node)
+        return unknown(scope, node)
     body = resolve_expression(node.body, scope.over(declared.name))
-    operator = cast(Literal["sum", "mean", "min", "max"], name)
+    operator = cast(_Over, name)
     return Typed(Reduction(operator, body.expression, declared.name, body.unit or PLAIN, span), body.unit, body.zero)
 
 
@@ -478,13 +393,14 @@ def _lookup(node: tree.Call, scope: Scope) -> Typed:
     keys = scope.keys.get(table.name)
     if scope.only_constants:
         scope.report(node.name, f"`{table.name}` is a table: a constant may use numbers and other constants only")
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if keys is None:
-        return _unknown(scope, node)
+        return unknown(scope, node)
     if len(keys) != len(node.arguments):
         names = listing([key.name for key in keys], "and")
-        scope.report(node, f"`{table.name}` is by {names}, so it takes {len(keys)} in its brackets, not {len(node.arguments)}")
-        return _unknown(scope, node)
+        takes = f"it takes {len(keys)} in its brackets, not {len(node.arguments)}"
+        scope.report(node, f"`{table.name}` is by {names}, so {takes}")
+        return unknown(scope, node)
     arguments = tuple(_argument(key, argument, scope) for key, argument in zip(keys, node.arguments, strict=True))
     return Typed(Lookup(table.name, arguments, table.unit or PLAIN, scope.span(node)), table.unit)
 

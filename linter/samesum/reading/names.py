@@ -119,8 +119,8 @@ def _with_indices(
                 scope.find(word, ("index",))
             elif index.kind not in ("index", "unreadable"):
                 indices = [other.name for other in found.values() if other.kind == "index"]
-                scope.report(word, f"`{index.name}` is a {index.kind}, not an index",
-                             f"the indices are {listing(indices, 'and')}" if indices else "declare an index")  # fmt: skip
+                remedy = f"the indices are {listing(indices, 'and')}" if indices else "declare an index"
+                scope.report(word, f"`{index.name}` is a {index.kind}, not an index", remedy)
             if index is None or index.kind != "index":
                 names[declared.name] = replace(declared, kind="unreadable")
     for block in blocks:

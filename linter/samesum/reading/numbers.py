@@ -3,11 +3,13 @@
 from __future__ import annotations
 
 from fractions import Fraction
+from functools import lru_cache
 
 LONGEST = 60
 LARGEST_EXPONENT = 200
 
 
+@lru_cache(maxsize=2_000)
 def exact(text: str) -> Fraction | None:
     """The exact value of ``12``, ``1_000``, ``0.47`` or ``1e-3``; None for a number beyond all use:
     more than 60 digits, or an exponent beyond ±200."""

@@ -15,8 +15,8 @@ DECIDERS: tuple[Decider, ...] = ("developer", "verifier", "programme")
 # How each phrase is written; phrases of one group exclude each other.
 WRITTEN: Mapping[str, str] = {
     "clause": "`clause …`",
-    "source": "`source \"…\"`",
-    "draft": "`draft \"…\"`",
+    "source": '`source "…"`',
+    "draft": '`draft "…"`',
     "rounded": "`rounded down to …`",
     "at_most": "`at most …`",
     "range": "`LOW to HIGH`",
@@ -79,7 +79,7 @@ def read_phrases(kind: str, phrases: tuple[tree.Phrase, ...], scope: Scope) -> d
 
 def _instead(phrase: tree.Phrase, kind: str, allowed: tuple[str, ...]) -> str:
     if phrase.kind == "by" and kind == "fact":
-        return "a fact is the same whoever reads it; what somebody sets is a `setting`, what somebody reads a `judgement`"
+        return "a fact is the same whoever reads it; declare a `setting` or a `judgement` if somebody decides it"
     if phrase.kind == "per" and kind in ("setting", "judgement", "constant", "table", "result"):
         return "only a fact or a quantity is per index"
     return f"it may have {listing([WRITTEN[each] for each in allowed], 'and')}" if allowed else "leave it out"

@@ -11,13 +11,15 @@ from samesum.problems import Problem, in_order
 from samesum.reading.blocks import Block, blocks_of
 from samesum.reading.model import Model
 from samesum.reading.names import Placed
-from samesum.reading.resolve import Unreadable, resolve
-from samesum.reading.syntax import Memory, Mistake, Parser, make_parser, parse_block
+from samesum.reading.resolve import Recall, Unreadable, resolve
+from samesum.reading.sight import Mistake
+from samesum.reading.syntax import Memory, Parser, make_parser, parse_block
 from samesum.reading.tree import Place
 from samesum.reading.units import UnitTable, load_units
 from samesum.spans import START, Span
 
 LARGEST_FILE = 4_000_000
+_TOO_LONG = f"the file is longer than {LARGEST_FILE:,} characters"
 _FIRST_WORDS = re.compile(r"(\S+)(?:\s+([^\W\d_]\w*))?")
 
 
@@ -38,6 +40,7 @@ class Reader:
     parser: Parser
     units: UnitTable
     memory: Memory
+    recall: Recall
 
 
 def default_cache_folder() -> Path | None:
@@ -53,7 +56,7 @@ def default_cache_folder() -> Path | None:
 
 def make_reader(cache_folder: Path | None = None) -> Reader:
     """A reader that keeps its prepared grammar in ``cache_folder`` (None: nowhere)."""
-    return Reader(make_parser(cache_folder), load_units(), Memory())
+    return Reader(make_parser(cache_folder), load_units(), Memory(), Recall())
 
 
 def read(text: str, file: str, cache_folder: Path | None = None, reader: Reader | None = None) -> Reading:
@@ -66,12 +69,12 @@ def read(text: str, file: str, cache_folder: Path | None = None, reader: Reader 
         reader = make_reader(cache_folder or default_cache_folder())
     text = text.removeprefix("\ufeff").replace("\r\n", "\n")
     if len(text) > LARGEST_FILE:
-        return _unusable(file, f"the file is longer than {LARGEST_FILE:,} characters", "a rulebook is text for people")
+        return _unusable(file, _TOO_LONG, "a rulebook is text for people")
     blocks = blocks_of(text)
     trees, unreadable, problems = _parse(blocks, file, reader)
     if not trees and not unreadable:
         return _unusable(file, "the file holds no rulebook", 'start it with `rulebook "TITLE", draft "VERSION"`', text)
-    model, more = resolve(file, trees, unreadable, reader.units)
+    model, more = resolve(file, trees, unreadable, reader.units, reader.recall)
     return Reading(model if trees else None, in_order([*problems, *more] if trees else problems), text)
 
 
@@ -82,7 +85,7 @@ def read_file(path: Path, cache_folder: Path | None = None, reader: Reader | Non
         if path.is_dir():
             return _unusable(file, "this is a folder, not a file", "name the rulebook inside it")
         if path.stat().st_size > 4 * LARGEST_FILE:
-            return _unusable(file, f"the file is longer than {LARGEST_FILE:,} characters", "a rulebook is text for people")
+            return _unusable(file, _TOO_LONG, "a rulebook is text for people")
         raw = path.read_bytes()
     except FileNotFoundError:
         return _unusable(file, "there is no such file")

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import dataclass, replace
-from typing import TypeVar
+from dataclasses import dataclass, field, replace
+from typing import TypeVar, cast
 
 from samesum.problems import Problem
 from samesum.reading.cycles import cycles, knotted
@@ -29,6 +29,7 @@ from samesum.reading.tables import resolve_keys
 from samesum.reading.units import UnitTable
 from samesum.spans import START, Span
 
+REMEMBERED_BLOCKS = 20_000
 _Made = TypeVar("_Made")
 
 
@@ -41,8 +42,20 @@ class Unreadable:
     span: Span
 
 
+@dataclass(slots=True)
+class Recall:
+    """What blocks came to the last time, so that an edit resolves one block again.
+
+    Holds only for the names, tables and file it was made with; any change of those empties it.
+    """
+
+    known: tuple[str, dict[str, Declared], dict[str, tuple[Key, ...]]] | None = None
+    blocks: dict[tuple[str, int], tuple[object, Notebook]] = field(default_factory=dict)
+    resolved: int = 0
+
+
 def resolve(
-    file: str, blocks: list[Placed], unreadable: list[Unreadable], units: UnitTable
+    file: str, blocks: list[Placed], unreadable: list[Unreadable], units: UnitTable, recall: Recall
 ) -> tuple[Model, list[Problem]]:
     """The model of the blocks, and every problem found on the way.
 
@@ -52,46 +65,40 @@ def resolve(
     silent = [Declared(each.name, "unreadable", each.span) for each in unreadable if each.name]
     names, kept = declare(blocks, silent, file, notebook, units)
     keys = _all_keys(kept, names, file, notebook, units)
-
-    def scope(block: Placed) -> Scope:
-        return replace(bare_scope(block, file, notebook, units), names=names, keys=keys)
-
-    def every(kind: str, make: Callable[[Placed, Scope], _Made]) -> tuple[_Made, ...]:
-        made = []
-        for block in kept:
-            if block.declaration.kind != kind:
-                continue
-            name = block.declaration.name
-            if name is not None and kind in ("fact", "quantity") and names[name.text].kind == "unreadable":
-                resolve_quietly(block, scope(block))
-            else:
-                made.append(make(block, scope(block)))
-        return tuple(made)
-
+    if recall.known != (file, names, keys) or len(recall.blocks) > REMEMBERED_BLOCKS:
+        recall.known = (file, names, keys)
+        recall.blocks.clear()
     needs: dict[str, tuple[str, ...]] = {}
 
-    def noting(make: Callable[[Placed, Scope], _Made]) -> Callable[[Placed, Scope], _Made]:
-        def make_and_note(block: Placed, inner: Scope) -> _Made:
-            before = len(notebook.mentions)
-            made = make(block, inner)
-            name = block.declaration.name
-            assert name is not None
-            needs[name.text] = tuple(dict.fromkeys(each for each, _ in notebook.mentions[before:]))
-            return made
+    def one(block: Placed, make: Callable[[Placed, Scope], _Made]) -> _Made | None:
+        key = (block.place.text, block.place.first_line)
+        known = recall.blocks.get(key)
+        if known is None:
+            own = Notebook()
+            scope = replace(bare_scope(block, file, own, units), names=names, keys=keys)
+            recall.resolved += 1
+            known = (_made(block, make, scope), own)
+            recall.blocks[key] = known
+        made, own = known
+        notebook.add(own)
+        if block.declaration.kind in ("constant", "quantity") and block.declaration.name is not None:
+            needs[block.declaration.name.text] = tuple(dict.fromkeys(name for name, _ in own.mentions))
+        return cast("_Made | None", made)
 
-        return make_and_note
+    def every(kind: str, make: Callable[[Placed, Scope], _Made]) -> tuple[_Made, ...]:
+        found = [one(block, make) for block in kept if block.declaration.kind == kind]
+        return tuple(made for made in found if made is not None)
 
     title, draft, title_span = _title(blocks, unreadable, notebook, file, units)
     periods = every("periods", resolve_periods)
-    _once("periods", blocks, notebook, file, units)
     results = every("result", resolve_result)
-    _once("result", blocks, notebook, file, units)
-    if not results and not any(each.first_word == "result" for each in unreadable):
-        notebook.problems.append(
-            Problem(file, title_span, "the rulebook has no result", "write `result NAME [UNIT]` for what is credited", "shape")
-        )
-    constants = every("constant", noting(resolve_constant))
-    quantities = every("quantity", noting(resolve_quantity))
+    for kind in ("periods", "result"):
+        _once(kind, blocks, notebook, file, units)
+    if not any(block.declaration.kind == "result" for block in blocks) and not any(
+        each.first_word == "result" for each in unreadable
+    ):
+        says, remedy = "the rulebook has no result", "write `result NAME [UNIT]` for what is credited"
+        notebook.problems.append(Problem(file, title_span, says, remedy, "shape"))
     model = Model(
         file=file,
         title=title,
@@ -104,13 +111,23 @@ def resolve(
         facts=every("fact", resolve_fact),
         settings=every("setting", resolve_setting),
         judgements=every("judgement", resolve_judgement),
-        constants=constants,
+        constants=every("constant", resolve_constant),
         tables=every("table", resolve_table),
-        quantities=quantities,
+        quantities=every("quantity", resolve_quantity),
     )
     model = _without_cycles(model, needs, notebook)
     _one_currency(file, notebook)
     return model, [*notebook.problems, *undeclared_problems(notebook, file)]
+
+
+def _made(block: Placed, make: Callable[[Placed, Scope], _Made], scope: Scope) -> _Made | None:
+    """What the block comes to; None when what it declares cannot be used."""
+    name = block.declaration.name
+    indexed = block.declaration.kind in ("fact", "quantity")
+    if indexed and name is not None and scope.names[name.text].kind == "unreadable":
+        resolve_quietly(block, scope)
+        return None
+    return make(block, scope)
 
 
 def _all_keys(
@@ -145,7 +162,7 @@ def _title(
         elif name is not None:
             title, draft, span = name.text, text_of(phrases, "draft"), scope.span(block.declaration)
             if block.place.first_line != first_line:
-                scope.report(block.declaration, "the `rulebook` line is not the first", "move it to the top of the file")
+                scope.report(block.declaration, "the `rulebook` line is not the first", "move it to the top")
     if not found and not any(each.first_word == "rulebook" for each in unreadable):
         notebook.problems.append(
             Problem(file, Span(first_line, 1, first_line, 2), "the file does not start with its `rulebook` line",
@@ -159,7 +176,8 @@ def _once(kind: str, blocks: list[Placed], notebook: Notebook, file: str, units:
     for block in found[1:]:
         scope = bare_scope(block, file, notebook, units)
         line = found[0].place.first_line
-        scope.report(block.declaration, f"a second `{kind}` stands here; the first is on line {line}", "keep one of the two")
+        says = f"a second `{kind}` stands here; the first is on line {line}"
+        scope.report(block.declaration, says, "keep one of the two")
 
 
 def _without_cycles(model: Model, needs: dict[str, tuple[str, ...]], notebook: Notebook) -> Model:
@@ -170,9 +188,7 @@ def _without_cycles(model: Model, needs: dict[str, tuple[str, ...]], notebook: N
         first = named[chain[0]]
         way = " needs ".join(f"`{name}`" for name in (*chain, chain[0]))
         says = f"{way}: none of them can be worked out first" if len(chain) > 1 else f"`{chain[0]}` needs itself"
-        notebook.problems.append(
-            Problem(model.file, first.name_span, says, "break the circle at one of them", "cycle")
-        )
+        notebook.problems.append(Problem(model.file, first.name_span, says, "break the circle at one of them", "cycle"))
     knot = knotted(needs)
     return replace(
         model,

@@ -8,72 +8,14 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable, Mapping
-from dataclasses import dataclass
 
+from samesum.reading.sight import Mistake, Sight
 from samesum.reading.words import RESERVED, nearest
 
-
-@dataclass(frozen=True, slots=True)
-class Mistake:
-    """What is wrong with a block; positions count from the block's start."""
-
-    start: int
-    end: int
-    says: str
-    remedy: str
-
-
-@dataclass(frozen=True, slots=True)
-class Sight:
-    """What there is to see where the parser stopped.
-
-    ``lines`` is the block without comments, lines that go on joined; ``at`` the position; ``found``
-    the terminal there ("" for a character that starts none) and ``text`` how it is written; ``expected``
-    the terminals that could have stood there.
-    """
-
-    lines: str
-    at: int
-    found: str
-    text: str
-    expected: frozenset[str]
-
-    @property
-    def line_start(self) -> int:
-        return self.lines.rfind("\n", 0, self.at) + 1
-
-    @property
-    def line_end(self) -> int:
-        end = self.lines.find("\n", self.at)
-        return len(self.lines) if end < 0 else end
-
-    @property
-    def before(self) -> str:
-        """The line up to here."""
-        return self.lines[self.line_start : self.at]
-
-    @property
-    def rest(self) -> str:
-        """The line from here on."""
-        return self.lines[self.at : self.line_end]
-
-    @property
-    def first_word(self) -> str:
-        words = self.lines[self.line_start : self.line_end].split(None, 1)
-        return words[0] if words else ""
-
-    @property
-    def last_word(self) -> str:
-        words = self.before.split()
-        return words[-1] if words else ""
-
-    def here(self, says: str, remedy: str = "", length: int = 0) -> Mistake:
-        return Mistake(self.at, self.at + (length or max(1, len(self.text.rstrip("\n ")))), says, remedy)
-
-
-PHRASE_STARTS = frozenset(
-    "CLAUSE SOURCE DRAFT ROUNDED AT ONE YES BY PER MEAN FIXED OPEN ERRORS ONLY ERROR BIAS COST REFERENCE".split()
-)
+PHRASE_STARTS = frozenset((
+    "CLAUSE", "CLAUSE_NUMBER", "SOURCE", "DRAFT", "ROUNDED", "AT", "ONE", "YES", "BY", "PER", "MEAN", "FIXED", "OPEN",
+    "ERRORS", "ONLY", "ERROR", "BIAS", "COST", "REFERENCE",
+))  # fmt: skip
 _OPERATORS = frozenset(("PLUS", "STAR", "SLASH", "CARET"))
 _BODIES = frozenset(("EQUAL", "CASES", "CHOICE"))
 
@@ -82,7 +24,8 @@ _SIGNS: Mapping[str, tuple[str, str]] = {
     **dict.fromkeys("‘’‚`'´", ("this mark does not quote a text", 'put texts in plain quotation marks: "')),
     **dict.fromkeys("−–—‐‑", ("this dash is no minus sign", "write the plain one: -")),
     **dict.fromkeys("×·∙•⋅", ("this sign is not a multiplication", "write *")),
-    **dict.fromkeys("÷:", ("this sign is not a division", "write /")),
+    "÷": ("this sign is not a division", "write /"),
+    ":": ("a colon means nothing here", "leave it out"),
     **dict.fromkeys("²³", ("a small raised number is no power", "write ^ 2 or ^ 3")),
     "≤": ("≤ is written with two signs", "write <="),
     "≥": ("≥ is written with two signs", "write >="),
@@ -98,6 +41,22 @@ _SIGNS: Mapping[str, tuple[str, str]] = {
     "{": ("curly brackets mean nothing here", "write round brackets for a calculation, square ones for a unit"),
     "}": ("curly brackets mean nothing here", "write round brackets for a calculation, square ones for a unit"),
     "_": ("a name starts with a letter", "put a letter in front"),
+}
+_PAIRS: Mapping[str, str] = {
+    "==": "=", "!=": "<>", "=<": "<=", "=>": ">=", "><": "<>", "**": "^", "&&": "and", "||": "or",
+}  # fmt: skip
+_FORMS: Mapping[str, str] = {
+    "clause": "clause 7.1.2(b)",
+    "rounded": "rounded down to 1",
+    "at": "at most 4",
+    "one": "one of A, B or C",
+    "yes": "yes or no",
+    "mean": "mean 120 spread 30",
+    "fixed": "fixed at validation",
+    "open": "open each period",
+    "errors": "errors correlated 0.5",
+    "only": "only when CONDITION",
+    "up": "up to 10",
 }
 _SLIPPED_WORDS: Mapping[str, str] = {
     "if": "when", "else": "otherwise", "elif": "when", "elseif": "when", "default": "otherwise", "unless": "when not",
@@ -126,14 +85,14 @@ def open_text(sight: Sight) -> Mistake | None:
     if sight.found or not sight.text.startswith('"'):
         return None
     end = max(len(sight.rest.rstrip()), 1)
-    return Mistake(sight.at, sight.at + end, 'this quotation mark has no partner on its line', 'close the text with "')
+    return Mistake(sight.at, sight.at + end, "this quotation mark has no partner on its line", 'close the text with "')
 
 
 def double_sign(sight: Sight) -> Mistake | None:
     """``==``, ``!=``, ``=<``, ``=>``, ``><`` and ``**``."""
     for start in (sight.at, sight.at - 1):
         pair = sight.lines[max(0, start) : max(0, start) + 2]
-        write = {"==": "=", "!=": "<>", "=<": "<=", "=>": ">=", "><": "<>", "**": "^", "&&": "and", "||": "or"}.get(pair)
+        write = _PAIRS.get(pair)
         if write is not None and start >= 0:
             return Mistake(start, start + 2, f"`{pair}` is no sign of the language", f"write `{write}`")
     return None
@@ -169,7 +128,9 @@ def square_bracket(sight: Sight) -> Mistake | None:
 
 
 def sign(sight: Sight) -> Mistake | None:
-    known = _SIGNS.get(sight.text[:1]) if not sight.found or sight.found == "CLAUSE_NUMBER" else None
+    known = _SIGNS.get(sight.text[:1]) if not sight.found else None
+    if sight.text[:1] == ":" and "EQUAL" in sight.expected:
+        return sight.here("a colon means nothing here", "write `=`", 1)
     return sight.here(*known, length=1) if known is not None else None
 
 
@@ -187,13 +148,15 @@ def too_deep(sight: Sight) -> Mistake | None:
         return None
     above = sight.lines[: sight.line_start].rstrip().rsplit("\n", 1)[-1].split()
     under = f" under `{above[0]}`" if above else ""
-    return _whole_line(sight, f"this line is indented, but nothing stands{under} here", "start it where the line above starts")
+    says = f"this line is indented, but nothing stands{under} here"
+    return _whole_line(sight, says, "start it where the line above starts")
 
 
 def uneven(sight: Sight) -> Mistake | None:
     if sight.found != "UNEVEN":
         return None
-    return _whole_line(sight, "this line starts below none of the lines above", "start it exactly where a line above starts")
+    says = "this line starts below none of the lines above"
+    return _whole_line(sight, says, "start it exactly where a line above starts")
 
 
 def nothing_under(sight: Sight) -> Mistake | None:
@@ -237,8 +200,9 @@ def formula_on_the_line(sight: Sight) -> Mistake | None:
 def second_body(sight: Sight) -> Mistake | None:
     if sight.found not in _BODIES or sight.before.strip() or sight.expected & (_BODIES | {"OPTION", "WHEN"}):
         return None
-    if "ROW" in sight.expected or "UP" in sight.expected:
-        return None
+    block = sight.lines.split(None, 1)[0]
+    if block != "quantity":
+        return sight.here(f"a `{block}` has no body", "what is calculated is declared with `quantity`")
     return sight.here("a body stands here already", "a quantity, a branch and an option have one body each")
 
 
@@ -270,7 +234,7 @@ def broken_name(sight: Sight) -> Mistake | None:
         following = re.split(r"[^\w]", sight.rest[1:].lstrip())[0]
         name = f"{sight.last_word}_{following}"
         return sight.here("a name holds letters, digits and _ only", f"write `{name}`")
-    if sight.found in ("NAME", "CLAUSE_NUMBER") and sight.text.isidentifier():
+    if sight.found == "NAME":
         if re.match(r"\w+\s*(\[|$)", sight.rest) and re.search(r"\w\s+\Z", sight.before):
             if "[" in sight.rest:
                 return sight.here("a name is one word", f"write `{sight.last_word}_{sight.text}`")
@@ -288,7 +252,8 @@ def unit_without_brackets(sight: Sight) -> Mistake | None:
         return None
     if nearest(sight.text, ["and", "or", "to", "over", "is", "spread", "up"]) or sight.text in RESERVED:
         return None
-    return sight.here(f"`{sight.text}` follows a number without square brackets", f"write the unit as [{sight.text}]")
+    return sight.here(f"`{sight.text}` follows the number without anything between them",
+                      f"a unit goes in square brackets, [{sight.text}]; a factor comes after *")  # fmt: skip
 
 
 def missing_comma(sight: Sight) -> Mistake | None:
@@ -297,6 +262,22 @@ def missing_comma(sight: Sight) -> Mistake | None:
         return None
     what = "the text in quotes" if sight.found == "STRING" else f"`{sight.text}`"
     return sight.here(f"a comma is missing before {what}", f"write `, {sight.text}`")
+
+
+def unfinished_phrase(sight: Sight) -> Mistake | None:
+    """A phrase of several words that breaks off or goes another way."""
+    phrase = sight.before[sight.before.rfind(",") + 1 :].split()
+    if not phrase or len(sight.expected - {"CLAUSE_NUMBER", "_NEWLINE"}) > 2:
+        return None
+    form = _FORMS.get(phrase[0], "")
+    if sight.first_word == "index" and sight.expected <= {"TO", "PERCENT", "UNIT"}:
+        form = "at most 4"
+    if sight.first_word == "choice" and sight.expected <= {"BY", "FOLLOWS"}:
+        form = "choice by developer` or `choice follows QUANTITY"
+    if not form:
+        return None
+    found = f"`{sight.text}` cannot stand here" if sight.text else "the line ends too early"
+    return sight.here(found, f"write it as in `{form}`", 0 if sight.text else 1)
 
 
 def missing_quotes(sight: Sight) -> Mistake | None:
@@ -320,22 +301,40 @@ def value_list(sight: Sight) -> Mistake | None:
     return None
 
 
+def number_with_comma(sight: Sight) -> Mistake | None:
+    """``1,000`` and ``0,5``."""
+    between = re.search(r"[0-9]\Z", sight.before) and re.match(r",[0-9]", sight.rest)
+    if sight.found != "COMMA" or not between:
+        return None
+    return sight.here("a number has no comma", "write 1000 or 1_000 for a thousand, and 0.5 with a point")
+
+
+def late_note(sight: Sight) -> Mistake | None:
+    if sight.found != "STRING" or sight.before.strip():
+        return None
+    return sight.here("a note stands directly under the first line of its declaration", "move it up")
+
+
 def missing_operator(sight: Sight) -> Mistake | None:
     if not _OPERATORS & sight.expected or sight.found not in ("NAME", "NUMBER", "LEFT_BRACKET", "UNIT"):
         return None
     if sight.found == "UNIT":
-        return sight.here("a unit stands behind a number only", "a name has its unit from its declaration: leave it out")
+        remedy = "a name has its unit from its declaration: leave it out"
+        return sight.here("a unit stands behind a number only", remedy)
     known = [word.lower() for word in sight.expected if word.isalpha() and word.lower() in RESERVED]
     close = nearest(sight.text, known)
     if close:
         return sight.here(f"`{sight.text}` cannot stand here", f"did you mean `{close}`?")
-    return sight.here(f"a sign is missing before `{sight.text}`", "write + - * / or ^ between the two, or join a name with _")
+    remedy = "write + - * / or ^ between the two, or join a name with _"
+    return sight.here(f"a sign is missing before `{sight.text}`", remedy)
 
 
 def missing_name(sight: Sight) -> Mistake | None:
     if sight.expected - {"_NEWLINE"} != {"NAME"} or not sight.last_word:
         return None
-    return sight.here(f"the name after `{sight.last_word}` is missing", f"write a name between `{sight.last_word}` and this")
+    if sight.last_word == "by" and sight.first_word != "table":
+        return sight.here("`by` does not say who decides", "write `by developer`, `by verifier` or `by programme`")
+    return sight.here(f"the name after `{sight.last_word}` is missing", "write it before this")
 
 
 def _whole_line(sight: Sight, says: str, remedy: str) -> Mistake:
@@ -362,7 +361,10 @@ SLIPS: tuple[Callable[[Sight], Mistake | None], ...] = (
     broken_name,
     unit_without_brackets,
     missing_comma,
+    unfinished_phrase,
     missing_quotes,
+    number_with_comma,
+    late_note,
     missing_operator,
     missing_name,
 )

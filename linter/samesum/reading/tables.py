@@ -174,5 +174,5 @@ def _calculated(node: tree.Tree, scope: Scope) -> tuple[Fraction, Unit | None] |
                 return None
             return top / bottom, None
         case _:
-            scope.report(node, "a row gives a number", "calculate in a quantity, and keep published numbers in the table")
+            scope.report(node, "a row gives a number", "calculate in a quantity; a table holds published numbers")
             return None

@@ -122,7 +122,19 @@ class Negated(Node):
 
 
 Tree = (
-    Literal | Use | Call | Reduce | Grouped | Minus | Chain | Power | Compared | IsValue | TakesOption | Both | Either
+    Literal
+    | Use
+    | Call
+    | Reduce
+    | Grouped
+    | Minus
+    | Chain
+    | Power
+    | Compared
+    | IsValue
+    | TakesOption
+    | Both
+    | Either
     | Negated
 )
 

@@ -9,7 +9,7 @@ from __future__ import annotations
 
 import re
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from fractions import Fraction
 
 from samesum.reading.model import PLAIN, Unit
@@ -22,14 +22,21 @@ _WORD = re.compile(r"[^\W\d_][\w.\-]*|%|°C")
 _TOKEN = re.compile(r"\s*(?:(per\b)|([^\W\d_][\w.\-]*|%|°C)|(\d+)|([*/^()·×-]|\*\*))")
 _HIGHEST_POWER = 12
 
+REMEMBERED_UNITS = 4_000
 Terms = tuple[tuple[str, Fraction], ...]
 
 
 @dataclass(frozen=True, slots=True)
 class UnitTable:
-    """Each unit's name → its factor and base units, as ``units.txt`` has them."""
+    """Each unit's name → its factor and base units, as ``units.txt`` has them.
+
+    ``read`` and ``products`` remember what texts and products came to, since a rulebook uses few units
+    again and again; they change no answer.
+    """
 
     units: Mapping[str, tuple[Fraction, Terms]]
+    read: dict[str, Unit | UnitMistake] = field(default_factory=dict, compare=False, repr=False)
+    products: dict[tuple[str, str, int], Unit] = field(default_factory=dict, compare=False, repr=False)
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,7 +50,8 @@ class UnitMistake:
 def load_units() -> UnitTable:
     """Reads ``grammar/units.txt``. A line that cannot be read is a ValueError: the file is ours."""
     known: dict[str, tuple[Fraction, Terms]] = {}
-    for number, line in enumerate((shipped_folder("grammar") / "units.txt").read_text(encoding="utf-8").splitlines(), 1):
+    lines = (shipped_folder("grammar") / "units.txt").read_text(encoding="utf-8").splitlines()
+    for number, line in enumerate(lines, 1):
         text = line.strip()
         if not text or text.startswith("#"):
             continue
@@ -89,7 +97,16 @@ def _merged(left: Terms, right: Terms, sign: int | Fraction = 1) -> Terms:
 
 
 def read_unit(text: str, table: UnitTable) -> Unit | UnitMistake:
-    """The unit that ``text`` (without the square brackets) means; "" is a plain number."""
+    """The unit that ``text`` (without the square brackets) means."""
+    known = table.read.get(text)
+    if known is None:
+        known = _read(text, table)
+        if len(table.read) < REMEMBERED_UNITS:
+            table.read[text] = known
+    return known
+
+
+def _read(text: str, table: UnitTable) -> Unit | UnitMistake:
     if not text.strip():
         return UnitMistake("the square brackets hold no unit", "write the unit, as in [ha], or leave the brackets out")
     reader = _Reader(re.sub(r"\bdeg C\b", "degC", text), table)
@@ -175,8 +192,11 @@ class _Reader:
             terms = ((self.name(token, before), Fraction(1)),)
         else:
             raise _Unreadable(
-                f"the unit [{self.text}] has {token!r} where a unit belongs" if token else
-                f"the unit [{self.text}] ends too early", self._form())
+                f"the unit [{self.text}] has {token!r} where a unit belongs"
+                if token
+                else f"the unit [{self.text}] ends too early",
+                self._form(),
+            )
         if self.peek() in ("^", "**"):
             self.take()
             power = self.power()
@@ -200,7 +220,8 @@ class _Reader:
         if bracket and self.take() != ")":
             value = Fraction(0)
         if not 0 < value <= _HIGHEST_POWER:
-            raise _Unreadable(f"a power in the unit [{self.text}] cannot be read", "write a small whole number, as in m^2")
+            says = f"a power in the unit [{self.text}] cannot be read"
+            raise _Unreadable(says, "write a small whole number, as in m^2")
         return value * sign
 
     def name(self, word: str, before: Terms) -> str:
@@ -226,9 +247,7 @@ def hint(word: str, table: UnitTable) -> str:
 
 
 def _takes_a_substance(bases: Terms) -> bool:
-    return any(
-        bases == ((name, Fraction(1)),) for name in _OF_A_SUBSTANCE
-    ) or bases == (("length", Fraction(3)),)
+    return any(bases == ((name, Fraction(1)),) for name in _OF_A_SUBSTANCE) or bases == (("length", Fraction(3)),)
 
 
 # --- calculating with units ------------------------------------------------------------------
@@ -241,6 +260,8 @@ def same_dimension(left: Unit, right: Unit) -> bool:
 def conversion(source: Unit, target: Unit) -> Fraction:
     """What a number in ``source`` is multiplied by to be a number in ``target``. Both must have the
     same dimension."""
+    if source.factor == target.factor:
+        return Fraction(1)
     return source.factor / target.factor
 
 
@@ -255,9 +276,15 @@ def money_of(unit: Unit) -> str:
 
 def multiplied(left: Unit, right: Unit, table: UnitTable, sign: int = 1) -> Unit:
     """The unit of left × right (sign 1) or left / right (sign −1)."""
-    if right.text == "" and not right.dimension and right.factor == 1:
+    if right == PLAIN:
         return left
-    return unit_of(_merged(_terms(left, table), _terms(right, table), sign), table)
+    key = (left.text, right.text, sign)
+    known = table.products.get(key)
+    if known is None:
+        known = unit_of(_merged(_terms(left, table), _terms(right, table), sign), table)
+        if len(table.products) < REMEMBERED_UNITS:
+            table.products[key] = known
+    return known
 
 
 def raised(unit: Unit, power: Fraction, table: UnitTable) -> Unit:

@@ -11,7 +11,8 @@ from typing import Literal
 from samesum.reading import tree
 from samesum.reading.numbers import exact
 from samesum.reading.read import Reader
-from samesum.reading.syntax import Mistake, parse_condition
+from samesum.reading.sight import Mistake
+from samesum.reading.syntax import parse_condition
 from samesum.reading.words import listing, nearest
 from samesum.spans import Span
 
@@ -179,7 +180,8 @@ def _side(node: tree.Tree, place: tree.Place) -> Side:
         case tree.Literal():
             raise _Unfit(span, "numbers have no unit here", "leave the unit out")
         case _:
-            raise _Unfit(span, "nothing is calculated in a rule's condition", "write the name of an attribute or a number")
+            says = "nothing is calculated in a rule's condition"
+            raise _Unfit(span, says, "write the name of an attribute or a number")
 
 
 # --- checking names against the attributes that there are -----------------------------------------
@@ -205,7 +207,9 @@ def unfit_names(where: WhereCondition, attributes: Mapping[str, AttributeKind]) 
     return tuple(mistake for mistake in found if mistake is not None)
 
 
-def _unfit(attribute: Attribute, attributes: Mapping[str, AttributeKind], wanted: str, says: str) -> WhereMistake | None:
+def _unfit(
+    attribute: Attribute, attributes: Mapping[str, AttributeKind], wanted: str, says: str
+) -> WhereMistake | None:
     kind = attributes.get(attribute.name)
     if kind is None:
         close = nearest(attribute.name, attributes)

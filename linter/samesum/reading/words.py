@@ -44,7 +44,8 @@ def nearest(word: str, known: Iterable[str]) -> str:
 
 
 def _plain(word: str) -> str:
-    return "".join(letter for letter in unicodedata.normalize("NFD", word.casefold()) if letter.isalnum() or letter == "_")
+    letters = unicodedata.normalize("NFD", word.casefold())
+    return "".join(letter for letter in letters if letter.isalnum() or letter == "_")
 
 
 def _slips(one: str, other: str) -> int:
