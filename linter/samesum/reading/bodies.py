@@ -21,7 +21,7 @@ from samesum.reading.model import (
     Unknown,
     When,
 )
-from samesum.reading.phrases import decider_of, plain_number, read_phrases
+from samesum.reading.phrases import decider_of, errors_of, plain_number, read_phrases
 from samesum.reading.scope import Scope
 from samesum.reading.typed import fit, index_is_known, say_unit
 from samesum.reading.units import MONEY, money_of
@@ -152,15 +152,7 @@ def _option(option: tree.OptionTree, unit: Unit | None, scope: Scope, level: int
     only_when = None
     if "only_when" in phrases and (condition := phrases["only_when"].expression) is not None:
         only_when = resolve_condition(condition, scope)
-    error = bias = None
-    if "error" in phrases:
-        error = plain_number(phrases["error"].numbers[0], "an error", scope)
-        if error is not None and error < 0:
-            scope.report(phrases["error"], "an error is not negative", "write how much it scatters, as in `error 8 %`",
-                         "value")  # fmt: skip
-            error = None
-    if "bias" in phrases:
-        bias = plain_number(phrases["bias"].numbers[0], "a bias", scope)
+    error, bias = errors_of(phrases, scope)
     cost = _cost(phrases["cost"], scope) if "cost" in phrases else None
     body = resolve_body(option.body, unit, scope, level + 1)
     return Option(

@@ -224,6 +224,7 @@ class Building(Transformer[Token, Any]):
     bias = _phrase("bias")
     cost = _phrase("cost")
     reference = _phrase("reference")
+    withheld = _phrase("withheld")
 
     # bodies
 

@@ -18,8 +18,10 @@ from samesum.reading.model import (
     Constant,
     Domain,
     Fact,
+    Formula,
     Index,
     Judgement,
+    Number,
     OneOf,
     Quantity,
     Range,
@@ -28,10 +30,11 @@ from samesum.reading.model import (
     Spread,
     Table,
     Unit,
+    Unknown,
     YesNo,
 )
 from samesum.reading.names import Placed, head_unit
-from samesum.reading.phrases import decider_of, in_unit, read_phrases, text_of, whole_number
+from samesum.reading.phrases import decider_of, errors_of, in_unit, read_phrases, text_of, whole_number
 from samesum.reading.scope import Scope
 from samesum.reading.tables import resolve_rows
 from samesum.reading.typed import fit
@@ -214,7 +217,12 @@ def resolve_constant(block: Placed, scope: Scope) -> Constant:
         expression = typed.expression
     else:
         expression = fit(typed, unit, node, scope, "the constant is in")
-    return Constant(_name(block).text, unit or PLAIN, expression, about(block, phrases, scope))
+    withheld = "withheld" in phrases
+    if withheld and not (isinstance(expression, Number) and unit == PLAIN):
+        scope.report(phrases["withheld"], "only a plain number can be left out of the reference",
+                     "write it as in `constant deduction = 12 %, not in reference`", "value")  # fmt: skip
+        withheld = False
+    return Constant(_name(block).text, unit or PLAIN, expression, about(block, phrases, scope), withheld)
 
 
 def resolve_table(block: Placed, scope: Scope) -> Table:
@@ -236,7 +244,14 @@ def resolve_quantity(block: Placed, scope: Scope) -> Quantity:
     assert body is not None
     inside = scope.over(declared.index) if declared.index else scope
     resolved = resolve_body(body, unit, inside)
-    return Quantity(declared.name, unit or PLAIN, declared.index, resolved, about(block, phrases, scope))
+    error, bias = errors_of(phrases, scope)
+    if (error is not None or bias is not None) and not isinstance(resolved, Formula | Unknown):
+        said = phrases.get("error", phrases.get("bias"))
+        assert said is not None
+        scope.report(said, f"`{declared.name}` is no single formula, so that it has no single error",
+                     "state the error at each option, or of a quantity that is a formula", "value")  # fmt: skip
+        error = bias = None
+    return Quantity(declared.name, unit or PLAIN, declared.index, resolved, about(block, phrases, scope), error, bias)
 
 
 def resolve_quietly(block: Placed, scope: Scope) -> None:

@@ -380,10 +380,13 @@ class Judgement:
 
 @dataclass(frozen=True, slots=True)
 class Constant:
+    """``withheld``: no part of what counts as the truth in comparisons, where it is zero (``not in reference``)."""
+
     name: str
     unit: Unit
     expression: Expression
     about: About
+    withheld: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -426,11 +429,15 @@ class Table:
 
 @dataclass(frozen=True, slots=True)
 class Quantity:
+    """``error`` and ``bias`` as for an option: how a formula errs that nobody has to choose."""
+
     name: str
     unit: Unit
     index: str
     body: Body
     about: About
+    error: Fraction | None = None
+    bias: Fraction | None = None
 
 
 @dataclass(frozen=True, slots=True)

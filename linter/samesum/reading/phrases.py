@@ -34,6 +34,7 @@ WRITTEN: Mapping[str, str] = {
     "bias": "`bias … %`",
     "cost": "`cost …`",
     "reference": "`reference`",
+    "withheld": "`not in reference`",
 }
 _GROUPS = {"range": "domain", "one_of": "domain", "yes_no": "domain", "fixed": "timing", "open": "timing"}
 _DOMAIN = ("range", "one_of", "yes_no")
@@ -46,9 +47,9 @@ ALLOWED: Mapping[str, tuple[str, ...]] = {
     "fact": ("per", *_DOMAIN, "spread", "clause", "source"),
     "setting": (*_DOMAIN, "by", "clause", "source"),
     "judgement": ("wording", "by", "clause", "source"),
-    "constant": ("clause", "source"),
+    "constant": ("clause", "source", "withheld"),
     "table": ("clause", "source"),
-    "quantity": ("per", "clause", "source"),
+    "quantity": ("per", "error", "bias", "clause", "source"),
     "choice": ("by", "fixed", "open", "correlated"),
     "choice that follows another": (),
     "option": ("only_when", "error", "bias", "cost", "reference"),
@@ -149,3 +150,17 @@ def whole_number(literal: tree.Literal, what: str, most: int, scope: Scope) -> i
         scope.report(literal, f"{what} is a whole number from 1 to {most}", kind="value")
         return None
     return int(value)
+
+
+def errors_of(phrases: Mapping[str, tree.Phrase], scope: Scope) -> tuple[Fraction | None, Fraction | None]:
+    """The relative standard error and the mean relative error, where they are said."""
+    error = bias = None
+    if "error" in phrases:
+        error = plain_number(phrases["error"].numbers[0], "an error", scope)
+        if error is not None and error < 0:
+            scope.report(phrases["error"], "an error is not negative", "write how much it scatters, as in `error 8 %`",
+                         "value")  # fmt: skip
+            error = None
+    if "bias" in phrases:
+        bias = plain_number(phrases["bias"].numbers[0], "a bias", scope)
+    return error, bias
