@@ -108,10 +108,8 @@ def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
                     gaps.append(Gap(point.id, answer.witness))
                 elif answer.says == "cannot tell":
                     undecided.append(Undecided(point.id, "gap"))
-            if not point.leader and (seen is None or seen == {relation.stuck}):
-                dead += _dead(network, relation, working, undecided)
-            elif not point.leader and seen is not None and any(k < relation.not_reached for k in seen):
-                dead += [DeadBranch(point.id, name) for k, name in enumerate(point.branches) if k not in seen]
+            if not point.leader:
+                dead += _dead(network, relation, working, seen, undecided)
             gaps += _rowless_conditions(network, relation, undecided)
         gaps += _rowless_formulas(network, undecided)
     order = {id: place for place, id in enumerate([*network.graph.instances, *network.graph.branch_points])}
@@ -147,24 +145,39 @@ def _working(network: Network, relation: PointRelation) -> int:
     return network.diagrams.both(relation.reach, relation.sound)
 
 
-def _dead(network: Network, relation: PointRelation, working: int, undecided: list[Undecided]) -> list[DeadBranch]:
+def _dead(
+    network: Network,
+    relation: PointRelation,
+    working: int,
+    seen: frozenset[int] | None,
+    undecided: list[Undecided],
+) -> list[DeadBranch]:
+    """Branches that nobody inside the rulebook can take, although their branch point can be reached.
+    ``seen`` are the states it can be in, None when that is not known."""
     d = network.diagrams
-    found = []
+    id = relation.point.id
+    found = [
+        DeadBranch(id, name) for k, name in enumerate(relation.point.branches) if seen is not None and k not in seen
+    ]
+    if seen is not None and len(found) < len(relation.open):
+        return found
+    if seen is not None and relation.stuck not in seen:
+        return []
     reachable: _Answer | None = None
     for k, branch in enumerate(relation.point.branches):
-        if d.is_end(relation.open[k], True) and d.is_end(working, True):
-            continue
-        answer = _ask(network, [working, relation.open[k]], relation, k, show=False)
+        answer = _Answer("no")
+        if seen is None:
+            if d.is_end(relation.open[k], True) and d.is_end(working, True) and d.is_end(network.applies, True):
+                continue
+            answer = _ask(network, [d.literal(relation.level, (k,))], relation, k, show=False)
         if answer.says == "no":
             if reachable is None:
                 reachable = _ask(network, [working], relation, None, show=False)
-            if reachable.says == "yes":
-                found.append(DeadBranch(relation.point.id, branch))
-            elif reachable.says == "cannot tell":
-                undecided.append(Undecided(relation.point.id, "dead branch", (branch,)))
-        elif answer.says == "cannot tell":
-            undecided.append(Undecided(relation.point.id, "dead branch", (branch,)))
-    return found
+            if reachable.says == "yes" and seen is None:
+                found.append(DeadBranch(id, branch))
+        if "cannot tell" in (answer.says, reachable.says if reachable else ""):
+            undecided.append(Undecided(id, "dead branch", (branch,)))
+    return found if reachable is not None and reachable.says == "yes" else []
 
 
 def _rowless_conditions(network: Network, relation: PointRelation, undecided: list[Undecided]) -> list[Gap]:

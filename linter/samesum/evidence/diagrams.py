@@ -526,41 +526,52 @@ def evaluate(diagrams: Diagrams, a: int, values: Mapping[int, int]) -> Any:
 def possible_values(diagrams: Diagrams, factors: Sequence[int], levels: Sequence[int]) -> dict[int, frozenset[int]]:
     """For each of ``levels``, the values it has somewhere in a product of 0s and 1s.
 
-    One elimination of everything, then the way back: what each step handed on meets what came from
-    elsewhere (belief propagation on the tree of eliminations). Twice the cost of one elimination,
-    for all variables together. Raises ``OutOfLimits``.
+    One elimination of everything, then the way back: each step of the elimination learns from the step that
+    took over from it what the rest of the product allows (the messages of a bucket tree; Dechter 1999).
+    About three times the cost of one elimination, for all variables together. Raises ``OutOfLimits``.
     """
-    support = sorted({level for factor in factors for level in diagrams.support(factor)} | set(levels))
+    everything = sorted({level for factor in factors for level in diagrams.support(factor)} | set(levels))
     trail: list[Eliminated] = []
-    rest = eliminate(diagrams, factors, support, "exists", trail)
-    if not number(diagrams, rest):
+    if not number(diagrams, eliminate(diagrams, factors, everything, "exists", trail)):
         return {level: frozenset() for level in levels}
+    place = {step.level: position for position, step in enumerate(trail)}
+    own: list[list[int]] = [[] for _ in trail]
+    for factor in factors:
+        if diagrams.support(factor):
+            own[min(place[level] for level in diagrams.support(factor))].append(factor)
+    children: list[list[int]] = [[] for _ in trail]
+    scopes: list[set[int]] = []
+    upwards: list[list[int]] = []
+    for position, step in enumerate(trail):
+        scope = {level for factor in own[position] for level in diagrams.support(factor)}
+        scope |= {level for child in children[position] for level in scopes[child]}
+        scope.discard(step.level)
+        scopes.append(scope)
+        received = own[position] + [factor for child in children[position] for factor in upwards[child]]
+        upwards.append(eliminate(diagrams, received, [step.level], "exists"))
+        if scope:
+            children[min(place[level] for level in scope)].append(position)
     wanted = set(levels)
     found: dict[int, frozenset[int]] = {}
-    # each step's message is an operand of exactly one later step: hand back to it what that step knows
-    sent: dict[int, list[int]] = {}
-    for position, step in enumerate(trail):
-        sent.setdefault(step.result, []).append(position)
-    from_above: dict[int, int] = {}
-    one = diagrams.end(1)
+    downwards: list[list[int]] = [[] for _ in trail]
     for position in range(len(trail) - 1, -1, -1):
-        step = trail[position]
-        above = from_above.get(position, one)
-        operands = [*step.factors, above]
-        for place, factor in enumerate(step.factors):
-            senders = [each for each in sent.get(factor, ()) if each < position and each not in from_above]
-            if not senders:
-                continue
-            others = [other for k, other in enumerate(operands) if k != place]
-            scope = diagrams.support(factor)
-            outside = sorted({level for other in others for level in diagrams.support(other)} - scope)
-            back = product_of(diagrams, eliminate(diagrams, others, outside, "exists"))
-            for each in senders:
-                from_above[each] = back
-        if step.level in wanted:
-            outside = sorted({level for factor in operands for level in diagrams.support(factor)} - {step.level})
-            belief = product_of(diagrams, eliminate(diagrams, operands, outside, "exists"))
-            found[step.level] = frozenset(
-                value for value in range(diagrams.size[step.level]) if evaluate(diagrams, belief, {step.level: value})
+        level = trail[position].level
+        here = own[position] + downwards[position]
+        for child in children[position]:
+            others = here + [f for other in children[position] if other != child for f in upwards[other]]
+            downwards[child] = _within(diagrams, others, scopes[child])
+        if level in wanted:
+            all_here = here + [factor for child in children[position] for factor in upwards[child]]
+            belief = _within(diagrams, all_here, {level})
+            found[level] = frozenset(
+                value
+                for value in range(diagrams.size[level])
+                if all(evaluate(diagrams, factor, {level: value}) for factor in belief)
             )
     return found
+
+
+def _within(diagrams: Diagrams, factors: Sequence[int], scope: set[int]) -> list[int]:
+    """A product of 0s and 1s with everything outside ``scope`` projected out."""
+    outside = sorted({level for factor in factors for level in diagrams.support(factor)} - scope)
+    return eliminate(diagrams, factors, outside, "exists")

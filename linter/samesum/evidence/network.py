@@ -96,7 +96,8 @@ def build_network(graph: DecisionGraph, limits: Limits, on_paper: bool = False) 
     """
     diagrams = Diagrams(limits)
     readings = Readings(graph, diagrams)
-    users = _find_users(graph, on_paper)
+    wanted = _reachable_instances(graph, on_paper)
+    users = _find_users(graph, set(wanted), on_paper)
     evaluated: dict[str, int] = {}
 
     def is_evaluated(id: str) -> int:
@@ -124,7 +125,6 @@ def build_network(graph: DecisionGraph, limits: Limits, on_paper: bool = False) 
         return is_evaluated(leaf.instance) if leaf.under is None else under(leaf.under)
 
     relations: dict[str, PointRelation] = {}
-    wanted = _reachable_instances(graph, on_paper)
     for point in graph.branch_points.values():
         if point.instance not in wanted:
             continue
@@ -156,16 +156,18 @@ def build_network(graph: DecisionGraph, limits: Limits, on_paper: bool = False) 
     return _settle(graph, diagrams, readings, relations, leaves, flows, applies)
 
 
-def _find_users(graph: DecisionGraph, on_paper: bool) -> _Users:
+def _find_users(graph: DecisionGraph, wanted: set[str], on_paper: bool) -> _Users:
     users = _Users()
     if graph.model.result is not None:
         users.always.add(graph.model.result.name)
     for id, leaves in graph.leaves.items():
-        for leaf in leaves:
+        for leaf in leaves if id in wanted else ():
             for kind, target in mentions(leaf.expression, graph.instances[id].elements, graph.sizes):
                 if kind == "value":
                     users.leaves.setdefault(target, []).append(leaf)
     for point in graph.branch_points.values():
+        if point.instance not in wanted:
+            continue
         if point.leader:
             users.tied.setdefault(point.leader, []).append(point.id)
         if on_paper:
