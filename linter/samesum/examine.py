@@ -13,33 +13,45 @@ from samesum.problems import Problem
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
-    from samesum.reading.read import Reading
+    from samesum.judging.judge import Judged
+    from samesum.judging.rules import RuleSet
+    from samesum.reading.read import Reader, Reading
 
 
 @dataclass(frozen=True, slots=True)
 class Examined:
-    """One rulebook as far as it could be examined. ``evidence`` is None when problems stand in the way."""
+    """One rulebook as far as it could be examined. ``evidence`` is None when problems stand in the way;
+    ``judged`` is None then, and when no rules were given."""
 
     reading: Reading
     evidence: Evidence | None
+    judged: Judged | None = None
 
     @property
     def problems(self) -> tuple[Problem, ...]:
         return self.reading.problems
 
 
-def examine(path: Path, seconds: float = 10.0) -> Examined:
-    """A rulebook file, read and examined. ``seconds`` bounds the analysis, not the reading.
+def examine(path: Path, seconds: float = 10.0, rules: RuleSet | None = None, reader: Reader | None = None) -> Examined:
+    """A rulebook file, read, examined and, where ``rules`` are given, judged. ``seconds`` bounds the analysis, not
+    the reading. ``reader`` may be handed in when several files are read.
 
     A unit mismatch does not stand in the way: the expression is left out, and lint rules report it.
     """
     from samesum.reading.read import read_file
 
-    reading = read_file(path)
+    reading = read_file(path, reader=reader)
     usable = reading.model is not None and all(problem.kind == "unit" for problem in reading.problems)
     if not usable or reading.model is None:
         return Examined(reading, None)
     from samesum.evidence.gather import gather
     from samesum.graph import build
 
-    return Examined(reading, gather(build(reading.model), seconds))
+    evidence = gather(build(reading.model), seconds)
+    if rules is None:
+        return Examined(reading, evidence)
+    from samesum.evidence.subjects import subjects_of
+    from samesum.judging.judge import judge
+
+    subjects = subjects_of(evidence, reading.problems, seconds / 2)
+    return Examined(reading, evidence, judge(reading.model.file, subjects, rules))

@@ -44,6 +44,16 @@ class Control:
     movers: tuple[Mover, ...]
 
 
+def movers_of(condition: m.Condition, graph: DecisionGraph, overlapping: Iterable[str] = ()) -> tuple[Mover, ...]:
+    """Who can move one condition that stands outside any branch point, such as ``applies when``."""
+    general = {point.general_id: point for point in reversed(list(graph.branch_points.values()))}
+    overlaps = {graph.branch_points[id].general_id for id in overlapping if id in graph.branch_points}
+    found: dict[tuple[str, str], Mover] = {}
+    for mover in _movers(condition, links(graph), _sources(graph, general, overlaps), general):
+        found.setdefault((mover.through, mover.source), mover)
+    return tuple(sorted(found.values(), key=lambda mover: (len(mover.chain), mover.chain, mover.source)))
+
+
 @dataclass(frozen=True, slots=True)
 class _Source:
     by: m.Decider

@@ -7,15 +7,15 @@ from typing import Any
 from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.witness import Witness
-from samesum.outputs.numbers import whole
 from samesum.outputs.page import Page, Paper
 from samesum.outputs.projects import Words, as_values, project, route, words_for
 from samesum.reading.model import Model
+from samesum.written import whole
 
 FIGURES = (
     ("on_paper", "On paper", "routes when no condition is asked or obeyed"),
     ("reachable", "Over all projects", "different routes that some project can take"),
-    ("per_project_most", "One project, at most", "routes open to one and the same project; 1 is what repeatability needs"),
+    ("per_project_most", "One project, at most", "routes open to one project; 1 is what repeatability needs"),
     ("per_project_least", "One project, at least", "routes open to the project that has the fewest"),
     ("developer_most", "By the developer alone", "the most for one project when what the verifier or the programme "
      "decides is taken as given"),

@@ -6,7 +6,7 @@ import json
 from collections.abc import Mapping
 from typing import Any
 
-from samesum.outputs.numbers import long_integers
+from samesum.written import long_integers
 
 
 def as_json(answer: Mapping[str, Any]) -> str:

@@ -7,6 +7,7 @@ note reaches the terminal.
 from __future__ import annotations
 
 import os
+import re
 import shutil
 import unicodedata
 from collections.abc import Mapping
@@ -15,6 +16,7 @@ from typing import TextIO
 
 WIDEST = 96
 NARROWEST = 24
+_BEFORE_PERCENT = re.compile(r"(?<=\d) (?=%)")
 
 _JOINERS = "\u200c\u200d"  # some alphabets are not readable without them
 _STYLES = {"strong": "1", "quiet": "2", "bad": "1;31", "warn": "33", "good": "32", "link": "36"}
@@ -59,7 +61,10 @@ def wrapped(text: str, width: int) -> list[str]:
     """The text in lines of at most ``width`` columns, broken at spaces; a longer word stands alone, whole."""
     lines: list[str] = []
     line = ""
-    for word in text.split():
+    for word in _BEFORE_PERCENT.sub("\u00a0", text).replace("\n", " ").split(" "):
+        if not word:
+            continue
+        word = word.replace("\u00a0", " ")
         if line and width_of(line) + 1 + width_of(word) > width:
             lines.append(line)
             line = word

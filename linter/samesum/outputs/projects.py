@@ -8,8 +8,8 @@ from fractions import Fraction
 from typing import Any
 
 from samesum.evidence.witness import Value, Witness
-from samesum.outputs.numbers import percent, plain
 from samesum.reading import model as m
+from samesum.written import number, percent, plain
 
 LONGEST = 9
 
@@ -40,7 +40,7 @@ def _is_share(declared: m.Fact | m.Setting) -> bool:
         and isinstance(domain, m.Range)
         and domain.low is not None
         and domain.high is not None
-        and -1 <= domain.low
+        and domain.low >= -1
         and domain.high <= 1
     )
 
@@ -102,14 +102,3 @@ def _plain_value(value: Value | tuple[Value, ...]) -> Any:
         return number(value)
     return value
 
-
-def number(value: Fraction) -> int | float | str:
-    """A number for JSON: whole numbers whole, others as the nearest floating-point number where that is exact to
-    its last digit, else as a fraction ``"125/6"``, so that a witness can be replayed exactly."""
-    if value.denominator == 1:
-        return value.numerator
-    try:
-        nearest = float(value)
-    except OverflowError:
-        return str(value)
-    return nearest if Fraction(repr(nearest)) == value else str(value)

@@ -66,3 +66,14 @@ def percent(value: Fraction) -> str:
     size = decimal(abs(hundred)).adjusted()
     step = Fraction(10) ** (size - 2) if size < 2 else Fraction(1)
     return f"{plain(round(hundred / step) * step)} %"
+
+def number(value: Fraction) -> int | float | str:
+    """A number for JSON: whole numbers whole, others as the nearest floating-point number where that is exact to
+    its last digit, else as a fraction ``"125/6"``, so that a witness can be replayed exactly."""
+    if value.denominator == 1:
+        return value.numerator
+    try:
+        nearest = float(value)
+    except OverflowError:
+        return str(value)
+    return nearest if Fraction(repr(nearest)) == value else str(value)

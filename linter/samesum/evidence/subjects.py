@@ -1,0 +1,39 @@
+"""All subjects of one rulebook, in reading order.
+
+Takes the evidence and the unit mismatches that reading found; gives rows that lint rules look at. What only
+rules need (equal branches, jumps) is worked out here.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Iterable, Sequence
+
+from samesum.evidence import subjects_branches, subjects_declared, subjects_numbers
+from samesum.evidence.counting import deep
+from samesum.evidence.equal import Workshop
+from samesum.evidence.evidence import Evidence
+from samesum.evidence.subject_kinds import Subject
+from samesum.problems import Problem
+
+
+def subjects_of(evidence: Evidence, problems: Iterable[Problem] = (), seconds: float = 5.0) -> tuple[Subject, ...]:
+    """Every subject, sorted by place, kind and key. ``problems``: only unit mismatches are taken in.
+    ``seconds`` bounds the work; what is not settled by then has attributes that cannot be told."""
+    start = time.monotonic()
+    found: list[Subject] = []
+    with deep():
+        workshop = Workshop.of(evidence.graph, seconds / 2)
+        found += subjects_declared.subjects(evidence)
+        found += subjects_declared.unit_mismatches(evidence, problems)
+        found += subjects_branches.subjects(evidence, workshop)
+        found += subjects_numbers.branches(evidence, workshop)
+        found += subjects_numbers.equal_branches(evidence, workshop)
+        found += subjects_numbers.overlaps(evidence, workshop)
+        found += subjects_numbers.jumps(evidence, max(0.2, seconds - (time.monotonic() - start)))
+    return in_reading_order(found)
+
+
+def in_reading_order(subjects: Sequence[Subject]) -> tuple[Subject, ...]:
+    """By place, then kind and key."""
+    return tuple(sorted(subjects, key=lambda each: (each.span, each.kind, each.branch_point, each.key)))
