@@ -1,0 +1,306 @@
+"""Lowest and highest result of every project with the route that gives each, without listing routes.
+
+Exact: an operation is folded only where its extremes are at the ends of its parts; the route found is replayed,
+and its value must be the one that was folded.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from samesum.evidence.arrays import Array, Table, at, combined, picked, reduced, stacked
+from samesum.evidence.hulls import Hull, applied, ends_wanted
+from samesum.evidence.plan import Plan
+from samesum.evidence.settings import candidates_of
+from samesum.evidence.steps import Step, Work
+from samesum.evidence.structure import Structure, find_structure
+from samesum.evidence.values import Evaluator, Rows, TooMany, decision, route_codes
+
+LARGE = 4096  # combinations beyond which a shared part may stand for itself
+MOST_AT_ONCE = 3_000_000  # cells in one table
+
+
+@dataclass(frozen=True, slots=True)
+class Extreme:
+    """One end of each row's range. ``value`` before rounding, NaN where no route has a result. ``route``: branch
+    taken by branch point, -1 where not reached. ``inputs``: the rows, settings and judgements as they stand there."""
+
+    value: Array
+    route: Mapping[str, Array]
+    inputs: Rows
+
+
+@dataclass(frozen=True, slots=True)
+class Extremes:
+    """``exact``: whether nothing lies below ``lowest`` or above ``highest``, row by row."""
+
+    lowest: Extreme
+    highest: Extreme
+    exact: Array
+
+
+def find_extremes(plan: Plan, rows: Rows, held: frozenset[str] = frozenset()) -> Extremes:
+    """Lowest and highest of each row over all routes and free settings. What is ``held`` (branch points by id,
+    settings and judgements by name) keeps to the reference. Raises ``TooMany`` when parts share too much."""
+    work = plan_work(plan, rows, held)
+    per_row = max(1, work.largest)
+    if per_row > MOST_AT_ONCE:
+        raise TooMany
+    size = max(1, MOST_AT_ONCE // per_row)
+    if size >= rows.count:
+        return _run(plan, work)
+    parts = [rows.part(slice(start, start + size)) for start in range(0, rows.count, size)]
+    return _joined([_run(plan, plan_work(plan, part, held)) for part in parts])
+
+
+def plan_work(plan: Plan, rows: Rows, held: frozenset[str]) -> Work:
+    """The steps, with shared parts standing for themselves where that keeps tables small."""
+    evaluator = Evaluator(plan, rows, held=held)
+    evaluator.candidates, unsure = candidates_of(plan, rows, held)
+    structure = find_structure(evaluator)
+    work = Work(evaluator, structure, unsure)
+    work.plan_steps()
+    return work
+
+
+def _run(plan: Plan, work: Work) -> Extremes:
+    with np.errstate(all="ignore"):
+        hulls = _forward(work)
+        root = work.steps[-1].out
+        found = [_backward(plan, work, hulls, root, high) for high in (False, True)]
+    low, high = hulls[root].low, hulls[root].high
+    rows = work.evaluator.rows.count
+    agrees = np.ones(rows, dtype=bool)
+    for extreme, table in zip(found, (low, high), strict=True):
+        folded = np.broadcast_to(table.data, (rows,))
+        same = np.abs(extreme.value - folded) <= 1e-9 * np.maximum(np.abs(folded), 1e-9)
+        agrees &= same | (np.isnan(extreme.value) & np.isnan(folded))
+    return Extremes(found[0], found[1], agrees & ~work.unsure)
+
+
+# --- forward -------------------------------------------------------------------------------
+
+
+def _forward(work: Work) -> list[Hull]:
+    hulls: list[Hull] = []
+    for step in work.steps:
+        hulls.append(_done(work, step, hulls))
+    return hulls
+
+
+def _done(work: Work, step: Step, hulls: list[Hull]) -> Hull:
+    evaluator = work.evaluator
+    match step.kind:
+        case "given":
+            table = evaluator.number(step.number)
+            return Hull(table, table)
+        case "wide":
+            values = evaluator.candidates[step.node.name]
+            return Hull(Table((), values[0]), Table((), values[-1]))
+        case "apply":
+            return applied(step.node, [hulls[slot] for slot in step.inputs])
+        case "select":
+            return _selected(evaluator, step, hulls)
+        case "guard":
+            return _guarded(evaluator, step, hulls[step.inputs[0]])
+        case "fold":
+            inner = hulls[step.inputs[0]]
+            axes = tuple(axis for axis in step.axes if axis in inner.low.axes or axis in inner.high.axes)
+            low = reduced(_allowed(evaluator, inner.low, axes), axes, np.fmin.reduce)
+            high = reduced(_allowed(evaluator, inner.high, axes), axes, np.fmax.reduce)
+            return Hull(low, high)
+        case _:
+            inner = hulls[step.inputs[0]]
+            table = stacked(step.axes[0], (inner.low, inner.high), np.nan)
+            return Hull(table, table)
+
+
+def _allowed(evaluator: Evaluator, table: Table, axes: tuple[int, ...]) -> Table:
+    """Without the places that a row may not take (a judgement that the project gives)."""
+    for axis in axes:
+        allowed = evaluator.axes[axis].allowed
+        if allowed is not None:
+            table = combined(lambda v, a: np.where(a, v, np.nan), table, Table((axis,), allowed))
+    return table
+
+
+def _selected(evaluator: Evaluator, step: Step, hulls: list[Hull]) -> Hull:
+    state = evaluator.state(step.node.args[0])
+    inputs = [hulls[slot] for slot in step.inputs]
+    thin = all(each.thin for each in inputs)
+    sides = []
+    for high in (False,) if thin else (False, True):
+        bodies = [each.high if high else each.low for each in inputs]
+        if state.codes is not None:
+            codes = state.codes
+            if len(bodies) == 1 and (codes.data == step.places[0]).all():
+                sides.append(bodies[0])
+                continue
+            value = Table((), np.array([np.nan]))
+            for place, body in zip(step.places, bodies, strict=True):
+                value = combined(lambda c, v, w, place=place: np.where(c == place, v, w), codes, body, value)
+            sides.append(value)
+            continue
+        assert state.axis is not None
+        parts = []
+        by_place = dict(zip(step.places, bodies, strict=True))
+        for place, open_ in enumerate(state.open):
+            here = by_place.get(place)
+            if here is None:
+                parts.append(Table((), np.array([np.nan])))
+                continue
+            here = at(here, state.axis, place)
+            if not open_.data.all():
+                here = combined(lambda o, v: np.where(o, v, np.nan), open_, here)
+            parts.append(here)
+        sides.append(stacked(state.axis, parts, np.nan))
+    return Hull(sides[0], sides[-1])
+
+
+def _guarded(evaluator: Evaluator, step: Step, inner: Hull) -> Hull:
+    low, high = inner.low, inner.high
+    for each in step.node.args[1:]:
+        truth = evaluator.truth(each)
+        where = truth.holds if truth.valid is None else combined(np.logical_and, truth.holds, truth.valid)
+        thin = low is high
+        low = combined(lambda w, v: np.where(w, v, np.nan), where, low)
+        high = low if thin else combined(lambda w, v: np.where(w, v, np.nan), where, high)
+    return Hull(low, high)
+
+
+# --- backward ------------------------------------------------------------------------------
+
+
+def _backward(plan: Plan, work: Work, hulls: list[Hull], root: int, high: bool) -> Extreme:
+    """Which place each axis takes for one end of each row, read off the work from the last step to the first."""
+    evaluator = work.evaluator
+    rows = evaluator.rows.count
+    places: dict[int, Array] = {}
+    wants: dict[int, Array] = {root: np.full(rows, 2 if high else 1, dtype=np.int8)}
+    numbers = dict(evaluator.rows.numbers)
+
+    def ask(slot: int, want: Array) -> None:
+        if not hulls[slot].thin:
+            known = wants.get(slot)
+            wants[slot] = want if known is None else np.where(want > 0, want, known)
+
+    def ends(slot: int) -> tuple[Array, Array]:
+        low = picked(hulls[slot].low, places, rows)
+        return low, low if hulls[slot].thin else picked(hulls[slot].high, places, rows)
+
+    for step in reversed(work.steps):
+        if step.kind == "part":
+            want = np.where(places[step.axes[0]] == 1, 2, 1).astype(np.int8)
+            ask(step.inputs[0], want)
+            continue
+        want = wants.pop(step.out, np.zeros(rows, dtype=np.int8))
+        if step.kind == "fold":
+            inner = hulls[step.inputs[0]]
+            _choose(evaluator, inner, step.axes, want == 2, places, rows)
+            ask(step.inputs[0], want)
+        elif step.kind == "wide":
+            values = evaluator.candidates[step.node.name]
+            numbers[step.node.name] = np.where(want == 2, values[-1], values[0])
+        elif step.kind == "guard":
+            ask(step.inputs[0], want)
+        elif step.kind == "select":
+            state = evaluator.state(step.node.args[0])
+            if state.codes is not None:
+                taken = picked(state.codes, places, rows)
+            else:
+                assert state.axis is not None
+                taken = places[state.axis]
+            for place, slot in zip(step.places, step.inputs, strict=True):
+                ask(slot, np.where(taken == place, want, 0).astype(np.int8))
+        elif step.kind == "apply" and any(not hulls[slot].thin for slot in step.inputs):
+            pairs = [ends(slot) for slot in step.inputs]
+            asked = ends_wanted(step.node, [low for low, _ in pairs], [top for _, top in pairs], want == 2)
+            for slot, top in zip(step.inputs, asked, strict=True):
+                ask(slot, np.where(want > 0, np.where(top, 2, 1), 0).astype(np.int8))
+    return _replayed(plan, evaluator, places, numbers)
+
+
+def _choose(
+    evaluator: Evaluator, inner: Hull, axes: tuple[int, ...], high: Array, places: dict[int, Array], rows: int
+) -> None:
+    """The place of each folded axis that gives the end wanted, given where the other axes stand."""
+    for axis in axes:
+        allowed = evaluator.axes[axis].allowed
+        places[axis] = np.zeros(rows, dtype=np.intp) if allowed is None else np.argmax(allowed, axis=0)
+    axes = tuple(axis for axis in axes if axis in inner.low.axes or axis in inner.high.axes)
+    if not axes:
+        return
+    found: Array | None = None
+    for side in (False, True) if not inner.thin else (False,):
+        table = _allowed(evaluator, inner.high if side else inner.low, axes)
+        kept = tuple(axis for axis in table.axes if axis not in axes)
+        order = [table.axes.index(axis) for axis in (*kept, *axes)]
+        moved = table.data.transpose(*order, len(table.axes))
+        shape = moved.shape[len(kept) : -1]
+        line = np.arange(rows) if moved.shape[-1] != 1 else np.zeros(rows, dtype=np.intp)
+        if kept:
+            flat = moved.reshape(*moved.shape[: len(kept)], -1, moved.shape[-1])
+            cut = flat[(*(places[axis] for axis in kept), slice(None), line)]
+        else:
+            cut = moved.reshape(-1, moved.shape[-1])[:, line].T
+        lowest = np.argmin(np.where(np.isnan(cut), np.inf, cut), axis=1)
+        highest = np.argmax(np.where(np.isnan(cut), -np.inf, cut), axis=1)
+        mine = np.where(high, highest, lowest)
+        found = mine if found is None else np.where(high, mine, found)
+    assert found is not None
+    for axis, place in zip(axes, np.unravel_index(found, shape), strict=True):
+        places[axis] = place
+
+
+def _replayed(plan: Plan, evaluator: Evaluator, places: Mapping[int, Array], numbers: dict[str, Array]) -> Extreme:
+    """The value and route of each row when every axis stands at its place."""
+    rows = evaluator.rows
+    codes: dict[str, Array] = {}
+    flags, named = dict(rows.flags), dict(rows.codes)
+    for number, axis in enumerate(evaluator.axes):
+        place = places.get(number)
+        if place is None:
+            continue
+        if axis.kind == "point":
+            codes[axis.name] = place
+        elif axis.kind == "judgement":
+            flags[axis.name] = place == 0
+        elif axis.kind == "named":
+            named[axis.name] = place
+        elif axis.kind == "numeric":
+            numbers[axis.name] = picked(Table((number,), evaluator.candidates[axis.name]), places, rows.count)
+    inputs = Rows(rows.count, numbers, named, flags, {})
+    replay = Evaluator(plan, inputs, decide=decision(codes, plan))
+    value = np.broadcast_to(replay.number(plan.root).data, (rows.count,)).astype(np.float64)
+    return Extreme(value, route_codes(replay), inputs)
+
+
+def _joined(parts: list[Extremes]) -> Extremes:
+    def one(extremes: list[Extreme]) -> Extreme:
+        names = dict.fromkeys(name for each in extremes for name in each.route)
+        route = {
+            name: np.concatenate(
+                [each.route.get(name, np.full(len(each.value), -1, dtype=np.int16)) for each in extremes]
+            )
+            for name in names
+        }
+        first = extremes[0].inputs
+
+        def glued(which: str) -> dict[str, Array]:
+            return {name: np.concatenate([getattr(each.inputs, which)[name] for each in extremes]) for name in getattr(first, which)}
+
+        count = sum(each.inputs.count for each in extremes)
+        inputs = Rows(count, glued("numbers"), glued("codes"), glued("flags"), {})
+        return Extreme(np.concatenate([each.value for each in extremes]), route, inputs)
+
+    return Extremes(
+        one([each.lowest for each in parts]),
+        one([each.highest for each in parts]),
+        np.concatenate([each.exact for each in parts]),
+    )
+
+
+__all__ = ["Extreme", "Extremes", "Structure", "find_extremes"]
