@@ -102,14 +102,14 @@ class Listing:
 
     ``shown`` can occur (a point was found); ``open`` could be neither shown nor refuted;
     ``complete`` is False when the listing was cut short, so that combinations are missing;
-    ``points`` are then points at which the shown ones were seen.
+    ``points`` are combinations with a point at which each was seen, where the solver could not show them.
     """
 
     cells: tuple[tuple[Bounds, ...], ...]
     shown: tuple[Vector, ...]
     open: tuple[Vector, ...]
     complete: bool
-    points: tuple[tuple[Fraction, ...], ...] = ()
+    points: tuple[tuple[Vector, tuple[Fraction, ...]], ...] = ()
 
 
 def list_group(group: Group, deadline: float) -> Listing:
@@ -124,13 +124,11 @@ def list_group(group: Group, deadline: float) -> Listing:
         count *= len(each)
     if count > MOST_BOXES:
         return _sampled(group, cells, deadline)
-    try:
-        made = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
-        constraints = [
-            {sign: made.sign(each, sign) for sign in signs} for each, signs in zip(group.sums, group.signs, strict=True)
-        ]
-    except s.Unsuitable:
-        made, constraints = None, []
+    made = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
+    constraints = [
+        {sign: made.sign(each, sign) for sign in signs} for each, signs in zip(group.sums, group.signs, strict=True)
+    ]
+    guessed = [s.beyond(each) for each in group.sums]
     straight = [_straight(each) if symbols.is_linear(each) else None for each in group.sums]
     shown: list[Vector] = []
     unsure: list[Vector] = []
@@ -168,20 +166,17 @@ def list_group(group: Group, deadline: float) -> Listing:
             for sign in decided[number]:
                 shown.append((*chosen, *(sign if k == number else each[0] for k, each in enumerate(decided))))
             return len(shown) + len(unsure) < MOST_BOXES
-        if made is None:
-            _all_open(chosen, decided, unsure)
-            return len(unsure) < MOST_BOXES
         made.push([part for name, cell in box.items() for part in made.within(made.name(name), cell)])
-        going = split(0, decided, [], "yes")
+        sure: s.Answer = "cannot tell" if any(guessed[number] for number in unsettled) else "yes"
+        going = split(0, decided, [], sure)
         made.pop()
         return going
 
     def split(number: int, decided: list[tuple[int, ...]], signs: list[int], so_far: s.Answer) -> bool:
-        assert made is not None
         if number == len(decided):
             (shown if so_far == "yes" else unsure).append((*chosen, *signs))
             return len(shown) + len(unsure) < MOST_BOXES
-        if len(decided[number]) == 1 and so_far != "cannot tell":
+        if len(decided[number]) == 1:
             return split(number + 1, decided, [*signs, decided[number][0]], so_far)
         for sign in decided[number]:
             constraint = constraints[number][sign]
@@ -189,14 +184,19 @@ def list_group(group: Group, deadline: float) -> Listing:
             answer = made.check()
             going = True
             if answer != "no":
-                going = split(number + 1, decided, [*signs, sign], answer)
+                going = split(number + 1, decided, [*signs, sign], so_far if answer == "yes" else answer)
             made.pop()
             if not going or time.monotonic() > deadline:
                 return False
         return True
 
     complete = boxes(0)
-    return Listing(cells, tuple(shown), tuple(unsure), complete)
+    if not unsure:
+        return Listing(cells, tuple(shown), (), complete)
+    seen = _seen(group, cells, deadline)
+    shown += [vector for vector in unsure if vector in seen]
+    left = tuple(vector for vector in unsure if vector not in seen)
+    return Listing(cells, tuple(shown), left, complete, tuple(seen.items()))
 
 
 def _straight(a: Sum) -> Callable[[Mapping[str, Bounds]], Bounds]:
@@ -243,19 +243,16 @@ def _possible(found: Bounds, signs: tuple[int, ...]) -> tuple[int, ...]:
     return tuple(sign for sign in signs if allowed[sign])
 
 
-def _all_open(chosen: list[int], decided: list[tuple[int, ...]], unsure: list[Vector]) -> None:
-    def go(number: int, signs: list[int]) -> None:
-        if number == len(decided):
-            unsure.append((*chosen, *signs))
-            return
-        for sign in decided[number]:
-            go(number + 1, [*signs, sign])
-
-    go(0, [])
-
-
-def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float, draws: int = 1_000) -> Listing:
+def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float) -> Listing:
     """Combinations seen at seeded random points: true as far as they go, never complete."""
+    seen = _seen(group, cells, deadline)
+    return Listing(cells, tuple(seen), (), False, tuple(seen.items()))
+
+
+def _seen(
+    group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float, draws: int = 1_000
+) -> dict[Vector, tuple[Fraction, ...]]:
+    """Combinations and a point at which each was seen, from seeded random points."""
     random_numbers = random.Random(20_06)
     shown: dict[Vector, tuple[Fraction, ...]] = {}
     until = time.monotonic() + max(0.0, (deadline - time.monotonic()) / 3)
@@ -270,7 +267,7 @@ def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: floa
         signs = signs_at(group, point)
         if signs is not None:
             shown.setdefault((*chosen, *signs), tuple(point.values()))
-    return Listing(cells, tuple(shown), (), False, tuple(shown.values()))
+    return shown
 
 
 def _inside(cell: Bounds, random_numbers: random.Random) -> Fraction:

@@ -10,8 +10,9 @@ from __future__ import annotations
 import time
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import combinations
 
-from samesum.evidence.counting import NOTHING, Layout, deep
+from samesum.evidence.counting import EVERYTHING, Layout, deep
 from samesum.evidence.diagrams import Eliminated, OutOfLimits, eliminate, number, possible_values, read_back
 from samesum.evidence.network import Network, PointRelation, cone
 from samesum.evidence.witness import Witness, witness_from
@@ -77,55 +78,69 @@ class _Answer:
 def examine_conditions(network: Network, seconds: float = 10.0) -> Conditions:
     """Every overlap, gap and dead branch of the rulebook. ``seconds`` bounds the work; what is not
     answered by then is undecided, never guessed."""
-    limits = network.diagrams.limits
-    limits.deadline = time.monotonic() + seconds
-    overlaps: list[Overlap] = []
-    gaps: list[Gap] = []
-    dead: list[DeadBranch] = []
-    undecided: list[Undecided] = []
-    d = network.diagrams
+    network.diagrams.limits.deadline = time.monotonic() + seconds
+    found = _Found([], [], [], [])
     with deep():
         states = _possible_states(network)
         for relation in network.points.values():
-            point = relation.point
-            working = _working(network, relation)
-            if point.kind == "cases":
-                for first in range(len(relation.open)):
-                    for second in range(first + 1, len(relation.open)):
-                        if point.conditions[first] is None or point.conditions[second] is None:
-                            continue
-                        branches = (point.branches[first], point.branches[second])
-                        answer = _ask(network, [working, relation.open[first], relation.open[second]], relation, first)
-                        if answer.says == "yes":
-                            overlaps.append(Overlap(point.id, branches, answer.witness))
-                        elif answer.says == "cannot tell":
-                            undecided.append(Undecided(point.id, "overlap", branches))
-            seen = None if states is None else states[relation.level]
-            if (not point.leader or any(point.conditions)) and (seen is None or relation.stuck in seen):
-                nothing = d.negate(d.some(relation.open))
-                answer = _ask(network, [working, nothing], relation, relation.stuck)
-                if answer.says == "yes":
-                    gaps.append(Gap(point.id, answer.witness))
-                elif answer.says == "cannot tell":
-                    undecided.append(Undecided(point.id, "gap"))
-            if not point.leader:
-                dead += _dead(network, relation, working, seen, undecided)
-            gaps += _rowless_conditions(network, relation, undecided)
-        gaps += _rowless_formulas(network, undecided)
+            _examine_point(network, relation, None if states is None else states[relation.level], found)
+        _rowless_formulas(network, found)
     order = {id: place for place, id in enumerate([*network.graph.instances, *network.graph.branch_points])}
-    once = {gap.branch_point: gap for gap in reversed(gaps)}
+    once = {gap.branch_point: gap for gap in reversed(found.gaps)}
     return Conditions(
-        tuple(overlaps),
+        tuple(found.overlaps),
         tuple(sorted(once.values(), key=lambda gap: order[gap.branch_point])),
-        tuple(dead),
-        tuple(dict.fromkeys(undecided)),
+        tuple(found.dead),
+        tuple(dict.fromkeys(found.undecided)),
     )
+
+
+@dataclass(frozen=True, slots=True)
+class _Found:
+    """The answers as they come in."""
+
+    overlaps: list[Overlap]
+    gaps: list[Gap]
+    dead: list[DeadBranch]
+    undecided: list[Undecided]
+
+
+def _examine_point(network: Network, relation: PointRelation, seen: frozenset[int] | None, found: _Found) -> None:
+    """One branch point's questions; ``seen`` are the states it can be in, None when that is not known."""
+    d = network.diagrams
+    point = relation.point
+    try:
+        working = d.both(relation.reach, relation.sound)
+        nothing = d.negate(d.some(relation.open))
+    except OutOfLimits:
+        found.undecided.append(Undecided(point.id, "gap"))
+        if point.kind == "cases":
+            found.undecided.append(Undecided(point.id, "overlap"))
+        return
+    for first, second in combinations(range(len(relation.open)), 2) if point.kind == "cases" else ():
+        if point.conditions[first] is None or point.conditions[second] is None:
+            continue
+        branches = (point.branches[first], point.branches[second])
+        answer = _ask(network, [working, relation.open[first], relation.open[second]], relation, first)
+        if answer.says == "yes":
+            found.overlaps.append(Overlap(point.id, branches, answer.witness))
+        elif answer.says == "cannot tell":
+            found.undecided.append(Undecided(point.id, "overlap", branches))
+    if (not point.leader or any(point.conditions)) and (seen is None or relation.stuck in seen):
+        answer = _ask(network, [working, nothing], relation, relation.stuck)
+        if answer.says == "yes":
+            found.gaps.append(Gap(point.id, answer.witness))
+        elif answer.says == "cannot tell":
+            found.undecided.append(Undecided(point.id, "gap"))
+    if not point.leader:
+        _find_dead(network, relation, working, seen, found)
+    _rowless_conditions(network, relation, found)
 
 
 def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
     """Every state that each branch point can be in, inside the rulebook; None when it cannot be told for all."""
     d = network.diagrams
-    layout = Layout.of(network, NOTHING, True)
+    layout = Layout.of(network, EVERYTHING, True)
     if not layout.exact:
         return None
     factors = [d.numbers(each.factor) for each in network.points.values()]
@@ -141,114 +156,115 @@ def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
         limits.deadline, limits.nodes = before
 
 
-def _working(network: Network, relation: PointRelation) -> int:
-    return network.diagrams.both(relation.reach, relation.sound)
-
-
-def _dead(
-    network: Network,
-    relation: PointRelation,
-    working: int,
-    seen: frozenset[int] | None,
-    undecided: list[Undecided],
-) -> list[DeadBranch]:
-    """Branches that nobody inside the rulebook can take, although their branch point can be reached.
-    ``seen`` are the states it can be in, None when that is not known."""
+def _find_dead(
+    network: Network, relation: PointRelation, working: int, seen: frozenset[int] | None, found: _Found
+) -> None:
+    """Branches that nobody inside the rulebook can take, although their branch point can be reached."""
     d = network.diagrams
     id = relation.point.id
-    found = [
-        DeadBranch(id, name) for k, name in enumerate(relation.point.branches) if seen is not None and k not in seen
-    ]
-    if seen is not None and len(found) < len(relation.open):
-        return found
-    if seen is not None and relation.stuck not in seen:
-        return []
-    reachable: _Answer | None = None
+    if seen is not None:
+        dead = [DeadBranch(id, name) for k, name in enumerate(relation.point.branches) if k not in seen]
+        if len(dead) == len(relation.open):  # never past its conditions, or never reached at all
+            answer = _Answer("no") if relation.stuck not in seen else _ask(network, [working], relation, None, False)
+            dead = dead if answer.says == "yes" else []
+        found.dead.extend(dead)
+        return
     for k, branch in enumerate(relation.point.branches):
-        answer = _Answer("no")
-        if seen is None:
-            if d.is_end(relation.open[k], True) and d.is_end(working, True) and d.is_end(network.applies, True):
-                continue
-            answer = _ask(network, [d.literal(relation.level, (k,))], relation, k, show=False)
+        if all(d.is_end(each, True) for each in (relation.open[k], working, network.applies)):
+            continue
+        answer = _ask(network, [], relation, k, show=False)
         if answer.says == "no":
-            if reachable is None:
-                reachable = _ask(network, [working], relation, None, show=False)
-            if reachable.says == "yes" and seen is None:
-                found.append(DeadBranch(id, branch))
-        if "cannot tell" in (answer.says, reachable.says if reachable else ""):
-            undecided.append(Undecided(id, "dead branch", (branch,)))
-    return found if reachable is not None and reachable.says == "yes" else []
+            answer = _ask(network, [working], relation, None, show=False)
+            if answer.says == "yes":
+                found.dead.append(DeadBranch(id, branch))
+        if answer.says == "cannot tell":
+            found.undecided.append(Undecided(id, "dead branch", (branch,)))
 
 
-def _rowless_conditions(network: Network, relation: PointRelation, undecided: list[Undecided]) -> list[Gap]:
+def _rowless_conditions(network: Network, relation: PointRelation, found: _Found) -> None:
     """Tables asked in the branch point's own conditions that have no row for some project."""
     d = network.diagrams
     if d.is_end(relation.own_sound, True):
-        return []
-    answer = _ask(
-        network, [relation.reach, relation.parts_sound, d.negate(relation.own_sound)], relation, relation.stuck
-    )
-    if answer.says == "cannot tell":
-        undecided.append(Undecided(relation.point.id, "gap"))
-    return [Gap(relation.point.id, answer.witness, "row", relation.tables)] if answer.says == "yes" else []
+        return
+    answer = _ask(network, [relation.reach, relation.parts_sound], relation, relation.stuck, without=relation.own_sound)
+    if answer.says == "yes":
+        found.gaps.append(Gap(relation.point.id, answer.witness, "row", relation.tables))
+    elif answer.says == "cannot tell":
+        found.undecided.append(Undecided(relation.point.id, "gap"))
 
 
-def _rowless_formulas(network: Network, undecided: list[Undecided]) -> list[Gap]:
-    d = network.diagrams
-    found = []
+def _rowless_formulas(network: Network, found: _Found) -> None:
+    """Formulas whose own operations have no value for some project: no row, or a division by zero."""
     for leaf, evaluated, sound in network.leaves:
-        answer = _ask(network, [evaluated, d.negate(sound)], None, None)
+        answer = _ask(network, [evaluated], None, None, without=sound)
         if answer.says == "yes":
-            tables = tuple(
-                dict.fromkeys(node.table for node in walk.inside(leaf.expression) if isinstance(node, m.Lookup))
-            )
-            found.append(Gap(leaf.id, answer.witness, "row" if tables else "value", tables))
+            lookups = [node.table for node in walk.inside(leaf.expression) if isinstance(node, m.Lookup)]
+            tables = tuple(dict.fromkeys(lookups))
+            found.gaps.append(Gap(leaf.id, answer.witness, "row" if tables else "value", tables))
         elif answer.says == "cannot tell":
-            undecided.append(Undecided(leaf.id, "gap"))
-    return found
+            found.undecided.append(Undecided(leaf.id, "gap"))
 
 
 def _ask(
-    network: Network, parts: Sequence[int], relation: PointRelation | None, state: int | None, show: bool = True
+    network: Network,
+    parts: Sequence[int],
+    relation: PointRelation | None,
+    state: int | None,
+    show: bool = True,
+    without: int | None = None,
 ) -> _Answer:
-    """Whether the parts can hold together somewhere inside the rulebook; ``show`` asks for the witness too."""
+    """Whether the parts can hold together (and ``without`` not) somewhere inside the rulebook, with the branch
+    point in ``state`` where one is given without parts; ``show`` asks for the witness too."""
+    try:
+        return _asked(network, parts, relation, state, show, without)
+    except OutOfLimits:
+        return _Answer("cannot tell")
+
+
+def _asked(
+    network: Network,
+    parts: Sequence[int],
+    relation: PointRelation | None,
+    state: int | None,
+    show: bool,
+    without: int | None,
+) -> _Answer:
     d = network.diagrams
-    together = d.end(True)
-    for part in parts:
-        together = d.both(together, part)
+    together = d.every(parts)
+    if not parts and relation is not None and state is not None:
+        together = d.literal(relation.level, (state,))
+    if without is not None:
+        together = d.both(together, d.negate(without))
     if d.is_end(together, False):
         return _Answer("no")
-    start = [together, network.applies]
-    factors = [d.numbers(together), d.numbers(network.applies), *cone(network, start)]
-    try:
-        for loose in (False, True):
-            layout = Layout.of(network, NOTHING, loose)
-            if layout.exact and not loose:
-                continue
-            relevant = {level for factor in factors for level in d.support(factor)}
-            related = [each for each in (*layout.projects, *layout.inputs) if d.support(each) & relevant]
-            related = _grown(network, related, layout)
-            levels = {level for factor in (*factors, *related) for level in d.support(factor)}
-            unsure = [level for level in layout.unsure if level in levels]
-            trail: list[Eliminated] = []
-            remaining = eliminate(d, [*factors, *related], unsure, "exists" if loose else "all", trail)
-            rest = sorted(levels - set(unsure))
-            found = number(d, eliminate(d, remaining, rest, "exists", trail))
-            if found and (layout.exact or not loose):
-                if not show:
-                    return _Answer("yes")
-                held = {relation.level: state} if relation is not None and state is not None else {}
-                values = read_back(d, trail)
-                return _Answer("yes", witness_from(network, {**values, **held}))
-            if not found and loose:
-                return _Answer("no")
-    except OutOfLimits:
-        pass
+    factors = [d.numbers(together), d.numbers(network.applies), *cone(network, [together, network.applies])]
+    for loose in (False, True):
+        layout = Layout.of(network, EVERYTHING, loose)
+        if layout.exact and not loose:
+            continue
+        relevant = {level for factor in factors for level in d.support(factor)}
+        related = _related(network, relevant, layout)
+        levels = {level for factor in (*factors, *related) for level in d.support(factor)}
+        unsure = [level for level in layout.unsure if level in levels]
+        trail: list[Eliminated] = []
+        remaining = eliminate(d, [*factors, *related], unsure, "exists" if loose else "all", trail)
+        rest = sorted(levels - set(unsure))
+        found = number(d, eliminate(d, remaining, rest, "exists", trail))
+        if found and (layout.exact or not loose):
+            if not show:
+                return _Answer("yes")
+            held = {relation.level: state} if relation is not None and state is not None else {}
+            values = read_back(d, trail)
+            return _Answer("yes", witness_from(network, {**values, **held}))
+        if not found and loose:
+            return _Answer("no")
     return _Answer("cannot tell")
 
 
-def _grown(network: Network, related: list[int], layout: Layout) -> list[int]:
-    """With a group's factor its sibling comes along: they share the kind of project."""
+def _related(network: Network, relevant: set[int], layout: Layout) -> list[int]:
+    """What can occur together among the ``relevant`` levels. With a group's factor its sibling comes along (they
+    share the kind of project), and so does a group in which nothing was shown to occur."""
     d = network.diagrams
-    levels = {level for each in related for level in d.support(each)}
-    return [each for each in (*layout.projects, *layout.inputs) if d.support(each) & levels]
+    everything = (*layout.projects, *layout.inputs)
+    levels = {level for each in everything if d.support(each) & relevant for level in d.support(each)}
+    return [each for each in everything if not d.support(each) or d.support(each) & levels]

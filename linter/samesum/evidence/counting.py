@@ -76,6 +76,8 @@ class Given:
 
 
 NOTHING = Given()
+EVERYTHING = Given(frozenset({"developer", "verifier", "programme"}))
+"""For questions whether anything at all is possible, facts and decisions alike."""
 ALL_BUT_DEVELOPER = Given(frozenset({"verifier", "programme"}))
 
 
@@ -230,7 +232,7 @@ def _figure(name: str, side: Side) -> tuple[int, bool, Witness | None]:
 def _reachable(side: Side) -> tuple[int, bool]:
     network = side.network
     d = network.diagrams
-    layout = Layout.of(network, NOTHING, side.loose)
+    layout = Layout.of(network, EVERYTHING, side.loose)
     factors = complete_factors(network) + list(layout.projects) + list(layout.inputs)
     factors = eliminate(d, factors, layout.unsure, "exists" if side.loose else "all")
     factors = eliminate(d, factors, [*layout.humans, *layout.facts], "exists")
@@ -347,15 +349,15 @@ class Layout:
         kinds: list[int] = []
         exact = not network.unsure
         for listed in network.groups:
-            made = groups.validity(d, listed, free, min(listed.name_levels) - 1, loose)
+            kind_level = min(listed.name_levels) - 3 - 2 * len(network.memory)  # one of its own for every layout
+            made = groups.validity(d, listed, free, kind_level, loose)
             projects += made.projects
             if generous is None or generous == loose or made.exact:
                 inputs += made.inputs
             else:
-                inputs += groups.validity(d, listed, free, min(listed.name_levels) - 1, generous).inputs
+                inputs += groups.validity(d, listed, free, kind_level - 1, generous).inputs
             exact = exact and made.exact
-            if made.kind_level is not None:
-                kinds.append(made.kind_level)
+            kinds += [level for level in (kind_level, kind_level - 1) if level in d.size]
         for level, variable in network.variables.items():
             if variable.kind == "point":
                 states.append(level)
@@ -391,9 +393,9 @@ def free_values(network: Network) -> tuple[str, ...]:
 def _can_be(network: Network, condition: int) -> bool:
     """Whether some complete route meets the condition (yes when it could not be told)."""
     d = network.diagrams
-    layout = Layout.of(network, NOTHING, True)
-    factors = [*complete_factors(network), d.numbers(condition), *layout.projects, *layout.inputs]
     try:
+        layout = Layout.of(network, EVERYTHING, True)
+        factors = [*complete_factors(network), d.numbers(condition), *layout.projects, *layout.inputs]
         levels: Iterable[int] = [*layout.unsure, *layout.humans, *layout.facts, *layout.states]
         return bool(number(d, eliminate(d, factors, levels, "exists")))
     except OutOfLimits:

@@ -208,7 +208,7 @@ def _kinds(
 ) -> tuple[list[tuple[Vector, tuple[Vector, ...]]], bool]:
     """Kinds of project: what facts settle, with the set of combinations the movable names can bring about."""
     together: dict[Vector, list[Vector]] = {}
-    for vector in listing.shown + listing.open:
+    for vector in listing.shown + (listing.open if loose else ()):
         fixed = tuple(vector[position] for position in given)
         together.setdefault(fixed, []).append(tuple(vector[position] for position in moved))
     kinds: list[tuple[Vector, tuple[Vector, ...]]] = []
@@ -239,34 +239,31 @@ def _sets(
 ) -> list[tuple[Vector, ...]] | None:
     """The sets of combinations that some project of these cells leaves to the movable names; None
     when the solver cannot tell them all."""
-    if len(candidates) > MOST_KINDS:
+    if len(candidates) > MOST_KINDS or any(s.beyond(each) for each in group.sums):
         return None
     width = len(group.names)
-    try:
-        made = s.Solver({}, deadline)
-        domains = dict(zip(group.names, group.domains, strict=True))
+    made = s.Solver({}, deadline)
+    domains = dict(zip(group.names, group.domains, strict=True))
 
-        def constraint(position: int, value: int) -> list[object]:
-            if position < width:
-                return made.within(made.name(group.names[position]), listing.cells[position][value])
-            return [made.sign(group.sums[position - width], value)]
+    def constraint(position: int, value: int) -> list[object]:
+        if position < width:
+            return made.within(made.name(group.names[position]), listing.cells[position][value])
+        return [made.sign(group.sums[position - width], value)]
 
-        for name in group.names:
-            if name not in movable:
-                made.add(*made.within(made.name(name), domains[name]))
-        for position, value in zip(given, fixed, strict=True):
-            made.add(*constraint(position, value))
-        formulas = []
-        for candidate in candidates:
-            parts = [part for name in movable for part in made.within(made.name(name), domains[name])]
-            for position, value in zip(moved, candidate, strict=True):
-                parts += constraint(position, value)
-            formula = made.without(movable, parts)
-            if formula is None:
-                return None
-            formulas.append(formula)
-    except s.Unsuitable:
-        return None
+    for name in group.names:
+        if name not in movable:
+            made.add(*made.within(made.name(name), domains[name]))
+    for position, value in zip(given, fixed, strict=True):
+        made.add(*constraint(position, value))
+    formulas = []
+    for candidate in candidates:
+        parts = [part for name in movable for part in made.within(made.name(name), domains[name])]
+        for position, value in zip(moved, candidate, strict=True):
+            parts += constraint(position, value)
+        formula = made.without(movable, parts)
+        if formula is None:
+            return None
+        formulas.append(formula)
     found: list[tuple[Vector, ...]] = []
 
     def split(number: int, chosen: list[Vector]) -> bool:

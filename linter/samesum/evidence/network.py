@@ -17,7 +17,7 @@ from samesum.evidence.cells import cut, sign_over
 from samesum.evidence.diagrams import Diagrams, Limits
 from samesum.evidence.readings import Readings, Variable
 from samesum.evidence.symbols import Bounds, generators, is_linear
-from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions
+from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions, worked_on
 from samesum.reading import model as m
 from samesum.reading import walk
 
@@ -28,7 +28,7 @@ class PointRelation:
     is open (both only meant where reached), and the relation of its state to the rest.
 
     ``own_sound`` and ``parts_sound`` share out ``sound``: the operations written in the branch point's own
-    conditions (``tables`` names the tables they call), and the quantities and choices these ask."""
+    conditions (``tables`` names the tables they call), and the quantities that these work on."""
 
     point: BranchPoint
     level: int
@@ -267,16 +267,13 @@ def _relate(point: BranchPoint, reach: int, readings: Readings, graph: DecisionG
 
 
 def _parts_sound(point: BranchPoint, readings: Readings, elements: Element, on_paper: bool) -> int:
-    """Where the quantities and choices that a branch point asks have a value."""
+    """Where the quantities have a value that a branch point's own operations work on."""
     d = readings.diagrams
     result = d.end(True)
-    for condition in point.conditions:
-        for kind, id in mentions(condition, elements, readings.graph.sizes) if condition and not on_paper else ():
+    for condition in point.conditions if not on_paper else ():
+        for kind, id in worked_on(condition, elements, readings.graph.sizes) if condition else ():
             if kind == "value":
                 result = d.both(result, readings.sound_quantity(id))
-            elif kind == "takes":
-                stuck = len(readings.graph.branch_points[id].branches) + 1
-                result = d.both(result, d.negate(readings.state(id, (stuck,))))
     return result
 
 

@@ -18,8 +18,19 @@ NEGATIVE, ZERO, POSITIVE = 0, 1, 2
 MERGED_NEGATIVE, MERGED_POSITIVE = 3, 4  # <= 0 and >= 0, where the border need not be told apart
 
 
-class Unsuitable(Exception):
-    """The sum holds a function that the solver does not know (exp, ln, a variable power)."""
+BEYOND = ("exp", "ln", "power")
+"""Functions that the solver does not know. It takes each for any number: what it refutes is refuted, what it
+finds possible may not be."""
+
+
+def beyond(a: Sum) -> bool:
+    """Whether the sum holds a function that the solver does not know."""
+    return any(
+        not isinstance(generator, str)
+        and (generator.function in BEYOND or any(beyond(argument) for argument in generator.arguments))
+        for monomial, _ in a.terms
+        for generator, _power in monomial
+    )
 
 
 class Solver:
@@ -69,7 +80,7 @@ class Solver:
         return found
 
     def term(self, a: Sum) -> Any:
-        """The sum as a solver term. Raises ``Unsuitable``."""
+        """The sum as a solver term; functions beyond the solver are any number."""
         parts = []
         for monomial, coefficient in a.terms:
             factors = [] if coefficient == 1 and monomial else [self.value(coefficient)]
@@ -114,7 +125,9 @@ class Solver:
                 found = z3.FreshReal("root", self._context)
                 self._solver.add(found >= zero, found * found == first)
             case _:
-                raise Unsuitable(made.function)
+                found = z3.FreshReal(made.function, self._context)
+                if made.function == "exp":
+                    self._solver.add(found > zero)
         self._calls[made] = found
         return found
 

@@ -107,7 +107,7 @@ def group_point(network: Network, listed: ListedGroup, values: Mapping[int, int]
         found = signs_at(group, point)
         return found is not None and all(b is None or a == b for a, b in zip(found, signs, strict=True))
 
-    for vector, seen in zip(listed.listing.shown, listed.listing.points, strict=False):
+    for vector, seen in listed.listing.points:
         cells_fit = all(
             level not in values or values[level] == cell
             for level, cell in zip(listed.name_levels, vector, strict=False)
@@ -118,16 +118,15 @@ def group_point(network: Network, listed: ListedGroup, values: Mapping[int, int]
     middle = {name: representative(cell) for name, cell in wanted.items()}
     if fits(middle):
         return dict(middle)
-    try:
-        made = s.Solver(wanted, network.diagrams.limits.deadline + 2.0)
-        for each, sign in zip(group.sums, signs, strict=True):
-            if sign is not None:
-                made.add(made.sign(each, sign))
-    except s.Unsuitable:
-        return None
+    made = s.Solver(wanted, network.diagrams.limits.deadline + 2.0)
+    for each, sign in zip(group.sums, signs, strict=True):
+        if sign is not None:
+            made.add(made.sign(each, sign))
     if made.check() != "yes":
         return None
     point = {name: value for name, value in made.point().items() if name in wanted}
+    if any(s.beyond(each) for each in group.sums) and not fits(point):
+        return None
     return dict(_plainer(point, wanted, fits))
 
 
