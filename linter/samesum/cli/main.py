@@ -18,6 +18,10 @@ from samesum import __version__
 COMMANDS = {
     "check": "find the places where the number is left to whoever applies the rulebook",
     "count": "count the routes that a rulebook leaves open",
+    "register": "list the branch points with their evidence, and keep the review body's decisions",
+    "compare": "say what a new draft opens and closes, and whether it leaves more to somebody",
+    "report": "draw up one page to read, print and hand on",
+    "watch": "check again on every save, and show what changed",
 }
 
 CAUTION = (

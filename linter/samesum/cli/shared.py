@@ -5,6 +5,7 @@ from __future__ import annotations
 import argparse
 import sys
 from collections.abc import Iterable
+from pathlib import Path
 from typing import TYPE_CHECKING
 
 if TYPE_CHECKING:
@@ -62,3 +63,34 @@ def write(text: str) -> None:
     """Standard output, whole; nothing when it is closed."""
     if sys.stdout is not None:
         sys.stdout.write(text)
+
+
+def add_inputs(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "--inputs", type=Path, metavar="CASES.yaml", help="projects to try the rulebook on: adds what they show"
+    )
+
+
+def write_line(text: str) -> None:
+    """One line for people on standard output, control characters made visible."""
+    from samesum.outputs.page import clean
+
+    write(clean(text) + "\n")
+
+
+def deliver(content: str | bytes, output: Path | None) -> int:
+    """To a file, which is whole at every moment, or to standard output; gives the exit status."""
+    if output is None:
+        if isinstance(content, str):
+            write(content)
+        elif sys.stdout is not None:
+            sys.stdout.flush()
+            sys.stdout.buffer.write(content)
+        return 0
+    from samesum.reviewing.whole_file import write_whole
+
+    try:
+        write_whole(output, content.encode() if isinstance(content, str) else content)
+    except (OSError, ValueError) as error:
+        return refuse(f"{output} cannot be written: {getattr(error, 'strerror', None) or error}")
+    return 0
