@@ -2,8 +2,8 @@
 
 The meaning that is followed here, beyond the language's own page (see also ``evaluate``):
 
-* A branch is dead (never of ``follows``) when it is never open although its branch point can be reached with
-  every question answered; a branch point that is never reached so has no dead branches.
+* A branch is dead (never of ``follows``) when no evaluation inside the rulebook takes it, although one reaches its
+  branch point with every question answered; a branch point that is never reached so has no dead branches.
 * Only complete evaluations are routes: no gap and nothing stuck anywhere.
 * on_paper: conditions are neither asked nor obeyed, ``applies`` and missing rows do not matter; branch points are
   reached through bodies and ``follows`` alone.
@@ -97,19 +97,19 @@ def count(rulebook: Rulebook) -> Counts:
         over_periods_most=periods,
         overlaps=tuple(sorted(found.overlaps)),
         gaps=tuple(sorted(found.gaps)),
-        dead_branches=tuple(sorted((id, b) for id, all_ in found.branches.items() for b in all_ - found.opened[id])),
+        dead_branches=tuple(sorted((id, b) for id, all_ in found.branches.items() for b in all_ - found.taken[id])),
         free_values=tuple(sorted(values)),
     )
 
 
 @dataclass
 class _Found:
-    """Gaps, overlaps and branches seen open, over all evaluations."""
+    """Gaps, overlaps and branches taken, over all evaluations."""
 
     overlaps: set[tuple[str, str, str]] = field(default_factory=set)
     gaps: set[str] = field(default_factory=set)
     branches: dict[str, set[str]] = field(default_factory=dict)
-    opened: dict[str, set[str]] = field(default_factory=dict)
+    taken: dict[str, set[str | None]] = field(default_factory=dict)
 
     def look(self, one: Pass, inside: Array, evaluator: Evaluator) -> None:
         self.gaps |= gaps(one, inside)
@@ -120,7 +120,7 @@ class _Found:
             body = evaluator.written[id]
             if not isinstance(body, Follows):
                 self.branches.setdefault(id, set(open_))
-                self.opened.setdefault(id, set()).update(name for name, at_ in open_.items() if (here & at_).any())
+                self.taken.setdefault(id, set()).add(one.states[id])
             self.overlaps |= {(id, a, b) for a, b in overlapping(body, open_, here)}
 
 

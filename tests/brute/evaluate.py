@@ -9,7 +9,8 @@ The meaning that is followed here, beyond the language's own page:
   no branch and reports no gap. A gap is reported at a branch point that is reached (also where another part of the
   same evaluation has a gap), whose questions all have a value, and that has no branch open.
 * A lookup that no row answers is a gap of the innermost branch point whose branch holds the
-  expression, else of the quantity (with its element); inside a condition, of the branch point that asks.
+  expression, else of the quantity (with its element); inside a condition, of the branch point that asks, where
+  all else that it asks has a result.
 * Two ``when`` of plain cases overlap where both hold in some evaluation that reaches them with every question
   answered, complete or not.
 * ``applies when``: facts, human inputs and routes for which one fails, or asks something that has no
@@ -140,6 +141,7 @@ class Evaluator:
             self.step = 0
             self.others: list[tuple[str | None, ...]] = []
             self.values: dict[str, Value] = {}
+            self.answered: Array | None = None
             self.now = Pass(self.all)
             self.now.inside = self.all
             for applies in self.rulebook.applies:
@@ -177,6 +179,8 @@ class Evaluator:
         has: Array | None = None
         holds: dict[str, Array] = {}
         target: str | None = ""
+        before, self.answered = self.answered, None
+        own = len(self.now.missing)
         if isinstance(body, Follows):
             target = self.target(body.quantity, elements)
         for name, condition, _ in branches(body):
@@ -187,8 +191,14 @@ class Evaluator:
                 holds[name] = self.all & answer.it
                 has = both(has, answer.has)
         if isinstance(body, Follows):
-            has = self.all & False if target is None else has
+            if target is None:
+                has = self.answered = self.all & False
             holds = {name: where if name == target else where & False for name, where in holds.items()}
+        if self.answered is not None:
+            # A row that is missing here is told only where nothing else that is asked lacks a result.
+            for k, (owner, lacking) in enumerate(self.now.missing[own:], start=own):
+                self.now.missing[k] = (owner, lacking & self.answered if owner == id else lacking)
+        self.answered = before
         open_ = _first(holds) if isinstance(body, Cases) and body.in_order else holds
         if isinstance(body, Cases) and "otherwise" in open_:
             others = [where for name, where in holds.items() if name != "otherwise"]
@@ -267,7 +277,9 @@ class Evaluator:
             return Value(self.outside(c.name, elements))
         if isinstance(c, Takes):
             taken = self.target(c.quantity, elements)
-            return Value(taken == c.option, self.all & False if taken is None else None)
+            has = self.all & False if taken is None else None
+            self.answered = both(self.answered, has)
+            return Value(taken == c.option, has)
         if isinstance(c, Not):
             part = self.condition(c.part, elements, owner)
             return Value(np.logical_not(part.it), part.has)
@@ -292,7 +304,9 @@ class Evaluator:
             return Value(float(elements[e.index]))
         if isinstance(e, Ref):
             if e.name in self.quantities:
-                return self.quantity(e.name, elements)
+                value = self.quantity(e.name, elements)
+                self.answered = both(self.answered, value.has)
+                return value
             if e.name in self.constants:
                 return Value(self.constants[e.name])
             return Value(self.outside(e.name, elements))
