@@ -191,6 +191,26 @@ def second_look(default: Noise, measured: Noise, correlation: float = 0.0) -> Ou
     return Outcome(mean, below(t))
 
 
+def pick_of_two_each(default: Noise, measured: Noise, correlation: float, cost: Floats) -> Floats:
+    """``pick_of_two``'s over-issuance for each of many costs of the measured option over the default."""
+    gain = measured.bias - default.bias
+    theta = _difference(default.error, measured.error, correlation)
+    if theta == 0.0:
+        return np.where(gain > cost, measured.bias, default.bias)
+    at = (gain - cost) / theta
+    return default.bias + gain * below_all(at) + theta * density_all(at)
+
+
+def second_look_each(default: Noise, measured: Noise, correlation: float, cost: Floats) -> Floats:
+    """``second_look``'s over-issuance for each of many costs of the measured option."""
+    short = -cost - default.bias
+    if default.error == 0.0:
+        return np.where(short > 0.0, measured.bias, default.bias)
+    t = short / default.error
+    left = (default.error - correlation * measured.error) * density_all(t)
+    return default.bias * below_all(-t) + measured.bias * below_all(t) + left
+
+
 def looks_in_order(options: Sequence[Noise], correlation: float = 0.0) -> float:
     """Over-issuance of a second look, a third, … through options in order of cost, keeping the last one tried.
 

@@ -1,0 +1,278 @@
+"""The rows of one block: every latitude alone, then the whole rulebook with all of them acting together."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from typing import Any
+
+import numpy as np
+
+from samesum.evidence.bench import (
+    MOST_SWEEPS,
+    Alone,
+    Array,
+    Bench,
+    Decided,
+    Row,
+    Sums,
+    Terms,
+    alone,
+    decide,
+    offers,
+    prepare,
+    record,
+    record_histogram,
+)
+from samesum.evidence.behaviours import Offer
+from samesum.evidence.closed_rows import closed_rows
+from samesum.evidence.latitudes import Latitude
+from samesum.evidence.projects import Projects
+from samesum.evidence.simulate import World
+
+Offers = Mapping[str, tuple[Offer, list[Array]]]
+WHOLE = "whole"
+SECOND, PICK, LOWEST, INDIFFERENT, MANDATED = "second look", "pick of all", "lowest", "indifferent", "mandated"
+STAY, ANEW = "errors stay", "errors anew"
+
+
+def work(projects: Projects, number: int, latitudes: Sequence[Latitude], terms: Terms, periods: int) -> Sums:
+    """The sums of one block of projects, by row: (latitude or ``whole``, behaviour, option, …)."""
+    bench = prepare(projects, number, latitudes, terms, periods)
+    decided: dict[str, Decided] = {}
+    offered: dict[str, Offers] = {}
+    for latitude in latitudes:
+        one = alone(bench, latitude)
+        if not one.points:
+            continue
+        if latitude.kind == "stated":
+            _stated_rows(one)
+            continue
+        found = offers(one)
+        if not found:
+            continue
+        offered[latitude.id] = found
+        decided[latitude.id] = decide(one, found)
+        _alone_rows(one, found, decided[latitude.id], periods)
+    _Whole(bench, latitudes, decided, offered, periods).rows()
+    return bench.sums
+
+
+def _stated_rows(one: Alone) -> None:
+    record(one.bench, (one.latitude.id, MANDATED, one.latitude.candidates[0]), one.credited({}))
+
+
+def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> None:
+    bench, latitude = one.bench, one.latitude
+    reference = latitude.candidates[latitude.reference]
+    if latitude.kind == "overlap":
+        comparison = one.credited({})
+        record(bench, (latitude.id, MANDATED, "in order"), comparison)
+    else:
+        mandated = {
+            name: _everybody(one, found, number) for number, name in enumerate(latitude.candidates)
+        }
+        comparison = mandated[reference]
+        for name, credited in mandated.items():
+            record(bench, (latitude.id, MANDATED, name), credited, comparison)
+    rows = {SECOND: decided.second, PICK: decided.pick, LOWEST: decided.lowest, INDIFFERENT: decided.indifferent}
+    credited_by = {}
+    for behaviour, taken in rows.items():
+        credited_by[behaviour] = one.credited(taken)
+        record(bench, (latitude.id, behaviour, ""), credited_by[behaviour], comparison)
+    record_histogram(bench, (latitude.id, MANDATED), comparison)
+    record_histogram(bench, (latitude.id, SECOND), credited_by[SECOND])
+    if latitude.kind != "choice":
+        return
+    if periods > 1:
+        learned = one.credited(decided.learned)
+        fresh = {key: error for key, error in bench.fresh.items() if key[0] in one.points}
+        for behaviour, taken, later in ((SECOND, decided.second, learned), (PICK, decided.pick, credited_by[PICK])):
+            first = credited_by[behaviour]
+            redrawn = one.credited(taken, fresh)
+            row = (latitude.id, "periods", behaviour)
+            record(bench, (*row, STAY, "open"), _over_periods(first, later, periods))
+            record(bench, (*row, STAY, "fixed"), first)
+            record(bench, (*row, ANEW, "open"), first)
+            record(bench, (*row, ANEW, "fixed"), _over_periods(first, redrawn, periods))
+    closed_rows(one, found)
+    if bench.terms.join is not None:
+        _truth_scatters(one)
+
+
+def _everybody(one: Alone, found: Offers, number: int) -> Array:
+    """What is credited when all take the same option or value, at every element."""
+    latitude = one.latitude
+    if latitude.kind in ("setting", "judgement"):
+        return found[latitude.id][1][number]
+    return one.credited(dict.fromkeys(one.points, number))
+
+
+def _over_periods(first: Array, later: Array, periods: int) -> Array:
+    return (first + (periods - 1) * later) / periods
+
+
+def _truth_scatters(one: Alone) -> None:
+    """The other reading of enrolment: what a mandated option credits is fixed, and the truth scatters around it."""
+    bench, latitude = one.bench, one.latitude
+    join = bench.terms.join
+    assert join is not None
+    point = bench.program.choosing[one.points[0]].point
+    for number, option in enumerate(getattr(point.body, "options", ())):
+        if option.error is None and option.bias is None:
+            continue
+        bias = float(option.bias or 0)
+        everybody = dict.fromkeys(one.points, number)
+        level = {(id, number): np.full(bench.truth.shape, bias) for id in one.points}
+        scatter = {(id, number): bench.errors[id, number] - bias for id in one.points if (id, number) in bench.errors}
+        credited = one.credited(everybody, level)
+        true = one.credited(everybody, scatter)
+        row = (latitude.id, MANDATED, option.name, "truth scatters", "joined")
+        from samesum.evidence.tally import tally
+
+        bench.sums.tallies[row] = tally(credited, true, None, credited > join * true)
+
+
+# --- the whole rulebook ----------------------------------------------------------------------------
+
+
+class _Whole:
+    """All latitudes together: the developer's act, the others' stand on their reference, and every option that
+    states an error errs."""
+
+    def __init__(
+        self,
+        bench: Bench,
+        latitudes: Sequence[Latitude],
+        decided: Mapping[str, Decided],
+        offered: Mapping[str, Offers],
+        periods: int,
+    ) -> None:
+        self.bench, self.decided, self.offered, self.periods = bench, decided, offered, periods
+        self.acting = [each for each in latitudes if each.id in decided and each.by == "developer"]
+        self.inputs = {each.id for each in latitudes if each.kind in ("setting", "judgement")}
+        self.fixed = {
+            point for each in latitudes if each.timing == "validation" for point in each.points(bench.program)
+        }
+        self.choices = [each for each in latitudes if each.id in decided]
+        keys = {id for id, _ in bench.errors} | set(bench.program.withheld)
+        self.start = bench.values(self.world({}), bench.truth_values, sorted(keys))
+
+    def world(self, taken: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None) -> World:
+        branches = {key: value for key, value in taken.items() if key not in self.inputs}
+        inputs = {key: value for key, value in taken.items() if key in self.inputs}
+        return World(branches, {**self.bench.program.withheld, **inputs}, self.bench.errors if errors is None else errors)
+
+    def credited(
+        self, taken: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None
+    ) -> tuple[Array, list[Any]]:
+        keys = set(taken) | ({id for id, _ in errors} if errors is not None else set())
+        values = self.bench.values(self.world(taken, errors), self.start, sorted(keys))
+        return self.bench.full(values), values
+
+    def taken(self, behaviour: str) -> dict[str, Any]:
+        found: dict[str, Any] = {}
+        for each in self.acting:
+            found.update(getattr(self.decided[each.id], behaviour))
+        return found
+
+    def rows(self) -> None:
+        bench = self.bench
+        comparison = bench.full(self.start)
+        record(bench, (WHOLE, MANDATED, "reference"), comparison)
+        record_histogram(bench, (WHOLE, MANDATED), comparison)
+        cheapest = {
+            id: offer.order[0]
+            for each in self.acting
+            if each.kind == "choice"
+            for id, (offer, _) in self.offered[each.id].items()
+        }
+        record(bench, (WHOLE, MANDATED, "cheapest"), self.credited(cheapest)[0], comparison)
+        record(bench, (WHOLE, INDIFFERENT, ""), self.credited(self.taken("indifferent"))[0], comparison)
+        second = self.taken("second")
+        looked, values = self.credited(second)
+        record(bench, (WHOLE, SECOND, ""), looked, comparison)
+        record_histogram(bench, (WHOLE, SECOND), looked)
+        pick = self.improved(self.taken("pick"))
+        picked = self.credited(pick)[0]
+        record(bench, (WHOLE, PICK, ""), picked, comparison)
+        if self.periods > 1:
+            later = {**second, **{id: branch for id, branch in self.taken("learned").items() if id not in self.fixed}}
+            self.period_rows(SECOND, second, looked, later)
+            self.period_rows(PICK, pick, picked, pick)
+        self.closures(second, values)
+
+    def period_rows(self, behaviour: str, taken: Mapping[str, Any], first: Array, later: Mapping[str, Any]) -> None:
+        """A choice that is open decides again on new errors, which is the first period over again; one that is fixed
+        keeps its option while the errors are drawn anew."""
+        bench = self.bench
+        row = (WHOLE, "periods", behaviour)
+        kept = {key: bench.fresh[key] if key[0] in self.fixed else error for key, error in bench.errors.items()}
+        record(bench, (*row, STAY, "as written"), _over_periods(first, self.credited(later)[0], self.periods))
+        record(bench, (*row, STAY, "all fixed"), first)
+        record(bench, (*row, ANEW, "as written"), _over_periods(first, self.credited(taken, kept)[0], self.periods))
+        redrawn = self.credited(taken, bench.fresh)[0]
+        record(bench, (*row, ANEW, "all fixed"), _over_periods(first, redrawn, self.periods))
+
+    def closures(self, second: Mapping[str, Any], values: Sequence[Any]) -> None:
+        """The whole rulebook's second look with one latitude closed."""
+        bench = self.bench
+        for each in self.choices:
+            points = each.points(bench.program)
+            found = self.offered[each.id]
+            closed: dict[str, Mapping[str, Any]] = {}
+            if each.kind in ("choice", "overlap"):
+                for number, name in enumerate(each.candidates if each.kind == "choice" else ()):
+                    closed[name] = dict.fromkeys(points, number)
+                if each.kind == "overlap":
+                    closed["in order"] = {id: found[id][0].reference for id in points if id in found}
+            else:
+                for value, name in zip(each.values, each.candidates, strict=True):
+                    closed[name] = {each.id: bench.set_to(each.id, value)}
+            for name, taken in closed.items():
+                self._closure((WHOLE, each.id, MANDATED, name), {**second, **taken}, values, points)
+            if each.kind == "choice":
+                lowest = {**second, **self.decided[each.id].lowest}
+                self._closure((WHOLE, each.id, LOWEST, ""), lowest, values, points)
+
+    def _closure(self, row: Row, taken: Mapping[str, Any], values: Sequence[Any], keys: Sequence[str]) -> None:
+        record(self.bench, row, self.bench.full(self.bench.values(self.world(taken), values, keys)))
+
+    def improved(self, taken: dict[str, Any]) -> dict[str, Any]:
+        """Option after option tried again with everything else as it now stands, until hardly a project gains."""
+        bench = self.bench
+        places = [
+            (each, id, self.offered[each.id][id][0]) for each in self.acting for id in self.offered[each.id]
+        ]
+        if len(places) < 2:
+            return taken
+        credited, values = self.credited(taken)
+        for _ in range(MOST_SWEEPS):
+            gained = 0
+            for each, id, offer in places:
+                if each.kind == "setting":
+                    candidates = [bench.set_to(id, value) for value in each.values]
+                elif each.kind == "judgement":
+                    candidates = [bench.set_to(id, bool(value)) for value in each.values]
+                else:
+                    candidates = list(range(len(each.candidates)))
+                now = taken[id]
+                costs = offer.cost
+                spent = offer.at(np.asarray(now, dtype=np.int64), costs) if id not in self.inputs else 0.0
+                best = np.where(np.isfinite(credited), credited - spent, -np.inf)
+                chosen, better_anywhere = now, np.zeros(best.shape, dtype=bool)
+                for number, candidate in enumerate(candidates):
+                    tried = bench.full(bench.values(self.world({**taken, id: candidate}), values, (id,)))
+                    worth = tried - costs[number]
+                    better = offer.open[number] & (worth > best + 1e-9 * np.abs(best))
+                    if better.any():
+                        best = np.where(better, worth, best)
+                        chosen = np.where(better, candidate, chosen)
+                        better_anywhere |= better
+                if better_anywhere.any():
+                    gained += int(np.count_nonzero(better_anywhere))
+                    taken = {**taken, id: chosen}
+                    values = bench.values(self.world(taken), values, (id,))
+                    credited = bench.full(values)
+            if gained <= bench.projects.count // 1000:
+                break
+        return taken
