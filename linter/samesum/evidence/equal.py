@@ -1,6 +1,7 @@
 """Branches that give one number, and options that give none.
 
-Two formulas that are the same polynomial are equal at sight; what is left is put to the solver.
+Most branches differ at the first project one looks at, and no more need be asked. Of the rest, two formulas
+that are the same polynomial are equal at sight; what is left is put to the solver.
 """
 
 from __future__ import annotations
@@ -14,6 +15,7 @@ from samesum.evidence import solver as s
 from samesum.evidence import symbols
 from samesum.evidence.cells import representative
 from samesum.evidence.diagrams import END, Diagrams, Limits, OutOfLimits
+from samesum.evidence.pointwise import Calculation, NoValue, some_projects
 from samesum.evidence.readings import OPAQUE, Readings
 from samesum.graph import BranchPoint, DecisionGraph
 from samesum.reading import model as m
@@ -29,12 +31,14 @@ class Workshop:
 
     readings: Readings
     deadline: float
+    looked_at: tuple[Calculation, ...]
     _values: dict[tuple[str, int], int] = field(default_factory=dict)
 
     @staticmethod
     def of(graph: DecisionGraph, seconds: float) -> Workshop:
         deadline = time.monotonic() + seconds
-        return Workshop(Readings(graph, Diagrams(Limits(deadline, nodes=400_000))), deadline)
+        looked_at = tuple(Calculation(graph, values) for values in some_projects(graph))
+        return Workshop(Readings(graph, Diagrams(Limits(deadline, nodes=400_000))), deadline, looked_at)
 
     def value(self, point: BranchPoint, branch: int) -> int:
         """The number of a branch of a body, nested branch points and all."""
@@ -66,6 +70,8 @@ def same_number(workshop: Workshop, point: BranchPoint, first: int, second: int,
     open). Never a guess: what the solver does not settle is "cannot tell"."""
     readings = workshop.readings
     d = readings.diagrams
+    if _seen_to_differ(workshop, point, first, second, together):
+        return "no"
     try:
         difference = d.apply("difference", _difference, workshop.value(point, first), workshop.value(point, second))
         if together:
@@ -82,6 +88,12 @@ def same_number(workshop: Workshop, point: BranchPoint, first: int, second: int,
 
 def is_zero(workshop: Workshop, point: BranchPoint, branch: int) -> Answer:
     """Whether a branch gives 0 for every project."""
+    for calculation in workshop.looked_at:
+        try:
+            if calculation.branch(point, branch):
+                return "no"
+        except NoValue:
+            continue
     try:
         ends = workshop.readings.diagrams.ends(workshop.value(point, branch))
     except OutOfLimits:
@@ -89,6 +101,21 @@ def is_zero(workshop: Workshop, point: BranchPoint, branch: int) -> Answer:
     if ends == {symbols.ZERO}:
         return "yes"
     return "cannot tell" if OPAQUE in ends and len(ends) == 1 else "no"
+
+
+def _seen_to_differ(workshop: Workshop, point: BranchPoint, first: int, second: int, together: bool) -> bool:
+    """Whether the branches differ for one of the few projects looked at (``together``: one where both are open)."""
+    elements = workshop.readings.graph.instances[point.instance].elements
+    conditions = [point.conditions[number] for number in (first, second)] if together else []
+    for calculation in workshop.looked_at:
+        try:
+            if all(each is None or calculation.holds(each, elements) for each in conditions) and calculation.branch(
+                point, first
+            ) != calculation.branch(point, second):
+                return True
+        except NoValue:
+            continue
+    return False
 
 
 def _difference(a: Any, b: Any) -> Any:

@@ -8,6 +8,7 @@ threshold itself with the decisions of its left or right side: that is the limit
 from __future__ import annotations
 
 import math
+import random
 from collections.abc import Mapping
 from dataclasses import dataclass, field
 from fractions import Fraction
@@ -51,6 +52,29 @@ def middle_project(graph: DecisionGraph) -> dict[str, Value]:
     return values
 
 
+def some_projects(graph: DecisionGraph, count: int = 3) -> list[dict[str, Value]]:
+    """The project in the middle and a few others drawn evenly from the domains, the same ones every time."""
+    draw = random.Random(20_06)
+    middle = middle_project(graph)
+    both: tuple[m.Fact | m.Setting, ...] = (*graph.model.facts, *graph.model.settings)
+    domains = {each.name: each.domain for each in both}
+    projects = [middle]
+    for _ in range(count):
+        values: dict[str, Value] = {}
+        for name in middle:
+            match domains.get(name.split("@")[0]):
+                case m.OneOf(values=names):
+                    values[name] = names[draw.randrange(len(names))]
+                case m.Range(low=low, high=high):
+                    first = low if low is not None else (high or Fraction(0)) - 1000
+                    last = high if high is not None else first + 1000
+                    values[name] = first + (last - first) * Fraction(draw.randrange(1, 1000), 1000)
+                case _:
+                    values[name] = draw.random() < 0.5
+        projects.append(values)
+    return projects
+
+
 def preferred(options: tuple[m.Option, ...], open_ones: list[int]) -> int:
     """The option that stands for the truth: the reference, else the one with the lowest error, else the first."""
     for number in open_ones:
@@ -92,6 +116,12 @@ class Calculation:
             found = self._body(instance.quantity.body, id, (), instance.elements)
             self._known[id] = found
         return found
+
+    def branch(self, point: BranchPoint, branch: int) -> Fraction:
+        """The number that one branch gives, whether or not it is open. Raises ``NoValue``."""
+        made = walk.branches(point.body)[branch]
+        path = tuple(point.id.split("/")[1:])
+        return self._body(made.body, point.instance, (*path, made.name), self.graph.instances[point.instance].elements)
 
     def _body(self, body: m.Body, id: str, path: tuple[str, ...], elements: Element) -> Fraction:
         if isinstance(body, m.Formula):
