@@ -40,7 +40,11 @@ def examine(path: Path, seconds: float = 10.0, rules: RuleSet | None = None, rea
     """
     from samesum.reading.read import read_file
 
-    reading = read_file(path, reader=reader)
+    return examine_reading(read_file(path, reader=reader), seconds, rules)
+
+
+def examine_reading(reading: Reading, seconds: float = 10.0, rules: RuleSet | None = None) -> Examined:
+    """What was read, examined: ``examine`` for a text that stands in no file, or was read already."""
     usable = reading.model is not None and all(problem.kind == "unit" for problem in reading.problems)
     if not usable or reading.model is None:
         return Examined(reading, None)

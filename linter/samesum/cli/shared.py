@@ -78,6 +78,14 @@ def write_line(text: str) -> None:
     write(clean(text) + "\n")
 
 
+def report_line(text: str) -> None:
+    """One line on standard error that is no complaint."""
+    from samesum.outputs.page import clean
+
+    if sys.stderr is not None:
+        print(clean(text), file=sys.stderr)
+
+
 def deliver(content: str | bytes, output: Path | None) -> int:
     """To a file, which is whole at every moment, or to standard output; gives the exit status."""
     if output is None:

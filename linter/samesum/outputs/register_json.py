@@ -9,7 +9,7 @@ from samesum.outputs.counts import paths_json, shown_by
 from samesum.outputs.register_cells import decider
 from samesum.reviewing.record import Standing
 from samesum.reviewing.rows import Register, Row
-from samesum.outputs.projects import number
+from samesum.written import number
 
 
 def register_json(register: Register) -> dict[str, Any]:

@@ -1,0 +1,127 @@
+"""``samesum compare``: what a new draft opens and closes."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from collections.abc import Sequence
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+from samesum.cli import shared
+
+if TYPE_CHECKING:
+    from samesum.reviewing.compare import Comparison
+    from samesum.reviewing.rows import Register
+
+
+def add_arguments(parser: argparse.ArgumentParser) -> None:
+    parser.add_argument(
+        "files",
+        metavar="FILE",
+        nargs="+",
+        help="OLD and NEW; each may be REV:FILE, a file in a revision of git (HEAD~1:tide.rulebook)",
+    )
+    parser.add_argument(
+        "--since", metavar="REV", help="compare each FILE with itself in this revision of git; new files are let pass"
+    )
+    parser.add_argument(
+        "--allow",
+        metavar="NAME",
+        action="append",
+        default=[],
+        help="a branch point or figure that may leave more than before; may be given several times",
+    )
+    shared.add_inputs(parser)
+    shared.add_json(parser)
+    shared.add_seconds(parser)
+
+
+def run(arguments: argparse.Namespace) -> int:
+    pairs: list[tuple[str, str]]
+    if arguments.since is None:
+        if len(arguments.files) != 2:
+            return shared.refuse("compare takes two files, OLD and NEW; or --since REV with any number of files")
+        pairs = [(arguments.files[0], arguments.files[1])]
+    else:
+        pairs = [(f"{arguments.since}:{file}", file) for file in dict.fromkeys(arguments.files)]
+    status = 0
+    found: list[Comparison] = []
+    for old, new in pairs:
+        made = _compared(old, new, arguments)
+        if isinstance(made, int):
+            status = max(status, made)
+        else:
+            found.append(made)
+            status = max(status, 1 if made.grew else 0)
+    if found and _unknown(arguments.allow, found):
+        return shared.UNUSABLE
+    if found:
+        _write(found, arguments)
+    return status
+
+
+def _compared(old: str, new: str, arguments: argparse.Namespace) -> Comparison | int:
+    """One comparison; an exit status when there is nothing to compare (0 for a new file)."""
+    from samesum.reviewing.compare import compare
+
+    before = _register(old, arguments, lenient=arguments.since is not None)
+    if before is None or isinstance(before, int):
+        return shared.UNUSABLE if before is None else before
+    after = _register(new, arguments)
+    if after is None or isinstance(after, int):
+        return shared.UNUSABLE
+    return compare(before, after, arguments.allow, arguments.seconds)
+
+
+def _register(name: str, arguments: argparse.Namespace, lenient: bool = False) -> Register | int | None:
+    """The register of a file or of a revision; None when it could not be read, which is then said. ``lenient``:
+    a file that is not in the revision is new, and gives the exit status 0."""
+    from samesum.cli.gathered import registered
+    from samesum.cli.revisions import former_text, is_revision
+    from samesum.reading.read import read, read_file
+
+    if is_revision(name):
+        revision, _, file = name.partition(":")
+        former = former_text(revision, Path(file))
+        if former.text is None:
+            if former.absent and lenient:
+                shared.report_line(f"{file}: new since {revision}, nothing to compare with")
+                return 0
+            shared.refuse(former.says)
+            return None
+        reading = read(former.text, name)
+    else:
+        reading = read_file(Path(name))
+    gathered = registered(reading, Path(name.rpartition(":")[2]), arguments.inputs, arguments.seconds, record=False)
+    return gathered[1] if gathered is not None else None
+
+
+def _unknown(allowed: Sequence[str], found: Sequence[Comparison]) -> bool:
+    """Whether ``--allow`` names what is in no draft; says so."""
+    from samesum.reading.words import nearest
+    from samesum.reviewing.compare import known_names
+
+    known = {name for each in found for name in known_names(each)}
+    for name in allowed:
+        if name not in known:
+            close = nearest(name, sorted(known))
+            hint = f"did you mean `{close}`?" if close else "name a branch point or a figure of `samesum count`"
+            shared.refuse(f"--allow {name}: neither draft has it; {hint}")
+            return True
+    return False
+
+
+def _write(found: Sequence[Comparison], arguments: argparse.Namespace) -> None:
+    from samesum.outputs import comparison
+
+    if arguments.json:
+        from samesum.outputs.json_text import as_json
+
+        answers = [comparison.comparison_json(each) for each in found]
+        many = {"comparisons": answers, "grew": any(each.grew for each in found)}
+        shared.write(as_json(answers[0] if arguments.since is None else many))
+    else:
+        from samesum.outputs.page import paper_for
+
+        shared.write(comparison.comparison_text(found, paper_for(sys.stdout)))

@@ -1,0 +1,159 @@
+"""What ``samesum compare`` answers, as JSON and for people."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+from samesum.evidence.closing import Bracket
+from samesum.outputs.counts import FIGURES, title_of
+from samesum.outputs.page import Page, Paper
+from samesum.outputs.register_cells import bracket_text, decider
+from samesum.reviewing.compare import Change, Comparison, direction
+from samesum.reviewing.rows import Register, Row
+
+
+def comparison_json(found: Comparison) -> dict[str, Any]:
+    """The whole answer of ``samesum compare --json``."""
+    return {
+        "old": _draft(found.old),
+        "new": _draft(found.new),
+        "added": [_row(row) for row in found.added],
+        "removed": [_row(row) for row in found.removed],
+        "changed": [_change(change) for change in found.changed],
+        "closed": [row.id for row in found.closed],
+        "opened": [row.id for row in found.opened],
+        "paths": {
+            name: {"before": _figure(before), "after": _figure(after)}
+            for name, (before, after) in found.figures.items()
+        },
+        "free_values": {
+            "before": list(found.old.evidence.counts.free_values),
+            "after": list(found.new.evidence.counts.free_values),
+        },
+        "growth": [
+            {"name": each.name, "clause": each.clause, "says": each.says, "allowed": each.allowed}
+            for each in found.growth
+        ],
+        "grew": found.grew,
+    }
+
+
+def _draft(register: Register) -> dict[str, str]:
+    model = register.evidence.model
+    return {"file": model.file, "rulebook": model.title, "draft": model.draft}
+
+
+def _row(row: Row) -> dict[str, Any]:
+    return {
+        "branch_point": row.id,
+        "clause": row.place.clause,
+        "kind": row.kind,
+        "who_decides": row.decides or "nobody",
+        "wording": row.place.wording,
+    }
+
+
+def _change(change: Change) -> dict[str, Any]:
+    return {
+        **_row(change.after),
+        "closed": change.closed,
+        "opened": change.opened,
+        "changes": [{"what": name, "before": old, "after": new} for name, old, new in change.aspects],
+    }
+
+
+def _figure(figure: Bracket) -> Any:
+    return figure.high if figure.exact else {"at_least": figure.low, "at_most": figure.high}
+
+
+# --- for people ----------------------------------------------------------------------------
+
+
+def comparison_text(found: Sequence[Comparison], paper: Paper) -> str:
+    """Each pair of drafts on one page after the other."""
+    page = Page(paper)
+    for each in found:
+        _comparison(page, each)
+    return page.text
+
+
+def _comparison(page: Page, found: Comparison) -> None:
+    old, new = title_of(found.old.evidence.model), title_of(found.new.evidence.model)
+    page.heading(new if old == new else f"{old} → {new}")
+    page.line(f"{found.old.evidence.model.file} → {found.new.evidence.model.file}", "quiet")
+    closed = {row.id for row in found.closed}
+    opened = {row.id for row in found.opened}
+    _rows(page, "Closed", "−", found.closed, "good")
+    _rows(page, "Opened", "+", found.opened, "bad")
+    _rows(page, "No longer there", "−", [row for row in found.removed if row.id not in closed], "")
+    _rows(page, "New, left to facts", "+", [row for row in found.added if row.id not in opened], "")
+    other = [change for change in found.changed if not change.closed and not change.opened]
+    if other:
+        page.blank()
+        page.line("Changed", "strong")
+        for change in other:
+            page.paragraph(f"~ {_place(change.after)}", indent=2, hanging=2)
+            for name, before, after in change.aspects:
+                page.paragraph(f"{name}: {_said(before)} → {_said(after)}", indent=6, hanging=2, style="quiet")
+    if not (found.added or found.removed or found.changed):
+        page.blank()
+        page.line("No branch point was added, removed or changed.")
+    _figures(page, found)
+    _verdict(page, found)
+
+
+def _place(row: Row) -> str:
+    clause = f"clause {row.place.clause}" if row.place.clause else "no clause"
+    return f"{row.id} ({clause}; {row.kind}, {decider(row)})"
+
+
+def _rows(page: Page, title: str, sign: str, rows: Sequence[Row], style: str) -> None:
+    if not rows:
+        return
+    page.blank()
+    page.line(f"{title} ({len(rows)})", "strong")
+    for row in rows:
+        page.paragraph(f"{sign} {_place(row)}", indent=2, hanging=2, style=style)
+
+
+def _said(text: str) -> str:
+    short = text if len(text) <= 160 else text[:157] + "…"
+    return f"“{short}”" if short else "nothing"
+
+
+def _figures(page: Page, found: Comparison) -> None:
+    page.blank()
+    page.line("Figures", "strong")
+    labels = {name: label for name, label, _ in FIGURES}
+    for name, (before, after) in found.figures.items():
+        moved = direction(before, after)
+        text = bracket_text(before) if moved == "same" else f"{bracket_text(before)} → {bracket_text(after)} ({moved})"
+        page.entry(labels[name], text, indent=2, column=26, style="")
+    before_free, after_free = found.old.evidence.counts.free_values, found.new.evidence.counts.free_values
+    if before_free or after_free:
+        same = before_free == after_free
+        text = (
+            ", ".join(before_free)
+            if same
+            else f"{', '.join(before_free) or 'none'} → {', '.join(after_free) or 'none'}"
+        )
+        page.entry("Free values", text, indent=2, column=26, style="")
+
+
+def _verdict(page: Page, found: Comparison) -> None:
+    page.blank()
+    if not found.growth:
+        page.paragraph("The new draft leaves nothing more to anybody.", style="good")
+        return
+    if found.grew:
+        page.paragraph("The new draft leaves more to somebody:", style="bad")
+    else:
+        page.paragraph("What the new draft leaves more to somebody was allowed:", style="strong")
+    labels = {name: label for name, label, _ in FIGURES}
+    for each in found.growth:
+        name = f"{labels[each.name]} ({each.name})" if each.name in labels else each.name
+        clause = f" (clause {each.clause})" if each.clause else ""
+        page.paragraph(f"{'·' if each.allowed else '!'} {name}{clause}: {each.says}", indent=2, hanging=2)
+    if found.grew:
+        page.paragraph("--allow NAME lets one of them pass.", style="quiet")

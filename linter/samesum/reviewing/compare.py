@@ -1,0 +1,243 @@
+"""Two drafts held against each other: places opened, closed and changed, figures before and after, and
+whether the new draft leaves more to somebody.
+
+Places are matched by id, never by line, so that reordering and re-indenting compare as no change.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Collection, Mapping
+from dataclasses import dataclass, replace
+from typing import Literal
+
+from samesum.evidence.closing import Bracket, figures_if_given
+from samesum.evidence.counting import FIGURES, Given
+from samesum.reading import model as m
+from samesum.reviewing.places import changes
+from samesum.reviewing.rows import Register, Row, routes_now
+
+ONE_PROJECT = ("per_project_most", "developer_most", "over_periods_most")
+"""The figures that say how much is left open to one project."""
+
+
+@dataclass(frozen=True, slots=True)
+class Change:
+    """One place that is in both drafts. ``aspects``: what differs, before and after. ``closed`` and ``opened``: whether
+    it leaves nothing, or something, to somebody only since."""
+
+    before: Row
+    after: Row
+    aspects: tuple[tuple[str, str, str], ...]
+
+    @property
+    def closed(self) -> bool:
+        return self.before.leaves_something and not self.after.leaves_something
+
+    @property
+    def opened(self) -> bool:
+        return self.after.leaves_something and not self.before.leaves_something
+
+
+@dataclass(frozen=True, slots=True)
+class Growth:
+    """One reason to say that latitude grew. ``name`` is what ``--allow`` takes: a place's id or a figure's name."""
+
+    name: str
+    says: str
+    clause: str = ""
+    allowed: bool = False
+
+
+@dataclass(frozen=True, slots=True)
+class Comparison:
+    """``figures``: each figure of ``count`` before and after. ``growth`` in a fixed order."""
+
+    old: Register
+    new: Register
+    added: tuple[Row, ...]
+    removed: tuple[Row, ...]
+    changed: tuple[Change, ...]
+    figures: Mapping[str, tuple[Bracket, Bracket]]
+    growth: tuple[Growth, ...]
+
+    @property
+    def grew(self) -> bool:
+        """Whether latitude grew in a way that nobody allowed."""
+        return any(not each.allowed for each in self.growth)
+
+    @property
+    def closed(self) -> tuple[Row, ...]:
+        """Places that left something to somebody and are gone, or leave nothing any more."""
+        gone = [row for row in self.removed if row.leaves_something]
+        return (*gone, *(change.before for change in self.changed if change.closed))
+
+    @property
+    def opened(self) -> tuple[Row, ...]:
+        """Places that leave something to somebody, and did not, or were not there."""
+        fresh = [row for row in self.added if row.leaves_something]
+        return (*fresh, *(change.after for change in self.changed if change.opened))
+
+
+def compare(old: Register, new: Register, allow: Collection[str] = (), seconds: float = 10.0) -> Comparison:
+    """``allow`` names places and figures that may grow; what an allowed place brings about in the figures is
+    taken out by counting it as given."""
+    before = {row.id: row for row in old.rows}
+    after = {row.id: row for row in new.rows}
+    changed = tuple(
+        change
+        for id, row in after.items()
+        if id in before
+        if (change := Change(before[id], row, _aspects(before[id], row))).aspects
+    )
+    found = Comparison(
+        old,
+        new,
+        tuple(row for row in new.rows if row.id not in before),
+        tuple(row for row in old.rows if row.id not in after),
+        changed,
+        {name: (routes_now(old.evidence, name), routes_now(new.evidence, name)) for name in FIGURES},
+        (),
+    )
+    return replace(found, growth=_growth(found, frozenset(allow), seconds))
+
+
+def _aspects(before: Row, after: Row) -> tuple[tuple[str, str, str], ...]:
+    """What differs in the text, and in what the text amounts to (who can steer it; whether branches overlap)."""
+    found = list(changes(before.place, after.place))
+    if before.kind != after.kind:
+        found.insert(0, ("kind", before.kind, after.kind))
+    old, new = _steered(before), _steered(after)
+    if old != new:
+        found.append(("steered through", old, new))
+    return tuple(found)
+
+
+def _steered(row: Row) -> str:
+    return ", ".join(sorted(f"{mover.source} ({mover.by})" for mover in row.movers))
+
+
+def known_names(comparison: Comparison) -> set[str]:
+    """What ``--allow`` can name."""
+    rows = (*comparison.old.rows, *comparison.new.rows)
+    return {*FIGURES, *MEASURED, *(row.id for row in rows)}
+
+
+MEASURED: tuple[str, ...] = ("spread", "over_issuance")
+"""What trial and bias add to the reasons, by the name that ``--allow`` takes."""
+
+
+def _growth(found: Comparison, allow: frozenset[str], seconds: float) -> tuple[Growth, ...]:
+    reasons: list[Growth] = []
+
+    def add(name: str, says: str, clause: str = "") -> None:
+        reasons.append(Growth(name, says, clause, name in allow))
+
+    for row in found.added:
+        if row.leaves_something:
+            add(row.id, f"new: {_leaves(row)}", row.place.clause)
+    for change in found.changed:
+        for says in _loosened(change, found.old.evidence.model, found.new.evidence.model):
+            add(change.after.id, says, change.after.place.clause)
+    for row in found.new.rows:
+        earlier = next((each for each in found.old.rows if each.id == row.id), None)
+        if row.gaps and not (earlier and earlier.gaps):
+            add(row.id, "some projects have no result here now", row.place.clause)
+    figures = {name: found.figures[name][1] for name in ONE_PROJECT}
+    grown = [name for name in ONE_PROJECT if exceeds(found.figures[name][1], found.figures[name][0])]
+    given = _given(found.new, allow)
+    if grown and given != Given():
+        asked = [(name, _with_others(name, given)) for name in grown]
+        less = figures_if_given(found.new.evidence.graph, asked, seconds)
+        figures.update(zip(grown, less, strict=True))
+        grown = [name for name in grown if exceeds(figures[name], found.figures[name][0])]
+    for name in grown:
+        add(name, "grew")
+    return tuple(reasons)
+
+
+def _given(new: Register, allow: frozenset[str]) -> Given:
+    points = frozenset(row.id for row in new.rows if row.id in allow and row.place.points)
+    names = frozenset(row.id for row in new.rows if row.id in allow and not row.place.points)
+    return Given(points=points, names=names)
+
+
+def _with_others(figure: str, given: Given) -> Given:
+    from samesum.evidence.counting import ALL_BUT_DEVELOPER
+
+    return replace(given, deciders=ALL_BUT_DEVELOPER.deciders) if figure == "developer_most" else given
+
+
+def exceeds(after: Bracket, before: Bracket) -> bool:
+    """Whether a figure grew; of brackets, whether the most that it can be grew."""
+    if after.high is None:
+        return before.high is not None
+    return before.high is not None and after.high > before.high
+
+
+def _leaves(row: Row) -> str:
+    whose = {"": "somebody"}.get(row.decides, f"the {row.decides.replace(', ', ' and the ')}")
+    match row.kind:
+        case "overlap":
+            return "two branches are open at once"
+        case "steered":
+            return f"conditions that {whose} can move"
+        case "setting":
+            return f"a value that {whose} sets"
+        case "judgement":
+            return f"a wording that {whose} reads"
+    return f"a choice by {whose}"
+
+
+_TIGHTNESS = {"at validation": 0, "each period": 1, "not stated": 1, "": 0}
+
+
+def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
+    before, after = change.before, change.after
+    if change.opened:
+        return [f"leaves something to somebody now: {_leaves(after)}"]
+    found: list[str] = []
+    if not after.leaves_something:
+        return found
+    if before.kind != after.kind and after.kind == "overlap":
+        found.append("two branches are open at once now")
+    if after.kind == before.kind == "choice":
+        more = [option.name for option in after.options if option.name not in {each.name for each in before.options}]
+        if more and len(after.options) > len(before.options):
+            found.append(f"more options: {', '.join(more)}")
+        conditions = {option.name: option.when for option in before.options}
+        freed = [option.name for option in after.options if conditions.get(option.name) and not option.when]
+        if freed:
+            found.append(f"options without their condition: {', '.join(freed)}")
+        if _TIGHTNESS[after.fixed] > _TIGHTNESS[before.fixed]:
+            found.append("was fixed at validation, is open each period")
+    movers = {(mover.by, mover.source) for mover in before.movers}
+    fresh = [mover for mover in after.movers if (mover.by, mover.source) not in movers]
+    if fresh:
+        found.append("conditions can be moved through " + ", ".join(sorted({mover.source for mover in fresh})))
+    if before.kind == after.kind == "setting" and _wider(before.id, old, new):
+        found.append("the values that may be set are more")
+    return found
+
+
+def _wider(name: str, old: m.Model, new: m.Model) -> bool:
+    """Whether a setting can be something that it could not be before."""
+    before, after = (next(each for each in model.settings if each.name == name) for model in (old, new))
+    match before.domain, after.domain:
+        case m.Range(), m.Range() if before.unit.dimension == after.unit.dimension:
+            first, second = before.unit.factor, after.unit.factor
+            lows = (before.domain.low, after.domain.low)
+            highs = (before.domain.high, after.domain.high)
+            lower = lows[0] is not None and (lows[1] is None or lows[1] * second < lows[0] * first)
+            higher = highs[0] is not None and (highs[1] is None or highs[1] * second > highs[0] * first)
+            return lower or higher
+        case m.OneOf(values=some), m.OneOf(values=more):
+            return not set(more) <= set(some)
+    return type(before.domain) is not type(after.domain)
+
+
+Direction = Literal["grew", "fell", "same"]
+
+
+def direction(before: Bracket, after: Bracket) -> Direction:
+    """How a figure moved."""
+    return "grew" if exceeds(after, before) else "fell" if exceeds(before, after) else "same"
