@@ -144,7 +144,7 @@ def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
     if not layout.exact:
         return None
     factors = [d.numbers(each.factor) for each in network.points.values()]
-    factors += [d.numbers(network.applies), *layout.projects, *layout.inputs]
+    factors += [*map(d.numbers, network.applies), *layout.projects, *layout.inputs]
     limits = d.limits
     before = limits.deadline, limits.nodes
     limits.deadline = time.monotonic() + max(0.0, (limits.deadline - time.monotonic()) / 2)
@@ -170,7 +170,7 @@ def _find_dead(
         found.dead.extend(dead)
         return
     for k, branch in enumerate(relation.point.branches):
-        if all(d.is_end(each, True) for each in (relation.open[k], working, network.applies)):
+        if not network.applies and all(d.is_end(each, True) for each in (relation.open[k], working)):
             continue
         answer = _ask(network, [], relation, k, show=False)
         if answer.says == "no":
@@ -237,7 +237,8 @@ def _asked(
         together = d.both(together, d.negate(without))
     if d.is_end(together, False):
         return _Answer("no")
-    factors = [d.numbers(together), d.numbers(network.applies), *cone(network, [together, network.applies])]
+    start = [together, *network.applies]
+    factors = [*map(d.numbers, start), *cone(network, start)]
     for loose in (False, True):
         layout = Layout.of(network, EVERYTHING, loose)
         if layout.exact and not loose:

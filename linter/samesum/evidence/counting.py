@@ -306,9 +306,9 @@ def _held(network: Network, given: Given) -> tuple[list[int], list[int]]:
 def _domain(network: Network, layout: Layout) -> list[int]:
     """Projects inside the rulebook: those for which somebody's decisions make it apply."""
     d = network.diagrams
-    if d.is_end(network.applies, True):
+    if not network.applies:
         return []
-    factors = [d.numbers(network.applies), *cone(network, [network.applies])]
+    factors = [*map(d.numbers, network.applies), *cone(network, network.applies)]
     relevant = {level for factor in factors for level in d.support(factor)}
     inputs = [each for each in layout.inputs if d.support(each) & relevant]
     levels = {level for factor in (*factors, *inputs) for level in d.support(factor)} - set(layout.facts)

@@ -470,6 +470,32 @@ def take_out(diagrams: Diagrams, factors: Sequence[int], level: int, how: str) -
     return diagrams.map("exists one", lambda x: 1 if x else 0, result) if how == "exists" else result
 
 
+def taken_apart(diagrams: Diagrams, condition: int) -> tuple[int, ...]:
+    """A condition as parts that all must hold and that share no variable where that is so. What hangs
+    together in one diagram would otherwise tie everything that its parts touch to each other."""
+    parts: list[int] = []
+    rest = condition
+    for level in sorted(diagrams.support(condition)):
+        if len(diagrams.support(rest)) < 2:
+            break
+        if level not in diagrams.support(rest):
+            continue
+        others = [other for other in diagrams.support(rest) if other != level]
+        alone = _some_of(diagrams, rest, others)
+        remaining = _some_of(diagrams, rest, [level])
+        if diagrams.both(alone, remaining) == rest:
+            parts.append(alone)
+            rest = remaining
+    return tuple(part for part in (*parts, rest) if not diagrams.is_end(part, True))
+
+
+def _some_of(diagrams: Diagrams, condition: int, levels: Sequence[int]) -> int:
+    """Where some value of ``levels`` makes the condition hold."""
+    for level in levels:
+        condition = diagrams.some(diagrams.restrict(condition, level, value) for value in range(diagrams.size[level]))
+    return condition
+
+
 def product_of(diagrams: Diagrams, factors: Iterable[int], zero_absorbs: bool = True) -> int:
     """The product, smallest supports first. ``zero_absorbs`` is False where OUTSIDE may occur."""
     parts = sorted(factors, key=lambda factor: (len(diagrams.support(factor)), factor))

@@ -14,7 +14,7 @@ from fractions import Fraction
 
 from samesum.evidence import groups
 from samesum.evidence.cells import cut, sign_over
-from samesum.evidence.diagrams import Diagrams, Limits
+from samesum.evidence.diagrams import Diagrams, Limits, taken_apart
 from samesum.evidence.readings import Readings, Variable
 from samesum.evidence.symbols import Bounds, generators, is_linear
 from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions, worked_on
@@ -52,8 +52,8 @@ class PointRelation:
 @dataclass(frozen=True, slots=True)
 class Network:
     """The whole relation. ``leaves``: where each formula that may lack a value is evaluated and where its own
-    operations have a value. ``applies``: where the rulebook applies. ``flows``: where the number of a
-    formula reaches the result. ``cells``: of each numeric fact or setting, by level."""
+    operations have a value. ``applies``: where the rulebook applies, as parts that must all hold. ``flows``:
+    where the number of a formula reaches the result. ``cells``: of each numeric fact or setting, by level."""
 
     graph: DecisionGraph
     diagrams: Diagrams
@@ -62,7 +62,7 @@ class Network:
     points: Mapping[str, PointRelation]
     leaves: tuple[tuple[Leaf, int, int], ...]
     flows: tuple[tuple[Leaf, int], ...]
-    applies: int
+    applies: tuple[int, ...]
     cells: Mapping[int, tuple[Bounds, ...]]
     domains: Mapping[str, Bounds]
     values: Mapping[str, tuple[str, ...]]
@@ -89,13 +89,17 @@ class _Users:
     always_asked: set[str] = field(default_factory=set)
 
 
-def build_network(graph: DecisionGraph, limits: Limits, on_paper: bool = False) -> Network:
-    """The relation of a rulebook. ``on_paper`` leaves out all conditions, asked or obeyed.
+def build_network(
+    graph: DecisionGraph, limits: Limits, on_paper: bool = False, domains: Mapping[str, Bounds] | None = None
+) -> Network:
+    """The relation of a rulebook. ``on_paper`` leaves out all conditions, asked or obeyed. ``domains`` narrows
+    numeric facts and settings (by name and element), down to one value where a project is given.
 
     Raises ``OutOfLimits`` when even the branch points' own parts are too much for the limits.
     """
     diagrams = Diagrams(limits)
     readings = Readings(graph, diagrams)
+    readings.domains.update(domains or {})
     wanted = _reachable_instances(graph, on_paper)
     users = _find_users(graph, set(wanted), on_paper)
     evaluated: dict[str, int] = {}
@@ -373,7 +377,7 @@ def _settle(
         points,
         tuple((leaf, settled(evaluated), settled(sound)) for leaf, evaluated, sound in leaves),
         tuple((leaf, settled(flow)) for leaf, flow in flows),
-        settled(applies),
+        taken_apart(d, settled(applies)),
         cells,
         dict(readings.domains),
         dict(readings.values),
@@ -387,7 +391,7 @@ def complete_factors(network: Network) -> list[int]:
     d = network.diagrams
     factors = [_not_stuck(network, each) for each in network.points.values()]
     factors += [d.either(d.negate(evaluated), sound) for _, evaluated, sound in network.leaves]
-    return [d.numbers(factor) for factor in (*factors, network.applies)]
+    return [d.numbers(factor) for factor in (*factors, *network.applies)]
 
 
 def _not_stuck(network: Network, relation: PointRelation) -> int:
