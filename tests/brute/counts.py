@@ -19,7 +19,6 @@ The meaning that is followed here, beyond the language's own page (see also ``ev
 
 from __future__ import annotations
 
-from collections.abc import Iterator
 from dataclasses import dataclass, field
 from itertools import combinations, product
 
@@ -112,7 +111,7 @@ class _Found:
     taken: dict[str, set[str | None]] = field(default_factory=dict)
 
     def look(self, one: Pass, inside: Array, evaluator: Evaluator) -> None:
-        self.gaps |= gaps(one, inside)
+        self.gaps.update(gaps(one, inside))
         for id, (has, open_) in one.asked.items():
             here = inside if has is None else inside & has
             if not here.any():
@@ -124,23 +123,25 @@ class _Found:
             self.overlaps |= {(id, a, b) for a, b in overlapping(body, open_, here)}
 
 
-def gaps(one: Pass, where: Array) -> set[str]:
-    """The ids under which this evaluation has a gap at some point of ``where``."""
-    found = {id for id, lacking in one.missing if id and (lacking & where).any()}
+def gaps(one: Pass, where: Array) -> dict[str, Array]:
+    """Where in ``where`` this evaluation has a gap, by the id it is reported under."""
+    found: dict[str, Array] = {}
     for id, (has, open_) in one.asked.items():
         if one.states[id] is None:
             here = where & ~np.logical_or.reduce(list(open_.values()))
-            if (here if has is None else here & has).any():
-                found.add(id)
-    return found
+            found[id] = here if has is None else here & has
+    for id, lacking in one.missing:
+        if id:
+            found[id] = found.get(id, False) | lacking & where
+    return {id: here for id, here in found.items() if here.any()}
 
 
-def overlapping(body: Body, open_: dict[str, Array], where: Array) -> Iterator[tuple[str, str]]:
-    """Pairs of branches of plain cases that are open together at some point of ``where``."""
-    if isinstance(body, Cases) and not body.in_order:
-        for a, b in combinations(open_, 2):
-            if (where & open_[a] & open_[b]).any():
-                yield a, b
+def overlapping(body: Body, open_: dict[str, Array], where: Array) -> dict[tuple[str, str], Array]:
+    """Where in ``where`` two branches of plain cases are open together, by the two."""
+    if not isinstance(body, Cases) or body.in_order:
+        return {}
+    found = {(a, b): where & open_[a] & open_[b] for a, b in combinations(open_, 2)}
+    return {pair: here for pair, here in found.items() if here.any()}
 
 
 def _per_project(

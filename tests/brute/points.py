@@ -20,7 +20,7 @@ columns over them show the same patterns.
 
 from __future__ import annotations
 
-from collections.abc import Iterator
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
@@ -34,6 +34,7 @@ from brute.rulebooks import Domain, OneOf, Range, Rulebook, at
 MOST_ROWS = 30_000
 MOST_VARIABLES = 3
 SAME = 1e-9
+Given = Fraction | int | bool  # a value as Points.columns has it, a number as it is
 FACT, FIXED, FREE = 0, 1, 2  # project; setting or judgement of verifier or programme; of developer
 
 
@@ -162,7 +163,7 @@ def variables(rulebook: Rulebook) -> Iterator[tuple[str, Domain | None, int]]:
         yield judgement.name, None, FREE if judgement.by == "developer" else FIXED
 
 
-def representative(rulebook: Rulebook, given: dict[str, Fraction | int | bool] | None = None) -> Points:
+def representative(rulebook: Rulebook, given: Mapping[str, Given] | None = None) -> Points:
     """The points that stand for all projects and human inputs. What ``given`` holds (values as in
     ``Points.columns``) has that value only. Raises ``TooLarge`` beyond three variables that are compared with
     each other, or beyond ``MOST_ROWS`` points."""

@@ -587,7 +587,7 @@ def test_any_project_is_like_one_of_the_points(seed: int) -> None:
         assert sum(bool(one.complete.any()) for one in passes) <= found.per_project_most
         for one in passes:
             inside = one.mask & one.inside
-            assert gaps(one, inside) <= set(found.gaps)
+            assert set(gaps(one, inside)) <= set(found.gaps)
             for id, (has, open_) in one.asked.items():
                 where = inside if has is None else inside & has
                 for a, b in overlapping(evaluator.written[id], open_, where):
