@@ -71,6 +71,8 @@ def _ratio_error(n: int, d: float, dd: float, dt: float, t: float, tt: float) ->
         return math.nan
     ratio = d / t
     squares = max(0.0, dd - 2 * ratio * dt + ratio * ratio * tt)
+    if squares < 1e-12 * dd:
+        return 0.0  # every project errs alike; what is left are slips of floating point
     return math.sqrt(squares * n / (n - 1)) / t
 
 
