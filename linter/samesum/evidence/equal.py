@@ -9,6 +9,7 @@ from __future__ import annotations
 import time
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from fractions import Fraction
 from typing import Any, Literal
 
 from samesum.evidence import solver as s
@@ -23,6 +24,7 @@ from samesum.reading import walk
 
 Answer = Literal["yes", "no", "cannot tell"]
 MOST_WAYS = 400
+NOISE = Fraction(1, 10**9)  # what floating point in sqrt, exp and ln may be off by, and far more
 
 
 @dataclass(slots=True)
@@ -90,7 +92,7 @@ def is_zero(workshop: Workshop, point: BranchPoint, branch: int) -> Answer:
     """Whether a branch gives 0 for every project."""
     for calculation in workshop.looked_at:
         try:
-            if calculation.branch(point, branch):
+            if abs(calculation.branch(point, branch)) > NOISE:
                 return "no"
         except NoValue:
             continue
@@ -109,10 +111,10 @@ def _seen_to_differ(workshop: Workshop, point: BranchPoint, first: int, second: 
     conditions = [point.conditions[number] for number in (first, second)] if together else []
     for calculation in workshop.looked_at:
         try:
-            if all(each is None or calculation.holds(each, elements) for each in conditions) and calculation.branch(
-                point, first
-            ) != calculation.branch(point, second):
-                return True
+            if all(each is None or calculation.holds(each, elements) for each in conditions):
+                a, b = calculation.branch(point, first), calculation.branch(point, second)
+                if abs(a - b) > NOISE * max(abs(a), abs(b)):
+                    return True
         except NoValue:
             continue
     return False
