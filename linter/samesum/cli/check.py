@@ -11,13 +11,20 @@ from typing import TYPE_CHECKING
 from samesum.cli import shared
 
 if TYPE_CHECKING:
-    from samesum.outputs.checks import Checked
+    from samesum.cli.checking import Outcome
+    from samesum.judging.rules import Rule
+
+FORMS = ("text", "json", "sarif", "junit")
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("files", metavar="FILE", nargs="+", type=Path, help=".rulebook files")
-    shared.add_json(parser)
+    parser.add_argument("--as", dest="form", choices=FORMS, default="text", help="the form of the answer (text)")
+    parser.add_argument("--json", action="store_const", const="json", dest="form", help="the same as --as json")
+    parser.add_argument("--sarif", metavar="OUT", type=Path, help="also write SARIF 2.1.0, for code-scanning services")
+    parser.add_argument("--junit", metavar="OUT", type=Path, help="also write JUnit XML, for dashboards")
     shared.add_seconds(parser)
+    parser.add_argument("--jobs", metavar="N", type=_jobs, default=1, help="check N files at once (1)")
     parser.add_argument(
         "--fail-on",
         choices=("error", "warning", "note"),
@@ -34,47 +41,73 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
 
 
-def run(arguments: argparse.Namespace) -> int:
-    from samesum.examine import examine
-    from samesum.judging.findings import at_or_above
-    from samesum.judging.rulebooks_rules import RulesFor
-    from samesum.outputs.checks import Checked
-    from samesum.reading.read import default_cache_folder, make_reader
+def _jobs(text: str) -> int:
+    value = int(text) if text.isdecimal() and len(text) < 5 else 0
+    if not value:
+        raise argparse.ArgumentTypeError(f"{text!r} is no number of jobs; write a whole number from 1 on")
+    return value
 
-    reader = make_reader(default_cache_folder())
-    chooser = RulesFor(reader, arguments.rules)
-    checked: list[Checked] = []
-    status = 0
-    reported: set[object] = set()
-    for path in dict.fromkeys(arguments.files):
-        chosen = chooser.rulebook(path)
-        if chosen.problems:
-            shared.report(problem for problem in chosen.problems if problem not in reported)
-            reported.update(chosen.problems)
-            status = shared.UNUSABLE
-            continue
-        examined = examine(path, arguments.seconds, chosen.rules, reader)
-        if examined.evidence is None or examined.judged is None:
-            shared.report(examined.problems)
-            status = shared.UNUSABLE
-            continue
-        limit = arguments.fail_on or chosen.fail_on or "warning"
-        if any(at_or_above(finding.severity, limit) for finding in examined.judged.findings):
-            status = max(status, 1)
-        checked.append(Checked(str(path), examined.evidence, examined.judged, chosen.rules))
-    if checked:
-        _write(checked, arguments.json)
+
+def run(arguments: argparse.Namespace) -> int:
+    from samesum.cli.checking import Task, check_all
+
+    paths = list(dict.fromkeys(arguments.files))
+    task = Task(arguments.seconds, tuple(arguments.rules), arguments.fail_on)
+    outcomes: list[Outcome] | None
+    if arguments.jobs > 1:
+        from concurrent.futures.process import BrokenProcessPool
+
+        try:
+            outcomes = check_all(paths, task, arguments.jobs)
+        except BrokenProcessPool:
+            return shared.refuse("one of the processes was ended from outside; try fewer --jobs")
+    else:
+        outcomes = check_all(paths, task, 1)
+    shared.report(dict.fromkeys(problem for outcome in outcomes for problem in outcome.problems))
+    status = 1 if any(outcome.fails for outcome in outcomes) else 0
+    if any(outcome.checked is None for outcome in outcomes):
+        status = shared.UNUSABLE
+    for form, output in (("sarif", arguments.sarif), ("junit", arguments.junit)):
+        if output is not None:
+            status = max(status, shared.deliver(_written(outcomes, form, arguments), output))
+    shared.write(_written(outcomes, arguments.form, arguments))
     return status
 
 
-def _write(checked: Sequence[Checked], as_json: bool) -> None:
+def _written(outcomes: Sequence[Outcome], form: str, arguments: argparse.Namespace) -> str:
+    checked = [outcome.checked for outcome in outcomes if outcome.checked is not None]
+    if form in ("sarif", "junit"):
+        rules, problems = _rules(outcomes, arguments.rules), [p for outcome in outcomes for p in outcome.problems]
+        if form == "sarif":
+            from samesum.outputs.json_text import as_json
+            from samesum.outputs.sarif import sarif
+
+            return as_json(sarif(checked, rules, problems))
+        from samesum.outputs.junit import junit
+
+        limits = {str(outcome.path): outcome.fail_on for outcome in outcomes}
+        return junit(checked, rules, problems, limits)
+    if not checked:
+        return ""
     from samesum.outputs import checks
 
-    if as_json:
-        from samesum.outputs.json_text import as_json as text_of
+    if form == "json":
+        from samesum.outputs.json_text import as_json
 
-        shared.write(text_of(checks.check_json(checked)))
-    else:
-        from samesum.outputs.page import paper_for
+        return as_json(checks.check_json(checked))
+    from samesum.outputs.page import paper_for
 
-        shared.write(checks.check_text(checked, paper_for(sys.stdout)))
+    return checks.check_text(checked, paper_for(sys.stdout))
+
+
+def _rules(outcomes: Sequence[Outcome], extra: Sequence[Path]) -> dict[str, tuple[Rule, ...]]:
+    """The rules that each file was judged by."""
+    from samesum.judging.rulebooks_rules import RulesFor
+    from samesum.reading.read import default_cache_folder, make_reader
+
+    chooser = RulesFor(make_reader(default_cache_folder()), extra)
+    return {
+        str(outcome.path): chooser.rulebook(outcome.path).rules.rules
+        for outcome in outcomes
+        if outcome.checked is not None
+    }
