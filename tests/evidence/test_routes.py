@@ -62,7 +62,8 @@ def test_the_first_routes_of_very_many(reader: Reader) -> None:
     for number in range(200):
         blocks.append(
             f"quantity part_{number} [t CO2e]\n    choice by developer\n"
-            f"        option low\n            = {number} [t CO2e]\n        option high\n            = {number + 1} [t CO2e]\n"
+            f"        option low\n            = {number} [t CO2e]\n"
+            f"        option high\n            = {number + 1} [t CO2e]\n"
         )
     blocks.append("quantity credits [t CO2e]\n    = " + " + ".join(f"part_{number}" for number in range(200)) + "\n")
     model = read("\n".join(blocks), "many.rulebook", reader=reader).model

@@ -177,16 +177,15 @@ def _can_differ(workshop: Workshop, held: Mapping[int, int], end: symbols.Sum) -
         point = {name: representative(domain) for name, domain in box.items()}
         if s.sign_at(end, point) in (s.NEGATIVE, s.POSITIVE):
             return "yes"
-    try:
-        made = s.Solver(box, workshop.deadline)
-        made.add(*(made.sign(each, sign) for each, sign in signs))
-        answer: Answer = "no"
-        for sign in (s.NEGATIVE, s.POSITIVE):
-            found = made.check(made.sign(end, sign))
-            if found == "yes":
-                return "yes"
-            if found == "cannot tell":
-                answer = "cannot tell"
-        return answer
-    except s.Unsuitable:
-        return "cannot tell"
+    # what the solver finds possible may not be, where it takes a function for any number
+    guessed = s.beyond(end) or any(s.beyond(each) for each, _ in signs)
+    made = s.Solver(box, workshop.deadline)
+    made.add(*(made.sign(each, sign) for each, sign in signs))
+    answer: Answer = "no"
+    for sign in (s.NEGATIVE, s.POSITIVE):
+        found = made.check(made.sign(end, sign))
+        if found == "yes" and not guessed:
+            return "yes"
+        if found != "no":
+            answer = "cannot tell"
+    return answer
