@@ -6,7 +6,6 @@ result's unit), whether it is open, and its cost in credits; each gives the opti
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -20,26 +19,28 @@ Array = npt.NDArray[Any]
 class Offer:
     """The options of one choice to the projects of one block, a row an option.
 
-    ``credits``; ``open`` (at least one a project); ``money`` what each costs in money, by which they are ordered;
-    ``cost`` the same in credits (0 without a price); ``truth`` the true credits; ``reference`` the option that counts
-    as the truth.
+    ``credits``; ``open`` (at least one a project); ``order`` from the cheapest to the dearest, as written where they
+    cost the same, closed ones last; ``cost`` in credits (0 without a price); ``truth`` the true credits; ``reference``
+    the option that counts as the truth.
     """
 
     credits: Array
     open: Array
-    money: Array
+    order: Array
     cost: Array
     truth: Array
     reference: Array
 
-    @property
-    def order(self) -> Array:
-        """The options from the cheapest to the dearest, as written where they cost the same; closed ones last."""
-        return np.argsort(np.where(self.open, self.money, np.inf), axis=0, kind="stable")
-
     def at(self, rows: Array, of: Array) -> Array:
         """For each project the entry of ``of`` in its own row."""
-        return np.take_along_axis(of, rows[np.newaxis], axis=0)[0]
+        if len(of) == 2:
+            return np.where(rows == 0, of[0], of[1])
+        return np.asarray(of[rows, np.arange(len(rows))])
+
+
+def by_cost(money: Array, open_ones: Array) -> Array:
+    """The order in which the options are looked at, for each project."""
+    return np.argsort(np.where(open_ones, money, np.inf), axis=0, kind="stable")
 
 
 def second_look(offer: Offer) -> Array:

@@ -15,14 +15,15 @@ import numpy.typing as npt
 
 from samesum.evidence import behaviours as take
 from samesum.evidence.latitudes import Latitude
+from samesum.evidence.programs import Program
 from samesum.evidence.projects import Projects, generator, truth
-from samesum.evidence.simulate import Program, World, evaluate
+from samesum.evidence.simulate import World, evaluate
 from samesum.evidence.tally import Tally, histogram, tally
 from samesum.reading import model as m
 
 Array = npt.NDArray[Any]
 Row = tuple[str, ...]
-MOST_SWEEPS = 3
+MOST_SWEEPS = 2
 
 
 @dataclass(frozen=True, slots=True)
@@ -180,16 +181,14 @@ def alone(bench: Bench, latitude: Latitude, deduction: float = 0.0) -> Alone:
 
 def offers(one: Alone) -> dict[str, tuple[take.Offer, list[Array]]]:
     """What each point of a choice, an overlap or an input offers, decided for itself."""
-    bench, latitude = one.bench, one.latitude
     found = {}
     for point in one.points:
-        if latitude.kind in ("setting", "judgement"):
+        if one.latitude.kind in ("setting", "judgement"):
             found[point] = _input_offer(one, point)
         else:
             offer = _branch_offer(one, point)
             if offer is not None:
                 found[point] = offer
-    del bench
     return found
 
 
@@ -204,7 +203,8 @@ def _input_offer(one: Alone, name: str) -> tuple[take.Offer, list[Array]]:
         open_ones[:, held] = False
         open_ones[latitude.reference, held] = True
     nothing = np.zeros(open_ones.shape)
-    return take.Offer(np.array(credits), open_ones, nothing, nothing, bench.truth, stands), credits
+    order = take.by_cost(nothing, open_ones)
+    return take.Offer(np.array(credits), open_ones, order, nothing, bench.truth, stands), credits
 
 
 def _branch_offer(one: Alone, id: str) -> tuple[take.Offer, list[Array]] | None:
@@ -239,7 +239,8 @@ def _branch_offer(one: Alone, id: str) -> tuple[take.Offer, list[Array]] | None:
         if cost is not None:
             money[number] = bench.truth_values[cost]
     cost_in_credits = money / bench.terms.price if bench.terms.price else np.zeros(money.shape)
-    offer = take.Offer(np.array(credits), open_ones, money, cost_in_credits, bench.truth, reference)
+    order = take.by_cost(money, open_ones)
+    offer = take.Offer(np.array(credits), open_ones, order, cost_in_credits, bench.truth, reference)
     return offer, credits
 
 

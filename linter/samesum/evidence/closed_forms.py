@@ -324,23 +324,25 @@ def indifferent(options: Sequence[Noise]) -> float:
 # --- enrolment ---------------------------------------------------------------------------------
 
 
-def enrolment_by_estimate(error: float, k: float) -> Outcome:
+def enrolment_by_estimate(error: float, k: float, bias: float = 0.0) -> Outcome:
     """Projects join when what they are credited exceeds k × the truth; the credited amount errs around the truth.
 
-    OI = s λ((k−1)/s) with λ the hazard of a standard normal; ``share`` that joins 1−Φ((k−1)/s).
+    OI = s λ((k−1)/s) with λ the hazard of a standard normal; ``share`` that joins 1−Φ((k−1)/s). With a bias b, what
+    is credited lies around 1+b: b + s λ((k−1−b)/s).
     """
     if error == 0.0:
-        return Outcome(0.0, 1.0 if k < 1.0 else 0.0)
-    c = (k - 1.0) / error
-    return Outcome(error * hazard(c), below(-c))
+        return Outcome(bias, 1.0 if k < 1.0 + bias else 0.0)
+    c = (k - 1.0 - bias) / error
+    return Outcome(bias + error * hazard(c), below(-c))
 
 
-def enrolment_by_truth(error: float, k: float) -> Outcome:
+def enrolment_by_truth(error: float, k: float, bias: float = 0.0) -> Outcome:
     """Projects join when a fixed regional average exceeds k × their truth; the truth scatters around the average.
 
-    q = (1/k−1)/s: OI = 1/(1 − s φ(q)/Φ(q)) − 1; ``share`` that joins Φ(q).
+    q = (1/k−1)/s: OI = 1/(1 − s φ(q)/Φ(q)) − 1; ``share`` that joins Φ(q). With a bias b, the fixed amount is 1+b and
+    q = ((1+b)/k−1)/s.
     """
     if error == 0.0:
-        return Outcome(0.0, 1.0 if k < 1.0 else 0.0)
-    q = (1.0 / k - 1.0) / error
-    return Outcome(1.0 / (1.0 - error * hazard(-q)) - 1.0, below(q))
+        return Outcome(bias, 1.0 if k < 1.0 + bias else 0.0)
+    q = ((1.0 + bias) / k - 1.0) / error
+    return Outcome((1.0 + bias) / (1.0 - error * hazard(-q)) - 1.0, below(q))

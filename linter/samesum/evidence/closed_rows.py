@@ -11,8 +11,8 @@ from collections.abc import Callable, Mapping, Sequence
 import numpy as np
 
 from samesum.evidence import closed_forms as forms
-from samesum.evidence.bench import Alone, Array
 from samesum.evidence.behaviours import Offer
+from samesum.evidence.bench import Alone, Array
 from samesum.evidence.closed_forms import Noise
 from samesum.evidence.linear import linear_in
 from samesum.evidence.tally import tally
@@ -28,6 +28,7 @@ def closed_rows(one: Alone, found: Mapping[str, tuple[Offer, list[Array]]]) -> N
     extra: dict[tuple[str, str], Array | None] = {}
     for id in one.points:
         worth = slope(one, id)
+        bench.sums.tallies[latitude.id, "weight", id, "closed"] = tally(bench.truth + worth, bench.truth)
         for key, value in _over_issued(noises, correlation, found[id][0], worth, bench.terms.price).items():
             if key not in extra:
                 extra[key] = value
@@ -45,9 +46,9 @@ def noises_of(one: Alone) -> tuple[list[Noise] | None, float]:
     """The options' errors and their correlation; None where an option states none, or is not always open, or where a
     deduction against the choice stands in the text."""
     body = one.bench.program.choosing[one.points[0]].point.body
-    if not isinstance(body, m.Choice) or one.latitude.withheld or one.bench.program.choosing[one.points[0]].nested[0]:
+    if not isinstance(body, m.Choice) or one.latitude.withheld:
         return None, 0.0
-    if any(option.error is None and option.bias is None or option.only_when is not None for option in body.options):
+    if any((option.error is None and option.bias is None) or option.only_when for option in body.options):
         return None, 0.0
     if any(one.bench.program.choosing[one.points[0]].nested):
         return None, 0.0

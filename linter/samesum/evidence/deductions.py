@@ -11,8 +11,10 @@ import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
-from samesum.evidence.bench import Bench, Terms, alone, decide, offers, prepare
-from samesum.evidence.closed_forms import Noise, looks_in_order, pick_of_all
+from samesum.evidence import closed_forms as forms
+from samesum.evidence.behaviours import pick_of_all, second_look
+from samesum.evidence.bench import Bench, Terms, alone, offers, prepare
+from samesum.evidence.closed_forms import Noise
 from samesum.evidence.closed_rows import noises_of, slope
 from samesum.evidence.latitudes import Latitude
 from samesum.evidence.linear import linear_in
@@ -20,7 +22,7 @@ from samesum.evidence.projects import Stretch, Supply, projects_of
 from samesum.evidence.tally import Tally, tally
 
 # Projects that a deduction is solved on, at most: each step works every option out again.
-MOST_BLOCKS = 4
+MOST_BLOCKS = 2
 _MOST_STEPS = 30
 _FIRST = 0.05
 _LARGEST = 0.95
@@ -75,8 +77,8 @@ def _pooled(benches: Sequence[Bench], latitude: Latitude, behaviour: str, share:
         if not one.points:
             issued = bench.truth
         else:
-            decided = decide(one, offers(one))
-            issued = one.credited(decided.second if behaviour == "second look" else decided.pick)
+            rule = second_look if behaviour == "second look" else pick_of_all
+            issued = one.credited({id: rule(offer) for id, (offer, _) in offers(one).items()})
         total = total + tally(issued, bench.truth)
     return total
 
@@ -89,6 +91,8 @@ def _solved(trial: Callable[[float], Tally]) -> Deduction | None:
         return None
     if abs(level) < 1e-12:
         return Deduction(0.0, 0.0, level, start.standard_error)
+    # What is far below the standard error is no root worth another step; a closed form has none, and is exact.
+    slack = max(1e-12, 0.01 * start.standard_error) if start.projects > 1 else 1e-12
     step = trial(_FIRST).over_issuance - level
     if not math.isfinite(step) or abs(step) < 1e-12:
         return None
@@ -108,7 +112,7 @@ def _solved(trial: Callable[[float], Tally]) -> Deduction | None:
         middle = (low * at_high - high * at_low) / (at_high - at_low)
         found = trial(middle)
         value = found.over_issuance
-        if abs(value) < 1e-9 or abs(high - low) < 1e-9:
+        if abs(value) <= slack or abs(high - low) < 1e-12:
             break
         if value * at_high < 0:
             low, at_low = high, at_high
@@ -145,13 +149,13 @@ def _exact(benches: Sequence[Bench], latitude: Latitude, behaviour: str) -> Dedu
     if (order != order[:, :1]).any():
         return None
     ordered = [noises[place] for place in order[:, 0]]
-    form = looks_in_order if behaviour == "second look" else pick_of_all
+    form = forms.looks_in_order if behaviour == "second look" else forms.pick_of_all
 
     def trial(share: float) -> Tally:
         inner = [
             Noise(sign * ((1 - share) * (1 + noise.bias) - 1), abs(1 - share) * noise.error) for noise in ordered
         ]
-        return Tally(projects=2, t=1.0, d=form(inner, correlation))
+        return Tally(projects=1, t=1.0, d=form(inner, correlation))
 
     try:
         found = _solved(trial)

@@ -5,11 +5,12 @@ All elements of an index together are one latitude, each element with a decision
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Mapping
+from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import Literal
 
-from samesum.evidence.simulate import STATED, Program
+from samesum.evidence.programs import STATED, Program
 from samesum.evidence.witness import usual
 from samesum.reading import model as m
 from samesum.reading import walk
@@ -21,7 +22,7 @@ Kind = Literal["choice", "overlap", "setting", "judgement", "stated"]
 class Latitude:
     """``id`` is the branch point's general id, or a setting's or judgement's name. ``candidates`` are options, branches
     or values by name; ``reference`` the one that counts as the truth. ``stated``: nobody decides, but the quantity says
-    how it errs. ``withheld``: deductions against this choice, which the truth does not know."""
+    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this choice, which the truth does not know."""
 
     id: str
     kind: Kind
@@ -30,6 +31,7 @@ class Latitude:
     clause: str
     candidates: tuple[str, ...]
     reference: int
+    noises: Mapping[str, tuple[float, float]] = field(default_factory=dict)
     withheld: tuple[str, ...] = ()
     values: tuple[float | int | bool, ...] = ()
     low: float = 0.0
@@ -40,7 +42,8 @@ class Latitude:
         if self.kind in ("setting", "judgement"):
             return (self.id,) if self.id in program.inputs else ()
         graph = program.graph
-        return tuple(id for id in program.points if id in program.selects and graph.branch_points[id].general_id == self.id)
+        mine = (id for id in program.points if graph.branch_points[id].general_id == self.id)
+        return tuple(id for id in mine if id in program.selects)
 
 
 def find_latitudes(program: Program) -> tuple[Latitude, ...]:
@@ -61,6 +64,11 @@ def find_latitudes(program: Program) -> tuple[Latitude, ...]:
                 clause=point.clause,
                 candidates=point.branches,
                 reference=program.choosing[id].order[0],
+                noises={
+                    option.name: (float(option.bias or 0), float(option.error or 0))
+                    for option in point.body.options
+                    if option.error is not None or option.bias is not None
+                },
                 withheld=_withheld(program, point.quantity),
             )
         elif point.kind == "cases" and sum(condition is not None for condition in point.conditions) > 1:

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Collection
 
-from samesum.evidence.simulate import Program
+from samesum.evidence.programs import Program
 
 
 def linear_in(program: Program, points: Collection[str]) -> bool:

@@ -85,7 +85,7 @@ def make_plan(graph: DecisionGraph) -> Plan:
     before = sys.getrecursionlimit()
     sys.setrecursionlimit(max(before, 50_000))
     try:
-        maker = _Maker(graph)
+        maker = Maker(graph)
         if graph.model.result is None:
             raise Unplannable("the rulebook has no result")
         result = maker.instance(graph.model.result.name)
@@ -110,7 +110,9 @@ def make_plan(graph: DecisionGraph) -> Plan:
 
 
 @dataclass(slots=True)
-class _Maker:
+class Maker:
+    """Makes a plan node by node, each operation once."""
+
     graph: DecisionGraph
     nodes: list[Node] = field(default_factory=list)
     named: dict[str, tuple[str, ...]] = field(default_factory=dict)

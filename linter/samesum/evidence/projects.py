@@ -16,7 +16,8 @@ import numpy as np
 import numpy.typing as npt
 
 from samesum.evidence.latitudes import middle
-from samesum.evidence.simulate import Program, World, evaluate, make_program
+from samesum.evidence.programs import Program, make_program, needed_for
+from samesum.evidence.simulate import World, evaluate
 from samesum.reading import model as m
 from samesum.reading.cases import Case
 
@@ -57,7 +58,7 @@ class Supply:
 
 @dataclass(frozen=True, slots=True)
 class Stretch:
-    """A block of work: projects ``start`` to ``start + count`` of source number ``source``; ``number`` keys the draws."""
+    """A block of work: projects ``start`` to ``start + count`` of source ``source``; ``number`` keys the draws."""
 
     number: int
     source: int
@@ -86,7 +87,7 @@ def generator(seed: int, block: int, *names: str) -> np.random.Generator:
 
 
 def from_domains(model: m.Model) -> Supply:
-    """Projects drawn from the declared domains: uniform, or normal within the domain for a fact with ``mean … spread``.
+    """Projects drawn from the declared domains: uniform, or normal within it for a fact with ``mean … spread``.
 
     Raises ``CannotDraw`` when a fact that matters has neither a whole domain nor a spread.
     """
@@ -142,7 +143,7 @@ def stretches(supply: Supply, projects: int) -> tuple[Stretch, ...]:
     whole = sum(source.rows for source in supply.sources)
     made: list[Stretch] = []
     done = 0
-    for number, source in enumerate(supply.sources):
+    for number in range(len(supply.sources)):
         rows_so_far = sum(each.rows for each in supply.sources[: number + 1])
         end = projects * rows_so_far // whole if whole else projects
         start = 0
@@ -160,7 +161,8 @@ def projects_of(supply: Supply, stretch: Stretch, seed: int) -> Projects:
     if source.rows:
         rows = (stretch.start + np.arange(stretch.count)) % source.rows
         inputs = {name: array[rows] for name, array in source.inputs.items()}
-        return Projects(source.program, inputs, {name: held[rows] for name, held in source.given.items()}, stretch.count)
+        given = {name: held[rows] for name, held in source.given.items()}
+        return Projects(source.program, inputs, given, stretch.count)
     return Projects(source.program, _drawn(supply.model, source.program, stretch, seed), {}, stretch.count)
 
 
@@ -276,7 +278,7 @@ def _inside(
     made = {name: _draw(streams[name], domains[name], count) for name in names}
     if not conditions:
         return made
-    needed = _needed(program, conditions)
+    needed = needed_for(program.nodes, conditions)
     kept = _met(program, {**others, **made}, conditions, needed, count)
     for _ in range(_MOST_ATTEMPTS):
         missing = np.flatnonzero(~kept)
@@ -315,7 +317,9 @@ def _draw(stream: np.random.Generator, fact: m.Fact, count: int) -> Array:
         if not len(beyond):
             return values
         values[beyond] = mean + spread * stream.standard_normal(len(beyond))
-    raise CannotDraw(f"{fact.name}: hardly any value around its mean lies inside its domain; mend its `mean … spread …`")
+    raise CannotDraw(
+        f"{fact.name}: hardly any value around its mean lies inside its domain; mend its `mean … spread …`"
+    )
 
 
 def _fact_domains(model: m.Model, program: Program) -> dict[str, m.Fact]:
@@ -337,7 +341,7 @@ def _groups(program: Program, domains: Mapping[str, m.Fact]) -> list[tuple[tuple
     for condition in program.applies:
         names = {
             program.nodes[number].name
-            for number in _needed(program, (condition,))
+            for number in needed_for(program.nodes, (condition,))
             if program.nodes[number].kind in ("input", "code", "holds")
         } & set(domains)
         conditions = {condition}
@@ -353,17 +357,6 @@ def _groups(program: Program, domains: Mapping[str, m.Fact]) -> list[tuple[tuple
     groups = [(tuple(sorted(names)), tuple(sorted(conditions))) for names, conditions in ties]
     groups.sort()
     return [*groups, (tuple(sorted(set(domains) - tied)), ())]
-
-
-def _needed(program: Program, ends: Sequence[int]) -> tuple[int, ...]:
-    wanted: set[int] = set()
-    stack = list(ends)
-    while stack:
-        number = stack.pop()
-        if number not in wanted:
-            wanted.add(number)
-            stack += program.nodes[number].args
-    return tuple(sorted(wanted))
 
 
 def _met(

@@ -10,11 +10,12 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from samesum.evidence.bench import Row, Sums, Terms
+from samesum.evidence.closed_forms import enrolment_by_estimate, enrolment_by_truth
 from samesum.evidence.deductions import Deduction, solve_deductions
 from samesum.evidence.latitudes import Latitude, find_latitudes
 from samesum.evidence.projects import Projects, Stretch, Supply, projects_of, stretches
@@ -85,8 +86,9 @@ class Periods:
 @dataclass(frozen=True, slots=True)
 class Closure:
     """``kind``: mandate, lowest, fixed, deduct, in order. ``left``: over-issuance of this latitude alone when it is
-    closed so; ``whole_left``: of the whole rulebook, the others left as they are. ``percent``: the deduction. ``fixed`` is judged over the
-    whole crediting period: ``left`` with errors made anew each period, ``stay`` with the same in each."""
+    closed so; ``whole_left``: of the whole rulebook, the others left as they are. ``percent``: what is deducted.
+    ``fixed`` is judged over the whole crediting period: ``left`` with errors made anew each period, ``stay`` with the
+    same in each."""
 
     kind: str
     option: str
@@ -161,7 +163,7 @@ def select(
     everything = sums.tallies.get((WHOLE, MANDATED, "reference"))
     if everything is None or not everything.t > 0:
         raise NothingTrue
-    rows = _Rows(sums)
+    rows = _Rows(sums, latitudes, terms.join)
     deductions: Mapping[tuple[str, str], Deduction] = {}
     if closures:
         deductions = solve_deductions(supply, parts, latitudes, terms, (SECOND, PICK))
@@ -222,8 +224,11 @@ def _keep_memory() -> None:
 
 
 class _Rows:
-    def __init__(self, sums: Sums) -> None:
-        self.sums = sums
+    def __init__(self, sums: Sums, latitudes: Sequence[Latitude], k: float | None) -> None:
+        self.sums, self.latitudes, self.k = sums, latitudes, k
+        there = [each for each in latitudes if self.has(each)]
+        alone = len(there) == 1 and there[0].kind == "choice" and there[0].by == "developer"
+        self.only = there[0] if alone else None
 
     def has(self, latitude: Latitude) -> bool:
         return any(row[0] == latitude.id for row in self.sums.tallies)
@@ -237,7 +242,7 @@ class _Rows:
         return tuple(sorted(made, key=lambda each: order.index(each.behaviour)))
 
     def figure(self, row: Row, found: Tally) -> Figure:
-        closed = self.sums.tallies.get((*row, "closed"))
+        closed = self.closed(row)
         # A formula counts only when it held for every project.
         holds = closed is not None and closed.projects == found.projects + found.outside
         joined = self.sums.tallies.get((*row, "joined"))
@@ -252,8 +257,36 @@ class _Rows:
             simulated_error=found.standard_error,
             difference=found.difference,
             difference_error=found.difference_error,
-            joined=_enrolment(joined) if joined is not None else None,
+            joined=self.enrolment(row, joined) if joined is not None else None,
         )
+
+    def closed(self, row: Row) -> Tally | None:
+        """The closed form's row. A rulebook with one latitude, the developer's, is that latitude."""
+        if row[0] != WHOLE:
+            return self.sums.tallies.get((*row, "closed"))
+        if self.only is None:
+            return None
+        reference = self.only.candidates[self.only.reference]
+        return self.sums.tallies.get((self.only.id, row[1], reference if row[2] == "reference" else row[2], "closed"))
+
+    def enrolment(self, row: Row, joined: Tally, truth_scatters: bool = False) -> Enrolment:
+        """A row among those who join; with the closed form where one option is mandated and counts with the same
+        weight in every project."""
+        share = joined.share
+        if not joined.projects or math.isnan(joined.over_issuance):
+            return Enrolment(math.nan, math.nan, share)
+        found = Enrolment(joined.over_issuance, joined.standard_error, share)
+        latitude = next((each for each in self.latitudes if each.id == row[0]), None)
+        if latitude is None or row[1] != MANDATED or self.k is None:
+            return found
+        weights = [each for key, each in self.sums.tallies.items() if key[:2] == (row[0], "weight")]
+        if len(weights) != 1 or weights[0].standard_error > 0 or row[2] not in latitude.noises:
+            return found
+        weight = weights[0].over_issuance
+        bias, error = (weight * part for part in latitude.noises[row[2]])
+        form = enrolment_by_truth if truth_scatters else enrolment_by_estimate
+        exact = form(abs(error), self.k, bias)
+        return replace(found, closed_form=exact.over_issuance, closed_share=exact.share)
 
     def histograms(self, id: str) -> dict[str, tuple[int, ...]]:
         found = {}
@@ -292,7 +325,7 @@ class _Rows:
             more = headline.over_issuance - mandated.over_issuance if exact else headline.difference
             error = headline.standard_error if exact else headline.difference_error
         scatters = {
-            row[2]: _enrolment(found)
+            row[2]: self.enrolment(row, found, truth_scatters=True)
             for row, found in self.sums.tallies.items()
             if row[0] == id and row[3:] == ("truth scatters", "joined")
         }
@@ -349,9 +382,3 @@ class _Rows:
                     )
                 )
         return tuple(made)
-
-
-def _enrolment(found: Tally) -> Enrolment:
-    if not found.projects or math.isnan(found.over_issuance):
-        return Enrolment(math.nan, math.nan, found.share)
-    return Enrolment(found.over_issuance, found.standard_error, found.share)

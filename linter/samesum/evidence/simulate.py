@@ -1,7 +1,7 @@
 """One rulebook worked out for many projects at once, with every decision in our hand (numpy).
 
-Takes the rulebook as small operations (``plan``), arrays of facts, and a ``World``: which branch is taken
-where, how wrong each option's estimate is, which input is set to what. Gives the result of every project.
+Takes a ``Program``, arrays of facts, and a ``World``: which branch is taken where, how wrong each option's estimate
+is, which input is set to what. Gives the result of every project.
 
 An option that states an error (or a bias) is an estimate: it gives the choice's reference value × (1 + e), worked
 out with whatever the rest of the rulebook gives in that world, so an error travels on through everything that
@@ -10,22 +10,18 @@ uses it. An option that states neither is worked out by its own formula: nobody 
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 import numpy.typing as npt
 
 from samesum.evidence import plan
-from samesum.evidence.pointwise import preferred
-from samesum.graph import BranchPoint, DecisionGraph, Element, build
-from samesum.reading import model as m
+from samesum.evidence.programs import Lookup, Program, needed_for
 
 Array = npt.NDArray[Any]
 Branch = int | Array
-STATED = "as stated"
-"""The one branch of a quantity that states an error without offering a choice."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -40,197 +36,6 @@ class World:
     factors: Mapping[str, float] = field(default_factory=dict)
 
 
-@dataclass(frozen=True, slots=True)
-class Choosing:
-    """A choice, or what follows one. ``stated``: whether each option is an estimate; ``order``: from the most to the
-    least fit to stand for the truth; ``leader``: the branch each option stands for there; ``nested``: for each option
-    the branch points inside it."""
-
-    point: BranchPoint
-    stated: tuple[bool, ...]
-    order: tuple[int, ...]
-    leader: tuple[int, ...]
-    nested: tuple[tuple[str, ...], ...]
-
-
-@dataclass(frozen=True, slots=True)
-class Program:
-    """``nodes`` in an order in which each stands after what it uses; ``live`` those that anything asked for needs."""
-
-    graph: DecisionGraph
-    nodes: tuple[plan.Node, ...]
-    live: tuple[int, ...]
-    result: int
-    applies: tuple[int, ...]
-    costs: Mapping[tuple[str, int], int]
-    points: Mapping[str, int]
-    selects: Mapping[str, int]
-    choosing: Mapping[str, Choosing]
-    lookups: Mapping[int, Lookup]
-    inputs: Mapping[str, tuple[int, ...]]
-    withheld: Mapping[str, float]
-    _after: dict[frozenset[str], tuple[int, ...]] = field(default_factory=dict)
-
-    def after(self, keys: Iterable[str]) -> tuple[int, ...]:
-        """The nodes that change with these branch points (by id) or inputs (by name), in order."""
-        wanted = frozenset(keys)
-        found = self._after.get(wanted)
-        if found is None:
-            changed = bytearray(len(self.nodes))
-            for key in wanted:
-                for number in (self.points.get(key), self.selects.get(key), *self.inputs.get(key, ())):
-                    if number is not None:
-                        changed[number] = 1
-            for number in self.live:
-                if not changed[number] and any(changed[arg] for arg in self.nodes[number].args):
-                    changed[number] = 1
-            found = tuple(number for number in self.live if changed[number])
-            self._after[wanted] = found
-        return found
-
-
-@dataclass(frozen=True, slots=True)
-class Lookup:
-    """Rows of a table as numbers: for each row its value and one test an argument (a code, or a band's ends)."""
-
-    values: tuple[float, ...]
-    tests: tuple[tuple[int | tuple[float, float], ...], ...]
-
-
-# --- making ------------------------------------------------------------------------------------
-
-
-def make_program(model: m.Model, sizes: Mapping[str, int] | None = None) -> Program:
-    """The program of a rulebook for projects with so many elements of each index (``at most`` when not given).
-
-    Raises ``plan.Unplannable`` when a part of the rulebook could not be resolved.
-    """
-    stated = replace(model, quantities=tuple(_with_statement(each) for each in model.quantities))
-    graph = plan.resized(stated, sizes or {}) if sizes else build(stated)
-    withheld = {each.name: float(_plain(each.expression)) for each in model.constants if each.withheld}
-    maker = _Maker(graph, withheld)
-    if model.result is None:
-        raise plan.Unplannable("the rulebook has no result")
-    result = maker.instance(model.result.name)
-    applies = tuple(maker.condition(each.condition, {}) for each in model.applies)
-    choosing: dict[str, Choosing] = {}
-    costs: dict[tuple[str, int], int] = {}
-    selects = {node.name: number for number, node in enumerate(maker.nodes) if node.kind == "select"}
-    for id in selects:
-        point = graph.branch_points[id]
-        if isinstance(point.body, m.Cases):
-            continue
-        choosing[id] = _choosing(point, graph)
-        if isinstance(point.body, m.Choice):
-            for number, option in enumerate(point.body.options):
-                if option.cost is not None:
-                    node = maker.expression(option.cost, graph.instances[point.instance].elements)
-                    costs[id, number] = maker.linear([(node, option.cost.unit.factor)])
-    nodes = tuple(maker.nodes)
-    inputs: dict[str, list[int]] = {}
-    for number, node in enumerate(nodes):
-        if node.kind in ("input", "code", "holds"):
-            inputs.setdefault(node.name, []).append(number)
-    return Program(
-        graph=graph,
-        nodes=nodes,
-        live=_live(nodes, (result, *applies, *costs.values())),
-        result=result,
-        applies=applies,
-        costs=costs,
-        points={node.name: number for number, node in enumerate(nodes) if node.kind == "point"},
-        selects={node.name: number for number, node in enumerate(nodes) if node.kind == "select"},
-        choosing=choosing,
-        lookups={number: _lookup(node, graph.model) for number, node in enumerate(nodes) if node.kind == "lookup"},
-        inputs={name: tuple(found) for name, found in inputs.items()},
-        withheld=withheld,
-    )
-
-
-class _Maker(plan._Maker):
-    """The plan's maker, except that a constant which is not in the reference stays an input."""
-
-    def __init__(self, graph: DecisionGraph, withheld: Mapping[str, float]) -> None:
-        super().__init__(graph)
-        self._withheld = withheld
-
-    def expression(self, node: m.Expression, elements: Element) -> int:
-        if isinstance(node, m.Reference) and node.kind == "constant" and node.name in self._withheld:
-            return self.make(plan.Node("input", name=node.name))
-        return super().expression(node, elements)
-
-
-def _with_statement(quantity: m.Quantity) -> m.Quantity:
-    """A quantity that states how it errs, as a choice with one option: nobody chooses, the error is there."""
-    if quantity.error is None and quantity.bias is None:
-        return quantity
-    span = quantity.about.span
-    option = m.Option(STATED, quantity.body, span, error=quantity.error, bias=quantity.bias, reference=True)
-    return replace(quantity, body=m.Choice("programme", (option,), span))
-
-
-def _choosing(point: BranchPoint, graph: DecisionGraph) -> Choosing:
-    options = point.body.options if isinstance(point.body, (m.Choice, m.Follows)) else ()
-    left = list(range(len(options)))
-    order: list[int] = []
-    while left:
-        best = preferred(options, left)
-        order.append(best)
-        left.remove(best)
-    leader: tuple[int, ...] = ()
-    if point.leader:
-        names = graph.branch_points[point.leader].branches
-        leader = tuple(point.branches.index(name) if name in point.branches else -1 for name in names)
-    insides = tuple(f"{point.id}/{option.name}" for option in options)
-    nested = tuple(
-        tuple(id for id in graph.branch_points if id == inside or id.startswith(inside + "/")) for inside in insides
-    )
-    stated = tuple(option.error is not None or option.bias is not None for option in options)
-    return Choosing(point, stated, tuple(order), leader, nested)
-
-
-def _plain(expression: m.Expression) -> Any:
-    """A constant's own number, where it is written as one."""
-    match expression:
-        case m.Number(value=value):
-            return value
-        case m.Negation(operand=operand):
-            return -_plain(operand)
-        case m.Scaled(operand=operand, factor=factor):
-            return _plain(operand) * factor
-        case _:
-            raise plan.Unplannable("a constant that is not in the reference is written as a plain number")
-
-
-def _live(nodes: Sequence[plan.Node], ends: Iterable[int]) -> tuple[int, ...]:
-    wanted: set[int] = set()
-    stack = list(ends)
-    while stack:
-        number = stack.pop()
-        if number not in wanted:
-            wanted.add(number)
-            stack += nodes[number].args
-    return tuple(sorted(wanted))
-
-
-def _lookup(node: plan.Node, model: m.Model) -> Lookup:
-    table = next(each for each in model.tables if each.name == node.name)
-    tests = []
-    for row in table.rows:
-        test: list[int | tuple[float, float]] = []
-        for key, label in zip(table.keys, row.labels, strict=True):
-            if isinstance(label, m.Band):
-                low = float(label.low) if label.low is not None else -np.inf
-                test.append((low, float(label.high) if label.high is not None else np.inf))
-            else:
-                test.append(key.values.index(label) if label in key.values else -1)
-        tests.append(tuple(test))
-    return Lookup(tuple(float(row.value) for row in table.rows), tuple(tests))
-
-
-# --- working out -------------------------------------------------------------------------------
-
-
 def evaluate(
     program: Program,
     inputs: Mapping[str, Array],
@@ -241,8 +46,8 @@ def evaluate(
     """The value of every node: an array over the projects, or one number where all have the same.
 
     With ``base`` (the values of another world) only ``numbers`` are worked out anew: ``program.after`` the branch
-    points and inputs in which the two worlds differ. What has no value is not finite. A point's value is the pair of the
-    branch taken and the reference's branch (−1 where none is open).
+    points and inputs in which the two worlds differ. What has no value is not finite. A point's value is the pair of
+    the branch taken and the reference's branch (−1 where none is open).
     """
     values: list[Any] = [None] * len(program.nodes) if base is None else list(base)
     with np.errstate(all="ignore"):
@@ -256,7 +61,7 @@ def _value(
 ) -> Any:
     node = program.nodes[number]
     if node.kind == "linear":
-        return _linear(node, values)
+        return _linear(node, program.weights[number], values)
     if node.kind == "select":
         return _selected(program, node, values, inputs, world)
     if node.kind == "point":
@@ -270,15 +75,15 @@ def _value(
     raise AssertionError(f"no way to work out a node of kind {node.kind}")
 
 
-def _linear(node: plan.Node, values: list[Any]) -> Any:
+def _linear(node: plan.Node, weights: tuple[float, ...], values: list[Any]) -> Any:
     total: Any = None
     ours = False  # whether ``total`` is an array of our own, which may be added to in place
-    for arg, weight in zip(node.args, node.weights, strict=True):
+    for arg, weight in zip(node.args, weights, strict=True):
         term = values[arg]
-        if weight != 1:
-            term = -term if weight == -1 else term * float(weight)
+        if weight != 1.0:
+            term = -term if weight == -1.0 else term * weight
         if total is None:
-            total, ours = term, weight != 1
+            total, ours = term, weight != 1.0
         elif ours and isinstance(total, np.ndarray) and np.shape(term) in ((), total.shape):
             total += term
         else:
@@ -366,12 +171,13 @@ def _looked_up(lookup: Lookup, args: list[Any]) -> Any:
     for value, tests in zip(reversed(lookup.values), reversed(lookup.tests), strict=True):
         held: Any = np.True_
         for arg, test in zip(args, tests, strict=True):
-            if isinstance(test, tuple):
-                held = held & ((arg > test[0]) & (arg <= test[1]))
-            else:
-                held = held & (arg == test)
+            held = held & _answers(arg, test)
         found = np.where(held, value, found)
     return found
+
+
+def _answers(arg: Any, test: int | tuple[float, float]) -> Any:
+    return (arg > test[0]) & (arg <= test[1]) if isinstance(test, tuple) else arg == test
 
 
 def _point(program: Program, node: plan.Node, values: list[Any], world: World) -> tuple[Branch, Branch]:
@@ -416,7 +222,8 @@ def _cases(program: Program, node: plan.Node, values: list[Any], wanted: Branch 
 def _where(held: Any, yes: Branch, no: Branch) -> Branch:
     if np.ndim(held) == 0:
         return yes if held else no
-    return np.where(held, yes, no).astype(np.int8)
+    # Branches are small numbers: arrays of bytes are the fastest to go through.
+    return np.where(held, *(each if isinstance(each, np.ndarray) else np.int8(each) for each in (yes, no)))
 
 
 def _mapped(onto: tuple[int, ...], taken: Branch) -> Branch:
@@ -429,9 +236,9 @@ def picked(which: Branch, among: Sequence[Any]) -> Any:
     """For each project the value of its own branch; not finite where it has none."""
     if not isinstance(which, np.ndarray):
         return among[which] if which >= 0 else np.nan
-    found: Any = np.nan
-    for number, value in enumerate(among):
-        found = np.where(which == number, value, found)
+    found: Any = among[0] if int(which.min(initial=0)) >= 0 else np.where(which == 0, among[0], np.nan)
+    for number in range(1, len(among)):
+        found = np.where(which == number, among[number], found)
     return found
 
 
@@ -486,7 +293,7 @@ def _as_reference(
         world.factors,
     )
     inner = list(values)
-    needed = set(_live(program.nodes, (body,)))
+    needed = set(needed_for(program.nodes, (body,)))
     for number in program.after(nested):
         if number in needed:
             inner[number] = _value(program, number, inner, inputs, quiet)

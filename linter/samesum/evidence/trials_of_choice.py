@@ -7,6 +7,7 @@ from typing import Any
 
 import numpy as np
 
+from samesum.evidence.behaviours import Offer
 from samesum.evidence.bench import (
     MOST_SWEEPS,
     Alone,
@@ -23,7 +24,6 @@ from samesum.evidence.bench import (
     record,
     record_histogram,
 )
-from samesum.evidence.behaviours import Offer
 from samesum.evidence.closed_rows import closed_rows
 from samesum.evidence.latitudes import Latitude
 from samesum.evidence.projects import Projects
@@ -160,7 +160,8 @@ class _Whole:
     def world(self, taken: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None) -> World:
         branches = {key: value for key, value in taken.items() if key not in self.inputs}
         inputs = {key: value for key, value in taken.items() if key in self.inputs}
-        return World(branches, {**self.bench.program.withheld, **inputs}, self.bench.errors if errors is None else errors)
+        inputs = {**self.bench.program.withheld, **inputs}
+        return World(branches, inputs, self.bench.errors if errors is None else errors)
 
     def credited(
         self, taken: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None
