@@ -1,0 +1,259 @@
+"""What ``samesum bias`` tells people: a sentence for a committee, tables, and issued/true as bars side by side."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+
+from samesum.evidence.latitudes import Latitude
+from samesum.evidence.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
+from samesum.evidence.tally import BINS, WIDTH
+from samesum.outputs.page import Page, Paper
+from samesum.outputs.tables import table_lines
+
+MOST_CLOSED = 6
+_KINDS = {"choice": "choice", "overlap": "overlap", "setting": "free value", "judgement": "judgement"}
+
+
+def bias_text(selection: Selection, paper: Paper) -> str:
+    """The whole answer for people."""
+    page = Page(paper)
+    page.line(f"{selection.model.title}, draft {selection.model.draft}" if selection.model.draft else selection.model.title, "strong")
+    page.blank()
+    page.paragraph(sentence(selection))
+    page.blank()
+    page.paragraph(_drawn_from(selection), style="quiet")
+    page.heading("When everybody does the same")
+    _behaviours(page, selection.figures)
+    if selection.terms.join is not None:
+        page.blank()
+        _enrolment(page, selection)
+    page.heading("Issued against true, project by project")
+    _bars(page, selection.histograms)
+    _over_periods(page, selection)
+    page.heading("Where it comes from")
+    _ranking(page, selection)
+    closable = [each for each in selection.ranking if each.closures and abs(each.per_thousand) >= 0.05]
+    if closable:
+        page.heading("What closing a branch point leaves")
+        for found in closable[:MOST_CLOSED]:
+            _closures(page, found)
+        if len(closable) > MOST_CLOSED:
+            page.blank()
+            page.paragraph(f"… and {len(closable) - MOST_CLOSED} more with --json.", style="quiet")
+    return page.text
+
+
+def sentence(selection: Selection) -> str:
+    """What a committee member needs to know, in one sentence or two."""
+    chosen = _of(selection.figures, HEADLINE)
+    mandated = _of(selection.figures, "mandated")
+    if chosen is None or mandated is None:
+        return "There is nothing that anybody chooses here."
+    acting = [each for each in selection.ranking if each.latitude.by == "developer" and each.latitude.kind != "stated"]
+    if not acting:
+        return (
+            f"Nothing here is left to the developer: of every 1,000 t that are true, the programme issues "
+            f"{_tonnes(1000 + 1000 * mandated.over_issuance)} t."
+        )
+    said = (
+        f"For every 1,000 t that are true, the programme issues {_tonnes(1000 + 1000 * chosen.over_issuance)} t when "
+        f"developers try the cheapest option first and look again when it comes out short, and "
+        f"{_tonnes(1000 + 1000 * mandated.over_issuance)} t when all have to use the reference"
+    )
+    first = acting[0]
+    if first.per_thousand >= 0.05:
+        said += f"; most comes from {_name(first.latitude)}, {_tonnes(first.per_thousand)} t by itself"
+    return said + "."
+
+
+def _name(latitude: Latitude) -> str:
+    return f"{latitude.id} (clause {latitude.clause})" if latitude.clause else latitude.id
+
+
+def _tonnes(value: float) -> str:
+    return f"{value:,.0f}" if abs(value) >= 9.95 else f"{value:.1f}"
+
+
+def _percent(value: float, places: int = 2) -> str:
+    if not math.isfinite(value):
+        return "–"
+    shown = f"{100 * value:.{places}f}"
+    if not shown.strip("-0."):
+        shown = shown.replace("-", "")
+    return f"{shown} %"
+
+
+def _more(value: float) -> str:
+    text = _percent(value)
+    return text if text.startswith(("-", "–", "0.00")) else f"+{text}"
+
+
+def _error(value: float) -> str:
+    if not math.isfinite(value):
+        return "–"
+    return "exact" if value == 0 else f"± {100 * value:.2f}"
+
+
+def _of(figures: Sequence[Figure], behaviour: str) -> Figure | None:
+    return next((each for each in figures if each.behaviour == behaviour), None)
+
+
+def _drawn_from(selection: Selection) -> str:
+    supply = selection.supply
+    text = f"{selection.projects:,} projects, "
+    if supply.cases:
+        kept = supply.cases - supply.outside - supply.without_result
+        text += f"each of {kept} given ones in turn"
+        left = [
+            f"{count} {what}"
+            for count, what in (
+                (supply.outside, "outside the rulebook"),
+                (supply.without_result, "without a result on the reference route"),
+            )
+            if count
+        ]
+        text += f" ({' and '.join(left)} left out)" if left else ""
+    else:
+        text += "drawn from the declared domains (those without a result on the reference route drawn again)"
+    text += f"; seed {selection.terms.seed}"
+    if selection.terms.price is not None:
+        text += f"; {selection.terms.price:g} a credit"
+    else:
+        text += "; no price given, so that costs only say what is tried first"
+    return text + ". A project counts by its tonnes; ± is one standard error."
+
+
+def _behaviours(page: Page, figures: Sequence[Figure]) -> None:
+    rows = []
+    for each in figures:
+        closed = "" if each.closed_form is None else f"{_more(each.simulated)} {_error(each.simulated_error)}"
+        name = f"{each.behaviour}: {each.option}" if each.option else each.behaviour
+        exact = "by formula" if each.closed_form is not None else _error(each.standard_error)
+        rows.append((name, _more(each.over_issuance), exact, _percent(each.over_credited, 0), closed))
+    titles = ["behaviour", "over-issued", "±", "projects over-credited"]
+    if any(row[4] for row in rows):
+        titles.append("simulated")
+    numbers = titles[1:]
+    page.lines += table_lines(titles, [row[: len(titles)] for row in rows], page.paper, numbers=numbers)
+
+
+def _enrolment(page: Page, selection: Selection) -> None:
+    k = selection.terms.join
+    page.paragraph(f"When only projects join that would be credited more than {k:g} × their truth:")
+    rows = []
+    for each in selection.figures:
+        if each.joined is not None:
+            name = f"{each.behaviour}: {each.option}" if each.option else each.behaviour
+            found = each.joined
+            rows.append((name, _more(found.over_issuance), _error(found.standard_error), _percent(found.share, 0)))
+    titles = ("the estimate errs", "over-issued", "±", "join")
+    page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
+    scattered = [
+        (f"{found.latitude.id}: {option}", _more(each.over_issuance), _error(each.standard_error), _percent(each.share, 0))
+        for found in selection.found
+        for option, each in found.truth_scatters.items()
+    ]
+    if scattered:
+        titles = ("the truth scatters around a fixed average", *titles[1:])
+        page.lines += table_lines(titles, scattered, page.paper, numbers=titles[1:])
+
+
+def _bars(page: Page, histograms: Mapping[str, tuple[int, ...]]) -> None:
+    """Two histograms back to back around issued/true, in steps of 0.1."""
+    steps = 2
+    left, right = (
+        [sum(histograms[name][at : at + steps]) for at in range(0, BINS, steps)] for name in ("mandated", HEADLINE)
+    )
+    used = [number for number in range(len(left)) if left[number] or right[number]]
+    if not used:
+        page.paragraph("No project has true credits above zero.")
+        return
+    room = max(6, (page.paper.width - 15) // 2)
+    whole = max(sum(left), 1), max(sum(right), 1)
+    longest = max(max(left) / whole[0], max(right) / whole[1])
+    page.lines.append(f"{'all on the reference':>{room}}  issued/true  as developers choose")
+    for number in range(used[0], used[-1] + 1):
+        low, high = number * WIDTH * steps, (number + 1) * WIDTH * steps
+        label = f"{low:.1f} to {high:.1f}" if number < len(left) - 1 else f"{low:.1f} and up"
+        bars = [_bar(count / total / longest * room) for count, total in ((left[number], whole[0]), (right[number], whole[1]))]
+        over = number * steps >= BINS // 2
+        shown = page.styled(bars[1], "bad" if over else "quiet") if bars[1] else ""
+        page.lines.append(f"{bars[0]:>{room}}  {label:^11}  {shown}".rstrip())
+
+
+def _bar(length: float) -> str:
+    full = int(length)
+    if length <= 0:
+        return ""
+    return "█" * full + ("▌" if length - full >= 0.5 or not full else "")
+
+
+def _over_periods(page: Page, selection: Selection) -> None:
+    found = next((each for each in selection.periods if each.behaviour == HEADLINE), None)
+    if found is None:
+        return
+    page.heading(f"Over the {selection.model.periods} periods")
+    titles = ("second look, all periods together", "as written", "all fixed at validation")
+    rows = []
+    for name, by in (("each option errs alike in every period", found.stay), ("every estimate is made anew", found.anew)):
+        rows.append((name, *(_with_error(by.get(key)) for key in ("as written", "all fixed"))))
+    page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
+
+
+def _with_error(found: Estimate | None) -> str:
+    if found is None or not math.isfinite(found.value):
+        return "–"
+    return f"{_more(found.value)} {_error(found.error)}" if found.error else _more(found.value)
+
+
+def _ranking(page: Page, selection: Selection) -> None:
+    rows = []
+    for each in selection.ranking:
+        latitude = each.latitude
+        if latitude.kind == "stated":
+            continue
+        rows.append(
+            (
+                f"{each.per_thousand:+.1f}" if abs(each.per_thousand) >= 0.05 else "0.0",
+                f"{each.per_thousand_error:.1f}" if each.per_thousand_error else "exact",
+                latitude.id,
+                latitude.clause,
+                _KINDS[latitude.kind],
+                latitude.by,
+            )
+        )
+    if not rows:
+        page.paragraph("Nobody decides anything that moves the result.")
+        return
+    page.paragraph("Tonnes over-issued for 1,000 true, each by itself with everything else on its reference.")
+    titles = ("t", "±", "branch point", "clause", "what", "who decides")
+    page.lines += table_lines(titles, rows, page.paper, numbers=titles[:2])
+
+
+def _closures(page: Page, found: Found) -> None:
+    page.blank()
+    latitude = found.latitude
+    page.line(f"{_name(latitude)}: {found.per_thousand:+.1f} t for 1,000", "strong")
+    rows = [
+        (_closed_how(each, latitude), _with_error(each.left), _with_error(each.whole_left)) for each in found.closures
+    ]
+    titles = ("closed so", "left of this one", "left of the whole")
+    page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
+
+
+def _closed_how(closure: Closure, latitude: Latitude) -> str:
+    match closure.kind:
+        case "mandate":
+            what = "the reference" if closure.option == latitude.candidates[latitude.reference] else "all"
+            return f"{closure.option} for {what}" if what == "all" else f"{closure.option} for all (the reference)"
+        case "lowest":
+            return "the option that credits least"
+        case "fixed":
+            return "fixed at validation, errors anew each period"
+        case "in order":
+            return "the first that holds"
+    assert closure.percent is not None
+    sign = "deduct" if closure.percent.value >= 0 else "add"
+    error = f" ± {100 * closure.percent.error:.2f}" if closure.percent.error else ""
+    return f"{closure.behaviour}, {sign} {100 * abs(closure.percent.value):.2f}{error} %"
