@@ -18,6 +18,7 @@ from samesum import __version__
 COMMANDS = {
     "check": "find the places where the number is left to whoever applies the rulebook",
     "count": "count the routes that a rulebook leaves open",
+    "bias": "show what choosing does to a programme as a whole, and what closing a choice leaves",
     "register": "list the branch points with their evidence, and keep the review body's decisions",
     "compare": "say what a new draft opens and closes, and whether it leaves more to somebody",
     "report": "draw up one page to read, print and hand on",
@@ -44,12 +45,13 @@ def main(argv: Sequence[str] | None = None) -> int:
     words = list(sys.argv[1:] if argv is None else argv)
     _tolerant_output()
     try:
-        status = _dispatch(words)
+        try:
+            status = _dispatch(words)
+        except SystemExit as end:  # argparse ends this way, after --help and after a mistake in the call
+            status = end.code if isinstance(end.code, int) else 2
         if sys.stdout is not None:
             sys.stdout.flush()
         return status
-    except SystemExit as end:  # argparse ends this way, after --help and after a mistake in the call
-        return end.code if isinstance(end.code, int) else 2
     except BrokenPipeError:
         _drop_output()
         return 0
@@ -84,10 +86,10 @@ def _dispatch(words: list[str]) -> int:
     )
     parser.add_argument("--version", action="version", version=f"samesum {__version__}")
     parser.add_argument("command", nargs="?", metavar="COMMAND", help="what to do: " + ", ".join(COMMANDS))
-    known, _ = parser.parse_known_args(words[:1])
-    if not known.command:
+    if not words:
         parser.print_help()
-        return 0 if not words else 2
+        return 0
+    known = parser.parse_args(words[:1])
     from samesum.reading.words import nearest
 
     close = nearest(known.command, COMMANDS)

@@ -193,7 +193,11 @@ def _finding(page: Page, finding: Finding, words: Words, accepted: Standing | No
     page.line(f"{finding.file}:{finding.span.line}:{finding.span.column}", "link", indent=2)
     label = page.styled(finding.severity, _STYLE[finding.severity] if accepted is None else "quiet")
     tail = "" if accepted is None else " · accepted"
-    page.lines.append(f"  {label} · {page.styled(finding.rule, 'quiet')}{tail}")
+    rule = page.styled(finding.rule, "quiet") + tail
+    if len(f"  {finding.severity} · {finding.rule}{tail}") <= page.paper.width:
+        page.lines.append(f"  {label} · {rule}")
+    else:
+        page.lines += [f"  {label}", f"  {rule}"]
     page.paragraph(finding.says, indent=4)
     if finding.witness is not None:
         page.entry("shown by", project(finding.witness, words), indent=4, column=10)
