@@ -25,7 +25,7 @@ from hypothesis import HealthCheck, assume, given, settings
 from samesum.evidence.conditions import Conditions, examine_conditions
 from samesum.evidence.counting import Counts, count
 from samesum.evidence.diagrams import Limits
-from samesum.evidence.network import build_network
+from samesum.evidence.relating import build_network
 from samesum.evidence.witness import Witness
 from samesum.graph import build
 from samesum.reading.read import Reader, make_reader, read

@@ -22,29 +22,39 @@ MOST_BOXES = 40_000
 Vector = tuple[int, ...]
 
 
-def cut(domain: Bounds, thresholds: Sequence[Fraction]) -> tuple[Bounds, ...]:
-    """The cells of one numeric fact in rising order: points at the thresholds, open in between."""
+def cut(domain: Bounds, thresholds: Mapping[Fraction, str]) -> tuple[Bounds, ...]:
+    """The cells of a number in rising order. A threshold belongs to the cell ``above`` it or ``below`` it, or
+    is a cell of its own (``apart``), as the comparisons with it tell apart."""
     cells: list[Bounds] = []
     low, low_open = domain.low, domain.low_open
-    for threshold in sorted(set(thresholds)):
+    for threshold, border in sorted(thresholds.items()):
         if (domain.low is not None and threshold < domain.low) or (domain.high is not None and threshold > domain.high):
             continue
-        if low is None or low < threshold:
+        room = low is None or low < threshold
+        if border == "below":
+            if room or not low_open:
+                cells.append(Bounds(low, threshold, low_open, False))
+            low, low_open = threshold, True
+            continue
+        if room:
             cells.append(Bounds(low, threshold, low_open, True))
-        cells.append(Bounds(threshold, threshold))
-        low, low_open = threshold, True
+        if border == "apart":
+            if room or not low_open:
+                cells.append(Bounds(threshold, threshold))
+            low, low_open = threshold, True
+        elif room:
+            low, low_open = threshold, False
     if domain.high is None or low is None or low < domain.high or (low == domain.high and not low_open):
         cells.append(Bounds(low, domain.high, low_open, domain.high_open))
     return tuple(cells)
 
 
-def sign_over(cell: Bounds, threshold: Fraction) -> int:
-    """The sign of (value − threshold) all over a cell that ``threshold`` does not cut."""
-    if cell.low is not None and (cell.low > threshold or (cell.low == threshold and cell.low_open)):
-        return s.POSITIVE
+def sign_over(cell: Bounds, threshold: Fraction, border: str) -> int:
+    """The sign of (value − threshold) all over a cell that ``cut`` made; a threshold that belongs to the cell
+    above or below it counts as more or less."""
     if cell.low == cell.high == threshold:
-        return s.ZERO
-    return s.NEGATIVE
+        return {"above": s.POSITIVE, "below": s.NEGATIVE}.get(border, s.ZERO)
+    return s.POSITIVE if cell.low is not None and cell.low >= threshold else s.NEGATIVE
 
 
 @lru_cache(maxsize=4096)
@@ -73,16 +83,20 @@ def representative(cell: Bounds) -> Fraction:
 class Group:
     """Facts and settings whose comparisons hang together.
 
-    ``names`` in order; ``domains`` and ``thresholds`` beside them; ``sums`` the sums of more than one
-    name (or not linear) with, for each, the signs that need telling apart (a tuple out of
-    NEGATIVE, ZERO, POSITIVE, MERGED_NEGATIVE, MERGED_POSITIVE).
+    ``names`` in order, with their domains and cells; ``sums`` the sums of more than one name (or not linear) that
+    are compared with numbers, with theirs.
     """
 
     names: tuple[str, ...]
     domains: tuple[Bounds, ...]
-    thresholds: tuple[tuple[Fraction, ...], ...]
+    name_cells: tuple[tuple[Bounds, ...], ...]
     sums: tuple[Sum, ...]
-    signs: tuple[tuple[int, ...], ...]
+    sum_cells: tuple[tuple[Bounds, ...], ...]
+
+    @property
+    def cells(self) -> tuple[tuple[Bounds, ...], ...]:
+        """The cells of each position of a vector."""
+        return self.name_cells + self.sum_cells
 
     def renamed(self) -> Group:
         """The same group under neutral names, so that like groups are listed once."""
@@ -90,22 +104,21 @@ class Group:
         return Group(
             tuple(names.values()),
             self.domains,
-            self.thresholds,
+            self.name_cells,
             tuple(symbols.rename(each, names) for each in self.sums),
-            self.signs,
+            self.sum_cells,
         )
 
 
 @dataclass(frozen=True, slots=True)
 class Listing:
-    """All combinations: a vector holds the cell of each name, then the sign of each sum.
+    """All combinations: a vector holds the cell of each name, then the cell of each sum.
 
     ``shown`` can occur (a point was found); ``open`` could be neither shown nor refuted;
     ``complete`` is False when the listing was cut short, so that combinations are missing;
     ``points`` are combinations with a point at which each was seen, where the solver could not show them.
     """
 
-    cells: tuple[tuple[Bounds, ...], ...]
     shown: tuple[Vector, ...]
     open: tuple[Vector, ...]
     complete: bool
@@ -113,95 +126,110 @@ class Listing:
 
 
 def list_group(group: Group, deadline: float) -> Listing:
-    """All combinations of cells and signs that can occur in a group.
+    """All combinations of cells that can occur in a group.
 
     Exact where the solver decides every question before ``deadline`` and the cells are few enough;
-    says so otherwise. Cost: one solver question for each box that a sum's border crosses.
+    says so otherwise. Cost: one solver question for each box that two sums' borders cross.
     """
-    cells = tuple(cut(domain, cuts) for domain, cuts in zip(group.domains, group.thresholds, strict=True))
     count = 1
-    for each in cells:
-        count *= len(each)
+    for cells in group.name_cells:
+        count *= len(cells)
     if count > MOST_BOXES:
-        return _sampled(group, cells, deadline)
-    made = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
-    constraints = [
-        {sign: made.sign(each, sign) for sign in signs} for each, signs in zip(group.sums, group.signs, strict=True)
-    ]
-    guessed = [s.beyond(each) for each in group.sums]
-    straight = [_straight(each) if symbols.is_linear(each) else None for each in group.sums]
-    shown: list[Vector] = []
-    unsure: list[Vector] = []
-    box: dict[str, Bounds] = {}
-    chosen: list[int] = []
-    budget = [0]
+        seen = _seen(group, deadline)
+        return Listing(tuple(seen), (), False, tuple(seen.items()))
+    return _Lister(group, deadline).listing()
 
-    def boxes(depth: int) -> bool:
-        if depth == len(group.names):
-            budget[0] += 1
-            if budget[0] % 64 == 0 and time.monotonic() > deadline:
+
+class _Lister:
+    """One walk over all boxes of a group."""
+
+    def __init__(self, group: Group, deadline: float) -> None:
+        self.group = group
+        self.deadline = deadline
+        self.solver = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
+        self.constraints = [
+            [self.solver.within(self.solver.term(each), cell) for cell in cells]
+            for each, cells in zip(group.sums, group.sum_cells, strict=True)
+        ]
+        self.straight = [_straight(each) if symbols.is_linear(each) else None for each in group.sums]
+        self.guessed = [s.beyond(each) for each in group.sums]
+        self.shown: list[Vector] = []
+        self.unsure: list[Vector] = []
+        self.box: dict[str, Bounds] = {}
+        self.chosen: list[int] = []
+        self.visited = 0
+
+    def listing(self) -> Listing:
+        complete = self._boxes(0)
+        if not self.unsure:
+            return Listing(tuple(self.shown), (), complete)
+        seen = _seen(self.group, self.deadline)
+        self.shown += [vector for vector in self.unsure if vector in seen]
+        left = tuple(vector for vector in self.unsure if vector not in seen)
+        return Listing(tuple(self.shown), left, complete, tuple(seen.items()))
+
+    def _boxes(self, depth: int) -> bool:
+        """Every box below the cells chosen so far; False when time or room ran out."""
+        if depth == len(self.group.names):
+            self.visited += 1
+            if self.visited % 64 == 0 and time.monotonic() > self.deadline:
                 return False
-            return in_box()
-        for number, cell in enumerate(cells[depth]):
-            box[group.names[depth]] = cell
-            chosen.append(number)
-            going = boxes(depth + 1)
-            chosen.pop()
+            return self._in_box()
+        for number, cell in enumerate(self.group.name_cells[depth]):
+            self.box[self.group.names[depth]] = cell
+            self.chosen.append(number)
+            going = self._boxes(depth + 1)
+            self.chosen.pop()
             if not going:
                 return False
         return True
 
-    def in_box() -> bool:
-        decided: list[tuple[int, ...]] = [
-            _possible(linear(box) if linear else symbols.bounds(each, box), signs)
-            for each, signs, linear in zip(group.sums, group.signs, straight, strict=True)
+    def _in_box(self) -> bool:
+        decided = [
+            _met(straight(self.box) if straight else symbols.bounds(each, self.box), cells)
+            for each, cells, straight in zip(self.group.sums, self.group.sum_cells, self.straight, strict=True)
         ]
         unsettled = [number for number, each in enumerate(decided) if len(each) > 1]
-        if not unsettled:
-            shown.append((*chosen, *(each[0] for each in decided)))
-            return True
-        if len(unsettled) == 1 and straight[unsettled[0]]:
-            # the bounds of one linear sum over a box are sharp: it takes every sign between them
-            number = unsettled[0]
-            for sign in decided[number]:
-                shown.append((*chosen, *(sign if k == number else each[0] for k, each in enumerate(decided))))
-            return len(shown) + len(unsure) < MOST_BOXES
-        made.push([part for name, cell in box.items() for part in made.within(made.name(name), cell)])
-        sure: s.Answer = "cannot tell" if any(guessed[number] for number in unsettled) else "yes"
-        going = split(0, decided, [], sure)
-        made.pop()
+        if not unsettled or (len(unsettled) == 1 and self.straight[unsettled[0]]):
+            # the bounds of one linear sum over a box are sharp: it meets every cell between them
+            place = unsettled[0] if unsettled else 0
+            for cell in decided[place]:
+                self.shown.append((*self.chosen, *(cell if k == place else each[0] for k, each in enumerate(decided))))
+            return self._has_room()
+        self.solver.push(
+            [part for name, cell in self.box.items() for part in self.solver.within(self.solver.name(name), cell)]
+        )
+        sure: s.Answer = "cannot tell" if any(self.guessed[number] for number in unsettled) else "yes"
+        going = self._split(decided, [], sure)
+        self.solver.pop()
         return going
 
-    def split(number: int, decided: list[tuple[int, ...]], signs: list[int], so_far: s.Answer) -> bool:
+    def _split(self, decided: list[tuple[int, ...]], taken: list[int], so_far: s.Answer) -> bool:
+        """The sums' cells one after the other, as far as the solver finds them possible together."""
+        number = len(taken)
         if number == len(decided):
-            (shown if so_far == "yes" else unsure).append((*chosen, *signs))
-            return len(shown) + len(unsure) < MOST_BOXES
+            (self.shown if so_far == "yes" else self.unsure).append((*self.chosen, *taken))
+            return self._has_room()
         if len(decided[number]) == 1:
-            return split(number + 1, decided, [*signs, decided[number][0]], so_far)
-        for sign in decided[number]:
-            constraint = constraints[number][sign]
-            made.push([constraint])
-            answer = made.check()
+            return self._split(decided, [*taken, decided[number][0]], so_far)
+        for cell in decided[number]:
+            self.solver.push(self.constraints[number][cell])
+            answer = self.solver.check()
             going = True
             if answer != "no":
-                going = split(number + 1, decided, [*signs, sign], so_far if answer == "yes" else answer)
-            made.pop()
-            if not going or time.monotonic() > deadline:
+                going = self._split(decided, [*taken, cell], so_far if answer == "yes" else answer)
+            self.solver.pop()
+            if not going or time.monotonic() > self.deadline:
                 return False
         return True
 
-    complete = boxes(0)
-    if not unsure:
-        return Listing(cells, tuple(shown), (), complete)
-    seen = _seen(group, cells, deadline)
-    shown += [vector for vector in unsure if vector in seen]
-    left = tuple(vector for vector in unsure if vector not in seen)
-    return Listing(cells, tuple(shown), left, complete, tuple(seen.items()))
+    def _has_room(self) -> bool:
+        return len(self.shown) + len(self.unsure) < MOST_BOXES
 
 
 def _straight(a: Sum) -> Callable[[Mapping[str, Bounds]], Bounds]:
     """The sharp bounds of a linear sum over a box, as a function of the box."""
-    start = sum((value for monomial, value in a.terms if not monomial), Fraction(0))
+    start = symbols.constant_term(a)
     parts = []
     for monomial, value in a.terms:
         for generator, _power in monomial:
@@ -226,47 +254,34 @@ def _straight(a: Sum) -> Callable[[Mapping[str, Bounds]], Bounds]:
     return over
 
 
-def _possible(found: Bounds, signs: tuple[int, ...]) -> tuple[int, ...]:
-    """The signs that bounds leave possible."""
-    positive = found.high is None or found.high > 0
-    negative = found.low is None or found.low < 0
-    zero = (found.low is None or found.low < 0 or (found.low == 0 and not found.low_open)) and (
-        found.high is None or found.high > 0 or (found.high == 0 and not found.high_open)
-    )
-    allowed = {
-        s.NEGATIVE: negative,
-        s.ZERO: zero,
-        s.POSITIVE: positive,
-        s.MERGED_NEGATIVE: negative or zero,
-        s.MERGED_POSITIVE: positive or zero,
-    }
-    return tuple(sign for sign in signs if allowed[sign])
+def _met(found: Bounds, cells: Sequence[Bounds]) -> tuple[int, ...]:
+    """The cells that an interval meets."""
+    return tuple(number for number, cell in enumerate(cells) if not _before(cell, found) and not _before(found, cell))
 
 
-def _sampled(group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float) -> Listing:
-    """Combinations seen at seeded random points: true as far as they go, never complete."""
-    seen = _seen(group, cells, deadline)
-    return Listing(cells, tuple(seen), (), False, tuple(seen.items()))
+def _before(a: Bounds, b: Bounds) -> bool:
+    """Whether all of ``a`` is less than all of ``b``."""
+    if a.high is None or b.low is None:
+        return False
+    return a.high < b.low or (a.high == b.low and (a.high_open or b.low_open))
 
 
-def _seen(
-    group: Group, cells: tuple[tuple[Bounds, ...], ...], deadline: float, draws: int = 1_000
-) -> dict[Vector, tuple[Fraction, ...]]:
-    """Combinations and a point at which each was seen, from seeded random points."""
+def _seen(group: Group, deadline: float, draws: int = 1_000) -> dict[Vector, tuple[Fraction, ...]]:
+    """Combinations and a point at which each was seen, from seeded random points: true as far as they go."""
     random_numbers = random.Random(20_06)
     shown: dict[Vector, tuple[Fraction, ...]] = {}
     until = time.monotonic() + max(0.0, (deadline - time.monotonic()) / 3)
     for _ in range(draws):
         if time.monotonic() > until:
             break
-        chosen = [random_numbers.randrange(len(each)) for each in cells]
+        chosen = [random_numbers.randrange(len(cells)) for cells in group.name_cells]
         point = {
-            name: _inside(each[number], random_numbers)
-            for name, each, number in zip(group.names, cells, chosen, strict=True)
+            name: _inside(cells[number], random_numbers)
+            for name, cells, number in zip(group.names, group.name_cells, chosen, strict=True)
         }
-        signs = signs_at(group, point)
-        if signs is not None:
-            shown.setdefault((*chosen, *signs), tuple(point.values()))
+        found = cells_at(group, point)
+        if found is not None:
+            shown.setdefault((*chosen, *found), tuple(point.values()))
     return shown
 
 
@@ -276,21 +291,13 @@ def _inside(cell: Bounds, random_numbers: random.Random) -> Fraction:
     return cell.low + (cell.high - cell.low) * Fraction(random_numbers.randrange(1, 1000), 1000)
 
 
-def signs_at(group: Group, point: Mapping[str, Fraction]) -> Vector | None:
-    """The sign of each sum at a point, in the classes the group tells apart; None if one cannot be told."""
+def cells_at(group: Group, point: Mapping[str, Fraction]) -> Vector | None:
+    """The cell of each sum at a point; None if one cannot be told."""
+    box = {name: Bounds(value, value) for name, value in point.items()}
     found: list[int] = []
-    for each, signs in zip(group.sums, group.signs, strict=True):
-        sign = s.sign_at(each, point)
-        if sign is None:
+    for each, cells in zip(group.sums, group.sum_cells, strict=True):
+        met = _met(symbols.bounds(each, box), cells)
+        if len(met) != 1:
             return None
-        found.append(merged(sign, signs))
+        found.append(met[0])
     return tuple(found)
-
-
-def merged(sign: int, signs: tuple[int, ...]) -> int:
-    """A plain sign as one of the classes told apart."""
-    if sign in signs:
-        return sign
-    if sign == s.ZERO:
-        return s.MERGED_NEGATIVE if s.MERGED_NEGATIVE in signs else s.MERGED_POSITIVE
-    return s.MERGED_NEGATIVE if sign == s.NEGATIVE else s.MERGED_POSITIVE

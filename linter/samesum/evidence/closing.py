@@ -12,7 +12,8 @@ from dataclasses import dataclass
 
 from samesum.evidence.counting import Given, Side, deep, per_project
 from samesum.evidence.diagrams import Limits, OutOfLimits
-from samesum.evidence.network import Network, build_network
+from samesum.evidence.network import Network
+from samesum.evidence.relating import build_network
 from samesum.graph import DecisionGraph
 
 

@@ -30,7 +30,8 @@ from samesum.evidence.diagrams import (
     number,
     read_back,
 )
-from samesum.evidence.network import Network, build_network, complete_factors, cone
+from samesum.evidence.network import Network, complete_factors, cone
+from samesum.evidence.relating import build_network
 from samesum.evidence.symbols import generators
 from samesum.evidence.witness import Witness, witness_from
 from samesum.graph import DecisionGraph, mentions
@@ -363,7 +364,7 @@ class Layout:
                 states.append(level)
             elif variable.kind == "unsure":
                 unsure.append(level)
-            elif variable.kind == "sign":
+            elif variable.kind == "sum":
                 assert variable.sum is not None
                 (humans if generators(variable.sum) & free else facts).append(level)
             else:

@@ -9,7 +9,8 @@ from samesum.evidence.control import find_control
 from samesum.evidence.counting import count, deep
 from samesum.evidence.diagrams import Limits, OutOfLimits
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.network import Network, build_network
+from samesum.evidence.network import Network
+from samesum.evidence.relating import build_network
 from samesum.graph import DecisionGraph
 
 

@@ -13,23 +13,21 @@ from dataclasses import dataclass
 
 from samesum.evidence import solver as s
 from samesum.evidence import symbols
-from samesum.evidence.cells import Group, Listing, Vector, list_group, merged
+from samesum.evidence.cells import Group, Listing, Vector, list_group
 from samesum.evidence.diagrams import Diagrams
 from samesum.evidence.readings import Readings
 from samesum.evidence.symbols import Bounds, Sum
 
-FULL = (s.NEGATIVE, s.ZERO, s.POSITIVE)
-PLAIN_SIGN = {s.NEGATIVE: 0, s.ZERO: 1, s.POSITIVE: 2, s.MERGED_NEGATIVE: 0, s.MERGED_POSITIVE: 2}
 MOST_KINDS = 48
 
 
 @dataclass(frozen=True, slots=True)
 class ListedGroup:
-    """A group with the levels of its cells (``name_levels``) and signs (``sign_levels``)."""
+    """A group with the levels of its names' cells and of its sums'."""
 
     group: Group
     name_levels: tuple[int, ...]
-    sign_levels: tuple[int, ...]
+    sum_levels: tuple[int, ...]
     listing: Listing
 
     @property
@@ -38,14 +36,14 @@ class ListedGroup:
 
     @property
     def levels(self) -> tuple[int, ...]:
-        return (*self.name_levels, *self.sign_levels)
+        return (*self.name_levels, *self.sum_levels)
 
 
 def collect(
-    readings: Readings, signs: Mapping[Sum, int], cells: Mapping[int, tuple[Bounds, ...]]
+    readings: Readings, sums: Sequence[tuple[Sum, int]], cells: Mapping[int, tuple[Bounds, ...]]
 ) -> tuple[ListedGroup, ...]:
-    """The groups of ``signs`` (those that are not one linear fact's), each listed. Like groups are listed once."""
-    sums = list(signs.items())
+    """The groups of ``sums`` (with their levels; those that are not just one fact), each listed. Like groups are
+    listed once."""
     if not sums:
         return ()
     root: dict[str, str] = {}
@@ -61,7 +59,7 @@ def collect(
             root[find(other)] = find(names[0])
     members: dict[str, set[str]] = {}
     held: dict[str, list[tuple[Sum, int]]] = {}
-    for each, level in sorted(sums, key=lambda item: item[1]):
+    for each, level in sums:
         names = sorted(symbols.generators(each))
         for name in names:
             members.setdefault(find(name), set()).add(name)
@@ -69,42 +67,23 @@ def collect(
     listed: dict[Group, Listing] = {}
     found: list[ListedGroup] = []
     deadline = readings.diagrams.limits.deadline
-    share = (deadline - time.monotonic()) * 0.7
     for number, key in enumerate(sorted(held)):
         names = sorted(members[key], key=readings.level)
-        thresholds = []
-        for name in names:
-            inner = cells.get(readings.level(name), ())
-            thresholds.append(tuple(cell.low for cell in inner if cell.low is not None and cell.low == cell.high))
+        name_levels = tuple(readings.level(name) for name in names)
+        sum_levels = tuple(level for _, level in held[key])
         group = Group(
             tuple(names),
             tuple(readings.domains[name] for name in names),
-            tuple(thresholds),
+            tuple(cells[level] for level in name_levels),
             tuple(each for each, _ in held[key]),
-            tuple(_told_apart(readings.borders.get(each, {"apart"})) for each, _ in held[key]),
+            tuple(cells[level] for level in sum_levels),
         )
         plain = group.renamed()
         if plain not in listed:
-            left = deadline - time.monotonic()
-            until = min(deadline, time.monotonic() + max(share / len(held), left * 0.7 / (len(held) - number)))
-            listed[plain] = list_group(plain, until)
-        found.append(
-            ListedGroup(
-                group,
-                tuple(readings.level(name) for name in names),
-                tuple(level for _, level in held[key]),
-                listed[plain],
-            )
-        )
+            share = (deadline - time.monotonic()) * 0.7 / (len(held) - number)
+            listed[plain] = list_group(plain, time.monotonic() + max(share, 0.0))
+        found.append(ListedGroup(group, name_levels, sum_levels, listed[plain]))
     return tuple(found)
-
-
-def _told_apart(borders: set[str]) -> tuple[int, ...]:
-    if borders == {"above"}:
-        return (s.NEGATIVE, s.MERGED_POSITIVE)
-    if borders == {"below"}:
-        return (s.MERGED_NEGATIVE, s.POSITIVE)
-    return FULL
 
 
 @dataclass(frozen=True, slots=True)
@@ -131,17 +110,16 @@ def validity(d: Diagrams, listed: ListedGroup, free: set[str], kind_level: int, 
     if loose and not listing.complete:
         return Validity((), (), None, False)
     if not movable or len(movable) == len(group.names):
-        factor = relation(d, listed.levels, [_as_values(vector, len(group.names)) for vector in vectors])
+        factor = relation(d, listed.levels, vectors)
         return Validity(() if movable else (factor,), (factor,) if movable else (), None, exact)
     given, moved = _split(group, movable)
     kinds, kinds_exact = _kinds(group, listing, given, moved, movable, d.limits.deadline, loose)
     d.size[kind_level] = max(1, len(kinds))
-    width = len(group.names)
     project_rows: list[Vector] = []
     input_rows: list[Vector] = []
     for number, (fixed, brought) in enumerate(kinds):
-        project_rows.append((number, *_values_at(fixed, given, width)))
-        input_rows += [(number, *_values_at(each, moved, width)) for each in brought]
+        project_rows.append((number, *fixed))
+        input_rows += [(number, *each) for each in brought]
     levels = listed.levels
     return Validity(
         (relation(d, (kind_level, *(levels[position] for position in given)), project_rows),),
@@ -161,16 +139,6 @@ def _split(group: Group, movable: Sequence[str]) -> tuple[list[int], list[int]]:
         target = moved if symbols.generators(each) & set(movable) else given
         target.append(len(group.names) + position)
     return given, moved
-
-
-def _as_values(vector: Vector, width: int) -> Vector:
-    return (*vector[:width], *(PLAIN_SIGN[sign] for sign in vector[width:]))
-
-
-def _values_at(part: Vector, positions: Sequence[int], width: int) -> Vector:
-    return tuple(
-        value if position < width else PLAIN_SIGN[value] for value, position in zip(part, positions, strict=True)
-    )
 
 
 def relation(d: Diagrams, levels: Sequence[int], rows: Iterable[Vector]) -> int:
@@ -241,14 +209,12 @@ def _sets(
     when the solver cannot tell them all."""
     if len(candidates) > MOST_KINDS or any(s.beyond(each) for each in group.sums):
         return None
-    width = len(group.names)
     made = s.Solver({}, deadline)
     domains = dict(zip(group.names, group.domains, strict=True))
+    terms = [*(made.name(name) for name in group.names), *(made.term(each) for each in group.sums)]
 
-    def constraint(position: int, value: int) -> list[object]:
-        if position < width:
-            return made.within(made.name(group.names[position]), listing.cells[position][value])
-        return [made.sign(group.sums[position - width], value)]
+    def constraint(position: int, cell: int) -> list[object]:
+        return made.within(terms[position], group.cells[position][cell])
 
     for name in group.names:
         if name not in movable:
@@ -285,8 +251,3 @@ def _sets(
         return True
 
     return [each for each in found if each] if split(0, []) else None
-
-
-def told_sign(sign: int, group: Group, number: int) -> int:
-    """A plain sign as the class that the group tells apart."""
-    return merged(sign, group.signs[number])

@@ -31,9 +31,12 @@ FLIPPED = {"<": ">", "<=": ">=", "=": "=", "<>": "<>", ">=": "<=", ">": "<"}
 
 @dataclass(frozen=True, slots=True)
 class Variable:
-    """What a level of the diagrams stands for. ``kind``: ``point`` (state of a branch point), ``named``
-    (a fact or setting with named or yes/no values), ``judgement``, ``numeric`` (the cell of a fact or
-    setting), ``sign`` (of ``sum``), ``unsure`` (a condition that could be neither shown nor refuted)."""
+    """What a level of the diagrams stands for.
+
+    ``kind``: ``point`` (state of a branch point), ``named`` (a fact or setting with named or yes/no values),
+    ``judgement``, ``numeric`` (the cell of a fact or setting), ``sum`` (the cell of ``sum``), ``sign`` (of ``sum``;
+    it becomes a cell), ``unsure`` (a condition that could be neither shown nor refuted).
+    """
 
     kind: str
     name: str
@@ -50,6 +53,7 @@ class Readings:
     variables: dict[int, Variable] = field(default_factory=dict)
     levels: dict[str, int] = field(default_factory=dict)
     signs: dict[Sum, int] = field(default_factory=dict)
+    sums: dict[Sum, int] = field(default_factory=dict)
     borders: dict[Sum, set[str]] = field(default_factory=dict)
     domains: dict[str, Bounds] = field(default_factory=dict)
     values: dict[str, tuple[str, ...]] = field(default_factory=dict)
@@ -116,19 +120,28 @@ class Readings:
         return self.state(point, (*range(count), count + 1))
 
     def _new_sign(self, sum: Sum) -> int:
-        names = symbols.generators(sum)
-        if len(names) == 1:  # beside its fact, whose cell it will become
-            base = max(self.level(name) for name in names)
-            self._beside[base] = self._beside.get(base, 0) + 1
-            level = base + self._beside[base]
-        else:  # below whatever selects among sums, or the diagram of the selection would explode
-            level = self._next
-            self._next += SPACE
+        """The level of a sum's sign, beside the level of what it compares with a number."""
+        base = self.value_level(symbols.without_constant(sum))
+        self._beside[base] = self._beside.get(base, 0) + 1
+        level = base + self._beside[base]
         settings = any(name in self.settings for name in symbols.generators(sum))
         self.variables[level] = Variable("sign", "", settings, sum)
         self.diagrams.size[level] = 3
         self.signs[sum] = level
         return level
+
+    def value_level(self, sum: Sum) -> int:
+        """The level of the number that a sum is (in its cells): a fact's own where it is just that fact."""
+        names = symbols.generators(sum)
+        if len(names) == 1 and symbols.is_linear(sum):
+            return self.level(next(iter(names)))
+        found = self.sums.get(sum)
+        if found is None:  # below whatever selects among sums, or the diagram of the selection would explode
+            found = self._next
+            self._next += SPACE
+            self.sums[sum] = found
+            self.variables[found] = Variable("sum", "", any(name in self.settings for name in names), sum)
+        return found
 
     # -- conditions ---------------------------------------------------------------------
 

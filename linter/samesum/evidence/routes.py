@@ -13,7 +13,8 @@ from dataclasses import dataclass, replace
 
 from samesum.evidence.counting import NOTHING, Layout, deep
 from samesum.evidence.diagrams import Diagrams, Eliminated, Limits, OutOfLimits, eliminate, evaluate, number
-from samesum.evidence.network import Network, build_network, complete_factors
+from samesum.evidence.network import Network, complete_factors
+from samesum.evidence.relating import build_network
 from samesum.evidence.symbols import Bounds
 from samesum.evidence.witness import Value, usual
 from samesum.graph import DecisionGraph, build

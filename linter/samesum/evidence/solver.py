@@ -15,7 +15,6 @@ if TYPE_CHECKING:
 
 Answer = Literal["yes", "no", "cannot tell"]
 NEGATIVE, ZERO, POSITIVE = 0, 1, 2
-MERGED_NEGATIVE, MERGED_POSITIVE = 3, 4  # <= 0 and >= 0, where the border need not be told apart
 
 
 BEYOND = ("exp", "ln", "power")
@@ -134,7 +133,7 @@ class Solver:
     def sign(self, a: Sum, sign: int) -> Any:
         """The constraint that the sum has this sign."""
         term, zero = self.term(a), self.value(Fraction(0))
-        return (term < zero, term == zero, term > zero, term <= zero, term >= zero)[sign]
+        return (term < zero, term == zero, term > zero)[sign]
 
     def push(self, constraints: Sequence[Any]) -> None:
         self._solver.push()

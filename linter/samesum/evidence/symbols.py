@@ -175,6 +175,16 @@ def is_linear(a: Sum) -> bool:
     )
 
 
+def without_constant(a: Sum) -> Sum:
+    """The sum without its constant term."""
+    return Sum(tuple((monomial, value) for monomial, value in a.terms if monomial))
+
+
+def constant_term(a: Sum) -> Fraction:
+    """The constant term."""
+    return next((value for monomial, value in a.terms if not monomial), Fraction(0))
+
+
 def rename(a: Sum, names: Mapping[str, str]) -> Sum:
     """The same sum over other names."""
     result: dict[Monomial, Fraction] = {}

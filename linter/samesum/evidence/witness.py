@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from samesum.evidence import solver as s
-from samesum.evidence.cells import merged, representative, signs_at
+from samesum.evidence.cells import cells_at, representative
 from samesum.evidence.groups import ListedGroup
 from samesum.evidence.network import Network
 from samesum.evidence.symbols import Bounds, nearest
@@ -91,53 +91,46 @@ def usual(domain: m.Domain) -> Value:
 
 
 def group_point(network: Network, listed: ListedGroup, values: Mapping[int, int]) -> dict[str, Value] | None:
-    """Numbers for a group's names that lie in the cells and have the signs that were assigned."""
+    """Numbers for a group's names that lie in the cells that were assigned, and so do its sums."""
     group = listed.group
     wanted: dict[str, Bounds] = {}
     for name, level, cells, domain in zip(
-        group.names, listed.name_levels, listed.listing.cells, group.domains, strict=True
+        group.names, listed.name_levels, group.name_cells, group.domains, strict=True
     ):
         wanted[name] = cells[values[level]] if level in values else domain
-    signs = [
-        merged(values[level], group.signs[number]) if level in values else None
-        for number, level in enumerate(listed.sign_levels)
-    ]
+    assigned = [values.get(level) for level in listed.sum_levels]
 
     def fits(point: Mapping[str, Fraction]) -> bool:
-        found = signs_at(group, point)
-        return found is not None and all(b is None or a == b for a, b in zip(found, signs, strict=True))
+        if not all(_inside(point[name], cell) for name, cell in wanted.items()):
+            return False
+        found = cells_at(group, point)
+        return found is not None and all(b is None or a == b for a, b in zip(found, assigned, strict=True))
 
-    for vector, seen in listed.listing.points:
-        cells_fit = all(
-            level not in values or values[level] == cell
-            for level, cell in zip(listed.name_levels, vector, strict=False)
-        )
+    for _, seen in listed.listing.points:
         found = dict(zip(group.names, seen, strict=True))
-        if cells_fit and fits(found):
+        if fits(found):
             return dict(found)
     middle = {name: representative(cell) for name, cell in wanted.items()}
     if fits(middle):
         return dict(middle)
     made = s.Solver(wanted, network.diagrams.limits.deadline + 2.0)
-    for each, sign in zip(group.sums, signs, strict=True):
-        if sign is not None:
-            made.add(made.sign(each, sign))
+    for each, cells, number in zip(group.sums, group.sum_cells, assigned, strict=True):
+        if number is not None:
+            made.add(*made.within(made.term(each), cells[number]))
     if made.check() != "yes":
         return None
     point = {name: value for name, value in made.point().items() if name in wanted}
     if any(s.beyond(each) for each in group.sums) and not fits(point):
         return None
-    return dict(_plainer(point, wanted, fits))
+    return dict(_plainer(point, fits))
 
 
-def _plainer(
-    point: Mapping[str, Fraction], wanted: Mapping[str, Bounds], fits: Callable[[Mapping[str, Fraction]], bool]
-) -> Mapping[str, Fraction]:
+def _plainer(point: Mapping[str, Fraction], fits: Callable[[Mapping[str, Fraction]], bool]) -> Mapping[str, Fraction]:
     """The same point in shorter decimals, when those still fit."""
     for digits in range(0, 7):
         step = Fraction(10) ** -digits
         rounded = {name: nearest(value / step) * step for name, value in point.items()}
-        if all(_inside(rounded[name], cell) for name, cell in wanted.items()) and fits(rounded):
+        if fits(rounded):
             return rounded
     return point
 
