@@ -65,7 +65,9 @@ def test_an_any_table_overlaps_in_three_pairs_and_has_no_gap() -> None:
     assert gaps_of(found) == []
     # {2,3,4}: one project has three rules at once, no project more
     assert found.counts.per_project_most == 3
-    assert given(found.counts.most_at) == {"age": 10, "risk": "high", "affordable": False}
+    most = given(found.counts.most_at)
+    assert most["risk"] == "high" and most["affordable"] is False
+    assert isinstance(most["age"], Fraction) and most["age"] < 18
     # and none of the overlaps holds with rule 1
     alone = f"applies when {ANY_COMPLETE[0]}, clause 1\n"
     assert counts_of(table(ANY_COMPLETE, *APPLICANT, alone)).per_project_most == 1
