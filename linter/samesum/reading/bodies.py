@@ -106,7 +106,7 @@ def _follows(body: tree.ChoiceTree, unit: Unit | None, scope: Scope, level: int)
         scope.report(word, f"`{word.text}` has no choice to follow: {what}",
                      f"the choices are those of {listing(choices, 'and')}" if choices else "")  # fmt: skip
         return Unknown(scope.span(body))
-    if not index_is_known(word, declared, scope):
+    if not index_is_known(word, declared, scope, number=False):
         return Unknown(scope.span(body))
     ours = {option.name for option in options}
     missing = [name for name in declared.options if name not in ours]

@@ -77,7 +77,7 @@ def _holds(word: tree.Word, scope: Scope) -> Condition:
     if declared.kind != "judgement" and not declared.yes_no:
         scope.report(word, f"`{word.text}` alone is no condition", _how_to_ask(declared))
         return Unknown(span)
-    if not index_is_known(word, declared, scope):
+    if not index_is_known(word, declared, scope, number=False):
         return Unknown(span)
     return Holds(word.text, cast(_Asked, declared.kind), declared.index, span)
 
@@ -103,7 +103,7 @@ def _is_value(node: tree.IsValue, scope: Scope) -> Condition:
     declared = scope.find(subject.name, ("fact", "setting"))
     if declared is None or declared.kind == "unreadable":
         return Unknown(span)
-    if not index_is_known(subject.name, declared, scope):
+    if not index_is_known(subject.name, declared, scope, number=False):
         return Unknown(span)
     if declared.yes_no or declared.kind == "judgement":
         return _is_yes(node, subject.name, declared, scope)
@@ -157,7 +157,7 @@ def _takes(node: tree.TakesOption, scope: Scope) -> Condition:
         scope.report(word, f"`{word.text}` takes no option: {what}",
                      f"write `{word.text} is …`" if declared.values else "")  # fmt: skip
         return Unknown(span)
-    if not index_is_known(word, declared, scope):
+    if not index_is_known(word, declared, scope, number=False):
         return Unknown(span)
     if node.option.text not in declared.options:
         close = nearest(node.option.text, declared.options)

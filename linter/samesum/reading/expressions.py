@@ -9,21 +9,18 @@ from fractions import Fraction
 from typing import Literal, cast
 
 from samesum.reading import tree
+from samesum.reading.lookups import resolve_lookup
 from samesum.reading.model import (
     PLAIN,
     Arithmetic,
     Expression,
     Function,
-    Key,
-    Lookup,
     Negation,
     Number,
     Position,
     Reduction,
     Reference,
     Unit,
-    Unknown,
-    Value,
 )
 from samesum.reading.scope import Declared, Scope
 from samesum.reading.typed import Typed, agreed, fit, index_is_known, say_unit, scaled, unknown
@@ -261,7 +258,7 @@ def _call(node: tree.Call, scope: Scope) -> Typed:
     name = node.name.text
     declared = scope.names.get(name)
     if declared is not None and declared.kind == "table":
-        return _lookup(node, scope)
+        return resolve_lookup(node, scope, resolve_expression)
     if name == "position":
         return _position(node, scope)
     if name in FUNCTIONS:
@@ -277,8 +274,10 @@ def _call(node: tree.Call, scope: Scope) -> Typed:
         else:
             scope.find(node.name, ("table",))
     for argument in node.arguments:
-        if not (isinstance(argument, tree.Use) and argument.name.text not in scope.names):
+        if not isinstance(argument, tree.Use):
             resolve_expression(argument, scope)
+        elif argument.name.text in scope.names:
+            scope.find(argument.name)  # may well be what a table is by, so only note that it is used
     return unknown(scope, node)
 
 
@@ -385,56 +384,3 @@ def _goes_over(node: tree.Tree, index: str) -> bool:
             case _:
                 pass
     return False
-
-
-def _lookup(node: tree.Call, scope: Scope) -> Typed:
-    table = scope.find(node.name)
-    assert table is not None
-    keys = scope.keys.get(table.name)
-    if scope.only_constants:
-        scope.report(node.name, f"`{table.name}` is a table: a constant may use numbers and other constants only")
-        return unknown(scope, node)
-    if keys is None:
-        return unknown(scope, node)
-    if len(keys) != len(node.arguments):
-        names = listing([key.name for key in keys], "and")
-        takes = f"it takes {len(keys)} in its brackets, not {len(node.arguments)}"
-        scope.report(node, f"`{table.name}` is by {names}, so {takes}")
-        return unknown(scope, node)
-    arguments = tuple(_argument(key, argument, scope) for key, argument in zip(keys, node.arguments, strict=True))
-    return Typed(Lookup(table.name, arguments, table.unit or PLAIN, scope.span(node)), table.unit)
-
-
-def _argument(key: Key, argument: tree.Tree, scope: Scope) -> Expression:
-    if key.bands:
-        typed = resolve_expression(argument, scope)
-        return fit(typed, key.unit, argument, scope, f"the bands of `{key.name}` are in")
-    if not isinstance(argument, tree.Use):
-        scope.report(argument, f"the table takes a value of `{key.name}` here, not a calculation",
-                     f"write `{key.name}` or one of {listing(key.values)}")  # fmt: skip
-        return Unknown(scope.span(argument))
-    word = argument.name
-    if word.text in key.values:
-        return Value(word.text, scope.span(word))
-    declared = scope.names.get(word.text)
-    if declared is None:
-        close = nearest(word.text, [key.name, *key.values])
-        scope.report(word, f"`{word.text}` is no value of `{key.name}`",
-                     f"did you mean `{close}`?" if close else f"write `{key.name}` or one of {listing(key.values)}",
-                     "name")  # fmt: skip
-        return Unknown(scope.span(word))
-    scope.find(word)
-    if declared.kind == "unreadable":
-        return Unknown(scope.span(word))
-    if declared.kind not in ("fact", "setting") or not declared.values:
-        scope.report(word, f"the table takes a value of `{key.name}` here, and `{word.text}` has none",
-                     f"write `{key.name}` or one of {listing(key.values)}")  # fmt: skip
-        return Unknown(scope.span(word))
-    strange = [value for value in declared.values if value not in key.values]
-    if strange:
-        scope.report(word, f"`{word.text}` can be {listing(strange)}, which the table's `{key.name}` cannot")
-        return Unknown(scope.span(word))
-    if not index_is_known(word, declared, scope):
-        return Unknown(scope.span(word))
-    kind: Literal["fact", "setting"] = "fact" if declared.kind == "fact" else "setting"
-    return Reference(word.text, kind, declared.index, PLAIN, scope.span(word))

@@ -20,6 +20,7 @@ from samesum.spans import START, Span
 
 LARGEST_FILE = 4_000_000
 _TOO_LONG = f"the file is longer than {LARGEST_FILE:,} characters"
+_NAMELESS = ("rulebook", "result", "periods", "applies")
 _FIRST_WORDS = re.compile(r"(\S+)(?:\s+([^\W\d_]\w*))?")
 
 
@@ -120,7 +121,8 @@ def _parse(
         if isinstance(found, Mistake):
             problems.append(Problem(file, place.span(found.start, found.end), found.says, found.remedy, "syntax"))
             words = _FIRST_WORDS.match(block.text)
-            name = (words[2] or "") if words else ""
+            named = words is not None and words[1] not in _NAMELESS
+            name = (words[2] or "") if words and named else ""
             unreadable.append(Unreadable(words[1] if words else "", name, place.span(0, 1)))
         else:
             trees.append(Placed(found, place, len(block.text)))

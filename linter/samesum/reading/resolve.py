@@ -30,6 +30,7 @@ from samesum.reading.units import UnitTable
 from samesum.spans import START, Span
 
 REMEMBERED_BLOCKS = 20_000
+REMEMBERED_SURROUNDINGS = 4
 _Made = TypeVar("_Made")
 
 
@@ -42,16 +43,31 @@ class Unreadable:
     span: Span
 
 
+@dataclass(frozen=True, slots=True)
+class Surroundings:
+    """All that a block's meaning depends on beside its own text and line, and what blocks came to in it."""
+
+    file: str
+    names: dict[str, Declared]
+    keys: dict[str, tuple[Key, ...]]
+    blocks: dict[tuple[str, int], tuple[object, Notebook]] = field(default_factory=dict, compare=False, repr=False)
+
+
 @dataclass(slots=True)
 class Recall:
-    """What blocks came to the last time, so that an edit resolves one block again.
+    """What blocks came to before, so that an edit resolves one block again. Holds the latest few surroundings
+    (a block goes from readable to not and back while it is written). ``resolved`` counts the blocks resolved."""
 
-    Holds only for the names, tables and file it was made with; any change of those empties it.
-    """
-
-    known: tuple[str, dict[str, Declared], dict[str, tuple[Key, ...]]] | None = None
-    blocks: dict[tuple[str, int], tuple[object, Notebook]] = field(default_factory=dict)
+    latest: list[Surroundings] = field(default_factory=list)
     resolved: int = 0
+
+    def within(self, here: Surroundings) -> Surroundings:
+        """``here``, with what blocks came to the last time in the same surroundings."""
+        known = next((each for each in self.latest if each == here), None)
+        if known is not None and len(known.blocks) < REMEMBERED_BLOCKS:
+            here = known
+        self.latest = [here, *(each for each in self.latest if each is not known)][:REMEMBERED_SURROUNDINGS]
+        return here
 
 
 def resolve(
@@ -65,20 +81,18 @@ def resolve(
     silent = [Declared(each.name, "unreadable", each.span) for each in unreadable if each.name]
     names, kept = declare(blocks, silent, file, notebook, units)
     keys = _all_keys(kept, names, file, notebook, units)
-    if recall.known != (file, names, keys) or len(recall.blocks) > REMEMBERED_BLOCKS:
-        recall.known = (file, names, keys)
-        recall.blocks.clear()
+    came_to = recall.within(Surroundings(file, names, keys)).blocks
     needs: dict[str, tuple[str, ...]] = {}
 
     def one(block: Placed, make: Callable[[Placed, Scope], _Made]) -> _Made | None:
         key = (block.place.text, block.place.first_line)
-        known = recall.blocks.get(key)
+        known = came_to.get(key)
         if known is None:
             own = Notebook()
             scope = replace(bare_scope(block, file, own, units), names=names, keys=keys)
             recall.resolved += 1
             known = (_made(block, make, scope), own)
-            recall.blocks[key] = known
+            came_to[key] = known
         made, own = known
         notebook.add(own)
         if block.declaration.kind in ("constant", "quantity") and block.declaration.name is not None:

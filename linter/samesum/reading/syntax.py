@@ -88,15 +88,16 @@ def make_parser(cache_folder: Path | None) -> Parser:
     """
     grammar = (shipped_folder("grammar") / "rulebook.lark").read_text(encoding="utf-8")
     kept = _cache_file(grammar, cache_folder) if cache_folder is not None else None
-    if kept is not None and not _is_whole(kept):
+    whole = kept is not None and _is_whole(kept)
+    if kept is not None and not whole:
         kept.unlink(missing_ok=True)
-    lark = Lark(grammar, cache=str(kept) if kept is not None else False, **_options())
-    if kept is not None and not _seal(kept).exists():
+    lark = Lark(grammar, cache=str(kept) if kept is not None else False, **parser_options())
+    if kept is not None and not whole:
         _write_seal(kept)
     return Parser(lark)
 
 
-def _options() -> dict[str, Any]:
+def parser_options() -> dict[str, Any]:
     return {
         "parser": "lalr",
         "lexer": "contextual",

@@ -113,8 +113,10 @@ def _clashes(row: tree.RowTree, labels: tuple[str | Band, ...], rows: list[Row],
     for other in rows:
         if all(_overlap(mine, theirs) for mine, theirs in zip(labels, other.labels, strict=True)):
             twice = labels == other.labels
-            says = "is there already" if twice else "overlaps with the band of the row"
-            scope.report(row, f"this row {says}, on line {other.span.line}", "one argument finds one row", "value")
+            says = "repeats" if twice else "overlaps with"
+            scope.report(
+                row, f"this row {says} the one on line {other.span.line}", "one argument finds one row", "value"
+            )
             return True
     if rows and len(labels) == 1:
         mine, before = labels[0], rows[-1].labels[0]

@@ -42,7 +42,11 @@ def _bridge(found: Unit, wanted: Unit, scope: Scope) -> str:
     if not found.text and wanted.text:
         return f"write the unit behind the number, as in [{wanted.text}], or multiply by something in [{wanted.text}]"
     factor = multiplied(wanted, found, scope.units, -1)
-    return f"check the formula, or multiply by something in {say_unit(factor)}" if factor.text else ""
+    return (
+        f"check the formula, or multiply by something in {say_unit(factor)}"
+        if factor.text and "(" not in factor.text
+        else ""
+    )
 
 
 def scaled(expression: Expression, source: Unit, target: Unit) -> Expression:
@@ -86,13 +90,14 @@ def agreed(terms: list[tuple[Typed, tree.Tree]], scope: Scope, how: str) -> tupl
     return parts, unit if fits else None, False
 
 
-def index_is_known(word: tree.Word, declared: Declared, scope: Scope) -> bool:
-    """Whether the element meant by a name per index is known here; reports it when not."""
+def index_is_known(word: tree.Word, declared: Declared, scope: Scope, number: bool = True) -> bool:
+    """Whether the element meant by a name per index is known here; reports it when not. ``number`` tells
+    whether the name stands for a number, which could be summed."""
     if not declared.index or declared.index in scope.indices:
         return True
-    scope.report(
-        word,
-        f"`{word.text}` is per {declared.index}, and here it is not said for which {declared.index}",
-        f"write for instance `sum({word.text} over {declared.index})`, or use it in a quantity per {declared.index}",
-    )
+    per = declared.index
+    remedy = f"use it in a quantity per {per}"
+    if number:
+        remedy = f"write for instance `sum({word.text} over {per})`, or {remedy}"
+    scope.report(word, f"`{word.text}` is per {per}, and here it is not said for which {per}", remedy)
     return False

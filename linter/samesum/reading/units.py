@@ -21,6 +21,8 @@ _OF_A_SUBSTANCE = ("mass", "volume", "normal_volume", "energy")
 _WORD = re.compile(r"[^\W\d_][\w.\-]*|%|°C")
 _TOKEN = re.compile(r"\s*(?:(per\b)|([^\W\d_][\w.\-]*|%|°C)|(\d+)|([*/^()·×-]|\*\*))")
 _HIGHEST_POWER = 12
+# `tCO2e` and the like, written in one word.
+_JOINED = re.compile(r"([a-zA-Z]{1,2}?)((?:CO2|CH4|N2O|C|N|HFC|SF6|d\.m)[\w.\-]*)\Z")
 
 REMEMBERED_UNITS = 4_000
 Terms = tuple[tuple[str, Fraction], ...]
@@ -109,9 +111,8 @@ def read_unit(text: str, table: UnitTable) -> Unit | UnitMistake:
 def _read(text: str, table: UnitTable) -> Unit | UnitMistake:
     if not text.strip():
         return UnitMistake("the square brackets hold no unit", "write the unit, as in [ha], or leave the brackets out")
-    reader = _Reader(re.sub(r"\bdeg C\b", "degC", text), table)
     try:
-        terms = reader.product()
+        terms = _Reader(re.sub(r"\bdeg C\b", "degC", text), table).product()
     except _Unreadable as unreadable:
         return unreadable.mistake
     return unit_of(terms, table, text)
@@ -242,7 +243,12 @@ class _Reader:
 
 def hint(word: str, table: UnitTable) -> str:
     """What to write instead of the unknown unit ``word``."""
-    close = nearest(word, table.units)
+    joined = _JOINED.match(word)
+    if joined is not None and joined[1] in table.units:
+        return f"write [{joined[1]} {joined[2]}], the unit and its substance apart"
+    if re.match(r"CO2|CH4|N2O|C\Z|d\.m", word):
+        return f"a substance follows a unit, as in [t {word}]"
+    close = "tonne" if word.lower() in ("ton", "tons") else nearest(word, table.units)
     return f"did you mean {close}?" if close else "the language reference lists the units"
 
 
