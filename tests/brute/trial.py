@@ -148,13 +148,13 @@ def preferred(body: Body, names: list[str]) -> list[str]:
 
 def rounded(values: Array, rulebook: Rulebook) -> list[float]:
     """After the result's own rounding. A value within a billionth of a step's end is taken to stand on it;
-    halves are rounded up."""
+    halves are rounded away from zero."""
     if not rulebook.rounding:
         return [float(f"{v:.9g}") for v in values]
     steps = np.asarray(values) / float(rulebook.step)
     near = np.round(steps * 2) / 2
     steps = np.where(np.abs(steps - near) < 1e-9, near, steps)
-    way = {"down": np.floor, "up": np.ceil, "nearest": lambda s: np.floor(s + 0.5)}[rulebook.rounding]
+    way = {"down": np.floor, "up": np.ceil, "nearest": lambda s: np.copysign(np.floor(np.abs(s) + 0.5), s) + 0.0}[rulebook.rounding]
     return [float(v) for v in way(steps) * float(rulebook.step)]
 
 

@@ -13,14 +13,17 @@ import numpy as np
 
 from samesum.evidence.arrays import Array, Table, at, combined, picked, reduced, stacked
 from samesum.evidence.hulls import Hull, applied, ends_wanted
-from samesum.evidence.plan import Plan
-from samesum.evidence.settings import candidates_of
+from samesum.evidence.bends import BENT, way_of
+from samesum.evidence.plan import CONDITIONS, Plan
+from samesum.evidence.settings import candidates_of, ends_of
 from samesum.evidence.steps import Step, Work
 from samesum.evidence.structure import Structure, find_structure
 from samesum.evidence.values import Evaluator, Rows, TooMany, decision, route_codes
 
 LARGE = 4096  # combinations beyond which a shared part may stand for itself
 MOST_AT_ONCE = 3_000_000  # cells in one table
+GRID = 33
+ROUNDS = 16
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,26 +47,108 @@ class Extremes:
 
 def find_extremes(plan: Plan, rows: Rows, held: frozenset[str] = frozenset()) -> Extremes:
     """Lowest and highest of each row over all routes and free settings. What is ``held`` (branch points by id,
-    settings and judgements by name) keeps to the reference. Raises ``TooMany`` when parts share too much."""
+    settings and judgements by name) keeps to the reference. Raises ``TooMany`` when parts share too much.
+
+    A setting in which the result both rises and falls is searched ever more finely around the best values found;
+    its rows are not exact until somebody proves a bound."""
     work = plan_work(plan, rows, held)
     per_row = max(1, work.largest)
     if per_row > MOST_AT_ONCE:
         raise TooMany
     size = max(1, MOST_AT_ONCE // per_row)
-    if size >= rows.count:
-        return _run(plan, work)
-    parts = [rows.part(slice(start, start + size)) for start in range(0, rows.count, size)]
-    return _joined([_run(plan, plan_work(plan, part, held)) for part in parts])
+    if size < rows.count:
+        parts = [rows.part(slice(start, start + size)) for start in range(0, rows.count, size)]
+        return joined([find_extremes(plan, part, held) for part in parts])
+    bent = frozenset(
+        plan.nodes[number].name
+        for number in work.structure.children
+        if work.evaluator.is_free(plan.nodes[number].name)
+        and plan.nodes[number].kind == "input"
+        and way_of(work.structure, number) == BENT
+    )
+    return _refined(plan, rows, held, bent) if bent else _run(plan, work)
 
 
-def plan_work(plan: Plan, rows: Rows, held: frozenset[str]) -> Work:
-    """The steps, with shared parts standing for themselves where that keeps tables small."""
+def _refined(plan: Plan, rows: Rows, held: frozenset[str], bent: frozenset[str]) -> Extremes:
+    lines = GRID if len(bent) == 1 else 9
+    spread = {name: np.linspace(*_domain(plan, rows, name), lines) for name in bent}
+    spacing = {name: (each[-1] - each[0]) / (lines - 1) for name, each in spread.items()}
+    found: Extremes | None = None
+    for _ in range(ROUNDS):
+        work = plan_work(plan, rows, held, spread, bent)
+        if work.largest * rows.count > 4 * MOST_AT_ONCE:
+            if rows.count == 1:
+                raise TooMany
+            halves = [slice(0, rows.count // 2), slice(rows.count // 2, rows.count)]
+            return joined([_refined(plan, rows.part(half), held, bent) for half in halves])
+        found = _run(plan, work)
+        for name in bent:
+            near = [
+                extreme.inputs.numbers[name] + step * spacing[name] / 4
+                for extreme in (found.lowest, found.highest)
+                for step in range(-4, 5)
+            ]
+            low, high = _domain(plan, rows, name)
+            spread[name] = np.clip(np.stack(near), low, high)
+            spacing[name] = spacing[name] / 4
+    assert found is not None
+    moved = np.logical_or.reduce([rows.free[name] for name in bent])
+    return Extremes(found.lowest, found.highest, found.exact & ~moved)
+
+
+def _domain(plan: Plan, rows: Rows, name: str) -> tuple[Array, Array]:
+    ends = ends_of(plan, rows, name)
+    return ends[0], ends[-1]
+
+
+def plan_work(
+    plan: Plan,
+    rows: Rows,
+    held: frozenset[str],
+    more: Mapping[str, Array] | None = None,
+    bent: frozenset[str] = frozenset(),
+) -> Work:
+    """The steps, with shared parts standing for themselves where that keeps tables small. ``more``: further values
+    of settings to try; ``bent``: settings that are never taken from end to end."""
     evaluator = Evaluator(plan, rows, held=held)
-    evaluator.candidates, unsure = candidates_of(plan, rows, held)
+    evaluator.candidates, unsure = candidates_of(plan, rows, held, more)
     structure = find_structure(evaluator)
-    work = Work(evaluator, structure, unsure)
+    work = Work(evaluator, structure, unsure, bent)
     work.plan_steps()
+    if work.largest > LARGE:
+        work = _with_parts(evaluator, structure, unsure, bent, work)
     return work
+
+
+def _with_parts(evaluator: Evaluator, structure: Structure, unsure: Array, bent: frozenset[str], work: Work) -> Work:
+    """Lets shared parts stand for themselves, the largest first, as long as that makes tables smaller."""
+    uses: dict[int, int] = {}
+    for inner in structure.children.values():
+        for each in inner:
+            uses[each] = uses.get(each, 0) + 1
+    leaves = [axis.node for axis in evaluator.axes]
+    candidates = []
+    for number, count in uses.items():
+        kind = structure.plan.nodes[number].kind
+        if count < 2 or number in structure.full or kind in CONDITIONS or kind in ("number", "input", "lookup"):
+            continue
+        inside = sum(structure.dominates(number, leaf) for leaf in leaves if leaf in structure.dominator)
+        way = way_of(structure, number)
+        if inside > 1 and way is not None and way.up is not None:
+            candidates.append((inside, number))
+    for _, number in sorted(candidates, reverse=True):
+        structure.cut([number])
+        again = Work(evaluator, structure, unsure, bent)
+        again.plan_steps()
+        if again.largest < work.largest:
+            work = again
+        else:
+            structure.uncut(number)
+        if work.largest <= LARGE:
+            break
+    final = Work(evaluator, structure, unsure, bent)
+    final.plan_steps()
+    return final
 
 
 def _run(plan: Plan, work: Work) -> Extremes:
@@ -278,7 +363,7 @@ def _replayed(plan: Plan, evaluator: Evaluator, places: Mapping[int, Array], num
     return Extreme(value, route_codes(replay), inputs)
 
 
-def _joined(parts: list[Extremes]) -> Extremes:
+def joined(parts: list[Extremes]) -> Extremes:
     def one(extremes: list[Extreme]) -> Extreme:
         names = dict.fromkeys(name for each in extremes for name in each.route)
         route = {

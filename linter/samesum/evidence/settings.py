@@ -28,7 +28,7 @@ def candidates_of(
         name for name, where in rows.free.items() if name in plan.numeric and name not in held and bool(where.any())
     ]
     unsure = np.zeros(rows.count, dtype=bool)
-    found = {name: _ends(plan, rows, name) for name in free}
+    found = {name: ends_of(plan, rows, name) for name in free}
     for name, lines in (more or {}).items():
         if name in found:
             inside = np.clip(lines, found[name][0], found[name][1])
@@ -51,7 +51,7 @@ def candidates_of(
     return found, unsure
 
 
-def _ends(plan: Plan, rows: Rows, name: str) -> Array:
+def ends_of(plan: Plan, rows: Rows, name: str) -> Array:
     domain = plan.numeric[name]
     given = ~rows.free[name]
     sides = []

@@ -41,6 +41,7 @@ class Work:
     evaluator: Evaluator
     structure: Structure
     unsure: Array
+    bent: frozenset[str] = frozenset()
     steps: list[Step] = field(default_factory=list)
     slot_axes: list[frozenset[int]] = field(default_factory=list)
     wide: list[bool] = field(default_factory=list)
@@ -58,7 +59,7 @@ class Work:
             node = structure.plan.nodes[number]
             if number in structure.full and node.kind not in ("point",) and node.kind != "true":
                 self._settle_full(number, node)
-            elif node.kind == "lookup" or (node.kind == "input" and not structure.met_once(number)):
+            elif node.kind == "lookup" or (node.kind == "input" and not self._is_wide(number, node)):
                 evaluator.number(number)
         for number in structure.cuts:
             self._parts[number] = evaluator.axis("part", str(number), number, 2)
@@ -107,7 +108,7 @@ class Work:
         if number in self.structure.full or node.kind in ("number", "lookup", "code", "named"):
             return self._given(number)
         if node.kind == "input":
-            if evaluator._is_free(node.name) and self.structure.met_once(number):
+            if self._is_wide(number, node):
                 return self._new(Step("wide", len(self.steps), node=node, number=number), frozenset(), True)
             return self._given(number)
         if node.kind == "select":
@@ -121,6 +122,10 @@ class Work:
         if node.kind in NARY:
             return self._many(number, node, slots)
         return self._apply(node, slots)
+
+    def _is_wide(self, number: int, node: Node) -> bool:
+        free = self.evaluator.is_free(node.name) and node.name not in self.bent
+        return free and number not in self.structure.full and self.structure.met_once(number)
 
     def _given(self, number: int) -> int:
         table = self.evaluator.number(number)

@@ -48,6 +48,16 @@ class Structure:
         self.cuts |= set(numbers)
         self._once.clear()
 
+    def uncut(self, number: int) -> None:
+        self.cuts.discard(number)
+        self._once.clear()
+
+    def dominates(self, above: int, number: int) -> bool:
+        """Whether everything that leads to ``number`` leads through ``above``."""
+        while self.depth[number] > self.depth[above]:
+            number = self.dominator[number]
+        return number == above
+
     def met_once(self, number: int) -> bool:
         """Whether at most one use of the operation takes part in any one evaluation (uses under different branches
         of one branch point exclude each other)."""

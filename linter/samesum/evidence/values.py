@@ -116,7 +116,7 @@ class Evaluator:
             return None
         return free[None, :] | (np.arange(size)[:, None] == values[None, :])
 
-    def _is_free(self, name: str) -> bool:
+    def is_free(self, name: str) -> bool:
         free = self.rows.free.get(name)
         return self.decide is None and name not in self.held and free is not None and bool(free.any())
 
@@ -135,7 +135,7 @@ class Evaluator:
                 return Truth(constant(True))
             case "holds":
                 flags = self.rows.flags[node.name]
-                if self._is_free(node.name):
+                if self.is_free(node.name):
                     allowed = self._open(node.name, np.where(flags, 0, 1), 2)
                     axis = self.axis("judgement", node.name, number, 2, allowed)
                     return Truth(Table((axis,), np.array([[True], [False]])))
@@ -292,7 +292,7 @@ class Evaluator:
                 return self._input(number, node)
             case "code":
                 codes = self.rows.codes[node.name]
-                if self._is_free(node.name):
+                if self.is_free(node.name):
                     size = len(self.plan.named[node.name])
                     axis = self.axis("named", node.name, number, size, self._open(node.name, codes, size))
                     return Table((axis,), np.arange(size)[:, None])
@@ -312,7 +312,7 @@ class Evaluator:
                 return self._sized(lambda *parts: operated(node, parts), *(self.number(each) for each in node.args))
 
     def _input(self, number: int, node: Node) -> Table:
-        if self._is_free(node.name):
+        if self.is_free(node.name):
             values = self.candidates[node.name]
             axis = self.axis("numeric", node.name, number, len(values))
             return Table((axis,), values)
