@@ -1,0 +1,139 @@
+"""Numbers and pages for people: layout where layout is the point."""
+
+from __future__ import annotations
+
+import io
+from fractions import Fraction
+
+import pytest
+
+from samesum.evidence.witness import Witness
+from samesum.outputs.json_text import as_json
+from samesum.outputs.page import Page, Paper, clean, paper_for, wrapped
+from samesum.outputs.projects import Words, as_values, project
+from samesum.written import number, percent, plain, whole
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [
+        (0, "0"),
+        (5_511_240_000, "5,511,240,000"),
+        (10**15 - 1, "999,999,999,999,999"),
+        (10**15, "1,000,000,… (16 digits, about 1.0 × 10^15)"),
+        (2**200, "1,606,938,… (61 digits, about 1.6 × 10^60)"),
+        (3**50, "717,897,987,… (24 digits, about 7.2 × 10^23)"),
+        (9_996 * 10**20, "999,600,000,… (24 digits, about 1.0 × 10^24)"),
+    ],
+)
+def test_counts_for_people(value: int, text: str) -> None:
+    assert whole(value) == text
+
+
+def test_a_count_longer_than_python_writes_by_itself() -> None:
+    assert whole(10**5000) == "100,000,000,… (5001 digits, about 1.0 × 10^5000)"
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [
+        ("0", "0"),
+        ("12", "12"),
+        ("44/12", "3.66667"),
+        ("0.47", "0.47"),
+        ("1/3000000", "3.33333e-7"),
+        ("-0.00012", "-0.00012"),
+        ("123456.789", "123457"),
+        ("2500000", "2500000"),
+        ("1e18", "1e18"),
+        ("12345678901234567890.5", "1.23457e19"),
+    ],
+)
+def test_measured_numbers_for_people(value: str, text: str) -> None:
+    assert plain(Fraction(value)) == text
+
+
+@pytest.mark.parametrize(
+    ("value", "text"),
+    [("0", "0 %"), ("0.05", "5 %"), ("-0.0786", "-7.86 %"), ("5", "500 %"), ("0.0000123456", "0.00123 %")],
+)
+def test_shares_for_people(value: str, text: str) -> None:
+    assert percent(Fraction(value)) == text
+
+
+def test_numbers_for_programs_are_exact() -> None:
+    assert number(Fraction(18)) == 18 and isinstance(number(Fraction(18)), int)
+    assert number(Fraction(1, 20)) == 0.05
+    assert number(Fraction(125, 6)) == "125/6"
+    assert number(Fraction(10) ** 400) == 10**400
+    assert as_json({"many": 7**6000}).count("\n") == 3
+
+
+def test_wrapping_keeps_long_words_whole_and_percents_together() -> None:
+    assert wrapped("an error of 35 % is large", 14) == ["an error of", "35 % is large"]
+    assert wrapped("a/very/long/path/that/does/not/fit x", 10) == ["a/very/long/path/that/does/not/fit", "x"]
+    assert wrapped("湿地の炭素 湿地", 10) == ["湿地の炭素", "湿地"]
+
+
+def test_nothing_in_a_text_steers_the_terminal() -> None:
+    assert clean("a\x1b[31m\u202eb\x00\r\n") == "a�[31m�b���"
+    assert clean("größe क्‍ष") == "größe क्‍ष"
+
+
+def test_colours_only_on_a_terminal() -> None:
+    class Terminal(io.StringIO):
+        def isatty(self) -> bool:
+            return True
+
+    assert paper_for(Terminal(), {}).colour
+    assert not paper_for(Terminal(), {"NO_COLOR": "1"}).colour
+    assert not paper_for(Terminal(), {"TERM": "dumb"}).colour
+    assert not paper_for(io.StringIO(), {}).colour
+    assert not paper_for(None, {}).colour
+    assert paper_for(io.StringIO(), {"COLUMNS": "5"}).width == 24
+    assert paper_for(io.StringIO(), {"COLUMNS": "x"}).width == 80
+    page = Page(Paper(80, True))
+    page.line("error", "bad")
+    assert page.text == "\x1b[1;31merror\x1b[0m\n"
+
+
+def test_a_narrow_page_puts_entries_below_their_label() -> None:
+    page = Page(Paper(30))
+    page.entry("why", "because it moves", indent=4, column=10)
+    assert page.text == "    why\n      because it moves\n"
+    page = Page(Paper(60))
+    page.heading("Title")
+    page.entry("why", "because it moves the number by a lot of tonnes each year", indent=2, column=10)
+    assert page.text == (
+        "Title ──────────────────────────────────────────────────────\n"
+        "  why       because it moves the number by a lot of tonnes\n"
+        "            each year\n"
+    )
+
+
+WORDS = Words(
+    {"salinity": "ppt", "area": "ha", "discount": "", "soil": ""}, frozenset({"discount"}), {"area": "stratum"}
+)
+
+
+def test_a_project_in_the_trades_words() -> None:
+    witness = Witness(
+        (("soil", "mineral"), ("salinity", Fraction(0)), ("area", (Fraction(120), Fraction(80)))),
+        (("discount", Fraction(1, 20)),),
+        (("access", True),),
+        (("soil_carbon", "plots"),),
+    )
+    assert project(witness, WORDS) == (
+        "a project with soil mineral, salinity 0 ppt, area 120 / 80 ha by stratum, discount set to 5 % "
+        "and access read as yes"
+    )
+    assert as_values(witness) == {
+        "soil": "mineral",
+        "salinity": 0,
+        "area": [120, 80],
+        "discount": 0.05,
+        "access": True,
+    }
+    assert project(Witness((), (), (), ()), WORDS) == "any project"
+    equal = Witness((("area", (Fraction(5), Fraction(5))), ("flooded", False)), (), (), ())
+    assert project(equal, WORDS) == "a project with area 5 ha in every stratum and no flooded"
