@@ -33,7 +33,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--price", type=_above_zero, metavar="P", help="what a credit is worth, in the currency of the costs"
     )
     parser.add_argument(
-        "--join", type=_above_zero, metavar="K", help="also: only projects join that are credited more than K × the truth"
+        "--join", type=_above_zero, metavar="K", help="also: only projects join that are credited more than K × truth"
     )
     parser.add_argument("--jobs", type=_count, metavar="N", help="how many cores work on it (all); changes no figure")
     shared.add_json(parser)
@@ -42,8 +42,8 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--write-closed",
         nargs="+",
         metavar="KIND:BRANCH_POINT",
-        help="mandate:ID (the reference), mandate=OPTION:ID, lowest:ID, fixed:ID, deduct:ID (so that a second look comes "
-        "out even), deduct=P%%:ID, in-order:ID for overlapping cases",
+        help="mandate:ID (the reference), mandate=OPTION:ID, lowest:ID, fixed:ID, deduct:ID (so that a second look "
+        "comes out even), deduct=P%%:ID, in-order:ID for overlapping cases",
     )
     closing.add_argument("-o", "--output", type=Path, metavar="OUT", help="where to (standard output)")
 

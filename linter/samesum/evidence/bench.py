@@ -209,7 +209,7 @@ def _input_offer(one: Alone, name: str) -> tuple[take.Offer, list[Array]]:
 
 def _branch_offer(one: Alone, id: str) -> tuple[take.Offer, list[Array]] | None:
     bench, program = one.bench, one.bench.program
-    forced = _ways_in(program, id)
+    forced = ways_in(program, id)
     base = one.base
     if forced:
         base = bench.values(one.world(forced, {}), one.base, tuple(forced))
@@ -244,7 +244,7 @@ def _branch_offer(one: Alone, id: str) -> tuple[take.Offer, list[Array]] | None:
     return offer, credits
 
 
-def _ways_in(program: Program, id: str) -> dict[str, Any]:
+def ways_in(program: Program, id: str) -> dict[str, Any]:
     """The options that have to be taken for a nested choice to be met at all."""
     forced: dict[str, Any] = {}
     point = program.graph.branch_points[id]

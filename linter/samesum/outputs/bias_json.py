@@ -12,7 +12,7 @@ from samesum.outputs.bias_text import sentence
 
 
 def bias_json(selection: Selection, routes: Mapping[tuple[str, str, str], Any] | None = None) -> dict[str, Any]:
-    """The whole answer. ``routes``: the counts of the rulebook with a closure written out, by latitude, kind, option."""
+    """The whole answer. ``routes``: the counts of the rulebook with a closure written out, by id, kind, option."""
     model, supply, terms = selection.model, selection.supply, selection.terms
     return {
         "rulebook": model.title,

@@ -18,7 +18,8 @@ _KINDS = {"choice": "choice", "overlap": "overlap", "setting": "free value", "ju
 def bias_text(selection: Selection, paper: Paper) -> str:
     """The whole answer for people."""
     page = Page(paper)
-    page.line(f"{selection.model.title}, draft {selection.model.draft}" if selection.model.draft else selection.model.title, "strong")
+    draft = f", draft {selection.model.draft}" if selection.model.draft else ""
+    page.line(f"{selection.model.title}{draft}", "strong")
     page.blank()
     page.paragraph(sentence(selection))
     page.blank()
@@ -150,7 +151,12 @@ def _enrolment(page: Page, selection: Selection) -> None:
     titles = ("the estimate errs", "over-issued", "±", "join")
     page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
     scattered = [
-        (f"{found.latitude.id}: {option}", _more(each.over_issuance), _error(each.standard_error), _percent(each.share, 0))
+        (
+            f"{found.latitude.id}: {option}",
+            _more(each.over_issuance),
+            _error(each.standard_error),
+            _percent(each.share, 0),
+        )
         for found in selection.found
         for option, each in found.truth_scatters.items()
     ]
@@ -176,7 +182,8 @@ def _bars(page: Page, histograms: Mapping[str, tuple[int, ...]]) -> None:
     for number in range(used[0], used[-1] + 1):
         low, high = number * WIDTH * steps, (number + 1) * WIDTH * steps
         label = f"{low:.1f} to {high:.1f}" if number < len(left) - 1 else f"{low:.1f} and up"
-        bars = [_bar(count / total / longest * room) for count, total in ((left[number], whole[0]), (right[number], whole[1]))]
+        shares = left[number] / whole[0], right[number] / whole[1]
+        bars = [_bar(share / longest * room) for share in shares]
         over = number * steps >= BINS // 2
         shown = page.styled(bars[1], "bad" if over else "quiet") if bars[1] else ""
         page.lines.append(f"{bars[0]:>{room}}  {label:^11}  {shown}".rstrip())
@@ -196,7 +203,8 @@ def _over_periods(page: Page, selection: Selection) -> None:
     page.heading(f"Over the {selection.model.periods} periods")
     titles = ("second look, all periods together", "as written", "all fixed at validation")
     rows = []
-    for name, by in (("each option errs alike in every period", found.stay), ("every estimate is made anew", found.anew)):
+    readings = (("each option errs alike in every period", found.stay), ("every estimate is made anew", found.anew))
+    for name, by in readings:
         rows.append((name, *(_with_error(by.get(key)) for key in ("as written", "all fixed"))))
     page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
 
