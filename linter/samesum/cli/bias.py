@@ -36,7 +36,11 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--join", type=_above_zero, metavar="K", help="also: only projects join that are credited more than K × truth"
     )
     parser.add_argument("--jobs", type=_count, metavar="N", help="how many cores work on it (all); changes no figure")
+    parser.add_argument(
+        "--routes", action="store_true", help="count also the routes that each way of closing leaves (takes longer)"
+    )
     shared.add_json(parser)
+    shared.add_seconds(parser)
     closing = parser.add_argument_group("closing", "writes the rulebook with branch points closed")
     closing.add_argument(
         "--write-closed",
@@ -78,16 +82,21 @@ def run(arguments: argparse.Namespace) -> int:
             f"{arguments.file}: all projects together have no true credits above zero, so that nothing can be measured "
             "against them; give projects with --inputs"
         )
+    routes = {}
+    if arguments.routes:
+        from samesum.cli.closing import routes_left
+
+        routes = routes_left(reading, selection, arguments.seconds)
     if arguments.json:
         from samesum.outputs.bias_json import bias_json
         from samesum.outputs.json_text import as_json
 
-        shared.write(as_json(bias_json(selection)))
+        shared.write(as_json(bias_json(selection, routes)))
     else:
         from samesum.outputs.bias_text import bias_text
         from samesum.outputs.page import paper_for
 
-        shared.write(bias_text(selection, paper_for(sys.stdout)))
+        shared.write(bias_text(selection, paper_for(sys.stdout), routes))
     return 0
 
 

@@ -5,11 +5,12 @@ from __future__ import annotations
 import argparse
 import re
 from dataclasses import replace
-from typing import TYPE_CHECKING
+from typing import TYPE_CHECKING, Any
 
 from samesum.cli import shared
 
 if TYPE_CHECKING:
+    from samesum.evidence.selection import Selection
     from samesum.outputs.closed import Closing
     from samesum.reading.read import Reading
 
@@ -105,3 +106,34 @@ def worked_out(reading: Reading, closing: Closing, arguments: argparse.Namespace
     if found is None:
         raise CannotClose("no deduction brings its over-issuance to zero; mandate one of the options")
     return replace(closing, share=found.share)
+
+
+def routes_left(reading: Reading, selection: Selection, seconds: float) -> dict[tuple[str, str, str], Any]:
+    """The counts of the rulebook with each closure written out, by id, kind and option; those that cannot be written
+    out are left out."""
+    from samesum.evidence.counting import count
+    from samesum.evidence.leaning import leaning
+    from samesum.graph import build
+    from samesum.outputs.closed import Closing, closed
+    from samesum.outputs.closed_text import CannotClose
+    from samesum.outputs.counts import paths_json
+    from samesum.reading.read import default_cache_folder, make_reader
+
+    reader = make_reader(default_cache_folder())
+    made: dict[tuple[str, str, str], Any] = {}
+    for found in selection.found:
+        latitude = found.latitude
+        for closure in found.closures:
+            key = (latitude.id, closure.kind, closure.option)
+            if key in made or latitude.kind == "judgement":
+                continue
+            subtracted = closure.kind == "lowest" and leaning(selection.supply, latitude, selection.terms) < 0
+            share = closure.percent.value if closure.percent is not None else 0.0
+            closing = Closing(closure.kind, latitude.id, closure.option, share, subtracted)
+            try:
+                after = closed(reading, closing, reader)
+            except CannotClose:
+                continue
+            if after.model is not None:
+                made[key] = paths_json(count(build(after.model), seconds))
+    return made

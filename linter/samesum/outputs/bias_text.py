@@ -4,19 +4,24 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping, Sequence
+from typing import Any
 
 from samesum.evidence.latitudes import Latitude
 from samesum.evidence.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
 from samesum.evidence.tally import BINS, WIDTH
 from samesum.outputs.page import Page, Paper
 from samesum.outputs.tables import table_lines
+from samesum.written import whole
 
 MOST_CLOSED = 6
 _KINDS = {"choice": "choice", "overlap": "overlap", "setting": "free value", "judgement": "judgement"}
 
 
-def bias_text(selection: Selection, paper: Paper) -> str:
-    """The whole answer for people."""
+Routes = Mapping[tuple[str, str, str], Any]
+
+
+def bias_text(selection: Selection, paper: Paper, routes: Routes | None = None) -> str:
+    """The whole answer for people. ``routes``: the counts that closing leaves, where they were asked for."""
     page = Page(paper)
     draft = f", draft {selection.model.draft}" if selection.model.draft else ""
     page.line(f"{selection.model.title}{draft}", "strong")
@@ -38,7 +43,7 @@ def bias_text(selection: Selection, paper: Paper) -> str:
     if closable:
         page.heading("What closing a branch point leaves")
         for found in closable[:MOST_CLOSED]:
-            _closures(page, found)
+            _closures(page, found, routes or {})
         if len(closable) > MOST_CLOSED:
             page.blank()
             page.paragraph(f"… and {len(closable) - MOST_CLOSED} more with --json.", style="quiet")
@@ -225,6 +230,7 @@ def _ranking(page: Page, selection: Selection) -> None:
             (
                 f"{each.per_thousand:+.1f}" if abs(each.per_thousand) >= 0.05 else "0.0",
                 f"{each.per_thousand_error:.1f}" if each.per_thousand_error else "exact",
+                _beyond(each),
                 latitude.id,
                 latitude.clause,
                 _KINDS[latitude.kind],
@@ -234,19 +240,34 @@ def _ranking(page: Page, selection: Selection) -> None:
     if not rows:
         page.paragraph("Nobody decides anything that moves the result.")
         return
-    page.paragraph("Tonnes over-issued for 1,000 true, each by itself with everything else on its reference.")
-    titles = ("t", "±", "branch point", "clause", "what", "who decides")
-    page.lines += table_lines(titles, rows, page.paper, numbers=titles[:2])
+    page.paragraph(
+        "Tonnes over-issued for 1,000 true by a second look, each by itself with everything else on its reference."
+    )
+    titles = ("t", "±", "if all is picked", "branch point", "clause", "what", "who decides")
+    page.lines += table_lines(titles, rows, page.paper, numbers=titles[:3])
 
 
-def _closures(page: Page, found: Found) -> None:
+def _beyond(found: Found) -> str:
+    """The same for the developer who works out every option and keeps the one that credits most."""
+    picked = _of(found.figures, "pick of all")
+    if picked is None:
+        return "–"
+    tonnes = 1000 * picked.difference
+    return f"{tonnes:+.1f}" if abs(tonnes) >= 0.05 else "0.0"
+
+
+def _closures(page: Page, found: Found, routes: Routes) -> None:
     page.blank()
     latitude = found.latitude
     page.line(f"{_name(latitude)}: {found.per_thousand:+.1f} t for 1,000", "strong")
-    rows = [
-        (_closed_how(each, latitude), _with_error(each.left), _with_error(each.whole_left)) for each in found.closures
-    ]
-    titles = ("closed so", "left of this one", "left of the whole")
+    rows = []
+    for each in found.closures:
+        row = [_closed_how(each, latitude), _with_error(each.left), _with_error(each.whole_left)]
+        paths = routes.get((latitude.id, each.kind, each.option))
+        if routes:
+            row.append(whole(paths["per_project_most"]) if paths is not None else "–")
+        rows.append(row)
+    titles = ["closed so", "left of this one", "left of the whole", *(["routes"] if routes else [])]
     page.lines += table_lines(titles, rows, page.paper, numbers=titles[1:])
 
 
