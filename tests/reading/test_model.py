@@ -296,6 +296,19 @@ def test_constants_take_a_plain_number_in_their_own_unit(reader: Reader) -> None
     assert isinstance(second, Scaled) and second.factor == 1000
 
 
+def test_a_percentage_is_a_plain_number_also_where_the_unit_is_percent(reader: Reader) -> None:
+    text = f"{HEAD}constant k [%] = 5 %\nconstant m [%] = 5\nquantity q [t]\n    = k * m * 1 [t]\n"
+    for constant in model_of(text, reader).constants:
+        assert isinstance(constant.expression, Number) and constant.expression.value == 5
+    (problem,) = read(f"{HEAD}constant k [t] = 5 %\nquantity q [t]\n    = k\n", "x", reader=reader).problems
+    assert "the constant is in [t], but this is a plain number" in problem.says
+
+
+def test_what_has_no_unit_is_told_so(reader: Reader) -> None:
+    (problem,) = read(f"{HEAD}quantity q [t]\n    = r * 1 [t]\nquantity r\n    = 3 [t]\n", "x", reader=reader).problems
+    assert problem.says == "the quantity has no unit, but this is [t]"
+
+
 def test_what_fails_is_unknown_and_the_rest_stays_whole(reader: Reader) -> None:
     text = f"{HEAD}quantity q [t]\n    = r + nothing_like_it\nquantity r [t]\n    = 3 [t] + 4 [ha]\n"
     reading = read(text, "x", reader=reader)

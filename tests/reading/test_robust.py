@@ -78,6 +78,8 @@ def test_any_text_gives_a_reading(text: str) -> None:
         (HEAD + "quantity q [t]\n    = a ^ 999999999", "too large"),
         (HEAD + "applies when " + "not " * 3000 + "a > 3 [t]\nquantity q [t]\n    = a", "nested more than"),
         (HEAD + "fact b [" + "(" * 3000 + "t], 0 to 3\nquantity q [t]\n    = a", "where a unit belongs"),
+        (HEAD + "table u [t] by a\n    up to 3 = " + "-" * 3000 + "5\nquantity q [t]\n    = a", "a row gives a number"),
+        (HEAD + "constant c [t] = " + "-" * 3000 + "5 %\nquantity q [t]\n    = a", "nested more than"),
         (HEAD + "index i, at most 1e9\nquantity q [t]\n    = a", "whole number"),
         (HEAD + f"quantity {'x' * 100_000} [t]\n    = a", "`q`"),
     ],

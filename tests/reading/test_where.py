@@ -56,6 +56,8 @@ def test_a_condition_may_run_over_several_lines(reader: Reader) -> None:
         ("q takes left", 1, "cannot stand in a rule"),
         ("(kind is choice", 1, "never closed"),
         ("", 1, "ends too early"),
+        ("(" * 3000 + "jump" + ")" * 3000 + " > 3", 1, "nothing is calculated"),
+        ("(" * 3000 + "jump > 3" + ")" * 3000, 62, "nested too deep"),
         ("kind is choice and", 19, "ends too early"),
         ("sum(jump over kind) > 1", 1, "nothing is calculated"),
         ("jump", 1, "not yes or no"),

@@ -213,7 +213,7 @@ def resolve_constant(block: Placed, scope: Scope) -> Constant:
     assert node is not None
     unit = _unit(block, scope)
     typed = resolve_expression(node, replace(scope, only_constants=True))
-    if typed.unit == PLAIN or typed.unit is None:
+    if typed.unit is None or (typed.unit == PLAIN and not _is_percentage(node)):
         expression = typed.expression
     else:
         expression = fit(typed, unit, node, scope, "the constant is in")
@@ -223,6 +223,11 @@ def resolve_constant(block: Placed, scope: Scope) -> Constant:
                      "write it as in `constant deduction = 12 %, not in reference`", "value")  # fmt: skip
         withheld = False
     return Constant(_name(block).text, unit or PLAIN, expression, about(block, phrases, scope), withheld)
+
+
+def _is_percentage(node: tree.Tree) -> bool:
+    number = node.operand if isinstance(node, tree.Minus) else node
+    return isinstance(number, tree.Literal) and number.percent
 
 
 def resolve_table(block: Placed, scope: Scope) -> Table:

@@ -164,8 +164,8 @@ def _calculated(node: tree.Tree, scope: Scope) -> tuple[Fraction, Unit | None] |
             if value is None or (node.unit is not None and own is None):
                 return None
             return value, own
-        case tree.Minus():
-            inner = _calculated(node.operand, scope)
+        case tree.Minus(operand=tree.Literal() | tree.Chain() as operand):
+            inner = _calculated(operand, scope)
             return None if inner is None else (-inner[0], inner[1])
         case tree.Chain(first=tree.Literal(unit=None) as above, rest=(("/", tree.Literal(unit=None) as below),)):
             top, bottom = scope.number(above), scope.number(below)

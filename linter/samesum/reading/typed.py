@@ -33,7 +33,11 @@ def fit(typed: Typed, unit: Unit | None, node: tree.Node, scope: Scope, what: st
         return _rezero(typed.expression, unit)
     if not same_dimension(typed.unit, unit):
         remedy = _bridge(typed.unit, unit, scope)
-        scope.report(node, f"{what} {say_unit(unit)}, but this is {say_unit(typed.unit)}", remedy, "unit")
+        wanted = f"{what} {say_unit(unit)}"
+        if not unit.text:
+            wanted = what.replace(" is in", " has no unit").replace(" are in", " have no unit")
+            wanted = f"{what} a plain number" if wanted == what else wanted
+        scope.report(node, f"{wanted}, but this is {say_unit(typed.unit)}", remedy, "unit")
         return typed.expression
     return scaled(typed.expression, typed.unit, unit)
 

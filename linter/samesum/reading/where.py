@@ -165,8 +165,8 @@ def _operator(sign: str) -> Operator:
 def _side(node: tree.Tree, place: tree.Place) -> Side:
     span = place.of_node(node)
     match node:
-        case tree.Grouped(unit=None):
-            return _side(node.inner, place)
+        case tree.Grouped(unit=None, inner=tree.Literal() | tree.Use() as inner_node):
+            return _side(inner_node, place)
         case tree.Use():
             return Attribute(node.name.text, span)
         case tree.Minus(operand=tree.Literal(unit=None) as number):
