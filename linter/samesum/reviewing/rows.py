@@ -28,7 +28,7 @@ Timing = Literal["at validation", "each period", "not stated", ""]
 @dataclass(frozen=True, slots=True)
 class RowOption:
     """A branch, or an option with what the rulebook says of it; texts as written, "" where nothing is said.
-    ``body`` is its formula, or what stands under it (``a choice``, ``cases``)."""
+    ``body`` is its formula, or what stands under it (``a choice``, ``cases``) when it is ``nested``."""
 
     name: str
     when: str
@@ -37,6 +37,7 @@ class RowOption:
     cost: str
     reference: bool
     body: str
+    nested: bool = False
 
 
 @dataclass(frozen=True, slots=True)
@@ -244,13 +245,14 @@ def _option(branch: m.When | m.Option, source: Source) -> RowOption:
     body = {m.Choice: "a choice", m.Follows: "a choice that follows another", m.Cases: "cases"}.get(
         type(branch.body), ""
     )
+    nested = bool(body)
     if isinstance(branch.body, m.Formula):
         body = source.quoted(branch.body.expression.span)
     when = source.quoted(condition.span) if condition is not None else ""
     if isinstance(branch, m.When):
-        return RowOption(branch.name, when, None, None, "", False, body)
+        return RowOption(branch.name, when, None, None, "", False, body, nested)
     cost = source.quoted(branch.cost.span) if branch.cost is not None else ""
-    return RowOption(branch.name, when, branch.error, branch.bias, cost, branch.reference, body)
+    return RowOption(branch.name, when, branch.error, branch.bias, cost, branch.reference, body, nested)
 
 
 def _input(place: Place, model: m.Model, moves: tuple[str, ...], routes: Bracket) -> Row:
