@@ -1,0 +1,210 @@
+"""Who is to blame: what each branch point, judgement and setting moves, and the order in which to close them.
+
+``swing`` lets one of them leave the reference and holds all others; ``left`` holds one of them and lets all others
+move. Both are the largest over the projects, so projects that cannot matter any more are not looked at.
+"""
+
+from __future__ import annotations
+
+import time
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
+
+from samesum.evidence.arrays import Array, Table
+from samesum.evidence.extremes import find_extremes
+from samesum.evidence.figures import Figures, spread_of
+from samesum.evidence.plan import Plan
+from samesum.evidence.values import Decide, Evaluator, Rows, TooMany, reference_decision
+from samesum.reading import model as m
+
+FIRST = 64
+SMALL = 1e-12
+
+
+@dataclass(frozen=True, slots=True)
+class Mover:
+    """Something that leaves the number to somebody. ``kind``: ``choice``, ``overlap``, ``judgement`` or
+    ``setting``; ``general`` is the id without an element's number."""
+
+    id: str
+    general: str
+    kind: str
+    by: m.Decider
+    clause: str
+
+
+@dataclass(frozen=True, slots=True)
+class Blame:
+    """``swing`` and ``left`` as shares of the reference; None when no project has a reference other than zero, or
+    the time was up."""
+
+    mover: Mover
+    swing: float | None
+    left: float | None
+
+
+@dataclass(frozen=True, slots=True)
+class Closing:
+    """The ``left``-over spread after this one, and all before it, are closed (all elements together)."""
+
+    general: str
+    left: float
+
+
+def movers_of(plan: Plan, moving: Sequence[tuple[str, str]]) -> list[Mover]:
+    """Everything that leaves a choice in some project, in the rulebook's order."""
+    model = plan.graph.model
+    names = {name for _, name in moving}
+    found = []
+    for point in plan.graph.branch_points.values():
+        if point.id in names:
+            by = point.by or "developer"
+            kind = "choice" if point.kind == "choice" else "overlap"
+            found.append(Mover(point.id, point.general_id, kind, by, point.clause))
+    for setting in model.settings:
+        if setting.name in names:
+            found.append(Mover(setting.name, setting.name, "setting", setting.by, setting.about.clause))
+    for judgement in model.judgements:
+        if judgement.name in names:
+            found.append(Mover(judgement.name, judgement.name, "judgement", judgement.by, judgement.about.clause))
+    return found
+
+
+def all_movers(figures: Sequence[Figures]) -> list[Mover]:
+    """The movers of all batches, each once."""
+    found: dict[str, Mover] = {}
+    for each in figures:
+        for mover in movers_of(each.batch.plan, each.moving):
+            found.setdefault(mover.id, mover)
+    kinds = ("choice", "overlap", "judgement", "setting")
+    return sorted(found.values(), key=lambda mover: kinds.index(mover.kind) > 1)
+
+
+def find_blame(figures: Sequence[Figures], deadline: float) -> list[Blame]:
+    """Swing and what is left of each mover, the largest over all projects."""
+    found = []
+    for mover in all_movers(figures):
+        swing = left = None
+        if any(np.isfinite(each.spread).any() for each in figures):
+            swing = max((_swing(each, mover, deadline) for each in figures), default=0.0)
+            left = left_over(figures, frozenset({mover.id}), deadline)
+        found.append(Blame(mover, swing, left))
+    return found
+
+
+def left_over(figures: Sequence[Figures], held: frozenset[str], deadline: float) -> float | None:
+    """The largest spread when some movers are held at the reference. None when the time was up."""
+    most = 0.0
+    for each in figures:
+        spread = np.where(np.isfinite(each.spread), each.spread, -1.0)
+        order = np.argsort(-spread, kind="stable")
+        start, size = 0, FIRST
+        while start < len(order) and spread[order[start]] > most:
+            if time.monotonic() > deadline:
+                return None
+            part = order[start : start + size]
+            part = part[spread[part] > most]
+            try:
+                extremes = find_extremes(each.batch.plan, each.batch.rows.part(part), held)
+            except TooMany:
+                return None
+            reference = replace(each.reference, value=each.reference.value[part])
+            left = spread_of(extremes, reference)
+            most = max(most, float(np.nanmax(left, initial=0.0)))
+            start, size = start + size, size * 4
+    return 0.0 if most < SMALL else most
+
+
+def closing_order(figures: Sequence[Figures], deadline: float) -> tuple[list[Closing], bool]:
+    """Greedy: at each step the one that leaves least. False beside it when the time was up before the end."""
+    groups: dict[str, set[str]] = {}
+    for mover in all_movers(figures):
+        groups.setdefault(mover.general, set()).add(mover.id)
+    held: frozenset[str] = frozenset()
+    found: list[Closing] = []
+    while groups:
+        best: tuple[float, str] | None = None
+        for general, ids in groups.items():
+            left = left_over(figures, held | ids, deadline)
+            if left is None:
+                return found, False
+            if best is None or left < best[0] - SMALL:
+                best = (left, general)
+        assert best is not None
+        held = held | groups.pop(best[1])
+        found.append(Closing(best[1], best[0]))
+        if best[0] == 0.0:
+            break
+    return found, True
+
+
+# --- swing -----------------------------------------------------------------------------------
+
+
+def _swing(figures: Figures, mover: Mover, deadline: float) -> float:
+    plan, rows = figures.batch.plan, figures.batch.rows
+    usable = np.flatnonzero(np.isfinite(figures.reference.value) & (figures.reference.value != 0))
+    if not len(usable):
+        return 0.0
+    part = rows.part(usable)
+    reference = figures.reference.value[usable]
+    most = 0.0
+    for value in _alternatives(plan, part, mover):
+        with np.errstate(all="ignore"):
+            away = np.abs(value - reference) / np.abs(reference)
+        most = max(most, float(np.nanmax(away, initial=0.0)))
+        if time.monotonic() > deadline:
+            break
+    return 0.0 if most < SMALL else most
+
+
+def _alternatives(plan: Plan, rows: Rows, mover: Mover) -> list[Array]:
+    """The results when the mover alone leaves the reference, NaN where it cannot."""
+    if mover.kind in ("choice", "overlap"):
+        if mover.id not in plan.points:
+            return []
+        count = len(plan.graph.branch_points[mover.id].branches)
+        fixed = replace(rows, free={})
+        return [_worked_out(plan, fixed, _leaving(plan, mover.id, branch)) for branch in range(count)]
+    free = rows.free.get(mover.id)
+    if free is None or not free.any():
+        return []
+    if mover.id in plan.numeric:
+        return _setting_ends(plan, rows, mover.id)
+    found = []
+    if mover.id in plan.named:
+        for code in range(len(plan.named[mover.id])):
+            codes = np.where(free, code, rows.codes[mover.id])
+            inputs = replace(rows, codes={**rows.codes, mover.id: codes}, free={})
+            found.append(_worked_out(plan, inputs, reference_decision(plan)))
+        return found
+    flags = np.where(free, False, rows.flags[mover.id])
+    inputs = replace(rows, flags={**rows.flags, mover.id: flags}, free={})
+    return [_worked_out(plan, inputs, reference_decision(plan))]
+
+
+def _setting_ends(plan: Plan, rows: Rows, name: str) -> list[Array]:
+    held = frozenset(plan.points) | {each for each in rows.free if each != name}
+    try:
+        extremes = find_extremes(plan, rows, held)
+    except TooMany:
+        return []
+    return [extremes.lowest.value, extremes.highest.value]
+
+
+def _leaving(plan: Plan, id: str, branch: int) -> Decide:
+    usual = reference_decision(plan)
+
+    def decide(point: str, open_: Sequence[Table], rows: int) -> Array:
+        if point != id:
+            return usual(point, open_, rows)
+        return np.where(np.broadcast_to(open_[branch].data, (rows,)), branch, -1)
+
+    return decide
+
+
+def _worked_out(plan: Plan, inputs: Rows, decide: Callable[[str, Sequence[Table], int], Array]) -> Array:
+    evaluator = Evaluator(plan, inputs, decide=decide)
+    return np.broadcast_to(evaluator.number(plan.root).data, (inputs.count,)).astype(np.float64)
