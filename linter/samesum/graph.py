@@ -225,38 +225,50 @@ def links(graph: DecisionGraph) -> networkx.DiGraph[str]:
     import networkx as nx
 
     network: nx.DiGraph[str] = nx.DiGraph()
-    model = graph.model
-    for kind, declared in (
-        ("fact", model.facts),
-        ("setting", model.settings),
-        ("judgement", model.judgements),
-        ("constant", model.constants),
-        ("table", model.tables),
-        ("quantity", model.quantities),
-    ):
-        for each in declared:
-            network.add_node(each.name, kind=kind)
-    edges: dict[tuple[str, str], set[str]] = {}
+    for name, kind in declared_kinds(graph.model).items():
+        network.add_node(name, kind=kind)
+    for (source, target), ways in edges(graph.model).items():
+        network.add_edge(source, target, how=ways)
+    return network
+
+
+def declared_kinds(model: m.Model) -> dict[str, str]:
+    """Every declared name that can lead to another, with its kind."""
+    return {
+        each.name: kind
+        for kind, declared in (
+            ("fact", model.facts),
+            ("setting", model.settings),
+            ("judgement", model.judgements),
+            ("constant", model.constants),
+            ("table", model.tables),
+            ("quantity", model.quantities),
+        )
+        for each in declared
+    }
+
+
+def edges(model: m.Model) -> dict[tuple[str, str], tuple[str, ...]]:
+    """The edges of ``links`` with how they lead, sorted. Whoever only walks backwards needs no graph library."""
+    names = declared_kinds(model)
+    found: dict[tuple[str, str], set[str]] = {}
     for constant in model.constants:
         for name in names_in(constant.expression):
-            edges.setdefault((name, constant.name), set()).add("value")
+            found.setdefault((name, constant.name), set()).add("value")
     for quantity in model.quantities:
         for body in walk.bodies(quantity.body):
             if isinstance(body, m.Follows):
-                edges.setdefault((body.quantity, quantity.name), set()).add("follows")
+                found.setdefault((body.quantity, quantity.name), set()).add("follows")
             if isinstance(body, m.Formula):
                 for name in names_in(body.expression):
-                    edges.setdefault((name, quantity.name), set()).add("value")
+                    found.setdefault((name, quantity.name), set()).add("value")
             for branch in walk.branches(body):
                 condition = walk.condition_of(branch)
                 for node in walk.inside(condition) if condition is not None else ():
                     how = "takes" if isinstance(node, m.Takes) else "condition"
                     for name in own_names(node):
-                        edges.setdefault((name, quantity.name), set()).add(how)
-    for (source, target), ways in sorted(edges.items()):
-        if source in network and target in network:
-            network.add_edge(source, target, how=tuple(sorted(ways)))
-    return network
+                        found.setdefault((name, quantity.name), set()).add(how)
+    return {edge: tuple(sorted(ways)) for edge, ways in sorted(found.items()) if edge[0] in names and edge[1] in names}
 
 
 def own_names(node: m.Expression | m.Condition) -> tuple[str, ...]:

@@ -10,14 +10,11 @@ from __future__ import annotations
 from collections import deque
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
-from typing import TYPE_CHECKING, Literal
+from typing import Literal
 
-from samesum.graph import BranchPoint, DecisionGraph, links, names_in
+from samesum.graph import BranchPoint, DecisionGraph, edges, names_in
 from samesum.reading import model as m
 from samesum.reading import walk
-
-if TYPE_CHECKING:
-    import networkx
 
 Through = Literal["choice", "overlap", "judgement", "setting"]
 
@@ -49,7 +46,7 @@ def movers_of(condition: m.Condition, graph: DecisionGraph, overlapping: Iterabl
     general = {point.general_id: point for point in reversed(list(graph.branch_points.values()))}
     overlaps = {graph.branch_points[id].general_id for id in overlapping if id in graph.branch_points}
     found: dict[tuple[str, str], Mover] = {}
-    for mover in _movers(condition, links(graph), _sources(graph, general, overlaps), general):
+    for mover in _movers(condition, _leading_to(graph), _sources(graph, general, overlaps), general):
         found.setdefault((mover.through, mover.source), mover)
     return tuple(sorted(found.values(), key=lambda mover: (len(mover.chain), mover.chain, mover.source)))
 
@@ -66,7 +63,7 @@ def find_control(graph: DecisionGraph, overlapping: Iterable[str] = ()) -> Mappi
     cases overlap (they are the developer's to pick)."""
     general = {point.general_id: point for point in reversed(list(graph.branch_points.values()))}
     overlaps = {graph.branch_points[id].general_id for id in overlapping if id in graph.branch_points}
-    network = links(graph)
+    before = _leading_to(graph)
     sources = _sources(graph, general, overlaps)
     result: dict[str, Control] = {}
     for id, point in sorted(general.items(), key=lambda item: (item[1].span, item[0])):
@@ -76,11 +73,19 @@ def find_control(graph: DecisionGraph, overlapping: Iterable[str] = ()) -> Mappi
         movers: dict[tuple[str, str], Mover] = {}
         for condition in point.conditions:
             if condition is not None:
-                for mover in _movers(condition, network, sources, general):
+                for mover in _movers(condition, before, sources, general):
                     movers.setdefault((mover.through, mover.source), mover)
         ordered = sorted(movers.values(), key=lambda mover: (len(mover.chain), mover.chain, mover.source))
         result[id] = Control(id, decided, tuple(ordered))
     return result
+
+
+def _leading_to(graph: DecisionGraph) -> dict[str, list[str]]:
+    """What leads to each name directly, in order."""
+    found: dict[str, list[str]] = {}
+    for source, target in edges(graph.model):
+        found.setdefault(target, []).append(source)
+    return found
 
 
 def _sources(graph: DecisionGraph, general: Mapping[str, BranchPoint], overlaps: set[str]) -> dict[str, list[_Source]]:
@@ -100,7 +105,7 @@ def _sources(graph: DecisionGraph, general: Mapping[str, BranchPoint], overlaps:
 
 def _movers(
     condition: m.Condition,
-    network: networkx.DiGraph[str],
+    before: Mapping[str, list[str]],
     sources: Mapping[str, list[_Source]],
     general: Mapping[str, BranchPoint],
 ) -> Iterable[Mover]:
@@ -125,11 +130,10 @@ def _movers(
         name, chain = queue.popleft()
         for each in sources.get(name, ()):
             yield Mover(each.by, each.through, each.source, chain)
-        if name in network:
-            for before in sorted(network.predecessors(name)):
-                if before not in seen:
-                    seen.add(before)
-                    queue.append((before, (*chain, before)))
+        for each_before in before.get(name, ()):
+            if each_before not in seen:
+                seen.add(each_before)
+                queue.append((each_before, (*chain, each_before)))
 
 
 def _tables(condition: m.Condition) -> list[str]:

@@ -9,11 +9,13 @@ from __future__ import annotations
 import time
 from collections.abc import Iterable, Sequence
 
-from samesum.evidence import subjects_branches, subjects_declared, subjects_numbers
 from samesum.evidence.counting import deep
 from samesum.evidence.equal import Workshop
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.subject_kinds import Subject
+from samesum.evidence.subjects_branches import branch_subjects
+from samesum.evidence.subjects_declared import declared_subjects, unit_mismatches
+from samesum.evidence.subjects_numbers import branches, equal_branches, jumps, overlaps
 from samesum.problems import Problem
 
 
@@ -24,13 +26,13 @@ def subjects_of(evidence: Evidence, problems: Iterable[Problem] = (), seconds: f
     found: list[Subject] = []
     with deep():
         workshop = Workshop.of(evidence.graph, seconds / 2)
-        found += subjects_declared.subjects(evidence)
-        found += subjects_declared.unit_mismatches(evidence, problems)
-        found += subjects_branches.subjects(evidence, workshop)
-        found += subjects_numbers.branches(evidence, workshop)
-        found += subjects_numbers.equal_branches(evidence, workshop)
-        found += subjects_numbers.overlaps(evidence, workshop)
-        found += subjects_numbers.jumps(evidence, max(0.2, seconds - (time.monotonic() - start)))
+        found += declared_subjects(evidence)
+        found += unit_mismatches(evidence, problems)
+        found += branch_subjects(evidence)
+        found += branches(evidence, workshop)
+        found += equal_branches(evidence, workshop)
+        found += overlaps(evidence, workshop)
+        found += jumps(evidence, max(0.2, seconds - (time.monotonic() - start)))
     return in_reading_order(found)
 
 

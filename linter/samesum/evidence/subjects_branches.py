@@ -8,7 +8,6 @@ from itertools import combinations
 
 from samesum.evidence.conditions import Gap
 from samesum.evidence.control import Mover, movers_of
-from samesum.evidence.equal import Workshop
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.pointwise import Calculation, NoValue, middle_project
 from samesum.evidence.subject_kinds import CANNOT_TELL, AttributeValue, Subject
@@ -43,7 +42,7 @@ def basics(name: str, clause: str) -> dict[str, AttributeValue]:
     return {"name": name, "has_clause": bool(clause), "clause_number": clause}
 
 
-def subjects(evidence: Evidence, workshop: Workshop) -> Iterator[Subject]:
+def branch_subjects(evidence: Evidence) -> Iterator[Subject]:
     """All of them, in the graph's order by kind."""
     graph = evidence.graph
     points = general_points(graph)

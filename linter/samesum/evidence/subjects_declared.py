@@ -17,7 +17,7 @@ from samesum.written import percent, plain
 Declared = m.Fact | m.Setting | m.Judgement | m.Constant | m.Table | m.Quantity | m.Index | m.Result
 
 
-def subjects(evidence: Evidence) -> Iterator[Subject]:
+def declared_subjects(evidence: Evidence) -> Iterator[Subject]:
     """One subject a declaration of its own kind, and one of kind ``declaration`` for each."""
     model = evidence.model
     used, whole = used_names(model)
