@@ -57,7 +57,8 @@ def former_text(revision: str, file: Path) -> Former:
         return Former(None, f"git cannot be run: {error.strerror or 'unknown reason'}")
     except UnicodeDecodeError:
         return Former(None, f"{file} was not UTF-8 text in {revision}")
-    if known.returncode == 0:
+    if known.returncode == 0 or (revision == "HEAD" and b"not a git repository" not in ran.stderr):
+        # without any commit yet, HEAD names nothing, and every file is new
         return Former(None, f"{file} is not in {revision}", absent=True)
     inside = b"not a git repository" in ran.stderr
     return Former(None, f"{folder} is in no git repository" if inside else f"git knows no revision `{revision}`")
