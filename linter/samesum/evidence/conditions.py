@@ -121,7 +121,10 @@ def _examine_point(network: Network, relation: PointRelation, seen: frozenset[in
         if point.conditions[first] is None or point.conditions[second] is None:
             continue
         branches = (point.branches[first], point.branches[second])
-        answer = _ask(network, [working, relation.open[first], relation.open[second]], relation, first)
+        both_open = [working, relation.open[first], relation.open[second]]
+        answer = _ask(network, [*both_open, d.literal(relation.level, (first,))], relation, first)
+        if answer.says == "no":  # inside the rulebook only when the second is taken, or when neither gets that far
+            answer = _ask(network, both_open, relation, second)
         if answer.says == "yes":
             found.overlaps.append(Overlap(point.id, branches, answer.witness))
         elif answer.says == "cannot tell":
@@ -254,9 +257,7 @@ def _asked(
         if found and (layout.exact or not loose):
             if not show:
                 return _Answer("yes")
-            held = {relation.level: state} if relation is not None and state is not None else {}
-            values = read_back(d, trail)
-            return _Answer("yes", witness_from(network, {**values, **held}))
+            return _Answer("yes", witness_from(network, read_back(d, trail)))
         if not found and loose:
             return _Answer("no")
     return _Answer("cannot tell")

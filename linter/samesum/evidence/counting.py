@@ -358,6 +358,8 @@ class Layout:
             else:
                 inputs += groups.validity(d, listed, free, kind_level - 1, generous).inputs
             exact = exact and made.exact
+            if made.kind_level is not None:
+                network.memory["kind", made.kind_level] = (listed, made.kind_points)
             kinds += [level for level in (kind_level, kind_level - 1) if level in d.size]
         for level, variable in network.variables.items():
             if variable.kind == "point":

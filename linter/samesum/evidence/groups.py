@@ -10,6 +10,7 @@ from __future__ import annotations
 import time
 from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 
 from samesum.evidence import solver as s
 from samesum.evidence import symbols
@@ -89,12 +90,14 @@ def collect(
 @dataclass(frozen=True, slots=True)
 class Validity:
     """What can occur in one group, as factors. ``projects`` speak of facts (and of the kind of project),
-    ``inputs`` of settings given the kind. ``kind_level`` is None when no kind is needed."""
+    ``inputs`` of settings given the kind. ``kind_level`` is None when no kind is needed; ``kind_points`` has a
+    point of each kind, as far as more than the cells settles it."""
 
     projects: tuple[int, ...]
     inputs: tuple[int, ...]
     kind_level: int | None
     exact: bool
+    kind_points: tuple[Mapping[str, Fraction] | None, ...] = ()
 
 
 def validity(d: Diagrams, listed: ListedGroup, free: set[str], kind_level: int, loose: bool) -> Validity:
@@ -117,7 +120,7 @@ def validity(d: Diagrams, listed: ListedGroup, free: set[str], kind_level: int, 
     d.size[kind_level] = max(1, len(kinds))
     project_rows: list[Vector] = []
     input_rows: list[Vector] = []
-    for number, (fixed, brought) in enumerate(kinds):
+    for number, (fixed, brought, _) in enumerate(kinds):
         project_rows.append((number, *fixed))
         input_rows += [(number, *each) for each in brought]
     levels = listed.levels
@@ -126,6 +129,7 @@ def validity(d: Diagrams, listed: ListedGroup, free: set[str], kind_level: int, 
         (relation(d, (kind_level, *(levels[position] for position in moved)), input_rows),),
         kind_level,
         exact and kinds_exact,
+        tuple(point for _, _, point in kinds),
     )
 
 
@@ -165,6 +169,9 @@ def relation(d: Diagrams, levels: Sequence[int], rows: Iterable[Vector]) -> int:
     return build(0, 0, len(sorted_rows))
 
 
+_Kind = tuple[Vector, tuple[Vector, ...], Mapping[str, Fraction] | None]
+
+
 def _kinds(
     group: Group,
     listing: Listing,
@@ -173,25 +180,25 @@ def _kinds(
     movable: Sequence[str],
     deadline: float,
     loose: bool,
-) -> tuple[list[tuple[Vector, tuple[Vector, ...]]], bool]:
+) -> tuple[list[_Kind], bool]:
     """Kinds of project: what facts settle, with the set of combinations the movable names can bring about."""
     together: dict[Vector, list[Vector]] = {}
     for vector in listing.shown + (listing.open if loose else ()):
         fixed = tuple(vector[position] for position in given)
         together.setdefault(fixed, []).append(tuple(vector[position] for position in moved))
-    kinds: list[tuple[Vector, tuple[Vector, ...]]] = []
+    kinds: list[_Kind] = []
     exact = True
     for fixed, candidates in sorted(together.items()):
         if len(candidates) == 1:
-            kinds.append((fixed, (candidates[0],)))
+            kinds.append((fixed, (candidates[0],), None))
             continue
         sets = _sets(group, listing, given, moved, movable, fixed, candidates, deadline)
         if sets is None:
             exact = False
             if loose:
-                kinds.append((fixed, tuple(candidates)))
+                kinds.append((fixed, tuple(candidates), None))
             continue
-        kinds += [(fixed, each) for each in sets]
+        kinds += [(fixed, each, point) for each, point in sets]
     return kinds, exact
 
 
@@ -204,7 +211,7 @@ def _sets(
     fixed: Vector,
     candidates: Sequence[Vector],
     deadline: float,
-) -> list[tuple[Vector, ...]] | None:
+) -> list[tuple[tuple[Vector, ...], Mapping[str, Fraction]]] | None:
     """The sets of combinations that some project of these cells leaves to the movable names; None
     when the solver cannot tell them all."""
     if len(candidates) > MOST_KINDS or any(s.beyond(each) for each in group.sums):
@@ -230,11 +237,11 @@ def _sets(
         if formula is None:
             return None
         formulas.append(formula)
-    found: list[tuple[Vector, ...]] = []
+    found: list[tuple[tuple[Vector, ...], Mapping[str, Fraction]]] = []
 
     def split(number: int, chosen: list[Vector]) -> bool:
         if number == len(formulas):
-            found.append(tuple(chosen))
+            found.append((tuple(chosen), {name: value for name, value in made.point().items() if name not in movable}))
             return len(found) <= 4_000
         for holds in (True, False):
             formula = formulas[number] if holds else made.negated(formulas[number])
@@ -250,4 +257,4 @@ def _sets(
                 return False
         return True
 
-    return [each for each in found if each] if split(0, []) else None
+    return [each for each in found if each[0]] if split(0, []) else None

@@ -25,7 +25,7 @@ class PointRelation:
     is open (both only meant where reached), and the relation of its state to the rest.
 
     ``own_sound`` and ``parts_sound`` share out ``sound``: the operations written in the branch point's own
-    conditions (``tables`` names the tables they call), and the quantities that these work on."""
+    conditions (``tables`` names the tables they call), and the quantities and choices these ask."""
 
     point: BranchPoint
     level: int
@@ -48,9 +48,12 @@ class PointRelation:
 
 @dataclass(frozen=True, slots=True)
 class Network:
-    """The whole relation. ``leaves``: where each formula that may lack a value is evaluated and where its own
-    operations have a value. ``applies``: where the rulebook applies, as parts that must all hold. ``flows``:
-    where the number of a formula reaches the result. ``cells``: of each numeric fact or setting, by level."""
+    """The whole relation.
+
+    ``leaves``: where each formula that may lack a value is evaluated and all it asks has one, and where its own
+    operations have a value. ``applies``: where the rulebook applies, as parts that must all hold. ``flows``: where
+    the number of a formula reaches the result. ``cells``: of each number that is compared, by level.
+    """
 
     graph: DecisionGraph
     diagrams: Diagrams

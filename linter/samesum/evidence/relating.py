@@ -16,7 +16,7 @@ from samesum.evidence.diagrams import Diagrams, Limits, taken_apart
 from samesum.evidence.network import Network, PointRelation
 from samesum.evidence.readings import Readings
 from samesum.evidence.symbols import Bounds, bounds, constant_term, generators, without_constant
-from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions, worked_on
+from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions
 from samesum.reading import model as m
 from samesum.reading import walk
 
@@ -36,16 +36,19 @@ def build_network(
     inside = set(wanted)
     points = [point for point in graph.branch_points.values() if point.instance in inside]
     asking = {point.id: _read_point(point, readings, on_paper) for point in points}
-    sound_leaves: list[tuple[Leaf, int]] = []
+    sound_leaves: list[tuple[Leaf, int, int]] = []
     applying: list[int] = []
     if not on_paper:
         for id in wanted:
             elements = graph.instances[id].elements
-            sound_leaves += [(leaf, readings.sound(leaf.expression, elements, own=True)) for leaf in graph.leaves[id]]
+            for leaf in graph.leaves[id]:
+                sound = readings.sound(leaf.expression, elements, own=True)
+                if not d.is_end(sound, True):
+                    sound_leaves.append((leaf, sound, _parts_sound([leaf.expression], readings, elements)))
         for each in graph.model.applies:
             applying += [readings.condition(each.condition, {}), readings.sound(each.condition, {})]
     read = [part for each in asking.values() for part in each.parts()]
-    cells = _cut_into_cells(readings, [*read, *(sound for _, sound in sound_leaves), *applying])
+    cells = _cut_into_cells(readings, [*read, *(part for _, *parts in sound_leaves for part in parts), *applying])
     ways = _Ways(graph, readings, _find_users(graph, inside, on_paper))
     relations: dict[str, PointRelation] = {}
     for point in points:
@@ -70,9 +73,8 @@ def build_network(
         dict(readings.levels),
         relations,
         tuple(
-            (leaf, ways.evaluated(leaf), cells.settle(sound))
-            for leaf, sound in sound_leaves
-            if not d.is_end(sound, True)
+            (leaf, d.both(ways.evaluated(leaf), cells.settle(parts)), cells.settle(sound))
+            for leaf, sound, parts in sound_leaves
         ),
         tuple(flows),
         taken_apart(d, d.every(cells.settle(each) for each in applying)),
@@ -125,17 +127,20 @@ def _read_point(point: BranchPoint, readings: Readings, on_paper: bool) -> _Aske
         own_sound = d.both(own_sound, readings.sound(condition, elements, own=True))
         tables.update((node.table, None) for node in walk.inside(condition) if isinstance(node, m.Lookup))
         holds.append(readings.condition(condition, elements))
-    return _Asked(tuple(holds), sound, own_sound, _parts_sound(point, readings, elements, on_paper), tuple(tables))
+    parts_sound = _parts_sound(() if on_paper else point.conditions, readings, elements)
+    return _Asked(tuple(holds), sound, own_sound, parts_sound, tuple(tables))
 
 
-def _parts_sound(point: BranchPoint, readings: Readings, elements: Element, on_paper: bool) -> int:
-    """Where the quantities have a value that a branch point's own operations work on."""
+def _parts_sound(nodes: Iterable[m.Expression | m.Condition | None], readings: Readings, elements: Element) -> int:
+    """Where all quantities and choices have a value that expressions or conditions ask."""
     d = readings.diagrams
     result = d.end(True)
-    for condition in point.conditions if not on_paper else ():
-        for kind, id in worked_on(condition, elements, readings.graph.sizes) if condition else ():
-            if kind == "value":
-                result = d.both(result, readings.sound_quantity(id))
+    for kind, id in (each for node in nodes if node for each in mentions(node, elements, readings.graph.sizes)):
+        if kind == "value":
+            result = d.both(result, readings.sound_quantity(id))
+        elif kind == "takes":
+            stuck = len(readings.graph.branch_points[id].branches) + 1
+            result = d.both(result, d.negate(readings.state(id, (stuck,))))
     return result
 
 

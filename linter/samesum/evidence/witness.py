@@ -51,7 +51,7 @@ def witness_from(network: Network, values: Mapping[int, int], everything: bool =
             known[variable.name] = representative(network.cells[level][value])
     for listed in network.groups:
         if any(level in values for level in listed.levels):
-            point = group_point(network, listed, values)
+            point = group_point(network, listed, values, _kind_point(network, listed, values))
             if point is None:
                 return None
             known.update(point)
@@ -90,14 +90,27 @@ def usual(domain: m.Domain) -> Value:
     return representative(Bounds(domain.low, domain.high))
 
 
-def group_point(network: Network, listed: ListedGroup, values: Mapping[int, int]) -> dict[str, Value] | None:
-    """Numbers for a group's names that lie in the cells that were assigned, and so do its sums."""
+def _kind_point(network: Network, listed: ListedGroup, values: Mapping[int, int]) -> Mapping[str, Fraction]:
+    """Facts of the kind of project that was assigned, where more than the cells makes the kind."""
+    for level, value in values.items():
+        known = network.memory.get(("kind", level))
+        if isinstance(known, tuple) and known[0] is listed and value < len(known[1]):
+            return known[1][value] or {}
+    return {}
+
+
+def group_point(
+    network: Network, listed: ListedGroup, values: Mapping[int, int], given: Mapping[str, Fraction] | None = None
+) -> dict[str, Value] | None:
+    """Numbers for a group's names that lie in the cells that were assigned, and so do its sums. ``given``: names
+    whose numbers are settled."""
     group = listed.group
     wanted: dict[str, Bounds] = {}
     for name, level, cells, domain in zip(
         group.names, listed.name_levels, group.name_cells, group.domains, strict=True
     ):
         wanted[name] = cells[values[level]] if level in values else domain
+    wanted.update({name: Bounds(value, value) for name, value in (given or {}).items()})
     assigned = [values.get(level) for level in listed.sum_levels]
 
     def fits(point: Mapping[str, Fraction]) -> bool:
