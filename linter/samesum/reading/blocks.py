@@ -5,9 +5,16 @@ from __future__ import annotations
 import re
 from dataclasses import dataclass
 
+from samesum.reading.words import DECLARATIONS, nearest
+
 # A line that starts a block: something other than a space, a tab or a comment in column one. What only
 # ever stands inside a declaration does not start one: its indentation was forgotten.
 _FIRST = re.compile(r'^(?!(?:option|when|otherwise|choice|cases)\b)[^\s#="]', re.MULTILINE)
+
+
+_NAMELESS = ("rulebook", "result", "periods", "applies")
+_FIRST_WORDS = re.compile(r"(\S+)(?:\s+([^\W\d_]\w*))?")
+_JOINED = re.compile(rf"({'|'.join(DECLARATIONS)})([^\W\d_]\w*)")
 
 
 @dataclass(frozen=True, slots=True)
@@ -37,7 +44,28 @@ def blocks_of(text: str) -> tuple[Block, ...]:
 
 def _trimmed(block: str) -> str:
     """Without the empty lines and comment lines at its end, which belong to what comes next."""
-    lines = block.split("\n")
-    while len(lines) > 1 and (not lines[-1].strip() or lines[-1].lstrip().startswith("#")):
-        lines.pop()
-    return "\n".join(lines).rstrip()
+    text = block.rstrip()
+    start = text.rfind("\n") + 1
+    while start and text[start:].lstrip().startswith("#"):
+        text = text[:start].rstrip()
+        start = text.rfind("\n") + 1
+    return text
+
+
+def glance(block: str) -> tuple[str, str]:
+    """What a block that cannot be read most likely declares: its kind and its name, "" where there is none.
+
+    Sees through a slip in the first word and through a missing space after it.
+    """
+    words = _FIRST_WORDS.match(block)
+    if words is None:
+        return "", ""
+    kind, name = words[1], words[2] or ""
+    if kind not in DECLARATIONS:
+        joined = _JOINED.match(kind)
+        close = nearest(kind, DECLARATIONS)
+        if close:
+            kind = close
+        elif joined is not None:
+            kind, name = joined[1], joined[2]
+    return kind, "" if kind in _NAMELESS else name

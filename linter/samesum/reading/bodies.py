@@ -113,9 +113,9 @@ def _follows(body: tree.ChoiceTree, unit: Unit | None, scope: Scope, level: int)
     strange = [option for option in body.options if option.name.text not in declared.options]
     for option in strange:
         close = nearest(option.name.text, missing)
-        scope.report(option.name, f"`{option.name.text}` is no option of `{word.text}`, which this choice follows",
-                     f"did you mean `{close}`?" if close else f"its options are {listing(declared.options, 'and')}",
-                     "name")  # fmt: skip
+        remedy = f"did you mean `{close}`?" if close else f"its options are {listing(declared.options, 'and')}"
+        says = f"`{option.name.text}` is no option of `{word.text}`, which this choice follows"
+        scope.absent(option.name, says, remedy)
     if missing and not strange:
         scope.report(body, f"this choice follows `{word.text}` and lacks its option{'s' if len(missing) > 1 else ''} "
                      f"{listing(missing, 'and')}", "write one option for each of them")  # fmt: skip

@@ -117,9 +117,8 @@ def _is_value(node: tree.IsValue, scope: Scope) -> Condition:
     for value in node.values:
         if value.text not in declared.values:
             close = nearest(value.text, declared.values)
-            scope.report(value, f"`{value.text}` is no value of `{declared.name}`",
-                         f"did you mean `{close}`?" if close else f"it can be {listing(declared.values)}",
-                         "name")  # fmt: skip
+            scope.absent(value, f"`{value.text}` is no value of `{declared.name}`",
+                         f"did you mean `{close}`?" if close else f"it can be {listing(declared.values)}")  # fmt: skip
             good = False
         elif value.text in seen:
             scope.report(value, f"`{value.text}` is listed twice")
@@ -161,8 +160,7 @@ def _takes(node: tree.TakesOption, scope: Scope) -> Condition:
         return Unknown(span)
     if node.option.text not in declared.options:
         close = nearest(node.option.text, declared.options)
-        scope.report(node.option, f"`{node.option.text}` is no option of `{word.text}`",
-                     f"did you mean `{close}`?" if close else f"its options are {listing(declared.options, 'and')}",
-                     "name")  # fmt: skip
+        remedy = f"did you mean `{close}`?" if close else f"its options are {listing(declared.options, 'and')}"
+        scope.absent(node.option, f"`{node.option.text}` is no option of `{word.text}`", remedy)
         return Unknown(span)
     return Takes(word.text, declared.index, node.option.text, span)

@@ -5,13 +5,12 @@ from __future__ import annotations
 from collections.abc import Mapping
 
 
-def cycles(needs: Mapping[str, tuple[str, ...]]) -> list[tuple[str, ...]]:
-    """One chain for each knot of names that need each other, ``(a, b, c)`` for a → b → c → a.
+def cycles(needs: Mapping[str, tuple[str, ...]], knots: list[set[str]]) -> list[tuple[str, ...]]:
+    """One chain for each of the ``knots`` of ``needs``, ``(a, b, c)`` for a → b → c → a.
 
     Starts each chain at the name that comes first in ``needs`` and takes the shortest way round.
     """
     found: list[tuple[str, ...]] = []
-    knots = _knots(needs)
     order = {name: at for at, name in enumerate(needs)}
     for knot in sorted(knots, key=lambda names: min(order[name] for name in names)):
         start = min(knot, key=order.__getitem__)
@@ -19,13 +18,11 @@ def cycles(needs: Mapping[str, tuple[str, ...]]) -> list[tuple[str, ...]]:
     return found
 
 
-def knotted(needs: Mapping[str, tuple[str, ...]]) -> set[str]:
-    """Every name that needs itself, directly or through others."""
-    return {name for knot in _knots(needs) for name in knot}
+def knots_in(needs: Mapping[str, tuple[str, ...]]) -> list[set[str]]:
+    """The knots: sets of names that all need each other, or one name that needs itself.
 
-
-def _knots(needs: Mapping[str, tuple[str, ...]]) -> list[set[str]]:
-    """Strongly connected parts with a cycle (Tarjan 1972, without recursion)."""
+    Strongly connected parts with a cycle (Tarjan 1972, without recursion).
+    """
     number: dict[str, int] = {}
     low: dict[str, int] = {}
     stack: list[str] = []

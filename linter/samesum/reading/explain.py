@@ -8,7 +8,7 @@ from dataclasses import dataclass
 from samesum.reading.phrases import ALLOWED, WRITTEN
 from samesum.reading.sight import Mistake, Sight
 from samesum.reading.slips import PHRASE_STARTS, SLIPS
-from samesum.reading.words import PHRASE_WORDS, listing, nearest
+from samesum.reading.words import DECLARATIONS, PHRASE_WORDS, listing, nearest
 
 
 @dataclass(frozen=True, slots=True)
@@ -22,10 +22,6 @@ class Upset:
     expected: frozenset[str]
 
 
-_DECLARATIONS = (
-    "applies", "constant", "fact", "index", "judgement", "periods", "quantity", "result", "rulebook", "setting",
-    "table",
-)  # fmt: skip
 _SIGN_WORDS: Mapping[str, str] = {
     "EQUAL": "`=`", "LESS": "`<`", "LESS_OR_EQUAL": "`<=`", "MORE": "`>`", "MORE_OR_EQUAL": "`>=`", "UNEQUAL": "`<>`",
     "PLUS": "`+`", "MINUS": "`-`", "STAR": "`*`", "SLASH": "`/`", "CARET": "`^`", "PERCENT": "`%`",
@@ -85,8 +81,12 @@ def _first_word(sight: Sight) -> Mistake | None:
     """A block that starts with no word of the language."""
     if sight.before.strip() or "QUANTITY" not in sight.expected:
         return None
-    close = nearest(sight.text, _DECLARATIONS)
-    remedy = f"did you mean `{close}`?" if close else f"it starts with {listing(_DECLARATIONS)}"
+    close = nearest(sight.text, DECLARATIONS)
+    joined = next((word for word in DECLARATIONS if sight.text.startswith(word)), "")
+    if joined and not close and sight.text != joined:
+        remedy = f"write a space after `{joined}`"
+        return sight.here("this line starts no declaration", remedy, len(sight.text))
+    remedy = f"did you mean `{close}`?" if close else f"it starts with {listing(DECLARATIONS)}"
     if sight.text.startswith('"'):
         remedy = "a note stands under its declaration, indented"
     length = len(sight.rest.split(None, 1)[0]) if sight.rest.strip() else 1

@@ -49,9 +49,8 @@ def _argument(key: Key, argument: tree.Tree, scope: Scope, resolve: Resolve) -> 
     declared = scope.names.get(word.text)
     if declared is None:
         close = nearest(word.text, [key.name, *key.values])
-        scope.report(word, f"`{word.text}` is no value of `{key.name}`",
-                     f"did you mean `{close}`?" if close else f"write `{key.name}` or one of {listing(key.values)}",
-                     "name")  # fmt: skip
+        scope.absent(word, f"`{word.text}` is no value of `{key.name}`",
+                     f"did you mean `{close}`?" if close else f"it can be {listing(key.values)}")  # fmt: skip
         return Unknown(scope.span(word))
     scope.find(word)
     if declared.kind == "unreadable":

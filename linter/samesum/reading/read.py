@@ -3,12 +3,11 @@
 from __future__ import annotations
 
 import os
-import re
 from dataclasses import dataclass
 from pathlib import Path
 
 from samesum.problems import Problem, in_order
-from samesum.reading.blocks import Block, blocks_of
+from samesum.reading.blocks import Block, blocks_of, glance
 from samesum.reading.model import Model
 from samesum.reading.names import Placed
 from samesum.reading.resolve import Recall, Unreadable, resolve
@@ -20,8 +19,6 @@ from samesum.spans import START, Span
 
 LARGEST_FILE = 4_000_000
 _TOO_LONG = f"the file is longer than {LARGEST_FILE:,} characters"
-_NAMELESS = ("rulebook", "result", "periods", "applies")
-_FIRST_WORDS = re.compile(r"(\S+)(?:\s+([^\W\d_]\w*))?")
 
 
 @dataclass(frozen=True, slots=True)
@@ -120,10 +117,8 @@ def _parse(
         found = parse_block(block.text, reader.parser, reader.memory)
         if isinstance(found, Mistake):
             problems.append(Problem(file, place.span(found.start, found.end), found.says, found.remedy, "syntax"))
-            words = _FIRST_WORDS.match(block.text)
-            named = words is not None and words[1] not in _NAMELESS
-            name = (words[2] or "") if words and named else ""
-            unreadable.append(Unreadable(words[1] if words else "", name, place.span(0, 1)))
+            kind, name = glance(block.text)
+            unreadable.append(Unreadable(kind, name, place.span(0, 1)))
         else:
             trees.append(Placed(found, place, len(block.text)))
     return trees, unreadable, problems

@@ -7,7 +7,7 @@ from dataclasses import dataclass, field, replace
 from typing import TypeVar, cast
 
 from samesum.problems import Problem
-from samesum.reading.cycles import cycles, knotted
+from samesum.reading.cycles import cycles, knots_in
 from samesum.reading.declarations import (
     resolve_applies,
     resolve_constant,
@@ -24,7 +24,7 @@ from samesum.reading.declarations import (
 from samesum.reading.model import About, Key, Model, Unknown
 from samesum.reading.names import Placed, bare_scope, declare
 from samesum.reading.phrases import read_phrases, text_of
-from samesum.reading.scope import Declared, Notebook, Scope, undeclared_problems
+from samesum.reading.scope import Declared, Notebook, Scope, absent_problems
 from samesum.reading.tables import resolve_keys
 from samesum.reading.units import UnitTable
 from samesum.spans import START, Span
@@ -131,7 +131,7 @@ def resolve(
     )
     model = _without_cycles(model, needs, notebook)
     _one_currency(file, notebook)
-    return model, [*notebook.problems, *undeclared_problems(notebook, file)]
+    return model, [*notebook.problems, *absent_problems(notebook, file)]
 
 
 def _made(block: Placed, make: Callable[[Placed, Scope], _Made], scope: Scope) -> _Made | None:
@@ -198,12 +198,13 @@ def _without_cycles(model: Model, needs: dict[str, tuple[str, ...]], notebook: N
     """The model with what needs itself made unknown."""
     named: dict[str, About] = {each.name: each.about for each in model.constants}
     named |= {each.name: each.about for each in model.quantities}
-    for chain in cycles(needs):
+    knots = knots_in(needs)
+    for chain in cycles(needs, knots):
         first = named[chain[0]]
         way = " needs ".join(f"`{name}`" for name in (*chain, chain[0]))
         says = f"{way}: none of them can be worked out first" if len(chain) > 1 else f"`{chain[0]}` needs itself"
         notebook.problems.append(Problem(model.file, first.name_span, says, "break the circle at one of them", "cycle"))
-    knot = knotted(needs)
+    knot = set().union(*knots)
     return replace(
         model,
         constants=tuple(

@@ -40,11 +40,11 @@ class Declared:
 
 @dataclass(slots=True)
 class Notebook:
-    """What is written down while resolving: problems, names that are not declared with every place where
+    """What is written down while resolving: problems, names that do not exist with every place where
     they are used, names mentioned by the declaration at hand, currencies met."""
 
     problems: list[Problem] = field(default_factory=list)
-    undeclared: dict[str, tuple[str, list[Span]]] = field(default_factory=dict)
+    absent: dict[str, tuple[str, list[Span]]] = field(default_factory=dict)
     mentions: list[tuple[str, Span]] = field(default_factory=list)
     currencies: list[tuple[str, Span]] = field(default_factory=list)
 
@@ -53,8 +53,8 @@ class Notebook:
         self.problems += other.problems
         self.mentions += other.mentions
         self.currencies += other.currencies
-        for name, (remedy, spans) in other.undeclared.items():
-            self.undeclared.setdefault(name, (remedy, []))[1].extend(spans)
+        for says, (remedy, spans) in other.absent.items():
+            self.absent.setdefault(says, (remedy, []))[1].extend(spans)
 
 
 @dataclass(frozen=True, slots=True)
@@ -116,8 +116,12 @@ class Scope:
         holders = [other.name for other in self.names.values() if word.text in other.values]
         if holders and not close:
             remedy = f"it is a value of `{holders[0]}`: write `{holders[0]} is {word.text}`"
-        self.notebook.undeclared.setdefault(word.text, (remedy, []))[1].append(self.span(word))
+        self.absent(word, f"`{word.text}` is not declared", remedy)
         return None
+
+    def absent(self, node: tree.Node, says: str, remedy: str) -> None:
+        """Writes down a name that does not exist; the same at several places is one problem."""
+        self.notebook.absent.setdefault(says, (remedy, []))[1].append(self.span(node))
 
     def unit(self, word: tree.Word) -> Unit | None:
         """The unit as written; None, with a problem noted, when it cannot be read."""
@@ -138,13 +142,14 @@ class Scope:
         return -value if literal.negative else value
 
 
-def undeclared_problems(notebook: Notebook, file: str) -> list[Problem]:
+def absent_problems(notebook: Notebook, file: str) -> list[Problem]:
     """One problem a name, at its first place, with the lines of the others."""
     found = []
-    for name, (remedy, spans) in notebook.undeclared.items():
+    for says, (remedy, spans) in notebook.absent.items():
         first, *others = sorted(set(spans))
-        lines = sorted({span.line for span in others} - {first.line})
-        also = f" (also used on line{'s' if len(lines) > 1 else ''} {', '.join(map(str, lines[:6]))}" if lines else ""
-        also += " and more)" if len(lines) > 6 else ")" if lines else ""
-        found.append(Problem(file, first, f"`{name}` is not declared{also}", remedy, "name"))
+        lines = [str(line) for line in sorted({span.line for span in others} - {first.line})]
+        if lines:
+            more = " and more" if len(lines) > 6 else ""
+            says = f"{says} (also on line{'s' if len(lines) > 1 else ''} {', '.join(lines[:6])}{more})"
+        found.append(Problem(file, first, says, remedy, "name"))
     return found

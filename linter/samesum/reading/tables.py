@@ -103,8 +103,8 @@ def _label(label: tree.Label, key: Key, scope: Scope) -> str | Band | None:
         return None
     if label.name.text not in key.values:
         close = nearest(label.name.text, key.values)
-        scope.report(label, f"`{label.name.text}` is no value of `{key.name}`",
-                     f"did you mean `{close}`?" if close else f"it can be {listing(key.values)}", "name")  # fmt: skip
+        scope.absent(label, f"`{label.name.text}` is no value of `{key.name}`",
+                     f"did you mean `{close}`?" if close else f"it can be {listing(key.values)}")  # fmt: skip
         return None
     return label.name.text
 

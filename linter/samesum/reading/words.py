@@ -6,6 +6,10 @@ import unicodedata
 from collections.abc import Iterable
 
 FUNCTIONS = ("abs", "ceil", "exp", "floor", "ln", "max", "mean", "min", "position", "round", "sqrt", "sum")
+DECLARATIONS = (
+    "applies", "constant", "fact", "index", "judgement", "periods", "quantity", "result", "rulebook", "setting",
+    "table",
+)  # fmt: skip
 PHRASE_WORDS = (
     "above", "and", "applies", "at", "bias", "by", "cases", "choice", "clause", "constant", "correlated", "cost",
     "developer", "draft", "each", "error", "errors", "fact", "fixed", "follows", "in", "index", "is", "judgement",
@@ -37,7 +41,7 @@ def nearest(word: str, known: Iterable[str]) -> str:
     for other in known:
         if abs(len(other) - len(word)) > best[0]:
             continue
-        distance = _slips(plain, _plain(other)) + (0.5 if word.casefold() != other.casefold() else 0.25)
+        distance = _slips(plain, _plain(other)) + (0.5 if word.casefold() != other.casefold() else 0.15)
         if other != word and (distance, other) < best:
             best = (distance, other)
     return best[1]
