@@ -166,7 +166,7 @@ def _gap(evidence: Evidence, points: Mapping[str, BranchPoint], id: str, kind: s
     point = points.get(id)
     span, clause = _place(evidence.model, id, point)
     first = gaps[0] if gaps else None
-    tables = first.names if first is not None else ()
+    tables = _rowless(evidence, first) if first is not None else ()
     attributes: dict[str, AttributeValue] = {
         **basics(id, clause),
         "exists": True if gaps else CANNOT_TELL,
@@ -176,6 +176,31 @@ def _gap(evidence: Evidence, points: Mapping[str, BranchPoint], id: str, kind: s
         "is_choice": point is not None and point.kind in ("choice", "follows"),
     }
     return Subject("gap", id, kind, span, clause, attributes, first.witness if first is not None else None)
+
+
+def _rowless(evidence: Evidence, gap: Gap) -> tuple[str, ...]:
+    """The tables that have no row for the project that shows the gap; all that are asked, where it cannot be told."""
+    if len(gap.names) < 2 or gap.witness is None:
+        return gap.names
+    graph = evidence.graph
+    values = middle_project(graph)
+    for name, value in gap.witness.inputs:
+        if isinstance(value, tuple):
+            values.update({f"{name}@{element}": each for element, each in enumerate(value, start=1)})
+        else:
+            values[name] = value
+    calculation = Calculation(graph, values)
+    point = graph.branch_points.get(gap.branch_point)
+    instance = graph.instances[point.instance if point is not None else gap.branch_point]
+    found: dict[str, None] = {}
+    for node in walk.written_in(instance.quantity.body):
+        for part in walk.inside(node):
+            if isinstance(part, m.Lookup) and part.table in gap.names:
+                try:
+                    calculation.number(part, instance.elements)
+                except (NoValue, KeyError):
+                    found[part.table] = None
+    return tuple(found) or gap.names
 
 
 def _general(id: str, graph: DecisionGraph) -> str:

@@ -14,7 +14,7 @@ from samesum.judging.judge import Judged
 from samesum.judging.rules import SEVERITIES, RuleSet, Severity
 from samesum.outputs.counts import figure, paths_json, shown_by, title_of
 from samesum.outputs.page import Page, Paper
-from samesum.outputs.projects import Words, project, words_for
+from samesum.outputs.projects import Words, shown, words_for
 from samesum.outputs.verdict import Verdict, verdict
 from samesum.outputs.verdict import decided as decided_by
 from samesum.reviewing.record import Decision, Standing
@@ -200,7 +200,7 @@ def _finding(page: Page, finding: Finding, words: Words, accepted: Standing | No
         page.lines += [f"  {label}", f"  {rule}"]
     page.paragraph(finding.says, indent=4)
     if finding.witness is not None:
-        page.entry("shown by", project(finding.witness, words), indent=4, column=10)
+        page.entry("shown by", shown(finding.witness, words, finding.branch_point), indent=4, column=10)
     if accepted is not None:
         page.entry("accepted", spoken_decision(accepted.decision), indent=4, column=10)
         return

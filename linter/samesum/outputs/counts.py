@@ -8,7 +8,7 @@ from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.witness import Witness
 from samesum.outputs.page import Page, Paper
-from samesum.outputs.projects import Words, as_values, project, route, words_for
+from samesum.outputs.projects import Words, as_values, general_id, project, shown, words_for
 from samesum.reading.model import Model
 from samesum.written import whole
 
@@ -127,13 +127,18 @@ def _conditions(page: Page, evidence: Evidence, words: Words) -> None:
         for gap in conditions.gaps:
             missing = {"row": "no row of a table answers", "value": "a calculation has no value"}
             says = missing.get(gap.kind, "no branch is open")
-            page.paragraph(f"{gap.branch_point}: {says} for {_shown(gap.witness, words)}.", indent=4, hanging=2)
+            page.paragraph(
+                f"{gap.branch_point}: {says} for {_shown(gap.witness, words, general_id(gap.branch_point))}.",
+                indent=4,
+                hanging=2,
+            )
     if conditions.overlaps:
         page.blank()
         page.line("Two branches at once", "strong")
         for overlap in conditions.overlaps:
             both = " and ".join(overlap.branches)
-            text = f"{overlap.branch_point}: branches {both} for {_shown(overlap.witness, words)}."
+            project_there = _shown(overlap.witness, words, general_id(overlap.branch_point))
+            text = f"{overlap.branch_point}: branches {both} for {project_there}."
             page.paragraph(text, indent=4, hanging=2)
     if conditions.dead_branches:
         page.blank()
@@ -148,10 +153,8 @@ def _conditions(page: Page, evidence: Evidence, words: Words) -> None:
         page.paragraph(listed + (f" and {more} more" if more > 0 else "") + ".", indent=4, hanging=2)
 
 
-def _shown(witness: Witness | None, words: Words) -> str:
-    if witness is None:
-        return "some project"
-    return project(witness, words) + (f" (on the route {route(witness.route)})" if witness.route else "")
+def _shown(witness: Witness | None, words: Words, besides: str = "") -> str:
+    return "some project" if witness is None else shown(witness, words, besides)
 
 
 def title_of(model: Model) -> str:

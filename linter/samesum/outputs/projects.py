@@ -57,6 +57,19 @@ def project(witness: Witness, words: Words) -> str:
     return f"a project with {_joined(everything)}" if everything else "any project"
 
 
+def shown(witness: Witness, words: Words, besides: str = "") -> str:
+    """A project, and the branches on the way to what it shows; ``besides`` is the branch point (general id) whose
+    own branch is told already."""
+    steps = [(point, branch) for point, branch in witness.route if not besides or general_id(point) != besides]
+    return project(witness, words) + (f", on the route {route(steps)}" if steps else "")
+
+
+def general_id(point: str) -> str:
+    """A branch point's id without its element's number: ``stock@3/plots`` is ``stock/plots``."""
+    head, slash, tail = point.partition("/")
+    return head.partition("@")[0] + slash + tail
+
+
 def route(steps: Iterable[tuple[str, str]]) -> str:
     """``soil_carbon: plots, methane: 2``."""
     return ", ".join(f"{point}: {branch}" for point, branch in steps)
@@ -101,4 +114,3 @@ def _plain_value(value: Value | tuple[Value, ...]) -> Any:
     if isinstance(value, Fraction):
         return number(value)
     return value
-
