@@ -63,9 +63,8 @@ def glance(block: str) -> tuple[str, str]:
     kind, name = words[1], words[2] or ""
     if kind not in DECLARATIONS:
         joined = _JOINED.match(kind)
-        close = nearest(kind, DECLARATIONS)
-        if close:
-            kind = close
-        elif joined is not None:
+        if joined is not None and not name:
             kind, name = joined[1], joined[2]
+        else:
+            kind = nearest(kind, DECLARATIONS) or kind
     return kind, "" if kind in _NAMELESS else name

@@ -83,7 +83,8 @@ def _first_word(sight: Sight) -> Mistake | None:
         return None
     close = nearest(sight.text, DECLARATIONS)
     joined = next((word for word in DECLARATIONS if sight.text.startswith(word)), "")
-    if joined and not close and sight.text != joined:
+    second = sight.rest[len(sight.text) :].lstrip()[:1]
+    if joined and sight.text != joined and not second.isalpha():
         remedy = f"write a space after `{joined}`"
         return sight.here("this line starts no declaration", remedy, len(sight.text))
     remedy = f"did you mean `{close}`?" if close else f"it starts with {listing(DECLARATIONS)}"
