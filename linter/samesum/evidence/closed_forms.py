@@ -225,7 +225,7 @@ def looks_in_order(options: Sequence[Noise], correlation: float = 0.0) -> float:
     check_correlation(len(options), correlation)
     if correlation < 0.0:
         raise ValueError("no closed form for three or more options whose errors are correlated below 0")
-    return _given_shared(options, correlation, _looks)
+    return _given_shared(tuple(options), correlation, _looks)
 
 
 def _looks(means: Sequence[float], errors: Sequence[float], costs: Sequence[float]) -> float:
@@ -262,7 +262,7 @@ def pick_of_all(options: Sequence[Noise], correlation: float = 0.0) -> float:
     check_correlation(len(options), correlation)
     if correlation < 0.0:
         raise ValueError("no closed form for three or more unequal options whose errors are correlated below 0")
-    return _given_shared(options, correlation, _picked)
+    return _given_shared(tuple(options), correlation, _picked)
 
 
 def _picked(means: Sequence[float], errors: Sequence[float], costs: Sequence[float]) -> float:
@@ -294,7 +294,8 @@ def _picked(means: Sequence[float], errors: Sequence[float], costs: Sequence[flo
 Given = Callable[[Sequence[float], Sequence[float], Sequence[float]], float]
 
 
-def _given_shared(options: Sequence[Noise], correlation: float, given: Given) -> float:
+@lru_cache(maxsize=512)
+def _given_shared(options: tuple[Noise, ...], correlation: float, given: Given) -> float:
     """The mean of ``given`` over the part of the errors that all share (e_i = b_i + s_i(√ρ z + √(1−ρ) x_i))."""
     costs = [option.cost for option in options]
     if correlation > _SHARED_MOST:

@@ -7,7 +7,6 @@ exactly for one choice, its value stands in front and the simulated one beside i
 
 from __future__ import annotations
 
-import math
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from concurrent.futures import Future, ThreadPoolExecutor
 from dataclasses import dataclass, replace
@@ -272,10 +271,7 @@ class _Rows:
     def enrolment(self, row: Row, joined: Tally, truth_scatters: bool = False) -> Enrolment:
         """A row among those who join; with the closed form where one option is mandated and counts with the same
         weight in every project."""
-        share = joined.share
-        if not joined.projects or math.isnan(joined.over_issuance):
-            return Enrolment(math.nan, math.nan, share)
-        found = Enrolment(joined.over_issuance, joined.standard_error, share)
+        found = Enrolment(joined.over_issuance, joined.standard_error, joined.share)
         latitude = next((each for each in self.latitudes if each.id == row[0]), None)
         if latitude is None or row[1] != MANDATED or self.k is None:
             return found
