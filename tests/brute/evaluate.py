@@ -114,10 +114,12 @@ def both(one: Array | None, other: Array | None) -> Array | None:
 
 
 class Evaluator:
-    """Evaluates ``rulebook`` at ``points``. ``passes()`` gives every evaluation."""
+    """Evaluates ``rulebook`` at ``points``. ``passes()`` gives every evaluation. Differences up to ``same``
+    count as none."""
 
-    def __init__(self, rulebook: Rulebook, points: Points) -> None:
+    def __init__(self, rulebook: Rulebook, points: Points, same: float = SAME) -> None:
         self.rulebook = rulebook
+        self.same = same
         self.points = points
         self.quantities = {q.name: q for q in rulebook.quantities}
         self.tables = {t.name: t for t in rulebook.tables}
@@ -265,10 +267,10 @@ class Evaluator:
     def answer(self, c: Condition, elements: Elements, owner: str) -> Value:
         if isinstance(c, Compare):
             left, right = self.expression(c.left, elements, owner), self.expression(c.right, elements, owner)
-            return Value(compared(left.it, c.operator, right.it), both(left.has, right.has))
+            return Value(compared(left.it, c.operator, right.it, self.same), both(left.has, right.has))
         if isinstance(c, Chain):
             low, middle, high = (self.expression(e, elements, owner) for e in (c.low, c.middle, c.high))
-            holds = compared(low.it, c.first, middle.it) & compared(middle.it, c.second, high.it)
+            holds = compared(low.it, c.first, middle.it, self.same) & compared(middle.it, c.second, high.it, self.same)
             return Value(holds, both(both(low.has, middle.has), high.has))
         if isinstance(c, Is):
             wanted = [self.domains[c.name].index(v) for v in c.values]
@@ -340,7 +342,9 @@ class Evaluator:
         for row in reversed(table.rows):
             here = self.all
             for label, (value, domain) in zip(row.labels, given, strict=True):
-                here = here & (in_band(value, label) if isinstance(label, Band) else value == domain.index(label))
+                here = here & (
+                    in_band(value, label, self.same) if isinstance(label, Band) else value == domain.index(label)
+                )
             found, values = found | here, np.where(here, float(row.value), values)
         lacking = ~found if has is None else ~found & has
         if lacking.any():
@@ -358,28 +362,28 @@ def _first(holds: dict[str, Array]) -> dict[str, Array]:
     return found
 
 
-def compared(left: Array | float, operator: str, right: Array | float) -> Array:
+def compared(left: Array | float, operator: str, right: Array | float, same: float) -> Array:
     difference = np.subtract(left, right)
     size = np.abs(difference)
-    if ((size > SAME) & (size < 100 * SAME)).any():
+    if ((size > same) & (size < 100 * same)).any():
         raise TooLarge("a difference too small to tell from zero")
     if operator == "=":
-        return size <= SAME
+        return size <= same
     if operator == "<>":
-        return size > SAME
+        return size > same
     if operator == "<":
-        return difference < -SAME
+        return difference < -same
     if operator == "<=":
-        return difference <= SAME
-    return difference > SAME if operator == ">" else difference >= -SAME
+        return difference <= same
+    return difference > same if operator == ">" else difference >= -same
 
 
-def in_band(value: Array | float, band: Band) -> Array | bool:
+def in_band(value: Array | float, band: Band, same: float) -> Array | bool:
     inside: Array | bool = True
     if band.low is not None:
-        inside = compared(value, ">", float(band.low))
+        inside = compared(value, ">", float(band.low), same)
     if band.high is not None:
-        inside = inside & compared(value, "<=", float(band.high))
+        inside = inside & compared(value, "<=", float(band.high), same)
     return inside
 
 

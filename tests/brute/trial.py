@@ -9,9 +9,10 @@ The meaning that is followed here, beyond the page on the program's answers:
   ``reference``, those with an ``error`` by its size, the others as written; at an overlap the first open branch.
   Judgements and yes/no settings are yes, numeric settings half-way, named ones their first value, unless given.
 * swing: the largest |result - reference| / |reference| over evaluations in which one branch point alone takes another
-  of its open branches, all else keeping to the policy, with human inputs at their reference.
+  of its open branches, all else keeping to the policy, with human inputs at their reference; or in which one setting or
+  judgement alone has another value.
 * left_if_closed: the spread that is left over evaluations in which one branch point keeps to the policy
-  wherever it is reached.
+  wherever it is reached; or in which one setting or judgement has its reference value.
 
 A numeric setting is tried at the points that tell conditions apart, at both ends and in the middle. That
 finds the extremes of results that are linear in each setting where conditions do not depend on it.
@@ -64,7 +65,7 @@ class Trial:
 
 def trial(rulebook: Rulebook, case: Case) -> Trial:
     """All figures for one case. Raises ``TooLarge`` where listing would be too much."""
-    rulebook, given = _project(rulebook, case)
+    rulebook, given = project(rulebook, case)
     points = _rows(rulebook, given)
     evaluator = Evaluator(rulebook, points)
     passes = list(evaluator.passes())
@@ -73,11 +74,12 @@ def trial(rulebook: Rulebook, case: Case) -> Trial:
     found = [_Route(one, evaluator) for one in passes if one.complete.any()]
     if not found:
         return Trial(False)
-    at_reference = _reference_row(rulebook, given, points)
-    return _figures(rulebook, found, at_reference)
+    return _figures(rulebook, found, _at_reference(rulebook, given, points))
 
 
-def _figures(rulebook: Rulebook, found: list[_Route], at_reference: Array) -> Trial:
+def _figures(rulebook: Rulebook, found: list[_Route], inputs: dict[str, Array]) -> Trial:
+    """``inputs``: for each human input that is free the points at which it stands as the policy has it."""
+    at_reference = np.logical_and.reduce([np.ones(len(found[0].values), dtype=bool), *inputs.values()])
     references = [(r, v) for r in found for v in r.values[r.complete & at_reference & ~r.strays.any(axis=0)]]
     reference = Extreme(float(references[0][1]), references[0][0].states) if references else None
     lowest = min(found, key=lambda r: r.low)
@@ -91,6 +93,13 @@ def _figures(rulebook: Rulebook, found: list[_Route], at_reference: Array) -> Tr
             swing.append((id, max((abs(v - reference.value) / size for v in alone), default=0.0)))
             kept = [v for r in found for v in r.values[r.complete & ~r.strays_at(id)]]
             left.append((id, (max(kept) - min(kept)) / size if kept else 0.0))
+        for name, usual in inputs.items():
+            others = [at_ for other, at_ in inputs.items() if other != name]
+            there = np.logical_and.reduce([~usual, *others])
+            alone = [v for r in found for v in r.values[r.complete & there & ~r.strays.any(axis=0)]]
+            swing.append((name, max((abs(v - reference.value) / size for v in alone), default=0.0)))
+            kept = [v for r in found for v in r.values[r.complete & usual]]
+            left.append((name, (max(kept) - min(kept)) / size if kept else 0.0))
     return Trial(
         False,
         len(found),
@@ -154,14 +163,17 @@ def rounded(values: Array, rulebook: Rulebook) -> list[float]:
     steps = np.asarray(values) / float(rulebook.step)
     near = np.round(steps * 2) / 2
     steps = np.where(np.abs(steps - near) < 1e-9, near, steps)
-    way = {"down": np.floor, "up": np.ceil, "nearest": lambda s: np.copysign(np.floor(np.abs(s) + 0.5), s) + 0.0}[rulebook.rounding]
-    return [float(v) for v in way(steps) * float(rulebook.step)]
+    if rulebook.rounding == "nearest":
+        whole = np.copysign(np.floor(np.abs(steps) + 0.5), steps) + 0.0
+    else:
+        whole = np.floor(steps) if rulebook.rounding == "down" else np.ceil(steps)
+    return [float(v) for v in whole * float(rulebook.step)]
 
 
 # --- the project ---------------------------------------------------------------------------
 
 
-def _project(rulebook: Rulebook, case: Case) -> tuple[Rulebook, dict[str, Fraction | int | bool]]:
+def project(rulebook: Rulebook, case: Case) -> tuple[Rulebook, dict[str, Fraction | int | bool]]:
     """The rulebook with as many elements as the case has, and the case's values by name of element."""
     sizes = {f.index: len(value) for f in rulebook.facts if f.index and isinstance(value := case[f.name], list | tuple)}
     indices = tuple(replace(i, most=sizes.get(i.name, i.most)) for i in rulebook.indices)
@@ -197,9 +209,9 @@ def _rows(rulebook: Rulebook, given: dict[str, Fraction | int | bool]) -> Points
     return Points(columns, rows, np.array([0]), np.arange(rows))
 
 
-def _reference_row(rulebook: Rulebook, given: dict[str, Fraction | int | bool], points: Points) -> Array:
-    """The points at which every human input stands as the reference policy has it."""
-    found = np.ones(points.rows, dtype=bool)
+def _at_reference(rulebook: Rulebook, given: Mapping[str, Fraction | int | bool], points: Points) -> dict[str, Array]:
+    """Where each free human input stands as the reference policy has it."""
+    found: dict[str, Array] = {}
     for name, domain, group in variables(rulebook):
         if group == FACT or name in given:
             continue
@@ -208,5 +220,5 @@ def _reference_row(rulebook: Rulebook, given: dict[str, Fraction | int | bool], 
             middle = float((domain.low + domain.high) / 2)
         elif isinstance(domain, OneOf):
             middle = 0
-        found &= points.columns[name] == middle
+        found[name] = points.columns[name] == middle
     return found
