@@ -92,6 +92,20 @@ def test_what_is_beyond_all_use_is_told_in_time(text: str, words: str, reader: R
     assert len(problems) <= 2
 
 
+def test_thousands_of_rows_names_and_slips_are_read_in_time(reader: Reader) -> None:
+    start = time.monotonic()
+    bands = "".join(f"    above {n} up to {n + 1} = {n}\n" for n in range(1, 4000))
+    values = [f"v{n}" for n in range(3000)]
+    domain = f"fact s, one of {', '.join(values[:-1])} or {values[-1]}\n"
+    rows = "".join(f"    {value} = 1\n" for value in values)
+    tables = f"table u [t] by x\n    up to 1 = 0\n{bands}{domain}table w [t] by s\n{rows}"
+    assert read(f"{HEAD}fact x\n{tables}quantity q [t]\n    = u(x) + w(s)\n", "x", reader=reader).problems == ()
+    slips = "".join(f"quantity r{n} [t]\n    = missing_{n} + a\n" for n in range(2000))
+    problems = read(f"{HEAD}quantity q [t]\n    = a\n{slips}", "x", reader=reader).problems
+    assert len(problems) == 2000
+    assert time.monotonic() - start < 30
+
+
 def test_deeply_nested_bodies_are_told(reader: Reader) -> None:
     lines = ["quantity q [t]"]
     for level in range(150):

@@ -17,6 +17,8 @@ from samesum.spans import Span
 
 Kind = Literal["fact", "setting", "judgement", "constant", "table", "quantity", "index", "unreadable"]
 DEEPEST = 60
+# With more names than this no nearest one is looked for: thousands of slips must not take minutes.
+MOST_COMPARED = 1_000
 
 
 @dataclass(frozen=True, slots=True)
@@ -110,8 +112,9 @@ class Scope:
         if word.text in RESERVED:
             self.report(word, f"`{word.text}` is a word of the language and cannot be a name", kind="name")
             return None
-        known = [name for name, other in self.names.items() if not wanted or other.kind in wanted]
-        close = nearest(word.text, known) or nearest(word.text, self.names)
+        names = self.names if len(self.names) <= MOST_COMPARED else {}
+        known = [name for name, other in names.items() if not wanted or other.kind in wanted]
+        close = nearest(word.text, known) or nearest(word.text, names)
         remedy = f"did you mean `{close}`?" if close else "declare it, or write the name of something that is declared"
         holders = [other.name for other in self.names.values() if word.text in other.values]
         if holders and not close:

@@ -69,6 +69,8 @@ def _band_key(word: tree.Word, labels: list[tree.Label], scope: Scope) -> Key | 
 def resolve_rows(table: tree.Declaration, keys: tuple[Key, ...], unit: Unit | None, scope: Scope) -> tuple[Row, ...]:
     """The rows that are whole; reports those that are not, that repeat one another or overlap."""
     rows: list[Row] = []
+    # Only rows with the same names can clash, so that a table of thousands of rows is read at once.
+    groups: dict[tuple[str, ...], list[Row]] = {}
     for row in table.rows:
         if len(row.labels) != len(keys):
             names = listing([key.name for key in keys], "and")
@@ -80,8 +82,10 @@ def resolve_rows(table: tree.Declaration, keys: tuple[Key, ...], unit: Unit | No
         whole = tuple(label for label in labels if label is not None)
         if value is None or len(whole) < len(labels):
             continue
-        if not _clashes(row, whole, rows, scope):
-            rows.append(Row(whole, value, scope.span(row)))
+        group = groups.setdefault(tuple(label for label in whole if isinstance(label, str)), [])
+        if not _clashes(row, whole, group, scope):
+            group.append(Row(whole, value, scope.span(row)))
+            rows.append(group[-1])
     return tuple(rows)
 
 
@@ -109,28 +113,30 @@ def _label(label: tree.Label, key: Key, scope: Scope) -> str | Band | None:
     return label.name.text
 
 
-def _clashes(row: tree.RowTree, labels: tuple[str | Band, ...], rows: list[Row], scope: Scope) -> bool:
-    for other in rows:
-        if all(_overlap(mine, theirs) for mine, theirs in zip(labels, other.labels, strict=True)):
-            twice = labels == other.labels
-            says = "repeats" if twice else "overlaps with"
-            scope.report(
-                row, f"this row {says} the one on line {other.span.line}", "one argument finds one row", "value"
-            )
+def _clashes(row: tree.RowTree, labels: tuple[str | Band, ...], group: list[Row], scope: Scope) -> bool:
+    """Whether the row is for what one of ``group`` (the rows before with the same names) is for; reports it."""
+    bands = _bands(labels)
+    if group and len(bands) == 1 and _after(bands[0], _bands(group[-1].labels)[0]):
+        return False
+    for other in group:
+        if all(_overlap(mine, theirs) for mine, theirs in zip(bands, _bands(other.labels), strict=True)):
+            says = "repeats" if labels == other.labels else "overlaps with"
+            remedy = "one argument finds one row"
+            scope.report(row, f"this row {says} the one on line {other.span.line}", remedy, "value")
             return True
-    if rows and len(labels) == 1:
-        mine, before = labels[0], rows[-1].labels[0]
-        if isinstance(mine, Band) and isinstance(before, Band) and not _after(mine, before):
-            scope.report(row, "this band is out of order", "write the bands from the lowest to the highest", "value")
+    if group and len(bands) == 1:
+        scope.report(row, "this band is out of order", "write the bands from the lowest to the highest", "value")
     return False
 
 
-def _overlap(one: str | Band, other: str | Band) -> bool:
-    if isinstance(one, Band) and isinstance(other, Band):
-        return (other.high is None or one.low is None or one.low < other.high) and (
-            one.high is None or other.low is None or other.low < one.high
-        )
-    return one == other
+def _bands(labels: tuple[str | Band, ...]) -> tuple[Band, ...]:
+    return tuple(label for label in labels if isinstance(label, Band))
+
+
+def _overlap(one: Band, other: Band) -> bool:
+    return (other.high is None or one.low is None or one.low < other.high) and (
+        one.high is None or other.low is None or other.low < one.high
+    )
 
 
 def _after(band: Band, before: Band) -> bool:
