@@ -77,7 +77,7 @@ def _compared(old: str, new: str, arguments: argparse.Namespace) -> Comparison |
 def _register(name: str, arguments: argparse.Namespace, lenient: bool = False) -> Register | int | None:
     """The register of a file or of a revision; None when it could not be read, which is then said. ``lenient``:
     a file that is not in the revision is new, and gives the exit status 0."""
-    from samesum.cli.gathered import registered
+    from samesum.cli.gathered import Wanted, registered
     from samesum.cli.revisions import former_text, is_revision
     from samesum.reading.read import read, read_file
 
@@ -93,8 +93,9 @@ def _register(name: str, arguments: argparse.Namespace, lenient: bool = False) -
         reading = read(former.text, name)
     else:
         reading = read_file(Path(name))
-    gathered = registered(reading, Path(name.rpartition(":")[2]), arguments.inputs, arguments.seconds, record=False)
-    return gathered[1] if gathered is not None else None
+    asked = Wanted(None, arguments.seconds, 0, 0, record=False)
+    found = registered(reading, Path(name.rpartition(":")[2]), asked)
+    return found.register if found is not None else None
 
 
 def _unknown(allowed: Sequence[str], found: Sequence[Comparison]) -> bool:

@@ -1,36 +1,145 @@
-"""A rulebook examined, with its review record and, where cases are given, what trial and bias say of it."""
+"""A rulebook examined, with its review record and what trial and bias say of it."""
 
 from __future__ import annotations
 
+import argparse
+from collections.abc import Sequence
+from dataclasses import dataclass, field
 from pathlib import Path
 from typing import TYPE_CHECKING
 
 from samesum.cli import shared
 
 if TYPE_CHECKING:
+    from samesum.evidence.selection import Selection
     from samesum.examine import Examined
+    from samesum.reading.cases import Case
+    from samesum.reading.model import Model
     from samesum.reading.read import Reading
+    from samesum.reviewing.measured import Tried
     from samesum.reviewing.rows import Register
 
+PROJECTS = 20_000
 
-def gather_register(file: Path, inputs: Path | None, seconds: float) -> tuple[Examined, Register] | None:
+
+@dataclass(frozen=True, slots=True)
+class Wanted:
+    """What is to be gathered. ``inputs`` is the file of cases; ``projects`` to simulate, 0 for no simulation;
+    ``record`` whether decisions are read; ``seconds`` bounds each analysis."""
+
+    inputs: Path | None
+    seconds: float
+    projects: int = PROJECTS
+    seed: int = 0
+    record: bool = True
+
+
+@dataclass(frozen=True, slots=True)
+class Gathered:
+    examined: Examined
+    register: Register
+    tried: Tried
+    notes: tuple[str, ...] = field(default=())
+    """Why something was left out, in a sentence each."""
+
+
+def add_projects(parser: argparse.ArgumentParser) -> None:
+    """The arguments of the simulation that goes with a register or a report."""
+    parser.add_argument(
+        "--projects",
+        type=_projects,
+        default=PROJECTS,
+        metavar="N",
+        help=f"how many projects to simulate for over-issuance ({PROJECTS:,}; 0 for none)",
+    )
+    parser.add_argument("--seed", type=_projects, default=0, metavar="S", help="where its random numbers start (0)")
+
+
+def _projects(text: str) -> int:
+    if not text.isdecimal() or len(text) > 9:
+        raise argparse.ArgumentTypeError(f"{text!r} is no whole number from 0 on")
+    return int(text)
+
+
+def wanted(arguments: argparse.Namespace) -> Wanted:
+    return Wanted(arguments.inputs, arguments.seconds, arguments.projects, arguments.seed)
+
+
+def gather_register(file: Path, asked: Wanted) -> Gathered | None:
     """The register of a rulebook; None when something could not be read, which is then said."""
     from samesum.reading.read import read_file
 
-    return registered(read_file(file), file, inputs, seconds)
+    return registered(read_file(file), file, asked)
 
 
-def registered(
-    reading: Reading, file: Path, inputs: Path | None, seconds: float, record: bool = True
-) -> tuple[Examined, Register] | None:
-    """The same for a text read already. ``file`` is where the review record lies, if that is wanted."""
+def registered(reading: Reading, file: Path, asked: Wanted) -> Gathered | None:
+    """The same for a text read already. ``file`` is where the review record lies."""
     from samesum.examine import examine_reading
     from samesum.reviewing.record import Record, read_record
     from samesum.reviewing.rows import register_of
 
-    examined = examine_reading(reading, seconds)
-    decided, problems = read_record(file) if record else (Record(""), ())
+    examined = examine_reading(reading, asked.seconds)
+    decided, problems = read_record(file) if asked.record else (Record(""), ())
     if examined.evidence is None or problems:
         shared.report([*(examined.problems if examined.evidence is None else ()), *problems])
         return None
-    return examined, register_of(examined.evidence, reading.text, decided, seconds)
+    from samesum.reviewing.measured import Tried, measures_of
+
+    register = register_of(examined.evidence, reading.text, decided, asked.seconds)
+    if asked.inputs is None and not asked.projects:
+        return Gathered(examined, register, Tried())
+    found = _tried(examined, asked)
+    if found is None:
+        return None
+    tried, notes = found
+    for note in notes:
+        shared.report_line(f"{reading.model.file if reading.model else file}: {note}")
+    return Gathered(examined, register.measured(measures_of(tried, asked.seconds / 2)), tried, tuple(notes))
+
+
+def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
+    """Trial on the cases given, and a simulation of the programme; None when the cases cannot be read."""
+    from samesum.evidence.plan import Unplannable
+    from samesum.evidence.trial import try_out
+    from samesum.reading.cases import read_cases
+    from samesum.reviewing.measured import Tried
+
+    evidence = examined.evidence
+    assert evidence is not None
+    if evidence.model.result is None or examined.problems:
+        return Tried(), ["what the numbers come to is left out, because a part of the rulebook could not be read"]
+    cases = None
+    if asked.inputs is not None:
+        cases, problems = read_cases(asked.inputs, evidence.model)
+        if problems:
+            shared.report(problems)
+            return None
+    notes: list[str] = []
+    trial = None
+    if cases is not None:
+        try:
+            trial = try_out(evidence.graph, cases.cases, asked.seconds, evidence=evidence)
+        except Unplannable as trouble:
+            notes.append(f"what projects come to is left out: {trouble}")
+    selection = None
+    if asked.projects:
+        from samesum.evidence.projects import CannotDraw
+        from samesum.evidence.selection import NothingTrue
+
+        try:
+            selection = _simulated(evidence.model, None if cases is None else cases.cases, asked)
+        except (CannotDraw, Unplannable) as trouble:
+            notes.append(f"over-issuance is left out: {trouble}")
+        except NothingTrue:
+            notes.append("over-issuance is left out: all projects together have no true credits above zero")
+    return Tried(trial, selection), notes
+
+
+def _simulated(model: Model, cases: Sequence[Case] | None, asked: Wanted) -> Selection:
+    from samesum.cli.bias import cores
+    from samesum.evidence.bench import Terms
+    from samesum.evidence.projects import from_cases, from_domains
+    from samesum.evidence.selection import select
+
+    supply = from_domains(model) if cases is None else from_cases(model, cases)
+    return select(supply, asked.projects, Terms(asked.seed), cores())

@@ -7,7 +7,7 @@ import sys
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from samesum.cli import shared
+from samesum.cli import gathered, shared
 
 if TYPE_CHECKING:
     from samesum.examine import Examined
@@ -24,6 +24,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("-o", "--output", type=Path, metavar="OUT", help="write to this file instead")
     parser.add_argument("--all", action="store_true", help="in the table, show also what facts alone decide")
     shared.add_inputs(parser)
+    gathered.add_projects(parser)
     shared.add_seconds(parser)
     decide = parser.add_argument_group("deciding", "writes the decision into NAME.review.yaml beside FILE")
     decide.add_argument(
@@ -47,13 +48,10 @@ def run(arguments: argparse.Namespace) -> int:
     form = arguments.form or _BY_SUFFIX.get(arguments.output.suffix.lower() if arguments.output else "", "table")
     if form == "xlsx" and arguments.output is None and (sys.stdout is None or sys.stdout.isatty()):
         return shared.refuse("a workbook is no text for a terminal; name a file with -o OUT.xlsx")
-    from samesum.cli.gathered import gather_register
-
-    gathered = gather_register(arguments.file, arguments.inputs, arguments.seconds)
-    if gathered is None:
+    found = gathered.gather_register(arguments.file, gathered.wanted(arguments))
+    if found is None:
         return shared.UNUSABLE
-    examined, register = gathered
-    return shared.deliver(written(register, examined, form, arguments), arguments.output)
+    return shared.deliver(written(found.register, found.examined, form, arguments), arguments.output)
 
 
 def written(register: Register, examined: Examined, form: str, arguments: argparse.Namespace) -> str | bytes:

@@ -47,10 +47,12 @@ def run(arguments: argparse.Namespace) -> int:
     checked = seen
     show(first_text(seen, paper_for(sys.stdout)))
     show("Watching; Ctrl-C ends it.\n")
-    for _ in saves(watched, place.parent):
-        if not file.is_file():
-            continue
-        seen = look()
-        show(change_text(checked, seen, paper_for(sys.stdout)))
-        checked = seen if seen.checked is not None or checked.checked is None else checked
+    try:
+        for _ in saves(watched, place.parent):
+            if file.is_file():  # else it is being put in place, and another event follows
+                seen = look()
+                show(change_text(checked, seen, paper_for(sys.stdout)))
+                checked = seen if seen.checked is not None or checked.checked is None else checked
+    except KeyboardInterrupt:  # the way to end it
+        return 0
     return 0

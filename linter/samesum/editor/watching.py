@@ -14,14 +14,12 @@ if TYPE_CHECKING:
 
 def saves(files: frozenset[Path], folder: Path, stop: Event | None = None) -> Iterator[None]:
     """One item each time one of ``files`` in ``folder`` was written, put in place or taken away. The folder is
-    watched, not the file, because many editors write a new file and put it in the old one's place. Ends on an
-    interrupt, or when ``stop`` is set."""
+    watched, not the file, because many editors write a new file and put it in the old one's place. Ends
+    when ``stop`` is set."""
     from watchfiles import watch
 
     def concerns(_: Change, name: str) -> bool:
         return Path(name) in files
 
-    for _ in watch(
-        folder, watch_filter=concerns, debounce=60, step=15, stop_event=stop, recursive=False, raise_interrupt=False
-    ):
+    for _ in watch(folder, watch_filter=concerns, debounce=60, step=15, stop_event=stop, recursive=False):
         yield None

@@ -44,6 +44,7 @@ class Histogram:
     mandated_name: str
     chosen_name: str
     says: str = ""
+    note: str = ""
 
 
 @dataclass(frozen=True, slots=True)

@@ -11,6 +11,7 @@ import hashlib
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
+from typing import TYPE_CHECKING
 
 from samesum import __version__
 from samesum.evidence.counting import FIGURES as COUNTED
@@ -34,6 +35,10 @@ from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row
 
 
+if TYPE_CHECKING:
+    from markupsafe import Markup
+
+
 @dataclass(frozen=True, slots=True)
 class Extra:
     """What the page shows beyond the register, where it is known. ``origins``: names and values of versions and
@@ -41,8 +46,9 @@ class Extra:
 
     cases: tuple[CaseSpread, ...] = ()
     closing: tuple[ClosingStep, ...] = ()
+    closing_complete: bool = True
     worst_case: str = ""
-    verdict: str = ""
+    proved: str = ""
     histogram: Histogram | None = None
     findings: Mapping[str, Sequence[tuple[str, str]]] = field(default_factory=dict)
     origins: tuple[tuple[str, str], ...] = ()
@@ -75,7 +81,7 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
     script = (folder / "report.js").read_text(encoding="utf-8")
     style = (folder / "report.css").read_text(encoding="utf-8")
     digest = base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
-    environment.filters.update(share=share, percent=exact_percent, bracket=bracket_text, path=path)
+    environment.filters.update(spoken=spoken, share=share, percent=exact_percent, bracket=bracket_text, path=path)
     template = environment.get_template("report.html.j2")
     charts = () if extra.only_register else charts_of(register)
     return template.render(
@@ -85,7 +91,7 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
         script_hash=digest,
         title=title_of(register.evidence.model),
         model=register.evidence.model,
-        verdict=extra.verdict or sentence(register),
+        verdict=sentence(register, extra),
         key_figures=_key_figures(register, extra),
         counts=[
             (label, figure(register.evidence.counts, name), says) for name, label, says in FIGURES if name in COUNTED
@@ -104,7 +110,9 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
         stale=stale_lines(register),
         spreads=spread_bars(extra.cases),
         closing=_closing(register, extra.closing),
+        closing_complete=extra.closing_complete,
         worst_case=extra.worst_case,
+        proved=extra.proved,
         histogram=extra.histogram,
         bars=bars(extra.histogram) if extra.histogram else (),
         ticks=ticks(extra.histogram) if extra.histogram else (),
@@ -116,7 +124,17 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
     )
 
 
-def sentence(register: Register) -> str:
+def spoken(text: str) -> Markup:
+    """A sentence with what stands between backticks as code; everything in it is escaped."""
+    from markupsafe import Markup, escape
+
+    parts = [escape(clean(part)) for part in text.split("`")]
+    if len(parts) % 2 == 0:
+        return escape(clean(text))
+    return Markup("").join(Markup("<code>{}</code>").format(part) if at % 2 else part for at, part in enumerate(parts))
+
+
+def sentence(register: Register, extra: Extra) -> str:
     """The verdict that counting allows, in a sentence that a committee member understands."""
     counts = register.evidence.counts
     most = counts.per_project_most
@@ -130,7 +148,18 @@ def sentence(register: Register) -> str:
     first = f"This rulebook leaves up to {ways} routes open to one and the same project"
     if most <= 1:
         first = "No project has more than one route"
-    return f"{first}, and some projects have no result at all." if gap else f"{first}."
+    said = f"{first}, and some projects have no result at all." if gap else f"{first}."
+    spreads = [case.spread for case in extra.cases if case.spread is not None]
+    if not spreads:
+        return said
+    widest = max(spreads)
+    if not widest:
+        return f"{said} On the cases given they all lead to one number."
+    case = next(case for case in extra.cases if case.spread == widest)
+    return (
+        f"{said} For {case.name} alone the result can be anything from {case.low_text} to {case.high_text}: "
+        f"{share(widest)} of the reference."
+    )
 
 
 def _key_figures(register: Register, extra: Extra) -> list[tuple[str, str, str]]:
