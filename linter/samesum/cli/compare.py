@@ -8,11 +8,10 @@ from collections.abc import Sequence
 from pathlib import Path
 from typing import TYPE_CHECKING
 
-from samesum.cli import shared
+from samesum.cli import gathered, shared
 
 if TYPE_CHECKING:
-    from samesum.reviewing.compare import Comparison
-    from samesum.reviewing.rows import Register
+    from samesum.reviewing.compare import Comparison, Moved
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -32,7 +31,15 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         default=[],
         help="a branch point or figure that may leave more than before; may be given several times",
     )
-    shared.add_inputs(parser)
+    parser.add_argument(
+        "--inputs",
+        metavar="CASES.yaml",
+        type=Path,
+        action="append",
+        default=[],
+        help="projects for both drafts; given twice, for OLD and for NEW: adds spread and over-issuance",
+    )
+    gathered.add_projects(parser)
     shared.add_json(parser)
     shared.add_seconds(parser)
 
@@ -45,6 +52,8 @@ def run(arguments: argparse.Namespace) -> int:
         pairs = [(arguments.files[0], arguments.files[1])]
     else:
         pairs = [(f"{arguments.since}:{file}", file) for file in dict.fromkeys(arguments.files)]
+    if len(arguments.inputs) > 2:
+        return shared.refuse("--inputs is given once for both drafts, or twice, for OLD and for NEW")
     status = 0
     found: list[Comparison] = []
     for old, new in pairs:
@@ -65,19 +74,25 @@ def _compared(old: str, new: str, arguments: argparse.Namespace) -> Comparison |
     """One comparison; an exit status when there is nothing to compare (0 for a new file)."""
     from samesum.reviewing.compare import compare
 
-    before = _register(old, arguments, lenient=arguments.since is not None)
+    before = _gathered(old, arguments, arguments.inputs[:1], lenient=arguments.since is not None)
     if before is None or isinstance(before, int):
         return shared.UNUSABLE if before is None else before
-    after = _register(new, arguments)
+    after = _gathered(new, arguments, arguments.inputs[-1:])
     if after is None or isinstance(after, int):
         return shared.UNUSABLE
-    return compare(before, after, arguments.allow, arguments.seconds)
+    measured: tuple[Moved, ...] = ()
+    if arguments.inputs:
+        from samesum.reviewing.measured import moved
+
+        measured = moved(before.tried, after.tried)
+    return compare(before.register, after.register, arguments.allow, arguments.seconds, measured)
 
 
-def _register(name: str, arguments: argparse.Namespace, lenient: bool = False) -> Register | int | None:
-    """The register of a file or of a revision; None when it could not be read, which is then said. ``lenient``:
+def _gathered(
+    name: str, arguments: argparse.Namespace, inputs: Sequence[Path], lenient: bool = False
+) -> gathered.Gathered | int | None:
+    """What is known of a file or a revision; None when it could not be read, which is then said. ``lenient``:
     a file that is not in the revision is new, and gives the exit status 0."""
-    from samesum.cli.gathered import Wanted, registered
     from samesum.cli.revisions import former_text, is_revision
     from samesum.reading.read import read, read_file
 
@@ -93,9 +108,9 @@ def _register(name: str, arguments: argparse.Namespace, lenient: bool = False) -
         reading = read(former.text, name)
     else:
         reading = read_file(Path(name))
-    asked = Wanted(None, arguments.seconds, 0, 0, record=False)
-    found = registered(reading, Path(name.rpartition(":")[2]), asked)
-    return found.register if found is not None else None
+    projects = arguments.projects if inputs else 0
+    asked = gathered.Wanted(inputs[0] if inputs else None, arguments.seconds, projects, arguments.seed, record=False)
+    return gathered.registered(reading, Path(name.rpartition(":")[2]), asked)
 
 
 def _unknown(allowed: Sequence[str], found: Sequence[Comparison]) -> bool:

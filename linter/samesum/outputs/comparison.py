@@ -8,7 +8,7 @@ from typing import Any
 from samesum.evidence.closing import Bracket
 from samesum.outputs.counts import FIGURES, title_of
 from samesum.outputs.page import Page, Paper
-from samesum.outputs.register_cells import bracket_text, decider
+from samesum.outputs.register_cells import bracket_text, decider, share
 from samesum.reviewing.compare import Change, Comparison, direction
 from samesum.reviewing.rows import Register, Row
 
@@ -31,12 +31,30 @@ def comparison_json(found: Comparison) -> dict[str, Any]:
             "before": list(found.old.evidence.counts.free_values),
             "after": list(found.new.evidence.counts.free_values),
         },
+        "measured": {each.name: {"before": each.before, "after": each.after} for each in found.measured},
+        "branch_points": _deltas(found) if found.measured else [],
         "growth": [
             {"name": each.name, "clause": each.clause, "says": each.says, "allowed": each.allowed}
             for each in found.growth
         ],
         "grew": found.grew,
     }
+
+
+def _deltas(found: Comparison) -> list[dict[str, Any]]:
+    """Swing, what is left and over-issuance of each place before and after, where either is known."""
+    before = {row.id: row.measures for row in found.old.rows}
+    after = {row.id: row.measures for row in found.new.rows}
+    deltas = []
+    for id in dict.fromkeys([*before, *after]):
+        old, new = before.get(id), after.get(id)
+        figures = {
+            name: {"before": getattr(old, name, None), "after": getattr(new, name, None)}
+            for name in ("swing", "left_if_closed", "over_issuance")
+        }
+        if any(each["before"] is not None or each["after"] is not None for each in figures.values()):
+            deltas.append({"branch_point": id, **figures})
+    return deltas
 
 
 def _draft(register: Register) -> dict[str, str]:
@@ -122,6 +140,13 @@ def _said(text: str) -> str:
     return f"“{short}”" if short else "nothing"
 
 
+_MEASURED = {"spread": "Widest spread of a case", "over_issuance": "Over-issued, second look"}
+
+
+def _share(value: float | None) -> str:
+    return "not known" if value is None else share(value)
+
+
 def _figures(page: Page, found: Comparison) -> None:
     page.blank()
     page.line("Figures", "strong")
@@ -130,6 +155,9 @@ def _figures(page: Page, found: Comparison) -> None:
         moved = direction(before, after)
         text = bracket_text(before) if moved == "same" else f"{bracket_text(before)} → {bracket_text(after)} ({moved})"
         page.entry(labels[name], text, indent=2, column=26, style="")
+    for each in found.measured:
+        text = f"{_share(each.before)} → {_share(each.after)}" + (" (grew)" if each.grew else "")
+        page.entry(_MEASURED[each.name], text, indent=2, column=26, style="")
     before_free, after_free = found.old.evidence.counts.free_values, found.new.evidence.counts.free_values
     if before_free or after_free:
         same = before_free == after_free

@@ -49,6 +49,23 @@ class Growth:
 
 
 @dataclass(frozen=True, slots=True)
+class Moved:
+    """A measure of the whole rulebook on the projects given, as a share; None where it could not be had. ``noise``:
+    what a difference has to exceed."""
+
+    name: str
+    before: float | None
+    after: float | None
+    noise: float = 0.0
+
+    @property
+    def grew(self) -> bool:
+        if self.after is None or self.before is None:
+            return False
+        return self.after - self.before > max(self.noise, 1e-9 * abs(self.before), 1e-12)
+
+
+@dataclass(frozen=True, slots=True)
 class Comparison:
     """``figures``: each figure of ``count`` before and after. ``growth`` in a fixed order."""
 
@@ -59,6 +76,7 @@ class Comparison:
     changed: tuple[Change, ...]
     figures: Mapping[str, tuple[Bracket, Bracket]]
     growth: tuple[Growth, ...]
+    measured: tuple[Moved, ...] = ()
 
     @property
     def grew(self) -> bool:
@@ -78,7 +96,13 @@ class Comparison:
         return (*fresh, *(change.after for change in self.changed if change.opened))
 
 
-def compare(old: Register, new: Register, allow: Collection[str] = (), seconds: float = 10.0) -> Comparison:
+def compare(
+    old: Register,
+    new: Register,
+    allow: Collection[str] = (),
+    seconds: float = 10.0,
+    measured: tuple[Moved, ...] = (),
+) -> Comparison:
     """``allow`` names places and figures that may grow; what an allowed place brings about in the figures is
     taken out by counting it as given."""
     before = {row.id: row for row in old.rows}
@@ -97,6 +121,7 @@ def compare(old: Register, new: Register, allow: Collection[str] = (), seconds: 
         changed,
         {name: (routes_now(old.evidence, name), routes_now(new.evidence, name)) for name in FIGURES},
         (),
+        measured,
     )
     return replace(found, growth=_growth(found, frozenset(allow), seconds))
 
@@ -152,6 +177,9 @@ def _growth(found: Comparison, allow: frozenset[str], seconds: float) -> tuple[G
         grown = [name for name in grown if exceeds(figures[name], found.figures[name][0])]
     for name in grown:
         add(name, "grew")
+    for each in found.measured:
+        if each.grew:
+            add(each.name, "grew on the projects given")
     return tuple(reasons)
 
 

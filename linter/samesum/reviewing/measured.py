@@ -10,6 +10,7 @@ from dataclasses import dataclass
 from samesum.evidence.blame import Remaining
 from samesum.evidence.selection import HEADLINE, Closure, Figure, Found, Selection
 from samesum.evidence.trial import TrialEvidence
+from samesum.reviewing.compare import Moved
 from samesum.reviewing.rows import Measures
 
 STANDARD_ERRORS = 4
@@ -98,3 +99,16 @@ def _noise(closure: Closure) -> float:
 def _signed(value: float) -> str:
     shown = f"{value * 100:+.1f}"
     return f"{'0.0' if shown in ('+0.0', '-0.0') else shown} % over-issuance"
+
+
+def moved(before: Tried, after: Tried) -> tuple[Moved, ...]:
+    """The widest spread and the over-issuance of two drafts on the same projects and random numbers."""
+    found = []
+    if before.trial is not None and after.trial is not None:
+        found.append(Moved("spread", widest_spread(before.trial), widest_spread(after.trial)))
+    if before.selection is not None and after.selection is not None:
+        old, new = headline(before.selection.figures), headline(after.selection.figures)
+        if old is not None and new is not None:
+            noise = STANDARD_ERRORS * math.hypot(old.standard_error, new.standard_error)
+            found.append(Moved("over_issuance", old.over_issuance, new.over_issuance, noise))
+    return tuple(found)

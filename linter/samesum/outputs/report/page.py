@@ -34,7 +34,6 @@ from samesum.outputs.report.layers import path
 from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row
 
-
 if TYPE_CHECKING:
     from markupsafe import Markup
 
