@@ -18,6 +18,7 @@ from samesum import __version__
 COMMANDS = {
     "check": "find the places where the number is left to whoever applies the rulebook",
     "count": "count the routes that a rulebook leaves open",
+    "trial": "try a rulebook out on projects: what they get on every route, and what is proved",
     "bias": "show what choosing does to a programme as a whole, and what closing a choice leaves",
     "register": "list the branch points with their evidence, and keep the review body's decisions",
     "compare": "say what a new draft opens and closes, and whether it leaves more to somebody",

@@ -32,6 +32,15 @@ def constant(value: float | bool) -> Table:
     return Table((), np.full(1, value))
 
 
+def where_code(code: int) -> Callable[[Array, Array, Array], Array]:
+    """(codes, here, elsewhere) → ``here`` where the code is this one."""
+
+    def chosen(codes: Array, here: Array, elsewhere: Array) -> Array:
+        return np.where(codes == code, here, elsewhere)
+
+    return chosen
+
+
 def union(tables: Sequence[Table]) -> tuple[int, ...]:
     """The axes that any of the tables has."""
     found: tuple[int, ...] = ()
@@ -71,8 +80,9 @@ def stacked(axis: int, parts: Sequence[Table], blank: float | bool) -> Table:
     arrays = [spread_out(part, inner) for part in parts]
     shape = list(np.broadcast_shapes(*(array.shape for array in arrays)))
     made: Array = np.empty((*shape[:place], len(parts), *shape[place:]), dtype=np.result_type(*arrays))
+    lines = np.moveaxis(made, place, 0)
     for index, array in enumerate(arrays):
-        made[(*(slice(None),) * place, index)] = array
+        lines[index] = array
     return Table(axes, made)
 
 

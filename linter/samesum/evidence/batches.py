@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from typing import TYPE_CHECKING
 
 import numpy as np
 
@@ -13,6 +14,9 @@ from samesum.evidence.plan import Plan, make_plan, resized
 from samesum.evidence.values import Rows
 from samesum.reading import model as m
 from samesum.reading.cases import Case, Value
+
+if TYPE_CHECKING:
+    from samesum.reading.columns import Columns
 
 
 @dataclass(frozen=True, slots=True)
@@ -44,6 +48,48 @@ def batches_of(model: m.Model, cases: Sequence[Case]) -> list[Batch]:
         plan = make_plan(resized(model, dict(sizes)))
         found.append(Batch(plan, rows_of(plan, [cases[place] for place in places]), np.array(places)))
     return found
+
+
+def batches_of_columns(model: m.Model, columns: Columns) -> list[Batch]:
+    """Projects of a table, grouped by size. Raises ``Unplannable``."""
+    count = len(columns.names)
+    sizes = np.stack([columns.sizes[index.name] for index in model.indices] or [np.zeros(count, dtype=np.int64)])
+    kinds, which = np.unique(sizes, axis=1, return_inverse=True)
+    which = which.reshape(-1)
+    found = []
+    for number in range(kinds.shape[1]):
+        places = np.flatnonzero(which == number)
+        wanted = {index.name: int(kinds[place, number]) for place, index in enumerate(model.indices)}
+        plan = make_plan(resized(model, wanted))
+        found.append(Batch(plan, _rows_of_columns(plan, columns, places), places))
+    return found
+
+
+def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
+    model = plan.graph.model
+    numbers: dict[str, Array] = {}
+    codes: dict[str, Array] = {}
+    flags: dict[str, Array] = {}
+    free: dict[str, Array] = {}
+    declared: list[m.Fact | m.Setting | m.Judgement] = [*model.facts, *model.settings, *model.judgements]
+    for each in declared:
+        index = each.index if isinstance(each, m.Fact) else ""
+        domain: m.Domain = m.YesNo() if isinstance(each, m.Judgement) else each.domain
+        for element in range(1, plan.graph.sizes.get(index, 0) + 1) if index else (0,):
+            id = f"{each.name}@{element}" if index else each.name
+            given = columns.given[id][places] if id in columns.given else np.zeros(len(places), dtype=bool)
+            if not isinstance(each, m.Fact):
+                free[id] = ~given
+            if isinstance(domain, m.Range):
+                known = columns.numbers[id][places] if id in columns.numbers else np.zeros(len(places))
+                numbers[id] = np.where(given, known, float(middle(domain)))
+            elif isinstance(domain, m.OneOf):
+                named = columns.codes[id][places] if id in columns.codes else np.zeros(len(places), dtype=np.int64)
+                codes[id] = np.where(given, named, 0)
+            else:
+                flag = columns.flags[id][places] if id in columns.flags else np.ones(len(places), dtype=bool)
+                flags[id] = np.where(given, flag, True)
+    return Rows(len(places), numbers, codes, flags, free)
 
 
 def rows_of(plan: Plan, cases: Sequence[Case]) -> Rows:

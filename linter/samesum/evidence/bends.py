@@ -140,7 +140,7 @@ def _quotient(above: Way | None, below: Way | None, top: Span, bottom: Span) -> 
     if above.straight and below.straight:
         # (a + b·s) / (c + d·s) only rises or only falls where the divisor is not zero
         return Way(False, 0)
-    if above.up * below.up == -1 and top[0] >= 0 and bottom[0] > 0:
+    if above.up is not None and above.up * below.up == -1 and top[0] >= 0 and bottom[0] > 0:
         return Way(False, above.up)
     return BENT
 

@@ -6,16 +6,18 @@ move. Both are the largest over the projects, so projects that cannot matter any
 
 from __future__ import annotations
 
+import math
 import time
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
 
 from samesum.evidence.arrays import Array, Table
-from samesum.evidence.extremes import find_extremes
-from samesum.evidence.figures import Figures, spread_of
+from samesum.evidence.extremes import find_extremes, find_range, plan_work
+from samesum.evidence.figures import Figures
 from samesum.evidence.plan import Plan
+from samesum.evidence.steps import Work
 from samesum.evidence.values import Decide, Evaluator, Rows, TooMany, reference_decision
 from samesum.reading import model as m
 
@@ -85,40 +87,68 @@ def all_movers(figures: Sequence[Figures]) -> list[Mover]:
 def find_blame(figures: Sequence[Figures], deadline: float) -> list[Blame]:
     """Swing and what is left of each mover, the largest over all projects."""
     found = []
+    remaining = Remaining(figures, deadline)
     for mover in all_movers(figures):
         swing = left = None
         if any(np.isfinite(each.spread).any() for each in figures):
             swing = max((_swing(each, mover, deadline) for each in figures), default=0.0)
-            left = left_over(figures, frozenset({mover.id}), deadline)
+            left = remaining.left_over(frozenset({mover.id}))
         found.append(Blame(mover, swing, left))
     return found
 
 
-def left_over(figures: Sequence[Figures], held: frozenset[str], deadline: float) -> float | None:
-    """The largest spread when some movers are held at the reference. None when the time was up."""
-    most = 0.0
-    for each in figures:
-        spread = np.where(np.isfinite(each.spread), each.spread, -1.0)
-        order = np.argsort(-spread, kind="stable")
-        start, size = 0, FIRST
-        while start < len(order) and spread[order[start]] > most:
-            if time.monotonic() > deadline:
-                return None
-            part = order[start : start + size]
-            part = part[spread[part] > most]
-            try:
-                extremes = find_extremes(each.batch.plan, each.batch.rows.part(part), held)
-            except TooMany:
-                return None
-            reference = replace(each.reference, value=each.reference.value[part])
-            left = spread_of(extremes, reference)
-            most = max(most, float(np.nanmax(left, initial=0.0)))
-            start, size = start + size, size * 4
-    return 0.0 if most < SMALL else most
+@dataclass(slots=True)
+class Remaining:
+    """What is left when movers are held, for one set of figures. Work on small batches is kept and built upon."""
+
+    figures: Sequence[Figures]
+    deadline: float
+    _bases: dict[int, Work] = field(default_factory=dict)
+
+    def left_over(self, held: frozenset[str], enough: float = math.inf) -> float | None:
+        """The largest spread when some movers are held at the reference; stops looking at ``enough``. None when the
+        time was up or it would be too much work."""
+        most = 0.0
+        order = sorted(range(len(self.figures)), key=lambda place: -_widest(self.figures[place]))
+        for place in order:
+            each = self.figures[place]
+            spread = np.where(np.isfinite(each.spread), each.spread, -1.0)
+            rows = np.argsort(-spread, kind="stable")
+            start, size = 0, FIRST
+            while start < len(rows) and spread[rows[start]] > most and most < enough:
+                if time.monotonic() > self.deadline:
+                    return None
+                part = rows[start : start + size]
+                try:
+                    if each.batch.rows.count <= FIRST:
+                        low, high = find_range(each.batch.plan, each.batch.rows, held, self._base(place))
+                        part = np.arange(each.batch.rows.count)
+                    else:
+                        part = part[spread[part] > most]
+                        low, high = find_range(each.batch.plan, each.batch.rows.part(part), held)
+                except TooMany:
+                    return None
+                size_there = np.abs(each.reference.value[part])
+                with np.errstate(all="ignore"):
+                    left = (high - low) / np.where(size_there > 0, size_there, np.nan)
+                most = max(most, float(np.nanmax(left, initial=0.0)))
+                start, size = start + size, size * 4
+        return 0.0 if most < SMALL else most
+
+    def _base(self, place: int) -> Work:
+        if place not in self._bases:
+            batch = self.figures[place].batch
+            self._bases[place] = plan_work(batch.plan, batch.rows, frozenset())
+        return self._bases[place]
+
+
+def _widest(figures: Figures) -> float:
+    return float(np.nanmax(np.where(np.isfinite(figures.spread), figures.spread, -1.0), initial=-1.0))
 
 
 def closing_order(figures: Sequence[Figures], deadline: float) -> tuple[list[Closing], bool]:
     """Greedy: at each step the one that leaves least. False beside it when the time was up before the end."""
+    remaining = Remaining(figures, deadline)
     groups: dict[str, set[str]] = {}
     for mover in all_movers(figures):
         groups.setdefault(mover.general, set()).add(mover.id)
@@ -127,7 +157,7 @@ def closing_order(figures: Sequence[Figures], deadline: float) -> tuple[list[Clo
     while groups:
         best: tuple[float, str] | None = None
         for general, ids in groups.items():
-            left = left_over(figures, held | ids, deadline)
+            left = remaining.left_over(held | ids, math.inf if best is None else best[0])
             if left is None:
                 return found, False
             if best is None or left < best[0] - SMALL:

@@ -140,7 +140,9 @@ class Ranges:
             return Ranged(value, _scaled(base.slopes, iv.multiplied(iv.exactly(Fraction(exponent)), inner)))
         exponent_range = self.number(node.args[1])
         value = iv.powered(base.value, exponent_range.value)
-        by_base = iv.multiplied(exponent_range.value, iv.powered(base.value, iv.added(exponent_range.value, Interval(-ONE.low, -ONE.high))))
+        by_base = iv.multiplied(
+            exponent_range.value, iv.powered(base.value, iv.added(exponent_range.value, Interval(-ONE.low, -ONE.high)))
+        )
         by_exponent = iv.multiplied(value, iv.called("ln", base.value))
         return Ranged(value, _sum(_scaled(base.slopes, by_base), _scaled(exponent_range.slopes, by_exponent)))
 
@@ -262,7 +264,8 @@ class Ranges:
             case "is":
                 codes = self.boxes.codes[self.plan.nodes[node.args[0]].name]
                 chosen = np.isin(np.arange(len(codes)), node.chosen)
-                return Verdict(codes[chosen].any(axis=0), codes[~chosen].any(axis=0))
+                may, may_not = codes[chosen].any(axis=0), codes[~chosen].any(axis=0)
+                return Verdict(np.asarray(may), np.asarray(may_not))
             case "takes":
                 open_ = self.branches(node.args[0])
                 others = [may for place, may in enumerate(open_) if place != node.chosen[0]]

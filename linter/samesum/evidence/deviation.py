@@ -8,7 +8,6 @@ is known to matter by half a percent at the end without knowing the project.
 from __future__ import annotations
 
 import math
-import time
 from collections.abc import Sequence
 from dataclasses import dataclass, field
 
@@ -34,7 +33,9 @@ LONGEST = 60
 def domain_boxes(plan: Plan) -> Boxes:
     """One box that holds every project and everything that anybody decides."""
     low = {name: np.array([-math.inf if each.low is None else float(each.low)]) for name, each in plan.numeric.items()}
-    high = {name: np.array([math.inf if each.high is None else float(each.high)]) for name, each in plan.numeric.items()}
+    high = {
+        name: np.array([math.inf if each.high is None else float(each.high)]) for name, each in plan.numeric.items()
+    }
     codes = {name: np.ones((len(values), 1), dtype=bool) for name, values in plan.named.items()}
     yes = np.ones(1, dtype=bool)
     flags = {node.name: (yes, yes) for node in plan.nodes if node.kind == "holds"}
@@ -52,6 +53,7 @@ class Deviations:
     moved: list[bool] = field(init=False)
     _known: dict[int, Interval | None] = field(default_factory=dict)
     _sums: dict[int, Sum] = field(default_factory=dict)
+    _still: dict[int, bool] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
         self.ranges = Ranges(self.plan, domain_boxes(self.plan))
@@ -76,8 +78,29 @@ class Deviations:
 
     def of(self, number: int) -> Interval | None:
         if number not in self._known:
-            self._known[number] = self._of(number, self.plan.nodes[number]) if self.moved[number] else None
+            self._known[number] = None if self.still(number) else self._of(number, self.plan.nodes[number])
         return self._known[number]
+
+    def still(self, number: int) -> bool:
+        """Whether nothing that anybody decides moves the number at all: by equal formulas alone."""
+        found = self._still.get(number)
+        if found is None:
+            found = not self.moved[number] or self._is_still(self.plan.nodes[number])
+            self._still[number] = found
+        return found
+
+    def _is_still(self, node: Node) -> bool:
+        if node.kind in ("input", "code", "holds", "lookup", "point"):
+            return False
+        if node.kind != "select":
+            return all(self.still(each) for each in node.args)
+        bodies = node.args[1:]
+        if not all(self.still(each) for each in bodies):
+            return False
+        if not self.moved[node.args[0]]:
+            return True
+        sums = [self._sum(each) for each in bodies]
+        return all(each == sums[0] for each in sums[1:])
 
     def _of(self, number: int, node: Node) -> Interval | None:
         match node.kind:
@@ -131,23 +154,22 @@ class Deviations:
         return ANY
 
     def _linear(self, number: int, node: Node) -> Interval | None:
-        parts = [self.of(each) for each in node.args]
-        if all(part is None for part in parts):
-            return None
         terms = [
             iv.multiplied(self.ranges.number(each).value, iv.exactly(weight))
             for each, weight in zip(node.args, node.weights, strict=True)
         ]
         added = [*terms, iv.exactly(node.number)]
-        if all(term.low[0] >= 0 for term in added) or all(term.high[0] <= 0 for term in added):
+        total = self.ranges.number(number).value
+        one_sign = all(term.low[0] >= 0 for term in added) or all(term.high[0] <= 0 for term in added)
+        if not one_sign and total.low[0] <= 0 <= total.high[0]:
+            return ANY
+        parts = [self.of(each) for each in node.args]
+        if one_sign:
             # a mean of the parts' deviations, weighted by their size
             moving = [NONE if part is None else part for part in parts]
             if node.number or any(part is None for part in parts):
                 moving.append(NONE)
             return iv.around(moving)
-        total = self.ranges.number(number).value
-        if total.low[0] <= 0 <= total.high[0]:
-            return ANY
         found = NONE
         for term, part in zip(terms, parts, strict=True):
             if part is not None:
@@ -217,14 +239,16 @@ class Deviations:
         above, below = ratio(difference, a)
         box = atoms_box(self.ranges, (above, below))
         plan, node = mini_plan(self.plan, above, below)
-        names = tuple(name for name, (low, high) in box.items() if math.isfinite(low) and math.isfinite(high) and low < high)
+        names = tuple(
+            name for name, (low, high) in box.items() if math.isfinite(low) and math.isfinite(high) and low < high
+        )
         boxes = Boxes(
             1, {name: np.array([low]) for name, (low, _) in box.items()},
             {name: np.array([high]) for name, (_, high) in box.items()}, {}, {},
         )  # fmt: skip
-        until = min(self.deadline, time.monotonic() + 0.5)
         low, high = (
-            float(lowest_over(plan, node, boxes, names, until, 1e-6, highest=side).proved[0]) for side in (False, True)
+            float(lowest_over(plan, node, boxes, names, self.deadline, 1e-4, highest=side, most=2_000).proved[0])
+            for side in (False, True)
         )
         return ANY if math.isnan(low) or math.isnan(high) else Interval(np.array([low]), np.array([high]))
 
@@ -280,6 +304,3 @@ def _times(parts: Sequence[Interval | None]) -> Interval | None:
     for part in moving[1:]:
         made = iv.multiplied(made, iv.added(ONE, part))
     return iv.added(made, _negative(ONE))
-
-
-

@@ -18,7 +18,7 @@ from samesum.evidence.bounds import Boxes, Ranged, Ranges
 from samesum.evidence.intervals import Interval
 from samesum.evidence.plan import Plan
 
-MOST_BOXES = 400_000
+MOST_BOXES = 4_000_000
 AT_ONCE = 20_000
 
 
@@ -43,6 +43,7 @@ def lowest_over(
     reached: Array | None = None,
     problems: Array | None = None,
     scale: Array | None = None,
+    most: int = MOST_BOXES,
 ) -> Bracket:
     """The lowest (or ``highest``) of a node over each box, splitting the inputs ``names``. Stops when found and
     proved are within ``close`` of each other (relative to what was found), at ``deadline``, or when there are too
@@ -51,10 +52,10 @@ def lowest_over(
     ``reached``: what the caller knows to be reached, problem by problem; then nothing else is looked for. Without
     it, only one route may be open (``taken`` settles the others), so that a number in the middle of a box is reached.
     ``problems``: the problem of each box, where several boxes belong to one. ``scale``: what ``close`` is
-    relative to where a problem's own number is smaller."""
+    relative to where a problem's own number is smaller; ``most``: boxes looked at, all in all."""
     if problems is None:
         problems = np.arange(boxes.count)
-    work = _Division(plan, node, boxes, names, problems, -1.0 if highest else 1.0, reached, scale)
+    work = _Division(plan, node, boxes, names, problems, -1.0 if highest else 1.0, reached, scale, most)
     return work.run(deadline, close)
 
 
@@ -68,11 +69,14 @@ class _Division:
     sign: float
     reached: Array | None
     scale: Array | None
+    most: int
 
     def run(self, deadline: float, close: float) -> Bracket:
         count = int(self.problems.max()) + 1 if len(self.problems) else 0
-        found: Array = np.full(count, np.inf) if self.reached is None else self.sign * np.where(
-            np.isnan(self.reached), self.sign * np.inf, self.reached
+        found: Array = (
+            np.full(count, np.inf)
+            if self.reached is None
+            else self.sign * np.where(np.isnan(self.reached), self.sign * np.inf, self.reached)
         )
         point = {name: np.full(count, np.nan) for name in self.names}
         owner = np.arange(self.boxes.count)
@@ -83,6 +87,7 @@ class _Division:
             for side in (self.boxes.low, self.boxes.high)
         )
         settled: Array = np.full(count, np.inf)
+        looked = 0
         bound, low, high, split = self._bounded(owner, low, high)
         self._look(owner, (low + high) / 2, found, point)
         self._look(owner, low, found, point)
@@ -96,7 +101,8 @@ class _Division:
             np.minimum.at(settled, self.problems[owner[finished]], bound[finished])
             keep = ~finished
             owner, low, high, bound, split = owner[keep], low[:, keep], high[:, keep], bound[keep], split[keep]
-            if not len(owner) or time.monotonic() > deadline or len(owner) > MOST_BOXES:
+            looked += len(owner)
+            if not len(owner) or time.monotonic() > deadline or looked > self.most or len(owner) > 400_000:
                 break
             order = np.argsort(bound, kind="stable")
             now, later = order[:AT_ONCE], order[AT_ONCE:]
@@ -118,7 +124,11 @@ class _Division:
         first, second = high.copy(), low.copy()
         first[split, line] = middle
         second[split, line] = middle
-        return np.concatenate([owner, owner]), np.concatenate([low, second], axis=1), np.concatenate([first, high], axis=1)
+        return (
+            np.concatenate([owner, owner]),
+            np.concatenate([low, second], axis=1),
+            np.concatenate([first, high], axis=1),
+        )
 
     def _inputs(self, owner: Array, low: Array, high: Array) -> Boxes:
         part = self.boxes.part(owner)
@@ -151,7 +161,9 @@ class _Division:
             width = high[place] - low[place]
             with np.errstate(all="ignore"):
                 steepness = np.where(width > 0, np.maximum(np.abs(down), np.abs(up)) * width, 0.0)
-            steep[place] = np.where(np.isfinite(steepness), steepness, np.where(width > 0, 1e300 * np.minimum(width, 1e6), 0.0))
+            steep[place] = np.where(
+                np.isfinite(steepness), steepness, np.where(width > 0, 1e300 * np.minimum(width, 1e6), 0.0)
+            )
         if pinned.any():
             again = np.flatnonzero(pinned)
             inner = self._ranged(owner[again], low[:, again], high[:, again], False)
@@ -201,4 +213,5 @@ def _thin(low: Array, high: Array) -> Array:
     """Boxes that cannot usefully be halved."""
     if not len(low):
         return np.ones(low.shape[1], dtype=bool)
-    return np.all((high - low) <= 4 * np.spacing(np.maximum(np.abs(low), np.abs(high))), axis=0)
+    narrow = np.all((high - low) <= 4 * np.spacing(np.maximum(np.abs(low), np.abs(high))), axis=0)
+    return np.asarray(narrow)

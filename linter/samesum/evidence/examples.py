@@ -32,9 +32,7 @@ class Example:
     inputs: Mapping[str, Value | tuple[Value, ...]]
 
 
-def examples_of(
-    figures: Sequence[Figures], at: Sequence[tuple[int, int]], cases: Sequence[Case]
-) -> list[Example]:
+def examples_of(figures: Sequence[Figures], at: Sequence[tuple[int, int]], cases: Sequence[Case]) -> list[Example]:
     """Every project that says what is expected, worked out on the route it names; the reference elsewhere."""
     found = []
     for place, case in enumerate(cases):

@@ -8,12 +8,13 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
-from samesum.evidence.arrays import Array, Table, at, combined, picked, reduced, stacked
-from samesum.evidence.hulls import Hull, applied, ends_wanted
+from samesum.evidence.arrays import Array, Table, at, combined, picked, reduced, stacked, where_code
 from samesum.evidence.bends import BENT, way_of
+from samesum.evidence.hulls import Hull, applied, ends_wanted
 from samesum.evidence.plan import CONDITIONS, Plan
 from samesum.evidence.settings import candidates_of, ends_of
 from samesum.evidence.steps import Step, Work
@@ -59,14 +60,39 @@ def find_extremes(plan: Plan, rows: Rows, held: frozenset[str] = frozenset()) ->
     if size < rows.count:
         parts = [rows.part(slice(start, start + size)) for start in range(0, rows.count, size)]
         return joined([find_extremes(plan, part, held) for part in parts])
-    bent = frozenset(
+    bent = _bent(plan, work)
+    return _refined(plan, rows, held, bent) if bent else _run(plan, work)
+
+
+def find_range(plan: Plan, rows: Rows, held: frozenset[str], base: Work | None = None) -> tuple[Array, Array]:
+    """Only the lowest and highest values. ``base`` is the work on the same rows with nothing held, if it is at
+    hand."""
+    if base is None:
+        work = plan_work(plan, rows, held)
+    else:
+        evaluator = base.evaluator.holding(held)
+        structure = find_structure(evaluator)
+        work = Work(evaluator, structure, base.unsure)
+        work.plan_steps()
+        if work.largest > LARGE:
+            work = _with_parts(evaluator, structure, base.unsure, frozenset(), work)
+    if work.largest * rows.count > MOST_AT_ONCE or _bent(plan, work):
+        extremes = find_extremes(plan, rows, held)
+        return extremes.lowest.value, extremes.highest.value
+    with np.errstate(all="ignore"):
+        hull = _forward(work)[-1]
+    return np.broadcast_to(hull.low.data, (rows.count,)), np.broadcast_to(hull.high.data, (rows.count,))
+
+
+def _bent(plan: Plan, work: Work) -> frozenset[str]:
+    """Free settings in which the result both rises and falls."""
+    return frozenset(
         plan.nodes[number].name
         for number in work.structure.children
-        if work.evaluator.is_free(plan.nodes[number].name)
-        and plan.nodes[number].kind == "input"
+        if plan.nodes[number].kind == "input"
+        and work.evaluator.is_free(plan.nodes[number].name)
         and way_of(work.structure, number) == BENT
     )
-    return _refined(plan, rows, held, bent) if bent else _run(plan, work)
 
 
 def _refined(plan: Plan, rows: Rows, held: frozenset[str], bent: frozenset[str]) -> Extremes:
@@ -226,7 +252,7 @@ def _selected(evaluator: Evaluator, step: Step, hulls: list[Hull]) -> Hull:
                 continue
             value = Table((), np.array([np.nan]))
             for place, body in zip(step.places, bodies, strict=True):
-                value = combined(lambda c, v, w, place=place: np.where(c == place, v, w), codes, body, value)
+                value = combined(where_code(place), codes, body, value)
             sides.append(value)
             continue
         assert state.axis is not None
@@ -328,7 +354,8 @@ def _choose(
         line = np.arange(rows) if moved.shape[-1] != 1 else np.zeros(rows, dtype=np.intp)
         if kept:
             flat = moved.reshape(*moved.shape[: len(kept)], -1, moved.shape[-1])
-            cut = flat[(*(places[axis] for axis in kept), slice(None), line)]
+            index: Any = (*(places[axis] for axis in kept), slice(None), line)
+            cut = flat[index]
         else:
             cut = moved.reshape(-1, moved.shape[-1])[:, line].T
         lowest = np.argmin(np.where(np.isnan(cut), np.inf, cut), axis=1)
@@ -375,7 +402,10 @@ def joined(parts: list[Extremes]) -> Extremes:
         first = extremes[0].inputs
 
         def glued(which: str) -> dict[str, Array]:
-            return {name: np.concatenate([getattr(each.inputs, which)[name] for each in extremes]) for name in getattr(first, which)}
+            return {
+                name: np.concatenate([getattr(each.inputs, which)[name] for each in extremes])
+                for name in getattr(first, which)
+            }
 
         count = sum(each.inputs.count for each in extremes)
         inputs = Rows(count, glued("numbers"), glued("codes"), glued("flags"), {})
@@ -386,6 +416,3 @@ def joined(parts: list[Extremes]) -> Extremes:
         one([each.highest for each in parts]),
         np.concatenate([each.exact for each in parts]),
     )
-
-
-__all__ = ["Extreme", "Extremes", "Structure", "find_extremes"]

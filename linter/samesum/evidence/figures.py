@@ -141,11 +141,7 @@ def _outside(evaluator: Evaluator) -> Array:
         if truth.valid is not None:
             parts.append(truth.valid)
     axes = union(parts)
-    parts += [
-        Table((axis,), allowed)
-        for axis in axes
-        if (allowed := evaluator.axes[axis].allowed) is not None
-    ]
+    parts += [Table((axis,), allowed) for axis in axes if (allowed := evaluator.axes[axis].allowed) is not None]
     inside: Any = np.array(True)
     for part in parts:
         inside = inside & spread_out(part, axes)
@@ -176,7 +172,7 @@ def _distinct(evaluator: Evaluator) -> Array:
     known = ~np.isnan(ordered)
     with np.errstate(all="ignore"):
         apart = np.diff(ordered, axis=0) > 1e-9 * np.maximum(np.abs(ordered[1:]), 1e-9)
-    return known[0].astype(np.int64) + (apart & known[1:]).sum(axis=0)
+    return np.asarray(known[0].astype(np.int64) + (apart & known[1:]).sum(axis=0))
 
 
 def issued(values: Array, result: m.Result) -> Array:
@@ -188,8 +184,10 @@ def issued(values: Array, result: m.Result) -> Array:
         steps = values * (float(step.denominator) / float(step.numerator))
         ends = np.round(steps * 2) / 2
         steps = np.where(np.abs(steps - ends) < np.maximum(1e-9, 1e-13 * np.abs(steps)), ends, steps)
-        ways = {"down": np.floor, "up": np.ceil, "nearest": nearest_whole}
-        whole = ways[result.rounding](steps)
+        if result.rounding == "nearest":
+            whole = nearest_whole(steps)
+        else:
+            whole = np.floor(steps) if result.rounding == "down" else np.ceil(steps)
         return np.asarray(whole * float(step.numerator) / float(step.denominator) + 0.0)
 
 

@@ -109,7 +109,9 @@ def called(name: str, a: Interval) -> Interval:
         match name:
             case "abs":
                 zero = (low <= 0) & (high >= 0)
-                return Interval(np.where(zero, 0.0, np.minimum(np.abs(low), np.abs(high))), np.maximum(np.abs(low), np.abs(high)))
+                return Interval(
+                    np.where(zero, 0.0, np.minimum(np.abs(low), np.abs(high))), np.maximum(np.abs(low), np.abs(high))
+                )
             case "sqrt":
                 made = outward(np.sqrt(np.maximum(low, 0.0)), np.sqrt(np.maximum(high, 0.0)))
                 return Interval(np.maximum(made.low, 0.0), made.high)

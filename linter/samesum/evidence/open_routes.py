@@ -70,7 +70,10 @@ class _Counter:
     ) -> list[Table]:
         mine = [factor for factor in factors if axis in factor.axes]
         axes = union(mine)
-        if math.prod(self.sizes[each] for each in axes) * min(self.evaluator.rows.count, 64) > MOST_CELLS or len(axes) > 60:
+        if (
+            math.prod(self.sizes[each] for each in axes) * min(self.evaluator.rows.count, 64) > MOST_CELLS
+            or len(axes) > 60
+        ):
             raise TooMany
         joint: Array = spread_out(mine[0], axes)
         for factor in mine[1:]:
@@ -249,6 +252,3 @@ def _when_reached(structure: Structure, shared: set[int]) -> dict[int, Reached]:
             inner = through.get(number, {})
             found[number] = {point: frozenset(branches) for point, branches in sorted(inner.items())}
     return found
-
-
-

@@ -234,7 +234,7 @@ class Maker:
             case m.Reduction(name=name, body=body, index=index):
                 count = self.graph.sizes.get(index, 0)
                 parts = [self.expression(body, {**elements, index: element}) for element in range(1, count + 1)]
-                if name == "min" or name == "max":
+                if name in ("min", "max"):
                     return self.extreme(name, parts)
                 share = Fraction(1, count) if name == "mean" else Fraction(1)
                 return self.linear([(part, share) for part in parts])
@@ -272,9 +272,9 @@ class Maker:
             return self.number(a.number ** int(b.number))
         return left if b.kind == "number" and b.number == 1 else self.make(Node("power", (left, right)))
 
-    def extreme(self, name: Literal["min", "max"], parts: Sequence[int]) -> int:
+    def extreme(self, name: str, parts: Sequence[int]) -> int:
         once = tuple(dict.fromkeys(parts))
-        return once[0] if len(once) == 1 else self.make(Node(name, once))
+        return once[0] if len(once) == 1 else self.make(Node("min" if name == "min" else "max", once))
 
     def call(self, name: str, part: int) -> int:
         return self.make(Node("call", (part,), name))

@@ -15,8 +15,9 @@ from samesum.evidence.figures import Figures, codes_of
 from samesum.evidence.plan import Plan, Unplannable, make_plan
 from samesum.evidence.ways import Apart, further_apart
 from samesum.evidence.witness import usual
-from samesum.evidence.worst import Project, Worst, widest, worst_at, worst_case_of
+from samesum.evidence.worst import Project, Worst, project_at, values_of, widest, worst_at, worst_case_of
 from samesum.graph import DecisionGraph
+from samesum.written import percent
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
@@ -74,7 +75,9 @@ def prove(
     }
     high, by = _upper(plan, overlapping, tolerance, deadline)
     worst = _lower(plan, figures, names, at, high, tolerance, deadline)
-    return _verdict(evidence, stuck, tolerance, high, by, worst, harmless, bool(len(names)))
+    case = worst_case_of(figures, names)
+    given = None if case is None else (case[0], case[1])
+    return _verdict(evidence, stuck, tolerance, high, by, worst, harmless, bool(len(names)), given)
 
 
 def _single_route(evidence: Evidence, stuck: Sequence[str]) -> str:
@@ -132,13 +135,15 @@ def _lower(
     given = worst_case_of(figures, names)
     if given is not None:
         spread, name, where, row = given
-        points = where.batch.plan.graph.branch_points
+        own = where.batch.plan
+        points = own.graph.branch_points
+        values = values_of(own, project_at(own, where.batch.rows, row))
 
         def route(codes: dict[str, int]) -> tuple[tuple[str, str], ...]:
             return tuple((id, point.branches[codes[id]]) for id, point in points.items() if id in codes)
 
         best = Worst(
-            spread, {}, route(dict(codes_of(where.lowest, row))), route(dict(codes_of(where.highest, row))), name
+            spread, values, route(dict(codes_of(where.lowest, row))), route(dict(codes_of(where.highest, row))), name
         )
     if high == 0.0:
         return best
@@ -170,6 +175,12 @@ def _project(plan: Plan, apart: Apart) -> Project:
     return project
 
 
+def _share(value: float) -> str:
+    if value >= 10:
+        return f"{value:,.3g} times" if value < 1e6 else f"{value:.2e} times"
+    return percent(Fraction(f"{value:.6g}"))
+
+
 def _verdict(
     evidence: Evidence,
     stuck: tuple[str, ...],
@@ -179,6 +190,7 @@ def _verdict(
     worst: Worst | None,
     harmless: tuple[tuple[str, tuple[str, str]], ...],
     any_cases: bool,
+    given: tuple[float, str] | None,
 ) -> Proof:
     gaps = evidence.conditions.gaps
     low = worst.spread if worst is not None else None
@@ -191,8 +203,9 @@ def _verdict(
         return Proof(verdict, says, low, high, by, witness, gaps, harmless, stuck)
 
     if low is not None and low > tolerance:
-        where = worst.case if worst is not None and worst.case else "a project that was found"
-        return made("differs", f"{where} gets results that lie apart by {low:.3g} of the reference")
+        if given is not None and given[0] > max(float(tolerance), 1e-12):
+            return made("differs", f"the results of {given[1]} lie {_share(given[0])} of the reference apart")
+        return made("differs", f"a project was found whose results lie {_share(low)} of the reference apart")
     if gaps or stuck or (evidence.counts.exact and evidence.counts.per_project_least == 0):
         places = ", ".join(dict.fromkeys(gap.branch_point for gap in gaps))
         return made("gap", f"some project has no result at {places}" if places else "some project has no result")
@@ -202,7 +215,9 @@ def _verdict(
     if high is not None and high <= tolerance and certain:
         if high == 0.0 or not tolerance:
             return made("same number", f"several routes, proved to give one number ({by})")
-        return made("within tolerance", f"no project's results lie further apart than {float(high):.4g} ({by})")
+        return made(
+            "within tolerance", f"no project's results lie further apart than {_share(high)} of the reference ({by})"
+        )
     if any_cases:
         return made("agrees on these cases", "no difference was found, and none was ruled out")
     return made("agrees on these cases", "no difference was found among the projects tried, and none was ruled out")

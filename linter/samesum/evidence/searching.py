@@ -20,9 +20,7 @@ from samesum.evidence.values import Evaluator, Rows, TooMany, decision, preferre
 MOST_WAYS = 512
 
 
-def search(
-    plan: Plan, rows: Rows, start: Extremes | None, deadline: float
-) -> tuple[Extremes, Array, Array]:
+def search(plan: Plan, rows: Rows, start: Extremes | None, deadline: float) -> tuple[Extremes, Array, Array]:
     """The best that was found from ``start`` (or the reference) by changing one decision at a time, and proved
     bounds. ``exact`` where the two meet."""
     found = []
@@ -183,7 +181,9 @@ def _mixed(one: Rows, other: Rows, where: Array) -> Rows:
     def mixed(a: Mapping[str, Array], b: Mapping[str, Array]) -> dict[str, Array]:
         return {name: each if b[name] is each else np.where(where, b[name], each) for name, each in a.items()}
 
-    return Rows(one.count, mixed(one.numbers, other.numbers), mixed(one.codes, other.codes), mixed(one.flags, other.flags), {})
+    return Rows(
+        one.count, mixed(one.numbers, other.numbers), mixed(one.codes, other.codes), mixed(one.flags, other.flags), {}
+    )
 
 
 def _value(plan: Plan, inputs: Rows, codes: Mapping[str, Array]) -> Array:

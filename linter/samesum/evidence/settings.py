@@ -74,7 +74,9 @@ def _turning(plan: Plan, name: str) -> Iterator[tuple[int, float | None]]:
             for place, (arg, key) in enumerate(zip(node.args, table.keys, strict=True)):
                 if key.bands and depends[arg]:
                     labels = [row.labels[place] for row in table.rows]
-                    limits = {bound for label in labels if isinstance(label, m.Band) for bound in (label.low, label.high)}
+                    limits = {
+                        bound for label in labels if isinstance(label, m.Band) for bound in (label.low, label.high)
+                    }
                     for limit in sorted(bound for bound in limits if bound is not None):
                         yield arg, float(limit)
 
@@ -101,11 +103,15 @@ def _turns(
     else:
         left, right = evaluator.number(node), constant(bound)
     difference = combined(np.subtract, left, right)
-    axis = next((place for place, each in enumerate(evaluator.axes) if each.kind == "numeric" and each.name == name), -1)
+    axis = next(
+        (place for place, each in enumerate(evaluator.axes) if each.kind == "numeric" and each.name == name), -1
+    )
     if axis not in difference.axes:
         return []
     data = np.moveaxis(difference.data, difference.axes.index(axis), 0)
-    data = np.broadcast_to(data.reshape(len(points), -1, data.shape[-1]), (len(points), difference.cells // len(points), rows.count))
+    data = np.broadcast_to(
+        data.reshape(len(points), -1, data.shape[-1]), (len(points), difference.cells // len(points), rows.count)
+    )
     low, middle, high = data[0:-1:2], data[1::2], data[2::2]
     width = lines[-1] - lines[0]
     clean = ((lines[1:] - lines[:-1]) > 2.5 * BESIDE * width)[:, None, :] & rows.free[name]

@@ -20,6 +20,9 @@ from samesum.evidence.values import Evaluator
 NARY = ("linear", "product", "min", "max")
 
 
+NOTHING = Node("true")
+
+
 @dataclass(frozen=True, slots=True)
 class Step:
     """One step of the work: ``kind`` is ``given``, ``wide`` (a setting from end to end), ``apply``, ``select``,
@@ -28,7 +31,7 @@ class Step:
     kind: str
     out: int
     inputs: tuple[int, ...] = ()
-    node: Node = Node("true")
+    node: Node = NOTHING
     number: int = -1
     axes: tuple[int, ...] = ()
     places: tuple[int, ...] = ()
@@ -104,7 +107,6 @@ class Work:
         return self._new(step, self.slot_axes[slot] - set(axes), True)
 
     def _planned(self, number: int, node: Node) -> int:
-        evaluator = self.evaluator
         if number in self.structure.full or node.kind in ("number", "lookup", "code", "named"):
             return self._given(number)
         if node.kind == "input":

@@ -76,7 +76,9 @@ class Structure:
             node = self.plan.nodes[number]
             inner = [0 if each in self.cuts else uses.get(each, 0) for each in self.children[number]]
             if target in self.cuts:
-                inner = [0 if each == target else count for each, count in zip(self.children[number], inner, strict=True)]
+                inner = [
+                    0 if each == target else count for each, count in zip(self.children[number], inner, strict=True)
+                ]
             count = max(inner, default=0) if node.kind == "select" else sum(inner)
             if count:
                 uses[number] = min(count, 9)
@@ -89,7 +91,9 @@ class Structure:
     def owner(self, leaf: int) -> int:
         """Where an axis that begins at ``leaf`` is folded."""
         at = self.dominator[leaf]
-        while at != self.plan.root and (at in self.full or self.plan.nodes[at].kind in CONDITIONS or not self.met_once(at)):
+        while at != self.plan.root and (
+            at in self.full or self.plan.nodes[at].kind in CONDITIONS or not self.met_once(at)
+        ):
             at = self.dominator[at]
         return at
 
@@ -172,7 +176,9 @@ def _spans(evaluator: Evaluator, children: Mapping[int, tuple[int, ...]]) -> dic
         node = plan.nodes[number]
         if node.kind in CONDITIONS or node.kind in ("code", "named"):
             continue
-        found[number] = _span(evaluator, node, [found.get(each, (0.0, 0.0)) for each in node.args], found, children[number])
+        found[number] = _span(
+            evaluator, node, [found.get(each, (0.0, 0.0)) for each in node.args], found, children[number]
+        )
     return found
 
 

@@ -1,4 +1,4 @@
-"""The evidence of a trial: what every project gets on every route, who moves it, and what is proved for all projects."""
+"""The evidence of a trial: what every project gets on every route, who moves it, and what is proved for all."""
 
 from __future__ import annotations
 
@@ -16,9 +16,11 @@ from samesum.evidence.examples import Example, examples_of
 from samesum.evidence.extremes import Extreme
 from samesum.evidence.figures import NO_COUNT, Figures, figures_of, issued
 from samesum.evidence.witness import Value
+from samesum.evidence.working import Line, working
 from samesum.graph import DecisionGraph
 from samesum.reading import model as m
 from samesum.reading.cases import Case
+from samesum.written import plain
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
@@ -97,7 +99,14 @@ def try_out(
     """Tries a rulebook out on projects, within about ``seconds``. ``evidence`` may be handed in when it was gathered
     already. Raises ``Unplannable`` when a part of the rulebook that the result needs could not be read."""
     return try_batches(
-        graph, batches_of(graph.model, cases), [case.name for case in cases], cases, seconds, tolerance, evidence, progress
+        graph,
+        batches_of(graph.model, cases),
+        [case.name for case in cases],
+        cases,
+        seconds,
+        tolerance,
+        evidence,
+        progress,
     )
 
 
@@ -182,7 +191,53 @@ def end_of(figures: Figures, extreme: Extreme, row: int) -> End | None:
             settings.append((setting.name, setting.domain.values[int(extreme.inputs.codes[setting.name][row])]))
         else:
             settings.append((setting.name, bool(extreme.inputs.flags[setting.name][row])))
-    judgements = tuple(
-        (each.name, bool(extreme.inputs.flags[each.name][row])) for each in plan.graph.model.judgements
-    )
+    judgements = tuple((each.name, bool(extreme.inputs.flags[each.name][row])) for each in plan.graph.model.judgements)
     return End(value, float(issued(np.array([value]), result)[0]), tuple(route), tuple(settings), judgements)
+
+
+@dataclass(frozen=True, slots=True)
+class Explained:
+    """A calculation step by step, and what it comes to in a sentence."""
+
+    lines: tuple[Line, ...]
+    says: str
+
+
+def explained(graph: DecisionGraph, case: Case, route: str) -> Explained | str:
+    """The calculation of one project on a route: ``lowest``, ``highest``, ``reference``, or branches as in
+    ``soil_carbon=plots,methane=2`` (the reference elsewhere). A text when the route cannot be understood."""
+    from samesum.reading.cases import branch_points, matching
+    from samesum.reading.words import nearest
+
+    [batch] = batches_of(graph.model, [case])
+    taken: dict[str, str] = {}
+    values = dict(case.values)
+    if route in ("lowest", "highest"):
+        figures = figures_of(batch, time.monotonic() + 5.0)
+        end = end_of(figures, figures.lowest if route == "lowest" else figures.highest, 0)
+        if end is None:
+            return f"{case.name} has no result on any route"
+        taken = dict(end.route)
+        for name, value in (*end.settings, *end.judgements):
+            values[name] = Fraction(repr(value)) if isinstance(value, float) else value
+    elif route != "reference":
+        known = branch_points(batch.plan.graph.model)
+        for part in filter(None, (each.strip() for each in route.split(","))):
+            id, equals, branch = (each.strip() for each in part.partition("="))
+            points = matching(known, id)
+            if not equals or not points:
+                close = nearest(id, known)
+                return f"`{id}` is no branch point of {case.name}" + (f"; did you mean `{close}`?" if close else "")
+            if branch not in known[points[0]]:
+                return f"`{id}` has no branch `{branch}`; its branches are {', '.join(known[points[0]])}"
+            taken.update(dict.fromkeys(points, branch))
+    lines = working(batch.plan.graph, values, taken)
+    result = graph.model.result
+    assert result is not None
+    final = next((line.value for line in lines if line.id == result.name), None)
+    if final is None:
+        return Explained(tuple(lines), "There is no result on this route.")
+    after = float(issued(np.array([float(final)]), result)[0])
+    unit = f" {result.unit.text}" if result.unit.text else ""
+    how = f", rounded {result.rounding} to {plain(result.step)}" if result.rounding and result.step else ""
+    return Explained(tuple(lines), f"Issued: {after:,.10g}{unit}{how}")

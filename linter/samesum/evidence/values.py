@@ -16,7 +16,7 @@ from typing import Any
 
 import numpy as np
 
-from samesum.evidence.arrays import Array, Table, at, combined, constant, picked, spread_out, stacked, union
+from samesum.evidence.arrays import Array, Table, at, constant, spread_out, stacked, union, where_code
 from samesum.evidence.plan import Node, Plan
 from samesum.reading import model as m
 
@@ -114,11 +114,24 @@ class Evaluator:
         free = self.rows.free.get(name)
         if free is None or free.all():
             return None
-        return free[None, :] | (np.arange(size)[:, None] == values[None, :])
+        return np.asarray(free[None, :] | (np.arange(size)[:, None] == values[None, :]))
 
     def is_free(self, name: str) -> bool:
         free = self.rows.free.get(name)
         return self.decide is None and name not in self.held and free is not None and bool(free.any())
+
+    def holding(self, held: frozenset[str]) -> Evaluator:
+        """The same with more held at the reference; what does not depend on it is not worked out again."""
+        made = Evaluator(self.plan, self.rows, self.decide, self.held | held, self.candidates, list(self.axes))
+        made._axis_of = dict(self._axis_of)
+        touched: list[bool] = []
+        for node in self.plan.nodes:
+            own = node.name in held and node.kind in ("point", "holds", "input", "code")
+            touched.append(own or any(touched[each] for each in node.args))
+        made._numbers = {number: table for number, table in self._numbers.items() if not touched[number]}
+        made._truths = {number: truth for number, truth in self._truths.items() if not touched[number]}
+        made._states = {number: state for number, state in self._states.items() if not touched[number]}
+        return made
 
     # -- conditions ---------------------------------------------------------------------
 
@@ -303,7 +316,9 @@ class Evaluator:
                 value = self.number(node.args[0])
                 for each in node.args[1:]:
                     truth = self.truth(each)
-                    valid = truth.holds if truth.valid is None else self._sized(np.logical_and, truth.holds, truth.valid)
+                    valid = (
+                        truth.holds if truth.valid is None else self._sized(np.logical_and, truth.holds, truth.valid)
+                    )
                     value = self._sized(lambda v, w: np.where(w, v, np.nan), value, valid)
                 return value
             case "lookup":
@@ -330,9 +345,7 @@ class Evaluator:
             for each in taken:
                 if each >= 0:
                     here = self.number(bodies[each])
-                    value = self._sized(
-                        lambda c, v, w, each=each: np.where(c == each, v, w), codes, here, value
-                    )
+                    value = self._sized(where_code(each), codes, here, value)
             return value
         assert state.axis is not None
         parts = []
@@ -359,7 +372,9 @@ class Evaluator:
         for row in reversed(table.rows):
             here: Any = True
             for label, key, array, arg in zip(row.labels, table.keys, arrays, node.args, strict=True):
-                here = here & (within(array, label) if isinstance(label, m.Band) else array == self._code(key, arg, label))
+                here = here & (
+                    within(array, label) if isinstance(label, m.Band) else array == self._code(key, arg, label)
+                )
             value = np.where(here, float(row.value), value)
         return Table(axes, value)
 
@@ -559,6 +574,3 @@ def route_codes(evaluator: Evaluator) -> dict[str, Array]:
             continue
         found[id] = np.where(here, _codes(evaluator.state(number), count), -1).astype(np.int16)
     return found
-
-
-__all__ = ["Evaluator", "Rows", "State", "TooMany", "combined", "picked"]

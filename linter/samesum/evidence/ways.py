@@ -206,7 +206,11 @@ class Executor:
                 name = self.plan.nodes[node.args[0]].name
                 others = tuple(code for code in range(len(self.plan.named[name])) if code not in node.chosen)
                 pairs = ((node.chosen, True), (others, False))
-                return [(when, truth) for codes, truth in pairs if codes and ("never", name) not in (when := self._code(name, codes))]
+                return [
+                    (when, truth)
+                    for codes, truth in pairs
+                    if codes and ("never", name) not in (when := self._code(name, codes))
+                ]
             case "takes":
                 point = self.plan.point(node.args[0])
                 return [
@@ -330,16 +334,13 @@ def further_apart(plan: Plan, tolerance: Fraction, deadline: float) -> Apart:
     except TooManyWays:
         return Apart("cannot tell")
     answer: Answer = "no"
-    try:
-        solver = s.Solver(box, deadline)
-        for when, high, low, reference in questions:
-            found = _ask(solver, plan, when, high, low, reference, tolerance)
-            if found.answer == "yes":
-                return found
-            if found.answer == "cannot tell":
-                answer = "cannot tell"
-    except s.Unsuitable:
-        return Apart("cannot tell")
+    solver = s.Solver(box, deadline)
+    for when, high, low, reference in questions:
+        found = _ask(solver, plan, when, high, low, reference, tolerance)
+        if found.answer == "yes":
+            return found
+        if found.answer == "cannot tell":
+            answer = "cannot tell"
     return Apart(answer)
 
 
@@ -372,7 +373,7 @@ def _ask(
         assumed = [_signed(solver, value, allowed) for value, allowed in signs]
         assumed.append(solver.sign(beyond, s.POSITIVE))
         if tolerance:
-            assumed.append(solver.sign(reference, s.MERGED_POSITIVE if side > 0 else s.MERGED_NEGATIVE))
+            assumed.append(solver.negated(solver.sign(reference, s.NEGATIVE if side > 0 else s.POSITIVE)))
         found = solver.check(*assumed)
         if found == "yes":
             return Apart("yes", solver.point(), codes)
@@ -384,13 +385,8 @@ def _ask(
 
 
 def _signed(solver: s.Solver, value: Sum, allowed: frozenset[int]) -> Any:
-    kinds = {
-        frozenset((-1,)): s.NEGATIVE,
-        frozenset((0,)): s.ZERO,
-        frozenset((1,)): s.POSITIVE,
-        frozenset((-1, 0)): s.MERGED_NEGATIVE,
-        frozenset((0, 1)): s.MERGED_POSITIVE,
-    }
-    if allowed in kinds:
-        return solver.sign(value, kinds[allowed])
-    return solver.negated(solver.sign(value, s.ZERO))
+    told = {-1: s.NEGATIVE, 0: s.ZERO, 1: s.POSITIVE}
+    if len(allowed) == 1:
+        return solver.sign(value, told[next(iter(allowed))])
+    [other] = ALL_SIGNS - allowed
+    return solver.negated(solver.sign(value, told[other]))

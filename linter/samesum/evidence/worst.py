@@ -15,18 +15,18 @@ import numpy as np
 
 from samesum.evidence.arrays import Array
 from samesum.evidence.batches import middle, rows_of
-from samesum.evidence.extremes import Extremes, find_extremes
+from samesum.evidence.extremes import Extremes, find_extremes, find_range
 from samesum.evidence.figures import Figures, reference_of, spread_of
 from samesum.evidence.plan import Plan
-from samesum.evidence.values import TooMany
+from samesum.evidence.values import Rows, TooMany
 from samesum.evidence.witness import Value
 from samesum.reading import model as m
 from samesum.reading.cases import Case
 from samesum.spans import START
 
-DRAWN = 192
+DRAWN = 96
 ROUNDS = 14
-MUTANTS = 96
+MUTANTS = 64
 WIDE = Fraction(1000)  # how far to look where a fact has no bound
 
 Project = dict[str, Value]
@@ -104,6 +104,22 @@ def values_of(plan: Plan, project: Project) -> dict[str, Value | tuple[Value, ..
     return found
 
 
+def project_at(plan: Plan, rows: Rows, row: int) -> Project:
+    """The facts of one row, by id; numbers as the shortest decimals that are these floats."""
+    project: Project = {}
+    for fact in plan.graph.model.facts:
+        size = plan.graph.sizes.get(fact.index, 0)
+        for element in range(1, size + 1) if fact.index else (0,):
+            id = f"{fact.name}@{element}" if fact.index else fact.name
+            if isinstance(fact.domain, m.OneOf):
+                project[id] = fact.domain.values[int(rows.codes[id][row])]
+            elif isinstance(fact.domain, m.YesNo):
+                project[id] = bool(rows.flags[id][row])
+            else:
+                project[id] = Fraction(repr(float(rows.numbers[id][row])))
+    return project
+
+
 def _spreads(plan: Plan, projects: Sequence[Project]) -> tuple[Extremes, Array]:
     cases = [Case("", values_of(plan, project), None, START) for project in projects]
     rows = rows_of(plan, cases)
@@ -112,10 +128,14 @@ def _spreads(plan: Plan, projects: Sequence[Project]) -> tuple[Extremes, Array]:
 
 
 def _tried(plan: Plan, projects: Sequence[Project]) -> tuple[float, Project] | None:
+    rows = rows_of(plan, [Case("", values_of(plan, project), None, START) for project in projects])
     try:
-        _, spread = _spreads(plan, projects)
+        low, high = find_range(plan, rows, frozenset())
     except TooMany:
         return None
+    size = np.abs(reference_of(plan, rows).value)
+    with np.errstate(all="ignore"):
+        spread = (high - low) / np.where(size > 0, size, np.nan)
     known = np.where(np.isfinite(spread), spread, -1.0)
     place = int(np.argmax(known))
     return (float(known[place]), projects[place]) if known[place] >= 0 else None
@@ -185,6 +205,3 @@ def _short(value: Fraction, width: Fraction) -> Fraction:
     while step * 10 <= width / 10_000:
         step *= 10
     return round(value / step) * step
-
-
-

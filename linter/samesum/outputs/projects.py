@@ -47,8 +47,8 @@ def _is_share(declared: m.Fact | m.Setting) -> bool:
 
 def project(witness: Witness, words: Words) -> str:
     """``a project with soil mineral and salinity 10 ppt``; "any project" when nothing matters."""
-    facts = [_given(name, value, words) for name, value in witness.facts]
-    set_to = [_given(name, value, words, " set to") for name, value in witness.settings]
+    facts = [given(name, value, words) for name, value in witness.facts]
+    set_to = [given(name, value, words, " set to") for name, value in witness.settings]
     read = [f"{name} read as {'yes' if value else 'no'}" for name, value in witness.judgements]
     everything = [*facts, *set_to, *read]
     left = len(everything) - LONGEST
@@ -75,7 +75,7 @@ def route(steps: Iterable[tuple[str, str]]) -> str:
     return ", ".join(f"{point}: {branch}" for point, branch in steps)
 
 
-def _given(name: str, value: Value | tuple[Value, ...], words: Words, verb: str = "") -> str:
+def given(name: str, value: Value | tuple[Value, ...], words: Words, verb: str = "") -> str:
     if isinstance(value, tuple):
         index = words.indices.get(name, "element")
         if len(value) > 1 and len(set(value)) == 1:

@@ -24,7 +24,9 @@ from samesum.spans import START, Span
 Value = Fraction | str | bool
 """A number in its declared unit, one of the declared names, or yes (True) or no (False)."""
 
-_NUMBER = re.compile(r"([+-]?(?:\d[\d_]*(?:\.\d[\d_]*)?|\.\d[\d_]*)(?:[eE][+-]?\d+)?)(?:\s*/\s*(\d+))?\s*(.*)", re.DOTALL)
+_NUMBER = re.compile(
+    r"([+-]?(?:\d[\d_]*(?:\.\d[\d_]*)?|\.\d[\d_]*)(?:[eE][+-]?\d+)?)(?:\s*/\s*(\d+))?\s*(.*)", re.DOTALL
+)
 YES = {"yes": True, "true": True, "no": False, "false": False}
 
 
@@ -66,7 +68,7 @@ def read_cases(path: Path, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
 
 def cases_from(tree: Node, file: str, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
     """The same from a tree that was read already."""
-    reader = _Reader(file, model, load_units(), branch_points(model))
+    reader = _Reader(file, model, Numbers(file), branch_points(model))
     found = reader.whole(tree)
     return Cases(file, tuple(found)), in_order(reader.problems)
 
@@ -129,10 +131,51 @@ def matching(points: Mapping[str, tuple[str, ...]], id: str) -> list[str]:
 
 
 @dataclass(slots=True)
+class Numbers:
+    """Reads numbers, each in the unit it should have, converting from the unit written behind it."""
+
+    file: str
+    units: UnitTable = field(default_factory=load_units)
+    problems: list[Problem] = field(default_factory=list)
+
+    def report(self, span: Span, says: str, remedy: str = "", kind: str = "value") -> None:
+        self.problems.append(Problem(self.file, span, says, remedy, kind))
+
+    def read(self, text: str, unit: m.Unit, name: str, span: Span) -> Fraction | None:
+        """The number in ``unit``, converted from the unit written behind it, if one is."""
+        found = _NUMBER.fullmatch(text)
+        value = exact(found[1].removeprefix("+").removeprefix("-")) if found else None
+        if found is None or value is None:
+            self.report(span, f"{name}: `{text}` is no number", f"write a number, as in `{name}: 12{_of(unit)}`")
+            return None
+        if found[1].startswith("-"):
+            value = -value
+        if found[2]:
+            if not int(found[2]):
+                self.report(span, f"{name}: `{text}` divides by zero", "write a number")
+                return None
+            value /= int(found[2])
+        written = found[3].strip().removeprefix("[").removesuffix("]").strip()
+        if not written:
+            return value
+        given = read_unit(written, self.units)
+        if isinstance(given, UnitMistake):
+            self.report(span, f"{name}: {given.says}", given.remedy, "unit")
+            return None
+        if not same_dimension(given, unit):
+            wanted = f"[{unit.text}]" if unit.text else "a plain number"
+            self.report(
+                span, f"{name} is in {wanted}, not in [{written}]", "convert the value, or leave the unit out", "unit"
+            )
+            return None
+        return value * given.factor / unit.factor
+
+
+@dataclass(slots=True)
 class _Reader:
     file: str
     model: m.Model
-    units: UnitTable
+    parser: Numbers
     points: Mapping[str, tuple[str, ...]]
     problems: list[Problem] = field(default_factory=list)
 
@@ -149,7 +192,9 @@ class _Reader:
                 self.unknown(entry.key, ("cases",), "part of a file of cases")
         listed = tree.get("cases")
         if not isinstance(listed, Listing) or not listed.items:
-            self.report(tree.span if listed is None else listed.span, "`cases` is not a list of projects", form, "shape")
+            self.report(
+                tree.span if listed is None else listed.span, "`cases` is not a list of projects", form, "shape"
+            )
             return []
         found: list[Case] = []
         names: dict[str, int] = {}
@@ -181,9 +226,9 @@ class _Reader:
             name = given.text.strip()
         elif given is not None:
             self.report(given.span, "the project's name is no text", "write `name: ...`", "shape")
-        declared: dict[str, m.Fact | m.Setting | m.Judgement] = {
-            each.name: each for each in (*self.model.facts, *self.model.settings, *self.model.judgements)
-        }
+        model = self.model
+        every: list[m.Fact | m.Setting | m.Judgement] = [*model.facts, *model.settings, *model.judgements]
+        declared = {each.name: each for each in every}
         values: dict[str, Value | tuple[Value, ...]] = {}
         lengths: dict[str, tuple[int, str]] = {}
         expected: Expected | None = None
@@ -223,7 +268,9 @@ class _Reader:
                 self.report(key.span, says, "leave it out", "name")
                 return
         close = nearest(key.text, (*known, "name", "expected"))
-        remedy = f"did you mean `{close}`?" if close else "a project gives facts, judgements and settings of the rulebook"
+        remedy = (
+            f"did you mean `{close}`?" if close else "a project gives facts, judgements and settings of the rulebook"
+        )
         self.report(key.span, f"the rulebook has no fact, judgement or setting `{key.text}`", remedy, "name")
 
     def entry(
@@ -280,38 +327,19 @@ class _Reader:
         return number
 
     def number(self, text: str, unit: m.Unit, name: str, span: Span) -> Fraction | None:
-        """The number in ``unit``, converted from the unit written behind it, if one is."""
-        found = _NUMBER.fullmatch(text)
-        value = exact(found[1].removeprefix("+").removeprefix("-")) if found else None
-        if found is None or value is None:
-            self.report(span, f"{name}: `{text}` is no number", f"write a number, as in `{name}: 12{_of(unit)}`")
-            return None
-        if found[1].startswith("-"):
-            value = -value
-        if found[2]:
-            if not int(found[2]):
-                self.report(span, f"{name}: `{text}` divides by zero", "write a number")
-                return None
-            value /= int(found[2])
-        written = found[3].strip().removeprefix("[").removesuffix("]").strip()
-        if not written:
-            return value
-        given = read_unit(written, self.units)
-        if isinstance(given, UnitMistake):
-            self.report(span, f"{name}: {given.says}", given.remedy, "unit")
-            return None
-        if not same_dimension(given, unit):
-            wanted = f"[{unit.text}]" if unit.text else "a plain number"
-            self.report(span, f"{name} is in {wanted}, not in [{written}]", "convert the value, or leave the unit out", "unit")
-            return None
-        return value * given.factor / unit.factor
+        found = self.parser.read(text, unit, name, span)
+        self.problems += self.parser.problems
+        self.parser.problems.clear()
+        return found
 
     # -- worked examples ----------------------------------------------------------------
 
     def expected(self, entry: Entry) -> Expected | None:
         node = entry.value
         if not isinstance(node, Fields):
-            self.report(node.span, "`expected` holds a value and a route", "write `value:` and `route:` below it", "shape")
+            self.report(
+                node.span, "`expected` holds a value and a route", "write `value:` and `route:` below it", "shape"
+            )
             return None
         value: Fraction | None = None
         decimals = 0

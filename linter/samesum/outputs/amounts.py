@@ -1,0 +1,30 @@
+"""Calculated amounts as people read them: separators, as many digits as make sense."""
+
+from __future__ import annotations
+
+import math
+from fractions import Fraction
+
+from samesum.written import percent, plain
+
+
+def amount(value: float, unit: str = "") -> str:
+    """``15,937 t CO2e``; four to six digits below a thousand."""
+    if not math.isfinite(value):
+        return "unbounded"
+    if abs(value) >= 1000:
+        text = f"{value:,.0f}" if abs(value) < 1e15 else f"{value:.4g}"
+    else:
+        text = plain(Fraction(f"{value:.6g}"))
+    return f"{text} {unit}".rstrip()
+
+
+def share(value: float | None) -> str:
+    """``43.4 %``, ``0``; ``7 times`` from ten times on; ``not known``."""
+    if value is None or math.isnan(value):
+        return "not known"
+    if math.isinf(value):
+        return "no bound"
+    if abs(value) >= 10:
+        return f"{amount(float(f'{value:.3g}'))} times"
+    return percent(Fraction(f"{value:.6g}")) if value else "0 %"
