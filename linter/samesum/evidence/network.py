@@ -50,9 +50,9 @@ class PointRelation:
 class Network:
     """The whole relation.
 
-    ``leaves``: where each formula that may lack a value is evaluated and all it asks has one, and where its own
-    operations have a value. ``applies``: where the rulebook applies, as parts that must all hold. ``flows``: where
-    the number of a formula reaches the result. ``cells``: of each number that is compared, by level.
+    ``leaves``: where each formula that may lack a value is evaluated and its operations have what they work on,
+    and where these operations have a value. ``applies``: where the rulebook applies, as parts that must all hold.
+    ``flows``: where the number of a formula reaches the result. ``cells``: of each number that is compared, by level.
     """
 
     graph: DecisionGraph

@@ -16,7 +16,7 @@ from samesum.evidence.diagrams import Diagrams, Limits, taken_apart
 from samesum.evidence.network import Network, PointRelation
 from samesum.evidence.readings import Readings
 from samesum.evidence.symbols import Bounds, bounds, constant_term, generators, without_constant
-from samesum.graph import BranchPoint, DecisionGraph, Element, Leaf, asked, mentions
+from samesum.graph import BranchPoint, DecisionGraph, Leaf, Mention, asked, mentions, worked_on
 from samesum.reading import model as m
 from samesum.reading import walk
 
@@ -44,7 +44,8 @@ def build_network(
             for leaf in graph.leaves[id]:
                 sound = readings.sound(leaf.expression, elements, own=True)
                 if not d.is_end(sound, True):
-                    sound_leaves.append((leaf, sound, _parts_sound([leaf.expression], readings, elements)))
+                    worked = worked_on(leaf.expression, elements, graph.sizes)
+                    sound_leaves.append((leaf, sound, _parts_sound(worked, readings)))
         for each in graph.model.applies:
             applying += [readings.condition(each.condition, {}), readings.sound(each.condition, {})]
     read = [part for each in asking.values() for part in each.parts()]
@@ -127,15 +128,16 @@ def _read_point(point: BranchPoint, readings: Readings, on_paper: bool) -> _Aske
         own_sound = d.both(own_sound, readings.sound(condition, elements, own=True))
         tables.update((node.table, None) for node in walk.inside(condition) if isinstance(node, m.Lookup))
         holds.append(readings.condition(condition, elements))
-    parts_sound = _parts_sound(() if on_paper else point.conditions, readings, elements)
-    return _Asked(tuple(holds), sound, own_sound, parts_sound, tuple(tables))
+    conditions = [each for each in point.conditions if each is not None and not on_paper]
+    asks = (mention for each in conditions for mention in mentions(each, elements, readings.graph.sizes))
+    return _Asked(tuple(holds), sound, own_sound, _parts_sound(asks, readings), tuple(tables))
 
 
-def _parts_sound(nodes: Iterable[m.Expression | m.Condition | None], readings: Readings, elements: Element) -> int:
-    """Where all quantities and choices have a value that expressions or conditions ask."""
+def _parts_sound(asked: Iterable[Mention], readings: Readings) -> int:
+    """Where all quantities and choices that are asked have a value."""
     d = readings.diagrams
     result = d.end(True)
-    for kind, id in (each for node in nodes if node for each in mentions(node, elements, readings.graph.sizes)):
+    for kind, id in asked:
         if kind == "value":
             result = d.both(result, readings.sound_quantity(id))
         elif kind == "takes":
