@@ -82,8 +82,6 @@ def given(name: str, value: Value | tuple[Value, ...], words: Words, verb: str =
             return f"{name}{verb} {_value(name, value[0], words)} in every {index}"
         shown = [_value(name, each, words, number == len(value)) for number, each in enumerate(value, start=1)]
         return f"{name}{verb} {' / '.join(shown)} by {index}"
-    if isinstance(value, bool) and not verb:
-        return name if value else f"no {name}"
     return f"{name}{verb} {_value(name, value, words)}"
 
 
