@@ -21,7 +21,7 @@ from samesum.reading.declarations import (
     resolve_setting,
     resolve_table,
 )
-from samesum.reading.model import About, Key, Model, Unknown
+from samesum.reading.model import About, Key, Model, Unit, Unknown
 from samesum.reading.names import Placed, bare_scope, declare
 from samesum.reading.phrases import read_phrases, text_of
 from samesum.reading.scope import Declared, Notebook, Scope, absent_problems
@@ -49,7 +49,7 @@ class Surroundings:
 
     file: str
     names: dict[str, Declared]
-    keys: dict[str, tuple[Key, ...]]
+    keys: dict[str, tuple[tuple[str, bool, tuple[str, ...], Unit], ...]]
     blocks: dict[tuple[str, int], tuple[object, Notebook]] = field(default_factory=dict, compare=False, repr=False)
 
 
@@ -81,7 +81,8 @@ def resolve(
     silent = [Declared(each.name, "unreadable", each.span) for each in unreadable if each.name]
     names, kept = declare(blocks, silent, file, notebook, units)
     keys = _all_keys(kept, names, file, notebook, units)
-    came_to = recall.within(Surroundings(file, names, keys)).blocks
+    shapes = {name: tuple((key.name, key.bands, key.values, key.unit) for key in found) for name, found in keys.items()}
+    came_to = recall.within(Surroundings(file, names, shapes)).blocks
     needs: dict[str, tuple[str, ...]] = {}
 
     def one(block: Placed, make: Callable[[Placed, Scope], _Made]) -> _Made | None:

@@ -32,7 +32,7 @@ class Declared:
 
     name: str
     kind: Kind
-    span: Span
+    span: Span = field(compare=False)  # where it stands means nothing to those who use the name
     unit: Unit | None = None
     index: str = ""
     values: tuple[str, ...] = ()
