@@ -120,9 +120,11 @@ def _decision(key: Scalar, value: Node, report: Callable[[Span, str, str], None]
         )
         return None
     texts: dict[str, Scalar] = {}
+    misspelled = False
     for entry in value:
         if entry.key.text not in FIELDS:
             close = nearest(entry.key.text, FIELDS)
+            misspelled = misspelled or close == "decision"
             remedy = f"did you mean `{close}`?" if close else f"the fields are {', '.join(FIELDS)}"
             report(entry.key.span, f"`{entry.key.text}` is no field of a decision", remedy)
         elif not isinstance(entry.value, Scalar):
@@ -130,6 +132,8 @@ def _decision(key: Scalar, value: Node, report: Callable[[Span, str, str], None]
         else:
             texts[entry.key.text] = entry.value
     verdict = texts.get("decision")
+    if verdict is None and misspelled:
+        return None
     if verdict is None:
         report(key.span, f"the decision on `{key.text}` is missing", "write `decision: open`, accepted or to be closed")
         return None
