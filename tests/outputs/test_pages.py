@@ -136,4 +136,4 @@ def test_a_project_in_the_trades_words() -> None:
     }
     assert project(Witness((), (), (), ()), WORDS) == "any project"
     equal = Witness((("area", (Fraction(5), Fraction(5))), ("flooded", False)), (), (), ())
-    assert project(equal, WORDS) == "a project with area 5 ha in every stratum and no flooded"
+    assert project(equal, WORDS) == "a project with area 5 ha in every stratum and flooded no"
