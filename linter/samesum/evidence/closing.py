@@ -62,10 +62,10 @@ def _bracket(network: Network, name: str, given: Given) -> Bracket:
             value, exact, _ = per_project(Side(network, loose), name, given)
         except OutOfLimits:
             continue
-        if exact:
+        if exact and value is not None:
             return Bracket(value, value)
         if loose:
             high = value
         else:
-            low = value
+            low = value or 0
     return Bracket(low, high)

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 from itertools import combinations
 
 from samesum.evidence.counting import EVERYTHING, Layout, deep
-from samesum.evidence.diagrams import Eliminated, OutOfLimits, eliminate, number, possible_values, read_back
+from samesum.evidence.diagrams import COMBINE, Eliminated, OutOfLimits, eliminate, number, possible_values, read_back
 from samesum.evidence.network import Network, PointRelation, cone
 from samesum.evidence.witness import Witness, witness_from
 from samesum.reading import model as m
@@ -112,17 +112,17 @@ def _examine_point(network: Network, relation: PointRelation, seen: frozenset[in
     try:
         working = d.both(relation.reach, relation.sound)
         nothing = d.negate(d.some(relation.open))
+        pairs = _meeting(network, relation) if point.kind == "cases" else []
+        taken = {first: d.literal(relation.level, (first,)) for first, _ in pairs}
     except OutOfLimits:
         found.undecided.append(Undecided(point.id, "gap"))
         if point.kind == "cases":
             found.undecided.append(Undecided(point.id, "overlap"))
         return
-    for first, second in combinations(range(len(relation.open)), 2) if point.kind == "cases" else ():
-        if point.conditions[first] is None or point.conditions[second] is None:
-            continue
+    for first, second in pairs:
         branches = (point.branches[first], point.branches[second])
         both_open = [working, relation.open[first], relation.open[second]]
-        answer = _ask(network, [*both_open, d.literal(relation.level, (first,))], relation, first)
+        answer = _ask(network, [*both_open, taken[first]], relation, first)
         if answer.says == "no":  # inside the rulebook only when the second is taken, or when neither gets that far
             answer = _ask(network, both_open, relation, second)
         if answer.says == "yes":
@@ -138,6 +138,20 @@ def _examine_point(network: Network, relation: PointRelation, seen: frozenset[in
     if not point.leader:
         _find_dead(network, relation, working, seen, found)
     _rowless_conditions(network, relation, found)
+
+
+def _meeting(network: Network, relation: PointRelation) -> list[tuple[int, int]]:
+    """The pairs of branches whose own conditions leave both open somewhere. Adding up how many are open shows at
+    once where no two are, however many branches there are."""
+    d = network.diagrams
+    asked = [k for k, condition in enumerate(relation.point.conditions) if condition is not None]
+    crowd = d.end(0)
+    for k in asked:
+        crowd = d.apply("sum", COMBINE["sum"], crowd, d.numbers(relation.open[k]))
+    if max(d.ends(crowd)) < 2:
+        return []
+    pairs = combinations(asked, 2)
+    return [(a, b) for a, b in pairs if not d.is_end(d.both(relation.open[a], relation.open[b]), False)]
 
 
 def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
@@ -185,13 +199,15 @@ def _find_dead(
 
 
 def _rowless_conditions(network: Network, relation: PointRelation, found: _Found) -> None:
-    """Tables asked in the branch point's own conditions that have no row for some project."""
+    """Operations in the branch point's own conditions that have no value for some project: no row of a table, or a
+    division by zero."""
     d = network.diagrams
     if d.is_end(relation.own_sound, True):
         return
     answer = _ask(network, [relation.reach, relation.parts_sound], relation, relation.stuck, without=relation.own_sound)
     if answer.says == "yes":
-        found.gaps.append(Gap(relation.point.id, answer.witness, "row", relation.tables))
+        kind = "row" if relation.tables else "value"
+        found.gaps.append(Gap(relation.point.id, answer.witness, kind, relation.tables))
     elif answer.says == "cannot tell":
         found.undecided.append(Undecided(relation.point.id, "gap"))
 

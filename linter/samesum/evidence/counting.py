@@ -156,6 +156,10 @@ def _count(graph: DecisionGraph, network: Network, paper: int | None, deadline: 
             except OutOfLimits:
                 reasons.append("counting ran into its limits")
                 continue
+            if not exact and certain:
+                reasons.append("what a setting can bring about beside a fact could not be told for every project")
+            if value is None:  # no project was shown to be inside: nothing is known on this side
+                continue
             if exact and name in ("per_project_most", "per_project_least"):
                 witnesses[name] = witness
             if exact or (loose != (name == "per_project_least")):
@@ -185,12 +189,13 @@ def _assembled(
         most = ceiling**periods if name == "over_periods_most" else ceiling
         upper.setdefault(name, most)
         lower.setdefault(name, 0)
-    # what one project has is reachable; what the developer alone has is open to the project
+    # what one project has is reachable, and the other way round; what the developer alone has is open to the project
     upper["per_project_most"] = min(upper["per_project_most"], upper["reachable"])
     upper["developer_most"] = min(upper["developer_most"], upper["per_project_most"])
     upper["over_periods_most"] = min(upper["over_periods_most"], upper["per_project_most"] ** periods)
     upper["per_project_least"] = min(upper["per_project_least"], upper["per_project_most"])
-    lower["per_project_most"] = max(lower["per_project_most"], lower["developer_most"])
+    lower["per_project_most"] = max(lower["per_project_most"], lower["developer_most"], min(lower["reachable"], 1))
+    lower["over_periods_most"] = max(lower["over_periods_most"], lower["per_project_most"])
     lower["reachable"] = max(lower["reachable"], lower["per_project_most"])
     exact = all(upper[name] == lower[name] for name in FIGURES)
     return Counts(
@@ -222,8 +227,8 @@ def all_states(graph: DecisionGraph) -> int:
 # --- one figure --------------------------------------------------------------------------
 
 
-def _figure(name: str, side: Side) -> tuple[int, bool, Witness | None]:
-    """The figure on one side, and whether it is exact (then both sides are equal)."""
+def _figure(name: str, side: Side) -> tuple[int | None, bool, Witness | None]:
+    """The figure on one side (None when it says nothing), and whether it is exact (then both sides are equal)."""
     if name == "reachable":
         value, exact = _reachable(side)
         return value, exact, None
@@ -241,14 +246,17 @@ def _reachable(side: Side) -> tuple[int, bool]:
     return int(number(d, factors)), layout.exact
 
 
-def per_project(side: Side, name: str, given: Given) -> tuple[int, bool, Witness | None]:
-    """A figure of one project when what is ``given`` counts as a fact: the figure on this side, whether it is
-    exact, and a project that has it. ``name`` is any figure but ``on_paper`` and ``reachable``."""
+def per_project(side: Side, name: str, given: Given) -> tuple[int | None, bool, Witness | None]:
+    """A figure of one project when what is ``given`` counts as a fact: the figure on this side (None when there is
+    no project on it), whether it is exact, and a project that has it. ``name`` is any figure but ``on_paper`` and
+    ``reachable``."""
     network = side.network
     d = network.diagrams
     least = name == "per_project_least"
     generous = side.loose != least
     layout = Layout.of(network, given, side.loose, generous)
+    if least and generous and layout.inputs and not layout.exact:
+        return None, False, None  # generous inputs are tied to no project, so that the fewest may be too few
     trail: list[Eliminated] = []
     factors = complete_factors(network) + list(layout.inputs)
     extra: list[int] = []
@@ -269,7 +277,7 @@ def per_project(side: Side, name: str, given: Given) -> tuple[int, bool, Witness
         factors = eliminate(d, factors, sorted(fixed), "sum", trail)
     else:
         factors = eliminate(d, factors, layout.states, "sum", trail)
-    domain = _domain(network, layout)
+    domain = _domain(network, layout, side.loose)
     if least:
         outside = [d.map("outside", lambda x: 1 if x else OUTSIDE, each) for each in (*domain, *layout.projects)]
         remaining = eliminate(d, [*factors, *outside], [*layout.facts, *extra], "least", trail)
@@ -277,7 +285,7 @@ def per_project(side: Side, name: str, given: Given) -> tuple[int, bool, Witness
         remaining = eliminate(d, [*factors, *domain, *layout.projects], [*layout.facts, *extra], "most", trail)
     value = number(d, remaining)
     if value == OUTSIDE:
-        return 0, layout.exact, None
+        return 0 if side.loose or layout.exact else None, layout.exact, None
     witness = None
     if layout.exact and name in ("per_project_most", "per_project_least") and (value or least):
         found = read_back(d, trail)
@@ -304,8 +312,9 @@ def _held(network: Network, given: Given) -> tuple[list[int], list[int]]:
     return factors, levels
 
 
-def _domain(network: Network, layout: Layout) -> list[int]:
-    """Projects inside the rulebook: those for which somebody's decisions make it apply."""
+def _domain(network: Network, layout: Layout, loose: bool) -> list[int]:
+    """Projects inside the rulebook: those for which somebody's decisions make it apply. ``loose`` admits those for
+    which that could not be told."""
     d = network.diagrams
     if not network.applies:
         return []
@@ -313,7 +322,9 @@ def _domain(network: Network, layout: Layout) -> list[int]:
     relevant = {level for factor in factors for level in d.support(factor)}
     inputs = [each for each in layout.inputs if d.support(each) & relevant]
     levels = {level for factor in (*factors, *inputs) for level in d.support(factor)} - set(layout.facts)
-    return eliminate(d, [*factors, *inputs], sorted(levels), "exists")
+    unsure = levels & set(layout.unsure)
+    factors = eliminate(d, [*factors, *inputs], sorted(unsure), "exists" if loose else "all")
+    return eliminate(d, factors, sorted(levels - unsure), "exists")
 
 
 @dataclass(frozen=True, slots=True)

@@ -68,6 +68,11 @@ class Diagrams:
 
     def node(self, level: int, kids: tuple[int, ...]) -> int:
         """The diagram that looks at ``level`` and goes on with ``kids[value]``."""
+        # counted here, where most of the work passes, and not only where a node is new
+        self._steps += 1 + len(kids)
+        if self._steps >= 20_000:
+            self._steps = 0
+            self.limits.check()
         first = kids[0]
         if all(kid == first for kid in kids):
             return first
@@ -79,10 +84,6 @@ class Diagrams:
         return found
 
     def _new(self, level: int, kids: tuple[int, ...], value: Any) -> int:
-        self._steps += 1 + len(kids)
-        if self._steps >= 20_000:
-            self._steps = 0
-            self.limits.check()
         if len(self.level) >= self.limits.nodes:
             raise OutOfLimits("size")
         self.level.append(level)

@@ -24,6 +24,7 @@ from samesum.reading import walk
 OPAQUE = "opaque"  # a number that could not be written out exactly
 SPACE = 1 << 24  # levels between two variables, for signs that must stand near their facts
 MOST_NODES = 30_000  # a quantity whose ways need more is opaque
+MOST_TERMS = 400  # a product whose sum has more is opaque
 
 SIGNS = {"<": (0,), "<=": (0, 1), "=": (1,), "<>": (0, 2), ">=": (1, 2), ">": (2,)}
 FLIPPED = {"<": ">", "<=": ">=", "=": "=", "<>": "<>", ">=": "<=", ">": "<"}
@@ -262,25 +263,44 @@ class Readings:
         """Where the operation itself has a value."""
         match node:
             case m.Arithmetic(operator="/", right=operand):
-                operator = "<>"
-            case m.Arithmetic(operator="^", left=operand, right=m.Negation() | m.Scaled()):
-                operator = "<>"
+                return self._asked(operand, "<>", elements)
+            case m.Arithmetic(operator="^"):
+                return self._has_power(node, elements)
             case m.Function(name="ln", arguments=(operand,)):
-                operator = ">"
+                return self._asked(operand, ">", elements)
             case m.Function(name="sqrt", arguments=(operand,)):
-                operator = ">="
+                return self._asked(operand, ">=", elements)
             case _:
                 return self.diagrams.end(True)
-        if isinstance(operand, m.Number):
-            return self.diagrams.end(operand.value != 0 if operator == "<>" else operand.value >= 0)
+
+    def _has_power(self, node: m.Arithmetic, elements: Element) -> int:
+        """A power has a value where the base is above 0, where it is 0 and the exponent is not below 0, and where
+        it is below 0 and the exponent is whole."""
+        d = self.diagrams
+        base, exponent = node.left, node.right
+        hull = self.hull(exponent, elements)
+        if hull.low is not None and hull.low == hull.high:
+            whole = hull.low.denominator == 1
+            if whole and hull.low >= 0:
+                return d.end(True)
+            return self._asked(base, "<>" if whole else ">=" if hull.low >= 0 else ">", elements)
+        above = self._asked(base, ">", elements)
+        if d.is_end(above, True):
+            return above
+        zero = d.both(self._asked(base, "=", elements), self._asked(exponent, ">=", elements))
+        value = self.expression(exponent, elements)
+        broken = self._minus(value, self._called("round", [value]))
+        whole_exponent = self.compared(broken, "=", exponent, Bounds(Fraction(-1, 2), Fraction(1, 2)))
+        below = d.both(self._asked(base, "<", elements), whole_exponent)
+        return d.some((above, zero, below))
+
+    def _asked(self, operand: m.Expression, operator: str, elements: Element) -> int:
+        """Where ``operand OPERATOR 0``."""
         hull = self.hull(operand, elements)
         decided = self._by_bounds(hull, operator)
         if decided is not None:
             return decided
-        value = self.expression(operand, elements)
-        if OPAQUE in self.diagrams.ends(value):
-            return self.diagrams.end(True)
-        return self.compared(value, operator, operand, hull)
+        return self.compared(self.expression(operand, elements), operator, operand, hull)
 
     def sound_quantity(self, id: str) -> int:
         """Where an instance has a value when it is evaluated."""
@@ -381,9 +401,13 @@ class Readings:
                 parts = [self.expression(body, {**elements, index: element}) for element in range(1, count + 1)]
                 if name in ("min", "max"):
                     return self._called(name, parts)
-                result = d.end(symbols.ZERO)
-                for part in parts:
-                    result = d.apply("number +", lambda x, y: _arithmetic("+", x, y), result, part)
+                while len(parts) > 1:  # in pairs: what is added so stands one below the other and stays small
+                    paired = [
+                        d.apply("number +", lambda x, y: _arithmetic("+", x, y), a, b)
+                        for a, b in zip(parts[::2], parts[1::2], strict=False)
+                    ]
+                    parts = [*paired, *parts[2 * len(paired) :]]
+                result = parts[0] if parts else d.end(symbols.ZERO)
                 if name == "mean":
                     share = Fraction(1, count)
                     result = d.map(f"scaled {share}", lambda x: _each(lambda y: symbols.scale(y, share), x), result)
@@ -561,7 +585,9 @@ def _arithmetic(operator: str, a: Any, b: Any) -> Any:
         "^": symbols.power,
     }[operator]
     result = operation(a, b)
-    return OPAQUE if result is None or len(result.terms) > 400 else result
+    if result is None or (len(result.terms) > MOST_TERMS and not symbols.is_linear(result)):
+        return OPAQUE
+    return result
 
 
 def reading_order(graph: DecisionGraph) -> list[str]:

@@ -338,8 +338,30 @@ def _call_bounds(made: Call, box: Mapping[str, Bounds]) -> Bounds:
             )
         case "sqrt" | "exp" | "ln":
             return _rising(made.function, first)
+        case "power":
+            return _any_power(first, inner[1])
         case _:
             return UNBOUNDED
+
+
+def _any_power(base: Bounds, exponent: Bounds) -> Bounds:
+    """Bounds of a power whose base is nowhere below 0: its extremes are at the corners, for its logarithm is the
+    product of the exponent and the base's logarithm. Floating point, widened by eight units in the last place."""
+    if base.low is None or base.low < 0:
+        return UNBOUNDED
+    if base.high is None or exponent.low is None or exponent.high is None or (base.low == 0 and exponent.low <= 0):
+        return Bounds(Fraction(0), None)
+    corners = []
+    for value in (base.low, base.high):
+        for power in (exponent.low, exponent.high):
+            try:
+                corners.append(math.pow(float(value), float(power)))
+            except OverflowError:
+                return Bounds(Fraction(0), None)
+    low, high = min(corners), max(corners)
+    for _ in range(8):
+        low, high = math.nextafter(low, -math.inf), math.nextafter(high, math.inf)
+    return Bounds(max(Fraction(0), Fraction(low)), Fraction(high) if math.isfinite(high) else None)
 
 
 def _extreme(values: list[Fraction | None], largest: bool, ignore_missing: bool) -> Fraction | None:
