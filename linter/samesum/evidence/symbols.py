@@ -351,13 +351,12 @@ def _any_power(base: Bounds, exponent: Bounds) -> Bounds:
         return UNBOUNDED
     if base.high is None or exponent.low is None or exponent.high is None or (base.low == 0 and exponent.low <= 0):
         return Bounds(Fraction(0), None)
-    corners = []
-    for value in (base.low, base.high):
-        for power in (exponent.low, exponent.high):
-            try:
-                corners.append(math.pow(float(value), float(power)))
-            except OverflowError:
-                return Bounds(Fraction(0), None)
+    try:
+        bases = [each for value in (base.low, base.high) for each in _around(value)]
+        exponents = [each for value in (exponent.low, exponent.high) for each in _around(value)]
+        corners = [math.pow(max(x, 0.0), y) for x in bases for y in exponents]
+    except (OverflowError, ValueError):  # beyond floating point; or 0 to a negative power, when 0 was rounded to
+        return Bounds(Fraction(0), None)
     low, high = min(corners), max(corners)
     for _ in range(8):
         low, high = math.nextafter(low, -math.inf), math.nextafter(high, math.inf)
@@ -375,21 +374,33 @@ def _closed(a: Bounds) -> Bounds:
     return Bounds(a.low, a.high)
 
 
+def _around(value: Fraction) -> tuple[float, float]:
+    """The floating-point numbers next to a value: not above it, and not below it. Raises ``OverflowError``."""
+    found = float(value)
+    exact = Fraction(found)
+    return (
+        found if exact <= value else math.nextafter(found, -math.inf),
+        found if exact >= value else math.nextafter(found, math.inf),
+    )
+
+
 def _rising(function: str, inner: Bounds) -> Bounds:
-    """Bounds of a rising function, widened by four units in the last place."""
+    """Bounds of a rising function: the argument rounded outwards, the result widened by four units in the last
+    place."""
 
     def at(value: Fraction, downwards: bool) -> Fraction | None:
         try:
+            rounded = _around(value)[0 if downwards else 1]
             if function == "exp":
-                found = math.exp(float(value))
+                found = math.exp(rounded)
             elif value < 0:
                 return Fraction(0) if function == "sqrt" and downwards else None
             elif function == "sqrt":
-                found = math.sqrt(float(value))
-            elif value == 0:
+                found = math.sqrt(max(rounded, 0.0))
+            elif rounded <= 0:
                 return None
             else:
-                found = math.log(float(value))
+                found = math.log(rounded)
         except OverflowError:
             return None
         for _ in range(4):
