@@ -70,7 +70,7 @@ def test_enrolment_alone_over_issues_a_little(name: str) -> None:
     figures = bias_of(name).figures
     mandated, look = figure(figures, "mandated", "reference"), figure(figures, "second look")
     assert mandated.joined is not None and look.joined is not None
-    assert 4 * mandated.joined.standard_error < mandated.joined.over_issuance < 0.1
+    assert 4 * mandated.joined.standard_error < mandated.joined.over_issuance < 0.15
     assert look.joined.over_issuance > look.simulated
     assert abs(mandated.simulated) < 4 * mandated.simulated_error + 0.003
 
