@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from fractions import Fraction
 
 import numpy as np
 
@@ -17,7 +18,7 @@ from samesum.evidence import intervals as iv
 from samesum.evidence import symbols
 from samesum.evidence.bounds import Boxes, Ranges
 from samesum.evidence.dividing import lowest_over
-from samesum.evidence.formulas import atoms_box, mini_plan, ratio
+from samesum.evidence.formulas import atoms_box, mini_plan, ratio, without
 from samesum.evidence.intervals import Interval
 from samesum.evidence.plan import Node, Plan
 from samesum.evidence.symbols import Sum
@@ -236,6 +237,9 @@ class Deviations:
         difference = symbols.subtract(b, a)
         if difference == symbols.ZERO:
             return None
+        share = proportion(difference, a)
+        if share is not None:
+            return iv.exactly(share)
         above, below = ratio(difference, a)
         box = atoms_box(self.ranges, (above, below))
         plan, node = mini_plan(self.plan, above, below)
@@ -261,6 +265,30 @@ class Deviations:
             self._sums[number] = found
         return found
 
+    def _pulled_out(self, name: str, parts: list[Sum]) -> Sum | None:
+        """A minimum, maximum or size with the factors of all its parts that are never negative before it."""
+        common: dict[symbols.Generator, int] | None = None
+        for monomial, _ in (term for part in parts for term in part.terms):
+            powers = dict(monomial)
+            if common is None:
+                common = {each: power for each, power in powers.items() if self._never_negative(each)}
+            else:
+                common = {each: min(power, powers[each]) for each, power in common.items() if each in powers}
+        size = next((abs(part.terms[0][1]) for part in parts if part.terms), None)
+        if size is None:
+            return symbols.call(name, tuple(parts))
+        inner = [symbols.scale(without(part, common or {}), 1 / size) for part in parts]
+        made = symbols.call(name, tuple(inner))
+        if made is None:
+            return None
+        factors = Sum(((tuple(sorted((common or {}).items(), key=lambda item: repr(item[0]))), size),))
+        return symbols.multiply(made, factors)
+
+    def _never_negative(self, generator: symbols.Generator) -> bool:
+        if not isinstance(generator, str):
+            return False
+        return bool(self.ranges.number(int(generator.removeprefix("node "))).value.low[0] >= 0)
+
     def _taken_apart(self, node: Node) -> Sum | None:
         match node.kind:
             case "number":
@@ -282,11 +310,21 @@ class Deviations:
             case "power":
                 return symbols.power(self._sum(node.args[0]), self._sum(node.args[1]))
             case "min" | "max":
-                return symbols.call(node.kind, tuple(self._sum(each) for each in node.args))
+                return self._pulled_out(node.kind, [self._sum(each) for each in node.args])
+            case "call" if node.name == "abs":
+                return self._pulled_out("abs", [self._sum(node.args[0])])
             case "call":
                 return symbols.call(node.name, (self._sum(node.args[0]),))
             case _:
                 return None
+
+
+def proportion(a: Sum, b: Sum) -> Fraction | None:
+    """The number k with a = k × b, where there is one."""
+    if len(a.terms) != len(b.terms) or not b.terms:
+        return None
+    share = a.terms[0][1] / b.terms[0][1]
+    return share if a == symbols.scale(b, share) else None
 
 
 def _negative(a: Interval) -> Interval:

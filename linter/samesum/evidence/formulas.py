@@ -25,10 +25,11 @@ def ratio(above: Sum, below: Sum) -> tuple[Sum, Sum]:
             common = {each: min(power, powers[each]) for each, power in common.items() if each in powers}
     if not common:
         return above, below
-    return _without(above, common), _without(below, common)
+    return without(above, common), without(below, common)
 
 
-def _without(a: Sum, common: Mapping[Generator, int]) -> Sum:
+def without(a: Sum, common: Mapping[Generator, int]) -> Sum:
+    """The sum with these factors taken out of every term."""
     terms = []
     for monomial, value in a.terms:
         left = tuple((each, power - common.get(each, 0)) for each, power in monomial if power > common.get(each, 0))

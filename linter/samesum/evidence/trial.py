@@ -138,7 +138,7 @@ def try_batches(
             if progress is not None:
                 progress(done, len(names))
     examples = examples_of(figures, at, cases)
-    blame = find_blame(figures, time.monotonic() + seconds * 0.3)
+    blame = find_blame(figures, time.monotonic() + seconds * 0.4)
     closing, complete = closing_order(figures, time.monotonic() + seconds * 0.2)
     proof = prove(graph, figures, names, at, time.monotonic() + seconds * 0.4, tolerance, evidence)
     return TrialEvidence(

@@ -439,29 +439,36 @@ def operated(node: Node, parts: Sequence[Array]) -> Array:
     """A sum, product, quotient, power, minimum, maximum or function, element by element."""
     match node.kind:
         case "linear":
-            total: Any = None
-            for part, weight in zip(parts, node.weights, strict=True):
-                scale = float(weight)
-                term = part if scale == 1 else part * scale
-                total = term if total is None else total + term
-            return total + float(node.number) if node.number else np.asarray(total)
+            terms = [
+                part if weight == 1 else part * float(weight) for part, weight in zip(parts, node.weights, strict=True)
+            ]
+            if node.number:
+                terms.append(np.full(1, float(node.number)))
+            return _folded(np.add, terms)
         case "product":
-            product: Any = parts[0]
-            for part in parts[1:]:
-                product = product * part
-            return np.asarray(product)
+            return _folded(np.multiply, parts)
         case "divide":
             return finite(parts[0] / parts[1])
         case "power":
             return finite(np.power(parts[0], parts[1]))
         case "min" | "max":
-            fold: Any = np.minimum if node.kind == "min" else np.maximum
-            extreme: Any = parts[0]
-            for part in parts[1:]:
-                extreme = fold(extreme, part)
-            return np.asarray(extreme)
+            return _folded(np.minimum if node.kind == "min" else np.maximum, parts)
         case _:
             return FUNCTIONS[node.name](parts[0])
+
+
+def _folded(operation: Any, parts: Sequence[Array]) -> Array:
+    """One operation over all parts, the smaller arrays first; a result is written over where it is large enough."""
+    ordered = sorted(parts, key=lambda part: part.size)
+    found = ordered[0]
+    own = False
+    for part in ordered[1:]:
+        if own and np.broadcast_shapes(found.shape, part.shape) == found.shape:
+            operation(found, part, out=found)
+        else:
+            found = operation(found, part)
+            own = True
+    return found
 
 
 def finite(value: Array) -> Array:
