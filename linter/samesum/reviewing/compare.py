@@ -238,8 +238,8 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
             found.append(f"options without their condition: {', '.join(freed)}")
         if _TIGHTNESS[after.fixed] > _TIGHTNESS[before.fixed]:
             found.append("was fixed at validation, is open each period")
-    movers = {(mover.by, mover.source) for mover in before.movers}
-    fresh = [mover for mover in after.movers if (mover.by, mover.source) not in movers]
+    sources = {mover.source for mover in before.movers}
+    fresh = [mover for mover in after.movers if mover.source not in sources]
     if fresh:
         found.append("conditions can be moved through " + ", ".join(sorted({mover.source for mover in fresh})))
     if before.kind == after.kind == "setting" and _wider(before.id, old, new):

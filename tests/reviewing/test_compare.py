@@ -1,0 +1,181 @@
+"""Two drafts held against each other."""
+
+from __future__ import annotations
+
+from pathlib import Path
+
+import pytest
+from support.asking import reader
+
+from samesum.examine import examine_reading
+from samesum.reading.read import read
+from samesum.reviewing.compare import Comparison, compare
+from samesum.reviewing.record import Record
+from samesum.reviewing.rows import Register, register_of
+
+SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
+
+# The branch points, settings and judgements that the repaired drafts close, read off the two texts side by side.
+CLOSED = {
+    "coastal_wetland": {
+        "baseline_loss/2", "gwp_methane", "soil_gain", "elsewhere_carbon", "biomass_end", "biomass_start",
+        "biomass_gain", "methane", "methane/2", "methane/3", "site_fuel", "displacement_factor",
+        "uncertainty_deduction", "buffer", "buffer/otherwise", "search_radius", "reserve_share",
+        "would_have_decayed", "insignificant", "room_to_migrate",
+    },
+    "waste_heat": {
+        "boiler_loss", "capped_output", "common_practice", "efficiency", "flare_methane", "grid_factor",
+        "heat_factor", "meter_drift", "metering_deduction", "past_mean", "similar_service",
+        "tested_here", "would_be_wasted",
+    },
+    "woodland": {
+        "baseline_carbon", "buffer", "carbon_fraction", "dead_wood", "density", "exposed", "fire_share",
+        "litter", "little_scrub", "prudence", "root_share", "soil_carbon_loss", "thinning_loss/1",
+        "tractor_emissions", "uncertainty_deduction",
+    },
+}  # fmt: skip
+
+
+def register(text: str) -> Register:
+    reading = read(text, "draft.rulebook", reader=reader())
+    examined = examine_reading(reading, 60.0)
+    assert examined.evidence is not None, examined.problems
+    return register_of(examined.evidence, reading.text, Record(""), 60.0)
+
+
+def sample(name: str) -> str:
+    return (SAMPLES / f"{name}.rulebook").read_text(encoding="utf-8")
+
+
+@pytest.mark.parametrize("name", sorted(CLOSED))
+def test_each_sample_against_its_repaired_draft_lists_exactly_what_was_closed(name: str) -> None:
+    found = compare(register(sample(name)), register(sample(f"{name}_repaired")))
+    assert {row.id for row in found.closed} == CLOSED[name]
+    assert found.opened == () and not found.grew
+    back = compare(register(sample(f"{name}_repaired")), register(sample(name)))
+    assert {row.id for row in back.opened} == CLOSED[name]
+    assert back.closed == () and back.grew
+    assert all(found.figures[figure] == back.figures[figure][::-1] for figure in found.figures)
+
+
+@pytest.mark.parametrize("name", sorted([*CLOSED, "marsh_example", "every_fault"]))
+def test_reordering_and_re_indenting_is_no_change(name: str) -> None:
+    text = sample(name)
+    found = compare(register(text), register(moved(text)))
+    assert (found.added, found.removed, found.changed, found.growth) == ((), (), (), ())
+    assert all(before == after for before, after in found.figures.values())
+
+
+def moved(text: str) -> str:
+    """The same declarations the other way round, moved in twice as far, with other blank lines and remarks."""
+    head, *rest = blocks(text)
+    return "\n".join([head, "", *(f"# moved\n\n{indented(block)}\n" for block in reversed(rest))])
+
+
+def blocks(text: str) -> list[str]:
+    found: list[str] = []
+    for line in text.split("\n"):
+        if line and not line[0].isspace() and not line.startswith("#"):
+            found.append(line)
+        elif line.strip() and not line.startswith("#"):
+            found[-1] += "\n" + line
+    return found
+
+
+def indented(block: str) -> str:
+    return "\n".join(" " * (len(line) - len(line.lstrip(" "))) + line for line in block.split("\n"))
+
+
+DRAFT = """\
+rulebook "Draft", draft "1"
+result credits [t], rounded down to 1, clause 9
+periods 2
+fact depth [m], 0 to 10, clause 2
+setting margin, 5 % to 20 %, by developer, clause 3
+judgement near, "near the site", by verifier, clause 3
+quantity stock [t], clause 4
+    choice by developer, fixed at validation
+        option tabled
+            = 20 [t]
+        option plots, only when near
+            = 30 [t]
+quantity loss [t], clause 5
+    cases
+        when depth < 5 [m]
+            = 1 [t]
+        when depth >= 5 [m]
+            = 2 [t]
+quantity credits [t], clause 9
+    = stock * (1 - margin) - loss
+"""
+
+
+def changed(*pairs: tuple[str, str], allow: tuple[str, ...] = ()) -> Comparison:
+    text = DRAFT
+    for old, new in pairs:
+        assert text.count(old) == 1
+        text = text.replace(old, new)
+    return compare(register(DRAFT), register(text), allow, 60.0)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "name", "says"),
+    [
+        ("fixed at validation", "open each period", "stock", "was fixed at validation"),
+        (", only when near", "", "stock", "options without their condition: plots"),
+        (
+            "        option plots",
+            "        option guess\n            = 9 [t]\n        option plots",
+            "stock",
+            "more options: guess",
+        ),
+        ("depth < 5 [m]", "depth <= 5 [m]", "loss", "two branches are open at once"),
+        ("depth < 5 [m]", "depth < 4 [m]", "loss", "no result here now"),
+        ("5 % to 20 %", "5 % to 25 %", "margin", "the values that may be set are more"),
+        (
+            "when depth < 5 [m]\n            = 1 [t]\n        when depth >= 5 [m]",
+            "when depth < 50 [m] * margin\n            = 1 [t]\n        otherwise",
+            "loss",
+            "conditions that the developer can move",
+        ),
+    ],
+)
+def test_every_way_of_leaving_more_is_told(old: str, new: str, name: str, says: str) -> None:
+    found = changed((old, new))
+    assert found.grew
+    assert any(each.name == name and says in each.says for each in found.growth), found.growth
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ("= 20 [t]", "= 21 [t]"),
+        ("5 % to 20 %", "6 % to 20 %"),
+        ("option tabled", "option from_the_table"),
+        ("by verifier, clause 3", "by programme, clause 3"),
+        ("depth < 5 [m]", "depth < 5.0 [m]"),
+        ('"near the site"', '"close to the site"'),
+    ],
+)
+def test_what_leaves_no_more_is_let_pass(old: str, new: str) -> None:
+    assert not changed((old, new)).grew
+
+
+def test_an_allowed_place_is_allowed_with_all_that_it_brings_about() -> None:
+    more = ("        option plots", "        option guess\n            = 9 [t]\n        option plots")
+    alone = changed(more)
+    assert {each.name for each in alone.growth} == {"stock", "per_project_most", "developer_most", "over_periods_most"}
+    allowed = changed(more, allow=("stock",))
+    assert [(each.name, each.allowed) for each in allowed.growth] == [("stock", True)]
+    assert not allowed.grew
+    both = changed(more, ("depth < 5 [m]", "depth <= 5 [m]"), allow=("stock",))
+    assert both.grew and "loss" in {each.name for each in both.growth if not each.allowed}
+
+
+def test_a_change_names_what_differs_before_and_after() -> None:
+    found = changed(("= 20 [t]", "= 21 [t]"), ("clause 5", "clause 5.1"))
+    told = {change.after.id: change.aspects for change in found.changed}
+    assert told == {
+        "stock": (("option tabled", "= 20 [t]", "= 21 [t]"),),
+        "loss": (("clause", "5", "5.1"),),
+    }
