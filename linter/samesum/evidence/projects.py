@@ -10,7 +10,7 @@ import hashlib
 import math
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 import numpy.typing as npt
@@ -18,8 +18,11 @@ import numpy.typing as npt
 from samesum.evidence.latitudes import middle
 from samesum.evidence.programs import Program, make_program, needed_for
 from samesum.evidence.simulate import World, evaluate
+from samesum.evidence.witness import usual
 from samesum.reading import model as m
-from samesum.reading.cases import Case
+
+if TYPE_CHECKING:
+    from samesum.reading.cases import Case
 
 Array = npt.NDArray[Any]
 BLOCK = 16_384
@@ -86,15 +89,16 @@ def generator(seed: int, block: int, *names: str) -> np.random.Generator:
 # --- supply ------------------------------------------------------------------------------------
 
 
-def from_domains(model: m.Model) -> Supply:
+def from_domains(model: m.Model, unbounded: bool = False) -> Supply:
     """Projects drawn from the declared domains: uniform, or normal within it for a fact with ``mean … spread``.
 
-    Raises ``CannotDraw`` when a fact that matters has neither a whole domain nor a spread.
+    Raises ``CannotDraw`` when a fact that matters has neither a whole domain nor a spread; with ``unbounded`` such a
+    fact stands at one usual value in all projects instead.
     """
     program = make_program(model)
     for fact in model.facts:
         domain = fact.domain
-        if not isinstance(domain, m.Range) or fact.spread is not None or not _matters(program, fact):
+        if unbounded or not isinstance(domain, m.Range) or fact.spread is not None or not _matters(program, fact):
             continue
         if domain.low is None or domain.high is None:
             raise CannotDraw(
@@ -308,7 +312,7 @@ def _draw(stream: np.random.Generator, fact: m.Fact, count: int) -> Array:
     high = float(domain.high) if domain.high is not None else math.inf
     if fact.spread is None:
         if not math.isfinite(low) or not math.isfinite(high):
-            return np.zeros(count)
+            return np.full(count, _coded(usual(domain), domain))
         return stream.uniform(low, high, count) if high > low else np.full(count, low)
     mean, spread = float(fact.spread.mean), float(fact.spread.spread)
     values = mean + spread * stream.standard_normal(count)

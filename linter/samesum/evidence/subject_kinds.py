@@ -146,6 +146,24 @@ KINDS: Mapping[str, Mapping[str, AttributeKind]] = MappingProxyType(
             "after": TEXT,
             "at_result": YES,
         },
+        "over_issuance": {
+            **_EVERYWHERE,
+            "decider": WHO,
+            "surely": NUMBER,  # at least so much by a second look, two standard errors taken off
+            "percent_over": TEXT,
+        },
+        "trial": {
+            **_EVERYWHERE,
+            "spread": NUMBER,  # the widest of the projects tried, as a share of the reference
+            "spread_percent": TEXT,
+            "widest_case": TEXT,
+            "case_count": NUMBER,
+            "cases_without_result": NUMBER,
+            "outcome": ("single_route", "same_number", "within_tolerance", "agrees_on_these_cases", "differs", "gap"),
+            "first_to_close": TEXT,
+            "left_then": TEXT,
+        },
+        "worked_example": {**_EVERYWHERE, "agrees": YES, "case_name": TEXT, "finding": TEXT},
         "declaration": _DECLARED,
         "fact": {**_DECLARED, "numeric": YES, "bounded": YES, "per_index": YES, "only_low": YES, "only_high": YES},
         "setting": {**_DECLARED, "decider": WHO, "free_value": YES, "numeric": YES, "domain_text": TEXT},

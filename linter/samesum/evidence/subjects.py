@@ -8,20 +8,28 @@ from __future__ import annotations
 
 import time
 from collections.abc import Iterable, Sequence
+from typing import TYPE_CHECKING
 
 from samesum.evidence.counting import deep
 from samesum.evidence.equal import Workshop
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.subject_kinds import Subject
 from samesum.evidence.subjects_branches import branch_subjects
+from samesum.evidence.subjects_choice import over_issued
 from samesum.evidence.subjects_declared import declared_subjects, unit_mismatches
 from samesum.evidence.subjects_numbers import branches, equal_branches, jumps, overlaps
 from samesum.problems import Problem
 
+if TYPE_CHECKING:
+    from samesum.evidence.trial import TrialEvidence
 
-def subjects_of(evidence: Evidence, problems: Iterable[Problem] = (), seconds: float = 5.0) -> tuple[Subject, ...]:
+
+def subjects_of(
+    evidence: Evidence, problems: Iterable[Problem] = (), seconds: float = 5.0, trial: TrialEvidence | None = None
+) -> tuple[Subject, ...]:
     """Every subject, sorted by place, kind and key. ``problems``: only unit mismatches are taken in.
-    ``seconds`` bounds the work; what is not settled by then has attributes that cannot be told."""
+    ``seconds`` bounds the work; what is not settled by then has attributes that cannot be told. ``trial``: what
+    projects showed, when some were tried."""
     start = time.monotonic()
     found: list[Subject] = []
     with deep():
@@ -32,7 +40,12 @@ def subjects_of(evidence: Evidence, problems: Iterable[Problem] = (), seconds: f
         found += branches(evidence, workshop)
         found += equal_branches(evidence, workshop)
         found += overlaps(evidence, workshop)
+        found += over_issued(evidence)
         found += jumps(evidence, max(0.2, seconds - (time.monotonic() - start)))
+    if trial is not None:
+        from samesum.evidence.subjects_trial import trial_subjects
+
+        found += trial_subjects(trial)
     return in_reading_order(found)
 
 
