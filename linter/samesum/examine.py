@@ -5,7 +5,8 @@ The only module that knows all stages.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -13,8 +14,10 @@ from samesum.problems import Problem
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
+    from samesum.evidence.trial import TrialEvidence
     from samesum.judging.judge import Judged
     from samesum.judging.rules import RuleSet
+    from samesum.reading.cases import Case
     from samesum.reading.read import Reader, Reading
 
 
@@ -32,18 +35,35 @@ class Examined:
         return self.reading.problems
 
 
-def examine(path: Path, seconds: float = 10.0, rules: RuleSet | None = None, reader: Reader | None = None) -> Examined:
+def examine(
+    path: Path,
+    seconds: float = 10.0,
+    rules: RuleSet | None = None,
+    reader: Reader | None = None,
+    inputs: Path | None = None,
+) -> Examined:
     """A rulebook file, read, examined and, where ``rules`` are given, judged. ``seconds`` bounds the analysis, not
-    the reading. ``reader`` may be handed in when several files are read.
+    the reading. ``reader`` may be handed in when several files are read. ``inputs``: projects to try it on (a file of
+    cases); mistakes in them are problems like any other.
 
     A unit mismatch does not stand in the way: the expression is left out, and lint rules report it.
     """
     from samesum.reading.read import read_file
 
-    return examine_reading(read_file(path, reader=reader), seconds, rules)
+    reading = read_file(path, reader=reader)
+    if inputs is None or reading.model is None:
+        return examine_reading(reading, seconds, rules)
+    from samesum.reading.cases import read_cases
+
+    cases, problems = read_cases(inputs, reading.model)
+    if problems:
+        return Examined(replace(reading, problems=(*reading.problems, *problems)), None)
+    return examine_reading(reading, seconds, rules, cases.cases)
 
 
-def examine_reading(reading: Reading, seconds: float = 10.0, rules: RuleSet | None = None) -> Examined:
+def examine_reading(
+    reading: Reading, seconds: float = 10.0, rules: RuleSet | None = None, cases: Sequence[Case] = ()
+) -> Examined:
     """What was read, examined: ``examine`` for a text that stands in no file, or was read already."""
     usable = reading.model is not None and all(problem.kind == "unit" for problem in reading.problems)
     if not usable or reading.model is None:
@@ -57,5 +77,17 @@ def examine_reading(reading: Reading, seconds: float = 10.0, rules: RuleSet | No
     from samesum.evidence.subjects import subjects_of
     from samesum.judging.judge import judge
 
-    subjects = subjects_of(evidence, reading.problems, seconds / 2)
+    trial = _tried(evidence, cases, seconds) if cases and reading.model.result is not None else None
+    subjects = subjects_of(evidence, reading.problems, seconds / 2, trial)
     return Examined(reading, evidence, judge(reading.model.file, subjects, rules))
+
+
+def _tried(evidence: Evidence, cases: Sequence[Case], seconds: float) -> TrialEvidence | None:
+    """What projects show; None where a part that the result needs could not be read (lint rules report that)."""
+    from samesum.evidence.plan import Unplannable
+    from samesum.evidence.trial import try_out
+
+    try:
+        return try_out(evidence.graph, cases, seconds, evidence=evidence)
+    except Unplannable:
+        return None

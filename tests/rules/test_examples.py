@@ -38,7 +38,8 @@ def examples(kind: str) -> list[Path]:
 
 
 def examined(path: Path) -> Examined:
-    found = examine(path, 20, rules(), reader())
+    cases = path.with_suffix(".cases.yaml")
+    found = examine(path, 20, rules(), reader(), cases if cases.exists() else None)
     assert found.judged is not None, found.problems
     return found
 
@@ -57,8 +58,10 @@ def test_every_folder_is_a_rule_with_examples_of_both_kinds() -> None:
         inside = {each.name for each in (RULES / name).iterdir()}
         assert inside == {"rule.yaml", "fires", "quiet"}, name
         for kind in ("fires", "quiet"):
-            files = list((RULES / name / kind).iterdir())
-            assert files and all(each.suffix == ".rulebook" for each in files), (name, kind)
+            files = sorted((RULES / name / kind).iterdir())
+            examples = [each for each in files if each.suffix == ".rulebook"]
+            cases = [each.with_suffix(".cases.yaml") for each in examples]
+            assert examples and set(files) <= {*examples, *cases}, (name, kind)
 
 
 @pytest.mark.parametrize("path", examples("fires"), ids=lambda path: f"{path.parents[1].name}/{path.stem}")

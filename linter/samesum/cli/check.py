@@ -24,6 +24,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--sarif", metavar="OUT", type=Path, help="also write SARIF 2.1.0, for code-scanning services")
     parser.add_argument("--junit", metavar="OUT", type=Path, help="also write JUnit XML, for dashboards")
     shared.add_seconds(parser)
+    shared.add_inputs(parser)
     parser.add_argument("--jobs", metavar="N", type=_jobs, default=1, help="check N files at once (1)")
     parser.add_argument(
         "--fail-on",
@@ -52,7 +53,7 @@ def run(arguments: argparse.Namespace) -> int:
     from samesum.cli.checking import Task, check_all
 
     paths = list(dict.fromkeys(arguments.files))
-    task = Task(arguments.seconds, tuple(arguments.rules), arguments.fail_on)
+    task = Task(arguments.seconds, tuple(arguments.rules), arguments.fail_on, arguments.inputs)
     outcomes: list[Outcome] | None
     if arguments.jobs > 1:
         from concurrent.futures.process import BrokenProcessPool

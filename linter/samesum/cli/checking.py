@@ -22,6 +22,7 @@ class Task:
     seconds: float
     rules: tuple[Path, ...]
     fail_on: Severity | None
+    inputs: Path | None = None
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,7 +98,7 @@ def check_one(path: Path, task: Task, reader: Reader, chooser: RulesFor) -> Outc
     limit = task.fail_on or chosen.fail_on or "warning"
     if chosen.problems:
         return Outcome(path, chosen.problems, None, False, limit)
-    examined = examine(path, task.seconds, chosen.rules, reader)
+    examined = examine(path, task.seconds, chosen.rules, reader, task.inputs)
     if examined.evidence is None or examined.judged is None:
         return Outcome(path, examined.problems, None, False, limit)
     record, problems = read_record(path)
