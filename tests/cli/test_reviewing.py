@@ -5,6 +5,7 @@ from __future__ import annotations
 import csv
 import json
 import os
+import re
 import shutil
 import subprocess
 from pathlib import Path
@@ -190,11 +191,11 @@ def test_comparing_with_a_revision(folder: Path, capsys: pytest.CaptureFixture[s
     assert said(capsys, "compare", "--since", "HEAD", "tide.rulebook")[0] == 0  # nothing committed yet: all is new
     git("add", "tide.rulebook")
     git("commit", "-qm", "first")
-    tie = "                choice follows soil_carbon\n"
-    timing = "open each period\n"
-    assert MARSH.count(tie) == MARSH.count(timing) == 1
-    more = MARSH.replace(timing, timing + "        option expert\n            = 9 [t C]\n")
-    more = more.replace(tie, tie + "                    option expert\n                        = 1 [t CO2e]\n")
+    option = r"\1\n\2    option expert\n\2        = 1 [t CO2e]\n"
+    more, tied = re.subn(r"(( +)choice follows soil_carbon)\n", option, MARSH)
+    option = r"\1\n\2    option expert\n\2        = 9 [t C]\n"
+    more, chosen = re.subn(r"(( +)choice by developer, open each period)\n", option, more)
+    assert tied == chosen == 1
     (folder / "tide.rulebook").write_text(more, encoding="utf-8")
     status, out, _ = said(capsys, "compare", "HEAD:tide.rulebook", "tide.rulebook", "--json")
     answer = json.loads(out)
