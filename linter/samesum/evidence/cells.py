@@ -293,11 +293,16 @@ def _inside(cell: Bounds, random_numbers: random.Random) -> Fraction:
 
 def cells_at(group: Group, point: Mapping[str, Fraction]) -> Vector | None:
     """The cell of each sum at a point; None if one cannot be told."""
-    box = {name: Bounds(value, value) for name, value in point.items()}
     found: list[int] = []
     for each, cells in zip(group.sums, group.sum_cells, strict=True):
-        met = _met(symbols.bounds(each, box), cells)
-        if len(met) != 1:
+        cell = cell_at(each, cells, point)
+        if cell is None:
             return None
-        found.append(met[0])
+        found.append(cell)
     return tuple(found)
+
+
+def cell_at(a: Sum, cells: Sequence[Bounds], point: Mapping[str, Fraction]) -> int | None:
+    """The cell of one sum at a point; None if it cannot be told, or the sum has no value there."""
+    met = _met(symbols.bounds(a, {name: Bounds(value, value) for name, value in point.items()}), cells)
+    return met[0] if len(met) == 1 else None

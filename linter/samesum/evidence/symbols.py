@@ -389,6 +389,9 @@ def _rising(function: str, inner: Bounds) -> Bounds:
     place."""
 
     def at(value: Fraction, downwards: bool) -> Fraction | None:
+        exact = call(function, (number(value),))
+        if exact is not None and exact.constant is not None:
+            return exact.constant
         try:
             rounded = _around(value)[0 if downwards else 1]
             if function == "exp":

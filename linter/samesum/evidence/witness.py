@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 
 from samesum.evidence import solver as s
-from samesum.evidence.cells import cells_at, representative
+from samesum.evidence.cells import cell_at, representative
 from samesum.evidence.groups import ListedGroup
 from samesum.evidence.network import Network
 from samesum.evidence.symbols import Bounds, nearest
@@ -116,8 +116,10 @@ def group_point(
     def fits(point: Mapping[str, Fraction]) -> bool:
         if not all(_inside(point[name], cell) for name, cell in wanted.items()):
             return False
-        found = cells_at(group, point)
-        return found is not None and all(b is None or a == b for a, b in zip(found, assigned, strict=True))
+        return all(
+            number is None or cell_at(each, cells, point) == number
+            for each, cells, number in zip(group.sums, group.sum_cells, assigned, strict=True)
+        )
 
     for _, seen in listed.listing.points:
         found = dict(zip(group.names, seen, strict=True))
@@ -133,19 +135,21 @@ def group_point(
     if made.check() != "yes":
         return None
     point = {name: value for name, value in made.point().items() if name in wanted}
-    if any(s.beyond(each) for each in group.sums) and not fits(point):
-        return None
-    return dict(_plainer(point, fits))
+    plain = _plainer(point, fits)
+    return None if plain is None else dict(plain)
 
 
-def _plainer(point: Mapping[str, Fraction], fits: Callable[[Mapping[str, Fraction]], bool]) -> Mapping[str, Fraction]:
-    """The same point in shorter decimals, when those still fit."""
+def _plainer(
+    point: Mapping[str, Fraction], fits: Callable[[Mapping[str, Fraction]], bool]
+) -> Mapping[str, Fraction] | None:
+    """The same point in shorter decimals, when those still fit; None when not even the point does: what it stands
+    for is irrational, or the solver guessed."""
     for digits in range(0, 7):
         step = Fraction(10) ** -digits
         rounded = {name: nearest(value / step) * step for name, value in point.items()}
         if fits(rounded):
             return rounded
-    return point
+    return point if fits(point) else None
 
 
 def _inside(value: Fraction, cell: Bounds) -> bool:
