@@ -18,7 +18,7 @@ from samesum.evidence.latitudes import Latitude
 from samesum.evidence.programs import Program
 from samesum.evidence.projects import Projects, generator, truth
 from samesum.evidence.simulate import World, evaluate
-from samesum.evidence.tally import Tally, histogram, tally
+from samesum.evidence.tally import Tally, histogram, tally, truth_sums
 from samesum.reading import model as m
 
 Array = npt.NDArray[Any]
@@ -78,6 +78,7 @@ class Bench:
     errors: dict[tuple[str, int], Array]
     fresh: dict[tuple[str, int], Array]
     sums: Sums
+    truth_sums: tuple[float, float] = (0.0, 0.0)
 
     # -- worlds -------------------------------------------------------------------------
 
@@ -102,6 +103,7 @@ def prepare(projects: Projects, number: int, latitudes: Sequence[Latitude], term
     values = evaluate(program, projects.inputs, truth(program))
     bench = Bench(program, projects, terms, number, values, np.zeros(projects.count), {}, {}, Sums())
     bench.truth = bench.full(values)
+    bench.truth_sums = truth_sums(bench.truth)
     bench.errors = draw_errors(program, terms.seed, number, projects.count, "error")
     if periods > 1 and any(latitude.kind == "choice" for latitude in latitudes):
         bench.fresh = draw_errors(program, terms.seed, number, projects.count, "error in a later period")
@@ -164,6 +166,19 @@ class Alone:
         if self.latitude.kind in ("setting", "judgement"):
             return World(inputs={**withheld, **decided})
         return World(decided, withheld, errors, factors)
+
+    def taking(self, decided: Mapping[str, Any], found: Mapping[str, tuple[take.Offer, list[Array]]]) -> Array:
+        """What everybody is credited, told what each option alone gives: of a single choice nothing has to be worked
+        out again."""
+        point = self.points[0]
+        if len(self.points) > 1 or point not in found or self.latitude.kind not in ("choice", "overlap"):
+            return self.credited(decided)
+        if ways_in(self.bench.program, point):
+            return self.credited(decided)
+        offer, credits = found[point]
+        if isinstance(decided[point], int):
+            return credits[decided[point]]
+        return offer.at(decided[point].astype(np.int64), offer.credits)
 
     def credited(self, decided: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None) -> Array:
         """What everybody is credited."""
@@ -290,7 +305,7 @@ def decide(one: Alone, found: Mapping[str, tuple[take.Offer, list[Array]]]) -> D
 
 def record(bench: Bench, row: Row, issued: Array, comparison: Array | None = None) -> None:
     """One row's sums, and those of the projects that would join."""
-    bench.sums.tallies[row] = tally(issued, bench.truth, comparison)
+    bench.sums.tallies[row] = tally(issued, bench.truth, comparison, sums=bench.truth_sums)
     if bench.terms.join is not None:
         joins = issued > bench.terms.join * bench.truth
         bench.sums.tallies[(*row, "joined")] = tally(issued, bench.truth, comparison, joins)

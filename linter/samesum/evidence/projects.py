@@ -29,7 +29,7 @@ BLOCK = 16_384
 _MOST_ATTEMPTS = 4_000
 
 
-class CannotDraw(Exception):
+class CannotDraw(ValueError):
     """Projects cannot be had; says why, and what to write, in the trade's words."""
 
 

@@ -7,8 +7,7 @@ exactly for one choice, its value stands in front and the simulated one beside i
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Mapping, Sequence
-from concurrent.futures import Future, ThreadPoolExecutor
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 
 import numpy as np
@@ -17,7 +16,7 @@ from samesum.evidence.bench import Row, Sums, Terms
 from samesum.evidence.closed_forms import enrolment_by_estimate, enrolment_by_truth
 from samesum.evidence.deductions import Deduction, solve_deductions
 from samesum.evidence.latitudes import Latitude, find_latitudes
-from samesum.evidence.projects import Projects, Stretch, Supply, projects_of, stretches
+from samesum.evidence.projects import Stretch, Supply, projects_of, stretches
 from samesum.evidence.tally import BINS, Tally
 from samesum.evidence.trials_of_choice import (
     ANEW,
@@ -30,6 +29,7 @@ from samesum.evidence.trials_of_choice import (
     WHOLE,
     work,
 )
+from samesum.evidence.workers import worked
 from samesum.reading import model as m
 
 HEADLINE = SECOND
@@ -154,7 +154,12 @@ def select(
     sums = Sums()
     done = 0
     parts = stretches(supply, projects)
-    for stretch, found in _worked(supply, parts, latitudes, terms, model.periods, jobs):
+    _keep_memory()
+
+    def one(stretch: Stretch) -> Sums:
+        return work(projects_of(supply, stretch, terms.seed), stretch.number, latitudes, terms, model.periods)
+
+    for stretch, found in worked(parts, one, jobs):
         sums.add(found)
         done += stretch.count
         if progress is not None:
@@ -185,31 +190,6 @@ def _latitudes(supply: Supply) -> tuple[Latitude, ...]:
         for latitude in find_latitudes(source.program):
             found.setdefault(latitude.id, latitude)
     return tuple(found.values())
-
-
-def _worked(
-    supply: Supply, parts: Sequence[Stretch], latitudes: Sequence[Latitude], terms: Terms, periods: int, jobs: int
-) -> Iterator[tuple[Stretch, Sums]]:
-    """The sums of each block in the order of the blocks, however many threads work on them."""
-    _keep_memory()
-
-    def one(stretch: Stretch) -> Sums:
-        made: Projects = projects_of(supply, stretch, terms.seed)
-        return work(made, stretch.number, latitudes, terms, periods)
-
-    if jobs < 2 or len(parts) < 2:
-        for stretch in parts:
-            yield stretch, one(stretch)
-        return
-    with ThreadPoolExecutor(jobs) as pool:
-        waiting: list[tuple[Stretch, Future[Sums]]] = []
-        for stretch in parts:
-            waiting.append((stretch, pool.submit(one, stretch)))
-            if len(waiting) > 2 * jobs:
-                first, future = waiting.pop(0)
-                yield first, future.result()
-        for first, future in waiting:
-            yield first, future.result()
 
 
 def _keep_memory() -> None:

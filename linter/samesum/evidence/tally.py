@@ -76,9 +76,20 @@ def _ratio_error(n: int, d: float, dd: float, dt: float, t: float, tt: float) ->
     return math.sqrt(squares * n / (n - 1)) / t
 
 
-def tally(issued: Array, truth: Array, comparison: Array | None = None, among: Array | None = None) -> Tally:
+def truth_sums(truth: Array) -> tuple[float, float]:
+    """The sums that every row of a block shares."""
+    return float(np.sum(truth)), _dot(truth, truth)
+
+
+def tally(
+    issued: Array,
+    truth: Array,
+    comparison: Array | None = None,
+    among: Array | None = None,
+    sums: tuple[float, float] | None = None,
+) -> Tally:
     """The sums of one block. Projects without a number of their own (no result in that world) are left out, as are
-    those not ``among``."""
+    those not ``among``. ``sums``: ``truth_sums``, where they are known already."""
     held = np.isfinite(issued)
     if comparison is not None:
         held &= np.isfinite(comparison)
@@ -86,16 +97,18 @@ def tally(issued: Array, truth: Array, comparison: Array | None = None, among: A
         held &= among
     outside = 0
     if not held.all():
+        sums = None
         outside = int(len(issued) - np.count_nonzero(held))
         issued, truth = issued[held], truth[held]
         comparison = comparison[held] if comparison is not None else None
     d = issued - truth
     x = issued - comparison if comparison is not None else np.zeros(0)
+    t, tt = truth_sums(truth) if sums is None else sums
     return Tally(
         projects=len(issued),
         outside=outside,
-        t=float(np.sum(truth)),
-        tt=_dot(truth, truth),
+        t=t,
+        tt=tt,
         d=float(np.sum(d)),
         dd=_dot(d, d),
         dt=_dot(d, truth),

@@ -75,16 +75,17 @@ def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> No
         for name, credited in mandated.items():
             record(bench, (latitude.id, MANDATED, name), credited, comparison)
     rows = {SECOND: decided.second, PICK: decided.pick, LOWEST: decided.lowest, INDIFFERENT: decided.indifferent}
-    credited_by = {}
+    credited_by: dict[str, Array] = {}
     for behaviour, taken in rows.items():
-        credited_by[behaviour] = one.credited(taken)
+        same = next((other for other in credited_by if rows[other] is taken), None)
+        credited_by[behaviour] = one.taking(taken, found) if same is None else credited_by[same]
         record(bench, (latitude.id, behaviour, ""), credited_by[behaviour], comparison)
     record_histogram(bench, (latitude.id, MANDATED), comparison)
     record_histogram(bench, (latitude.id, SECOND), credited_by[SECOND])
     if latitude.kind != "choice":
         return
     if periods > 1:
-        learned = one.credited(decided.learned)
+        learned = one.taking(decided.learned, found)
         fresh = {key: error for key, error in bench.fresh.items() if key[0] in one.points}
         for behaviour, taken, later in ((SECOND, decided.second, learned), (PICK, decided.pick, credited_by[PICK])):
             first = credited_by[behaviour]
@@ -104,7 +105,7 @@ def _everybody(one: Alone, found: Offers, number: int) -> Array:
     latitude = one.latitude
     if latitude.kind in ("setting", "judgement"):
         return found[latitude.id][1][number]
-    return one.credited(dict.fromkeys(one.points, number))
+    return one.taking(dict.fromkeys(one.points, number), found)
 
 
 def _over_periods(first: Array, later: Array, periods: int) -> Array:
@@ -274,6 +275,6 @@ class _Whole:
                     taken = {**taken, id: chosen}
                     values = bench.values(self.world(taken), values, (id,))
                     credited = bench.full(values)
-            if gained <= bench.projects.count // 1000:
+            if gained <= bench.projects.count // 100:
                 break
         return taken
