@@ -13,6 +13,10 @@ if TYPE_CHECKING:
     from samesum.outputs.report.page import Extra
 
 
+MOST_FINDINGS = 8
+"""Findings that are told of one place."""
+
+
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("file", metavar="FILE", type=Path, help="a .rulebook file")
     parser.add_argument("-o", "--output", type=Path, metavar="OUT.html", help="where to (standard output)")
@@ -85,4 +89,8 @@ def _findings(
     by_place: dict[str, list[tuple[str, str]]] = {}
     for finding in judge(evidence.model.file, subjects, chosen.rules).findings:
         by_place.setdefault(finding.branch_point, []).append((finding.severity, finding.says))
+    for told in by_place.values():
+        more = len(told) - MOST_FINDINGS
+        if more > 1:
+            told[MOST_FINDINGS:] = [("", f"and {more} more; `samesum check` lists them all.")]
     return by_place, f"{chosen.rules.version}, {chosen.rules.hash}"

@@ -177,7 +177,10 @@
     const column = Number(sorter.value);
     sort(column, heads[column].dataset.sort === "number");
   });
-  [search, leaving, ...Object.values(choices)].filter(Boolean).forEach((each) => each.addEventListener("input", filter));
+  [search, leaving, ...Object.values(choices)].filter(Boolean).forEach((each) => {
+    each.addEventListener("input", filter);
+    each.addEventListener("change", filter);
+  });
   one("[data-filters]").addEventListener("submit", (event) => event.preventDefault());
   filter();
 })();
