@@ -188,7 +188,8 @@ def _run(plan: Plan, work: Work) -> Extremes:
     for extreme, table in zip(found, (low, high), strict=True):
         folded = np.broadcast_to(table.data, (rows,))
         same = np.abs(extreme.value - folded) <= 1e-9 * np.maximum(np.abs(folded), 1e-9)
-        agrees &= same | (np.isnan(extreme.value) & np.isnan(folded))
+        agrees &= same | np.isnan(folded)
+        extreme.value[np.isnan(folded)] = np.nan
     return Extremes(found[0], found[1], agrees & ~work.unsure)
 
 
@@ -345,6 +346,7 @@ def _choose(
     if not axes:
         return
     found: Array | None = None
+    none = np.ones(rows, dtype=bool)
     for side in (False, True) if not inner.thin else (False,):
         table = _allowed(evaluator, inner.high if side else inner.low, axes)
         kept = tuple(axis for axis in table.axes if axis not in axes)
@@ -358,13 +360,14 @@ def _choose(
             cut = flat[index]
         else:
             cut = moved.reshape(-1, moved.shape[-1])[:, line].T
+        none &= np.isnan(cut).all(axis=1)
         lowest = np.argmin(np.where(np.isnan(cut), np.inf, cut), axis=1)
         highest = np.argmax(np.where(np.isnan(cut), -np.inf, cut), axis=1)
         mine = np.where(high, highest, lowest)
         found = mine if found is None else np.where(high, mine, found)
     assert found is not None
     for axis, place in zip(axes, np.unravel_index(found, shape), strict=True):
-        places[axis] = place
+        places[axis] = np.where(none, places[axis], place)
 
 
 def _replayed(plan: Plan, evaluator: Evaluator, places: Mapping[int, Array], numbers: dict[str, Array]) -> Extreme:
@@ -386,7 +389,7 @@ def _replayed(plan: Plan, evaluator: Evaluator, places: Mapping[int, Array], num
             numbers[axis.name] = picked(Table((number,), evaluator.candidates[axis.name]), places, rows.count)
     inputs = Rows(rows.count, numbers, named, flags, {})
     replay = Evaluator(plan, inputs, decide=decision(codes, plan))
-    value = np.broadcast_to(replay.number(plan.root).data, (rows.count,)).astype(np.float64)
+    value = np.array(np.broadcast_to(replay.number(plan.root).data, (rows.count,)), dtype=np.float64)
     return Extreme(value, route_codes(replay), inputs)
 
 

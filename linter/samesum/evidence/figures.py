@@ -114,8 +114,11 @@ def _counted(plan: Plan, rows: Rows) -> tuple[Array, Array, Array, tuple[tuple[s
             routes.append(count_routes(evaluator, work.structure))
         except TooMany:
             routes.append(blank)
-        free = bool(wide) or any(axis.kind == "numeric" for axis in evaluator.axes)
-        distinct.append(blank if free else _distinct(evaluator))
+        numeric = {*wide, *(axis.name for axis in evaluator.axes if axis.kind == "numeric")}
+        free = np.zeros(part.count, dtype=bool)
+        for name in numeric:
+            free |= part.free[name]
+        distinct.append(blank if free.all() else np.where(free, NO_COUNT, _distinct(evaluator)))
     return np.concatenate(outside), np.concatenate(routes), np.concatenate(distinct), tuple(moving)
 
 
