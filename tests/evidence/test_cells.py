@@ -118,7 +118,9 @@ def by_grid(made: Group) -> set[tuple[int, ...]]:
 
 @settings(max_examples=40, deadline=None)
 @given(
-    st.lists(st.tuples(st.integers(-2, 2), st.integers(-2, 2).filter(bool), st.integers(-4, 8)), min_size=1, max_size=3),
+    st.lists(
+        st.tuples(st.integers(-2, 2), st.integers(-2, 2).filter(bool), st.integers(-4, 8)), min_size=1, max_size=3
+    ),
     st.dictionaries(st.integers(0, 4).map(Fraction), st.sampled_from(BORDERS), max_size=2),
     st.sampled_from(BORDERS),
 )
@@ -152,7 +154,9 @@ def test_linear_sums_meet_what_a_fine_grid_meets(
 
 def test_polynomials_meet_what_a_fine_grid_meets() -> None:
     circle = symbols.add(symbols.multiply(X, X), symbols.multiply(Y, Y))
-    made = group([(circle, {Fraction(4): "apart", Fraction(9): "above"}), (symbols.multiply(X, Y), {Fraction(1): "below"})], {})
+    made = group(
+        [(circle, {Fraction(4): "apart", Fraction(9): "above"}), (symbols.multiply(X, Y), {Fraction(1): "below"})], {}
+    )
     found = listed(made)
     assert by_grid(made) <= found
     # x² + y² = 4 with xy > 1 and with xy <= 1; below 4 both; 4..9 both; from 9 on both
@@ -196,6 +200,10 @@ def test_what_the_solver_does_not_know_is_open_unless_a_point_shows_it() -> None
 
 
 def test_a_group_under_other_names_is_the_same_group() -> None:
-    one = Group(("b", "a"), (BOX, BOX), ((BOX,), (BOX,)), (symbols.add(symbols.name("a"), symbols.name("b")),), ((BOX,),))
-    other = Group(("q", "p"), (BOX, BOX), ((BOX,), (BOX,)), (symbols.add(symbols.name("p"), symbols.name("q")),), ((BOX,),))
+    one = Group(
+        ("b", "a"), (BOX, BOX), ((BOX,), (BOX,)), (symbols.add(symbols.name("a"), symbols.name("b")),), ((BOX,),)
+    )
+    other = Group(
+        ("q", "p"), (BOX, BOX), ((BOX,), (BOX,)), (symbols.add(symbols.name("p"), symbols.name("q")),), ((BOX,),)
+    )
     assert one.renamed() == other.renamed()

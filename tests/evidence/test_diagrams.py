@@ -35,9 +35,7 @@ Term = Any
 
 terms: st.SearchStrategy[Term] = st.recursive(
     st.tuples(st.just("var"), st.integers(0, WIDTH - 1)),
-    lambda inner: st.one_of(
-        st.tuples(st.just("not"), inner), st.tuples(st.sampled_from(["and", "or"]), inner, inner)
-    ),
+    lambda inner: st.one_of(st.tuples(st.just("not"), inner), st.tuples(st.sampled_from(["and", "or"]), inner, inner)),
     max_leaves=14,
 )
 

@@ -26,9 +26,9 @@ sums: st.SearchStrategy[Sum] = st.recursive(
     max_leaves=6,
 )
 points = st.fixed_dictionaries({name: small for name in NAMES})
-boxes = st.fixed_dictionaries(
-    {name: st.tuples(small, small, st.booleans(), st.booleans()) for name in NAMES}
-).map(lambda made: {name: _cell(*ends) for name, ends in made.items()})
+boxes = st.fixed_dictionaries({name: st.tuples(small, small, st.booleans(), st.booleans()) for name in NAMES}).map(
+    lambda made: {name: _cell(*ends) for name, ends in made.items()}
+)
 
 
 def _cell(a: Fraction, b: Fraction, low_open: bool, high_open: bool) -> Bounds:
@@ -211,7 +211,9 @@ def test_bounds_of_a_power_contain_its_values(
 
 def test_a_power_of_what_may_be_below_zero_has_no_bounds() -> None:
     a = symbols.name(Call("power", (symbols.name("x"), symbols.name("y"))))
-    assert bounds(a, {"x": Bounds(Fraction(-1), Fraction(2)), "y": Bounds(Fraction(1), Fraction(2))}) == Bounds(None, None)
+    assert bounds(a, {"x": Bounds(Fraction(-1), Fraction(2)), "y": Bounds(Fraction(1), Fraction(2))}) == Bounds(
+        None, None
+    )
 
 
 @given(small, small, small)

@@ -13,13 +13,14 @@ import subprocess
 import sys
 from collections.abc import Callable, Iterator, Mapping
 from dataclasses import dataclass, replace
-from functools import lru_cache
+from functools import cache
 from pathlib import Path
 
 import pytest
 from brute.generate import rulebook as generated
 from brute.rulebooks import And, Body, Cases, Choice, Condition, Follows, Not, Or, Rulebook, Takes
 from brute.text import render
+from support.asking import SAMPLES, SECONDS, evidence_of, model_of
 
 from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
@@ -28,7 +29,6 @@ from samesum.outputs.json_text import as_json
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.reading.blocks import blocks_of
-from support.asking import SAMPLES, SECONDS, evidence_of, model_of
 
 # every_fault has a unit mismatch on purpose, so that nothing can be counted exactly in it for good reason
 SAMPLE_TEXTS = {
@@ -77,7 +77,7 @@ def figures(counts: Counts) -> tuple[int, ...]:
     )
 
 
-@lru_cache(maxsize=None)
+@cache
 def evidence_for(text: str) -> Evidence:
     found = evidence_of(text, SECONDS)
     assert found.counts.exact
@@ -142,7 +142,15 @@ def renamed(text: str, names: Mapping[str, str]) -> str:
 
 def declared(model: m.Model) -> set[str]:
     """Every name that a writer made up."""
-    kinds = (model.indices, model.facts, model.settings, model.judgements, model.constants, model.tables, model.quantities)
+    kinds = (
+        model.indices,
+        model.facts,
+        model.settings,
+        model.judgements,
+        model.constants,
+        model.tables,
+        model.quantities,
+    )
     found = {each.name for kind in kinds for each in kind}
     for domain in [each.domain for each in (*model.facts, *model.settings)]:
         found |= set(domain.values) if isinstance(domain, m.OneOf) else set()
@@ -254,7 +262,9 @@ def closed(made: Rulebook, quantity: str, path: tuple[str, ...], option: str) ->
 
 def chains(made: Rulebook, quantity: str) -> bool:
     """Whether somebody follows a follower of this quantity: closing it would need closing those as well."""
-    followers = {each.name for each in made.quantities if isinstance(each.body, Follows) and each.body.quantity == quantity}
+    followers = {
+        each.name for each in made.quantities if isinstance(each.body, Follows) and each.body.quantity == quantity
+    }
     return any(name in repr(made.quantities) and f"quantity='{name}'" in repr(made) for name in followers)
 
 

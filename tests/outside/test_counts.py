@@ -8,7 +8,6 @@ from __future__ import annotations
 from math import comb, factorial, prod
 
 import pytest
-
 from support.asking import HEAD, cases, choice, counts_of, rulebook
 
 # --- choices -------------------------------------------------------------------------------
@@ -229,7 +228,9 @@ quantity r [t], clause 6
 )
 
 
-@pytest.mark.parametrize(("g", "h", "routes"), [("not g", "not h", 6), ("not g", "h", 8), ("g", "not h", 12), ("g", "h", 16)])
+@pytest.mark.parametrize(
+    ("g", "h", "routes"), [("not g", "not h", 6), ("not g", "h", 8), ("g", "not h", 12), ("g", "h", 16)]
+)
 def test_an_emission_factor_tool_in_four_situations(g: str, h: str, routes: int) -> None:
     """Steps like those of a CDM tool for the emission factor of an electricity system (recalled, re-worded)."""
     counts = counts_of(STEPS + f"\napplies when {g} and {h}, clause 1\n")

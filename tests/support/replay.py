@@ -161,6 +161,8 @@ def _worked(sign: str, a: Fraction, b: Fraction) -> Fraction:
     if sign == "^":
         if a == 0 and b < 0:
             raise NoValue("0 to a negative power")
+        if a < 0 and b.denominator != 1:
+            raise NoValue("a root of a number below 0")
         return a ** int(b) if b.denominator == 1 else Fraction(float(a) ** float(b))
     return {"+": operator.add, "-": operator.sub, "*": operator.mul}[sign](a, b)
 
