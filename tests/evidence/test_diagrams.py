@@ -139,7 +139,7 @@ POINTS = list(product(*(range(size) for size in SIZES)))
 @settings(max_examples=150, deadline=None)
 @given(tables, st.sets(st.integers(0, len(SIZES) - 1)), st.sampled_from(["most", "least", "sum"]))
 def test_elimination_is_what_listing_gives(made: list[tuple[list[int], int]], first: set[int], how: str) -> None:
-    """Sum over some variables, then the most (the least, the sum) over the others: as ``per_project_*`` is worked out."""
+    """Sum over some variables, then the most (the least, the sum) over the others: so is ``per_project_*`` found."""
     d = diagrams(SIZES)
     pairs = [table(d, variables, seed, 5) for variables, seed in made]
     left = eliminate(d, [factor for factor, _ in pairs], [10 * k for k in first], "sum")

@@ -63,7 +63,8 @@ def test_one_setting_moves_two_comparisons_together() -> None:
 
 
 def test_two_settings_share_a_comparison() -> None:
-    facts = "fact x, 0 to 4, clause 2\nsetting s, 0 to 1, by developer, clause 3\nsetting v, 0 to 1, by verifier, clause 3\n"
+    facts = "fact x, 0 to 4, clause 2\nsetting s, 0 to 1, by developer, clause 3\n"
+    facts += "setting v, 0 to 1, by verifier, clause 3\n"
     # x < s + v: never from 2 on; for less than 2 both together can, the developer alone only with v given
     assert figures(["x < s + v", "x >= s + v"], facts) == (2, 2, 1, 2)
     beyond = "applies when x >= 1, clause 1\n"

@@ -168,7 +168,7 @@ def three_conditions(applies: str = "") -> str:
 
 
 def test_a_count_of_cases_is_no_proof_that_a_table_is_complete() -> None:
-    """CODASYL 1982 tradition (recalled): the two rules cover 4 + 4 = 8 = 2^3 cases, yet both hold in 2 and none in 2."""
+    """CODASYL 1982 tradition (recalled): two rules cover 4 + 4 = 8 = 2^3 cases, yet both hold in 2, none in 2."""
     cases_of = {
         condition: counts_of(three_conditions(condition)).reachable
         for condition in ("first", "second", "first and second", "not first and not second", "third or not third")

@@ -46,7 +46,7 @@ def test_nested_two_way_choices_add(k: int) -> None:
 
 @pytest.mark.parametrize("k", [2, 7])
 def test_the_cyclomatic_number_is_no_count_of_routes(k: int) -> None:
-    """McCabe 1976 (IEEE Transactions on Software Engineering 2:308): decisions + 1, for nested and independent alike."""
+    """McCabe 1976 (IEEE Trans. Software Engineering 2:308): decisions + 1, for nested and independent alike."""
     names = [f"q{number}" for number in range(k)]
     side_by_side = counts_of(rulebook(*(choice(name, "ab") for name in names), result=added(names)))
     one_in_another = counts_of(rulebook(nested(k), result="q"))
