@@ -7,6 +7,7 @@ pinned to one end (Moore 1966, Interval Analysis; the slopes are worked out forw
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from fractions import Fraction
@@ -50,6 +51,18 @@ class Boxes:
             {name: (yes[which], no[which]) for name, (yes, no) in self.flags.items()},
             {id: each[which] for id, each in self.taken.items()},
         )
+
+
+def domain_boxes(plan: Plan) -> Boxes:
+    """One box that holds every project and everything that anybody decides."""
+    low = {name: np.array([-math.inf if each.low is None else float(each.low)]) for name, each in plan.numeric.items()}
+    high = {
+        name: np.array([math.inf if each.high is None else float(each.high)]) for name, each in plan.numeric.items()
+    }
+    codes = {name: np.ones((len(values), 1), dtype=bool) for name, values in plan.named.items()}
+    yes = np.ones(1, dtype=bool)
+    flags = {node.name: (yes, yes) for node in plan.nodes if node.kind == "holds"}
+    return Boxes(1, low, high, codes, flags)
 
 
 @dataclass(frozen=True, slots=True)

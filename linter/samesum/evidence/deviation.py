@@ -16,7 +16,7 @@ import numpy as np
 
 from samesum.evidence import intervals as iv
 from samesum.evidence import symbols
-from samesum.evidence.bounds import Boxes, Ranges
+from samesum.evidence.bounds import Boxes, Ranges, domain_boxes
 from samesum.evidence.dividing import lowest_over
 from samesum.evidence.formulas import atoms_box, mini_plan, ratio, without
 from samesum.evidence.intervals import Interval
@@ -29,18 +29,6 @@ NONE = Interval(np.zeros(1), np.zeros(1))
 ANY = Interval(np.full(1, -np.inf), np.full(1, np.inf))
 ONE = Interval(np.ones(1), np.ones(1))
 LONGEST = 60
-
-
-def domain_boxes(plan: Plan) -> Boxes:
-    """One box that holds every project and everything that anybody decides."""
-    low = {name: np.array([-math.inf if each.low is None else float(each.low)]) for name, each in plan.numeric.items()}
-    high = {
-        name: np.array([math.inf if each.high is None else float(each.high)]) for name, each in plan.numeric.items()
-    }
-    codes = {name: np.ones((len(values), 1), dtype=bool) for name, values in plan.named.items()}
-    yes = np.ones(1, dtype=bool)
-    flags = {node.name: (yes, yes) for node in plan.nodes if node.kind == "holds"}
-    return Boxes(1, low, high, codes, flags)
 
 
 @dataclass(slots=True)

@@ -14,7 +14,7 @@ import numpy as np
 
 from samesum.evidence import intervals as iv
 from samesum.evidence.arrays import Array
-from samesum.evidence.bounds import Boxes, Ranged, Ranges
+from samesum.evidence.bounds import Boxes, Ranged, Ranges, domain_boxes
 from samesum.evidence.intervals import Interval
 from samesum.evidence.plan import Plan
 
@@ -57,6 +57,17 @@ def lowest_over(
         problems = np.arange(boxes.count)
     work = _Division(plan, node, boxes, names, problems, -1.0 if highest else 1.0, reached, scale, most)
     return work.run(deadline, close)
+
+
+def range_over_domains(plan: Plan, seconds: float = 5.0, close: float = 1e-9) -> tuple[Bracket, Bracket]:
+    """The lowest and highest result over all projects of a rulebook that leaves one route."""
+    boxes = domain_boxes(plan)
+    names = tuple(name for name in plan.numeric if boxes.low[name][0] < boxes.high[name][0])
+    start = time.monotonic()
+    return (
+        lowest_over(plan, plan.result, boxes, names, start + seconds / 2, close),
+        lowest_over(plan, plan.result, boxes, names, start + seconds, close, highest=True),
+    )
 
 
 @dataclass(slots=True)
