@@ -245,6 +245,7 @@ def test_the_page_filters_sorts_and_opens_a_branch_point(tmp_path: Path, browser
 
     size = "return document.querySelector('svg.chart').width.baseVal.value"
     before = browser.execute_script(size)
+    browser.execute_script("document.querySelector('#map').scrollIntoView()")
     browser.find_element(By.CSS_SELECTOR, "[data-zoom=in]").click()
     assert browser.execute_script(size) > before
     assert browser.get_log("browser") == []

@@ -19,7 +19,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 def run(arguments: argparse.Namespace) -> int:
     from samesum.cli.checking import Task, check_one
-    from samesum.editor.watching import saves
+    from samesum.editor.watching import saves, stamps
     from samesum.judging.rulebooks_rules import RulesFor
     from samesum.outputs.page import paper_for
     from samesum.outputs.watched import Seen, change_text, first_text
@@ -42,13 +42,14 @@ def run(arguments: argparse.Namespace) -> int:
             sys.stdout.flush()
 
     place = file.resolve()
-    watched = frozenset((place, record_path(place), place.parent / "samesum.yaml"))
+    watched = (place, record_path(place), place.parent / "samesum.yaml")
+    since = stamps(watched)
     seen = look()
     checked = seen
     show(first_text(seen, paper_for(sys.stdout)))
     show("Watching; Ctrl-C ends it.\n")
     try:
-        for _ in saves(watched, place.parent):
+        for _ in saves(watched, place.parent, since):
             if file.is_file():  # else it is being put in place, and another event follows
                 seen = look()
                 show(change_text(checked, seen, paper_for(sys.stdout)))
