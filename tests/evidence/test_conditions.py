@@ -5,10 +5,10 @@ from __future__ import annotations
 from fractions import Fraction
 
 import pytest
-from support.asking import cases, choice, dead_of, evidence_of, gaps_of, overlaps_of, rulebook
-from support.replay import check_witnesses
 
 from samesum.evidence.evidence import Evidence
+from support.asking import cases, choice, dead_of, evidence_of, gaps_of, overlaps_of, rulebook
+from support.replay import check_witnesses
 
 X = "fact x, 0 to 10, clause 2\n"
 XY = X + "fact y, 0 to 10, clause 2\n"

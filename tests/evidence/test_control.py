@@ -3,10 +3,10 @@
 from __future__ import annotations
 
 import pytest
-from support.asking import cases, choice, evidence_of, model_of, rulebook
 
 from samesum.evidence.control import Control, find_control
 from samesum.graph import build
+from support.asking import cases, choice, evidence_of, model_of, rulebook
 
 FACTS = """fact area, 0 to 10, clause 2
 setting discount, 0 to 1, by programme, clause 3

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import pytest
+
 from support.asking import SECONDS, cases, counts_of, evidence_of, gaps_of, overlaps_of, rulebook
 from support.replay import check_witnesses
 

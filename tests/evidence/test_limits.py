@@ -7,13 +7,13 @@ import time
 from collections.abc import Callable
 
 import pytest
-from support.asking import cases, choice, evidence_of, gaps_of, model_of, rulebook
-from support.replay import check_witnesses
 
 from samesum.evidence.counting import FIGURES, Counts
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.gather import gather
 from samesum.graph import build
+from support.asking import cases, choice, evidence_of, gaps_of, model_of, rulebook
+from support.replay import check_witnesses
 
 SECONDS = 3.0
 LATE = 6.0  # what a busy machine may take on top; nothing that runs away is that quick

@@ -4,11 +4,10 @@ from __future__ import annotations
 
 from fractions import Fraction
 
-from support.asking import SAMPLES, cases, choice, evidence_of, rulebook
-from support.replay import check_witnesses
-
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.witness import Witness
+from support.asking import SAMPLES, cases, choice, evidence_of, rulebook
+from support.replay import check_witnesses
 
 FACTS = """index stratum, at most 2
 fact x, 0 to 10, clause 2

@@ -17,11 +17,10 @@ from functools import cache
 from pathlib import Path
 
 import pytest
+
 from brute.generate import rulebook as generated
 from brute.rulebooks import And, Body, Cases, Choice, Condition, Follows, Not, Or, Rulebook, Takes
 from brute.text import render
-from support.asking import SAMPLES, SECONDS, evidence_of, model_of
-
 from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
 from samesum.outputs.counts import count_json
@@ -29,6 +28,7 @@ from samesum.outputs.json_text import as_json
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.reading.blocks import blocks_of
+from support.asking import SAMPLES, SECONDS, evidence_of, model_of
 
 # every_fault has a unit mismatch on purpose, so that nothing can be counted exactly in it for good reason
 SAMPLE_TEXTS = {

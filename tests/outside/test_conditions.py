@@ -8,11 +8,11 @@ from __future__ import annotations
 from fractions import Fraction
 
 import pytest
-from support.asking import cases, counts_of, dead_of, evidence_of, gaps_of, overlaps_of, rulebook
-from support.replay import check_witnesses
 
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.witness import Witness
+from support.asking import cases, counts_of, dead_of, evidence_of, gaps_of, overlaps_of, rulebook
+from support.replay import check_witnesses
 
 # --- decision tables -------------------------------------------------------------------------
 # dmn-tck/tck (Decision Model and Notation conformance tables, Apache-2.0), 0004-simpletable-U and

@@ -8,6 +8,7 @@ from __future__ import annotations
 from math import comb, factorial, prod
 
 import pytest
+
 from support.asking import HEAD, cases, choice, counts_of, rulebook
 
 # --- choices -------------------------------------------------------------------------------
