@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from functools import lru_cache
 from pathlib import Path
 from typing import TYPE_CHECKING
 
@@ -41,9 +42,9 @@ def check_all(paths: Sequence[Path], task: Task, jobs: int) -> list[Outcome]:
 
     Raises ``BrokenProcessPool`` when a process ended before its time.
     """
-    parts = min(jobs * 3, len(paths)) if jobs > 1 else 1
-    if parts < 2:
-        return check_some(paths, task)
+    if min(jobs, len(paths)) < 2:
+        reader, chooser = _prepared(task.rules)
+        return [check_one(path, task, reader, chooser) for path in paths]
     from concurrent.futures import ProcessPoolExecutor
     from multiprocessing import get_all_start_methods, get_context
 
@@ -52,13 +53,9 @@ def check_all(paths: Sequence[Path], task: Task, jobs: int) -> list[Outcome]:
     context = get_context("forkserver" if served else "spawn")
     if served:
         context.set_forkserver_preload(list(_PRELOADED))
-    found: dict[Path, Outcome] = {}
-    with ProcessPoolExecutor(jobs, mp_context=context) as pool:
-        # dealt out like cards, so that no process gets all the large files
-        tasks = [pool.submit(check_some, paths[start::parts], task) for start in range(parts)]
-        for each in tasks:
-            found.update((outcome.path, outcome) for outcome in each.result())
-    return [found[path] for path in paths]
+    with ProcessPoolExecutor(min(jobs, len(paths)), mp_context=context) as pool:
+        tasks = [pool.submit(_check_by_itself, path, task) for path in paths]
+        return [each.result() for each in tasks]
 
 
 _PRELOADED = (
@@ -70,21 +67,27 @@ _PRELOADED = (
     "samesum.outputs.checks",
     "samesum.reading.read",
     "lark",
-    "networkx",
     "pint",
     "yaml",
     "z3",
 )
 
 
-def check_some(paths: Sequence[Path], task: Task) -> list[Outcome]:
-    """These files checked one after another; what reading prepares is prepared once."""
+def _prepared(rules: tuple[Path, ...]) -> tuple[Reader, RulesFor]:
+    """What reading and judging need."""
     from samesum.judging.rulebooks_rules import RulesFor
     from samesum.reading.read import default_cache_folder, make_reader
 
     reader = make_reader(default_cache_folder())
-    chooser = RulesFor(reader, task.rules)
-    return [check_one(path, task, reader, chooser) for path in paths]
+    return reader, RulesFor(reader, rules)
+
+
+_prepared_once = lru_cache(maxsize=1)(_prepared)
+
+
+def _check_by_itself(path: Path, task: Task) -> Outcome:
+    """One file, in a process of the pool, which prepares once and ends with the check."""
+    return check_one(path, task, *_prepared_once(task.rules))
 
 
 def check_one(path: Path, task: Task, reader: Reader, chooser: RulesFor) -> Outcome:
