@@ -13,6 +13,13 @@ def linear_in(program: Program, points: Collection[str]) -> bool:
 
     Structural: a maximum, a condition or a quotient that uses the value says no, even where it would not bite.
     """
+    key = frozenset(points)
+    if key not in program.known_linear:
+        program.known_linear[key] = _linear_in(program, key)
+    return program.known_linear[key]
+
+
+def _linear_in(program: Program, points: Collection[str]) -> bool:
     degrees: dict[int, int | None] = {}
     marked = {program.selects[id] for id in points} | {program.points[id] for id in points}
     for number in program.live:

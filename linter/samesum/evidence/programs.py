@@ -36,7 +36,8 @@ class Choosing:
 
 @dataclass(frozen=True, slots=True)
 class Program:
-    """``nodes`` in an order in which each stands after what it uses; ``live`` those that anything asked for needs."""
+    """``nodes`` in an order in which each stands after what it uses; ``live`` those that anything asked for needs.
+    ``known_linear``: what ``linear`` found out about it before."""
 
     graph: DecisionGraph
     nodes: tuple[plan.Node, ...]
@@ -52,6 +53,7 @@ class Program:
     inputs: Mapping[str, tuple[int, ...]]
     withheld: Mapping[str, float]
     _after: dict[frozenset[str], tuple[int, ...]] = field(default_factory=dict)
+    known_linear: dict[frozenset[str], bool] = field(default_factory=dict)
 
     def after(self, keys: Iterable[str]) -> tuple[int, ...]:
         """The nodes that change with these branch points (by id) or inputs (by name), in order."""

@@ -7,7 +7,7 @@ from typing import Any
 
 import numpy as np
 
-from samesum.evidence.behaviours import Offer
+from samesum.evidence.behaviours import Offer, pick_of_all
 from samesum.evidence.bench import (
     MOST_SWEEPS,
     Alone,
@@ -208,11 +208,15 @@ class _Whole:
         keeps its option while the errors are drawn anew."""
         bench = self.bench
         row = (WHOLE, "periods", behaviour)
-        kept = {key: bench.fresh[key] if key[0] in self.fixed else error for key, error in bench.errors.items()}
-        record(bench, (*row, STAY, "as written"), _over_periods(first, self.credited(later)[0], self.periods))
-        record(bench, (*row, STAY, "all fixed"), first)
-        record(bench, (*row, ANEW, "as written"), _over_periods(first, self.credited(taken, kept)[0], self.periods))
+        learned = first if later is taken else self.credited(later)[0]
         redrawn = self.credited(taken, bench.fresh)[0]
+        kept = first
+        if any(id in self.fixed for id, _ in bench.errors):
+            errors = {key: bench.fresh[key] if key[0] in self.fixed else error for key, error in bench.errors.items()}
+            kept = self.credited(taken, errors)[0]
+        record(bench, (*row, STAY, "as written"), _over_periods(first, learned, self.periods))
+        record(bench, (*row, STAY, "all fixed"), first)
+        record(bench, (*row, ANEW, "as written"), _over_periods(first, kept, self.periods))
         record(bench, (*row, ANEW, "all fixed"), _over_periods(first, redrawn, self.periods))
 
     def closures(self, second: Mapping[str, Any], values: Sequence[Any]) -> None:
@@ -242,39 +246,46 @@ class _Whole:
     def improved(self, taken: dict[str, Any]) -> dict[str, Any]:
         """Option after option tried again with everything else as it now stands, until hardly a project gains."""
         bench = self.bench
-        places = [
-            (each, id, self.offered[each.id][id][0]) for each in self.acting for id in self.offered[each.id]
-        ]
+        places = [(each, id, self.offered[each.id][id][0]) for each in self.acting for id in self.offered[each.id]]
         if len(places) < 2:
             return taken
+        standing = {id: self.numbers(each, taken[id], offer) for each, id, offer in places}
         credited, values = self.credited(taken)
         for _ in range(MOST_SWEEPS):
             gained = 0
             for each, id, offer in places:
-                if each.kind == "setting":
-                    candidates = [bench.set_to(id, value) for value in each.values]
-                elif each.kind == "judgement":
-                    candidates = [bench.set_to(id, bool(value)) for value in each.values]
-                else:
-                    candidates = list(range(len(each.candidates)))
-                now = taken[id]
-                costs = offer.cost
-                spent = offer.at(np.asarray(now, dtype=np.int64), costs) if id not in self.inputs else 0.0
+                now = standing[id]
+                spent = offer.at(now, offer.cost)
                 best = np.where(np.isfinite(credited), credited - spent, -np.inf)
-                chosen, better_anywhere = now, np.zeros(best.shape, dtype=bool)
-                for number, candidate in enumerate(candidates):
-                    tried = bench.full(bench.values(self.world({**taken, id: candidate}), values, (id,)))
-                    worth = tried - costs[number]
-                    better = offer.open[number] & (worth > best + 1e-9 * np.abs(best))
-                    if better.any():
-                        best = np.where(better, worth, best)
-                        chosen = np.where(better, candidate, chosen)
-                        better_anywhere |= better
-                if better_anywhere.any():
-                    gained += int(np.count_nonzero(better_anywhere))
-                    taken = {**taken, id: chosen}
+                chosen = now
+                # Every other option of each project is tried once, by going round from the one it takes.
+                for step in range(1, len(offer.open)):
+                    other = (now + step) % len(offer.open)
+                    world = self.world({**taken, id: self.candidate(each, other)})
+                    tried = bench.full(bench.values(world, values, (id,)))
+                    worth = tried - offer.at(other, offer.cost)
+                    better = offer.at(other, offer.open) & (worth > best + 1e-9 * np.abs(best))
+                    best = np.where(better, worth, best)
+                    chosen = np.where(better, other, chosen)
+                if chosen is not now and (moved := int(np.count_nonzero(chosen != now))):
+                    gained += moved
+                    standing[id] = chosen
+                    taken = {**taken, id: self.candidate(each, chosen)}
                     values = bench.values(self.world(taken), values, (id,))
                     credited = bench.full(values)
             if gained <= bench.projects.count // 100:
                 break
         return taken
+
+    def candidate(self, latitude: Latitude, numbers: Array) -> Array:
+        """Options by their number, as a world wants them: branches, or values of an input."""
+        if latitude.id not in self.inputs:
+            return numbers.astype(np.int8)
+        found: Array = self.bench.set_to(latitude.id, np.asarray(latitude.values)[numbers])
+        return found
+
+    def numbers(self, latitude: Latitude, taken: Any, offer: Offer) -> Array:
+        """The options that are taken, by their number."""
+        if latitude.id not in self.inputs:
+            return np.asarray(taken, dtype=np.int64)
+        return np.asarray(pick_of_all(offer), dtype=np.int64)
