@@ -12,7 +12,6 @@ from pathlib import Path
 
 import numpy as np
 import pytest
-from support.choosing import either_or, figure, found, model_of, simulate, supply
 
 from samesum.evidence.bench import Terms, draw_errors
 from samesum.evidence.closed_forms import Noise, indifferent, pick_of_all, second_look
@@ -35,6 +34,7 @@ from samesum.graph import build
 from samesum.reading import model as m
 from samesum.reading.cases import read_cases
 from samesum.reading.read import read_file
+from support.choosing import either_or, figure, found, model_of, simulate, supply
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 DRAFTS = ("coastal_wetland", "waste_heat", "woodland", "marsh_example")
