@@ -86,6 +86,8 @@ def find_jumps(graph: DecisionGraph, seconds: float = 5.0) -> Jumps:
         told = False
         candidates = [name for name in needs.facts_of(threshold) if name in ranges]
         for fact in candidates:
+            if time.monotonic() > deadline:
+                break
             root = _root(graph, threshold, fact, ranges[fact], middle)
             if root is None:
                 continue

@@ -79,7 +79,7 @@ def overlaps(evidence: Evidence, workshop: Workshop) -> Iterator[Subject]:
     asked = {
         (graph.branch_points[each.branch_point].general_id, (each.branches[0], each.branches[1]))
         for each in evidence.conditions.undecided
-        if each.asks == "overlap"
+        if each.asks == "overlap" and each.branches  # else time ran out before its pairs were looked at
     }
     for id, pair in sorted({*found, *asked}):
         shown = found.get((id, pair), [])
