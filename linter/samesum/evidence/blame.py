@@ -14,11 +14,12 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from samesum.evidence.arrays import Array, Table
+from samesum.evidence.deciding import Decide, reference_decision
 from samesum.evidence.extremes import find_extremes, find_range, plan_work
 from samesum.evidence.figures import Figures
 from samesum.evidence.plan import Plan
 from samesum.evidence.steps import Work
-from samesum.evidence.values import Decide, Evaluator, Rows, TooMany, reference_decision
+from samesum.evidence.values import Evaluator, Rows, TooMany
 from samesum.reading import model as m
 
 FIRST = 64

@@ -17,12 +17,12 @@ import numpy as np
 from samesum.evidence import intervals as iv
 from samesum.evidence import symbols
 from samesum.evidence.bounds import Boxes, Ranges, domain_boxes
+from samesum.evidence.deciding import preferred
 from samesum.evidence.dividing import lowest_over
 from samesum.evidence.formulas import atoms_box, mini_plan, ratio, without
 from samesum.evidence.intervals import Interval
 from samesum.evidence.plan import Node, Plan
 from samesum.evidence.symbols import Sum
-from samesum.evidence.values import preferred
 from samesum.reading import model as m
 
 NONE = Interval(np.zeros(1), np.zeros(1))

@@ -8,8 +8,10 @@ from fractions import Fraction
 
 import numpy as np
 
+from samesum.evidence.deciding import decision
 from samesum.evidence.figures import Figures, issued
-from samesum.evidence.values import Evaluator, decision, route_codes
+from samesum.evidence.replay import route_codes
+from samesum.evidence.values import Evaluator
 from samesum.evidence.witness import Value
 from samesum.reading.cases import Case
 from samesum.spans import Span

@@ -11,11 +11,14 @@ import numpy as np
 
 from samesum.evidence.arrays import Array, Table, spread_out, union
 from samesum.evidence.batches import Batch
+from samesum.evidence.deciding import reference_decision
 from samesum.evidence.extremes import Extreme, Extremes, find_extremes, plan_work
 from samesum.evidence.open_routes import count_routes
+from samesum.evidence.operations import nearest_whole
 from samesum.evidence.plan import Plan
+from samesum.evidence.replay import route_codes
 from samesum.evidence.searching import search
-from samesum.evidence.values import Evaluator, Rows, TooMany, nearest_whole, reference_decision, route_codes
+from samesum.evidence.values import Evaluator, Rows, TooMany
 from samesum.reading import model as m
 
 MOST_LISTED = 65_536  # results of one project that are told apart

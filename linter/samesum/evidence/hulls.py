@@ -9,8 +9,8 @@ from typing import Any
 import numpy as np
 
 from samesum.evidence.arrays import Array, Table, spread_out, union
+from samesum.evidence.operations import operated
 from samesum.evidence.plan import Node
-from samesum.evidence.values import operated
 
 
 @dataclass(frozen=True, slots=True)

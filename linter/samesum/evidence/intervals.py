@@ -15,7 +15,7 @@ from functools import reduce
 import numpy as np
 
 from samesum.evidence.arrays import Array
-from samesum.evidence.values import nearest_whole
+from samesum.evidence.operations import nearest_whole
 
 
 @dataclass(frozen=True, slots=True)
@@ -48,7 +48,8 @@ def added(a: Interval, b: Interval) -> Interval:
 
 
 def _times(a: Array, b: Array) -> Array:
-    found = a * b
+    with np.errstate(invalid="ignore"):
+        found = a * b
     return np.where((a == 0) | (b == 0), 0.0, found)
 
 

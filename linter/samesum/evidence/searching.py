@@ -11,11 +11,13 @@ import numpy as np
 
 from samesum.evidence.arrays import Array
 from samesum.evidence.bounds import Boxes
+from samesum.evidence.deciding import decision, preferred
 from samesum.evidence.extremes import Extreme, Extremes
 from samesum.evidence.plan import Plan
+from samesum.evidence.replay import route_codes
 from samesum.evidence.settings import candidates_of
 from samesum.evidence.structure import find_structure
-from samesum.evidence.values import Evaluator, Rows, TooMany, decision, preferred, route_codes
+from samesum.evidence.values import Evaluator, Rows, TooMany
 
 MOST_WAYS = 512
 

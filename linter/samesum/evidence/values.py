@@ -17,10 +17,11 @@ from typing import Any
 import numpy as np
 
 from samesum.evidence.arrays import Array, Table, at, constant, spread_out, stacked, union, where_code
+from samesum.evidence.deciding import Decide, first_open, preferred
+from samesum.evidence.operations import TIE, operated, within
 from samesum.evidence.plan import Node, Plan
 from samesum.reading import model as m
 
-TIE = 1e-12  # comparisons of decimal inputs in floats: what is nearer than this share of its terms is equal
 MOST_CELLS = 1 << 24
 
 
@@ -77,10 +78,6 @@ class Axis:
     node: int
     size: int
     allowed: Array | None = None
-
-
-Decide = Callable[[str, Sequence[Table], int], Array]
-"""Branch point, where each branch is open, number of rows → the branch of each row (-1 for none)."""
 
 
 @dataclass(slots=True)
@@ -420,164 +417,4 @@ def _all_valid(evaluator: Evaluator, parts: Sequence[Table | None]) -> Table | N
     for part in parts:
         if part is not None:
             found = part if found is None else evaluator._sized(np.logical_and, found, part)
-    return found
-
-
-def within(value: Array, band: m.Band) -> Any:
-    """Where a number lies in a band (``low`` < x <= ``high``), ends told apart as in comparisons."""
-    here: Any = ~np.isnan(value)
-    if band.low is not None:
-        low = float(band.low)
-        here = here & (value - low > TIE * (np.abs(value) + abs(low)))
-    if band.high is not None:
-        high = float(band.high)
-        here = here & (value - high <= TIE * (np.abs(value) + abs(high)))
-    return here
-
-
-def operated(node: Node, parts: Sequence[Array]) -> Array:
-    """A sum, product, quotient, power, minimum, maximum or function, element by element."""
-    match node.kind:
-        case "linear":
-            terms = [
-                part if weight == 1 else part * float(weight) for part, weight in zip(parts, node.weights, strict=True)
-            ]
-            if node.number:
-                terms.append(np.full(1, float(node.number)))
-            return _folded(np.add, terms)
-        case "product":
-            return _folded(np.multiply, parts)
-        case "divide":
-            return finite(parts[0] / parts[1])
-        case "power":
-            return finite(np.power(parts[0], parts[1]))
-        case "min" | "max":
-            return _folded(np.minimum if node.kind == "min" else np.maximum, parts)
-        case _:
-            return FUNCTIONS[node.name](parts[0])
-
-
-def _folded(operation: Any, parts: Sequence[Array]) -> Array:
-    """One operation over all parts, the smaller arrays first; a result is written over where it is large enough."""
-    ordered = sorted(parts, key=lambda part: part.size)
-    found = ordered[0]
-    own = False
-    for part in ordered[1:]:
-        if own and np.broadcast_shapes(found.shape, part.shape) == found.shape:
-            operation(found, part, out=found)
-        else:
-            found = operation(found, part)
-            own = True
-    return found
-
-
-def finite(value: Array) -> Array:
-    return np.where(np.isfinite(value), value, np.nan)
-
-
-def nearest_whole(value: Array) -> Array:
-    """The nearest whole number, halves away from zero."""
-    whole: Array = np.copysign(np.floor(np.abs(value) + 0.5), value)
-    return whole
-
-
-FUNCTIONS: Mapping[str, Callable[[Array], Array]] = {
-    "abs": np.abs,
-    "sqrt": np.sqrt,
-    "exp": lambda value: finite(np.exp(value)),
-    "ln": lambda value: finite(np.log(value)),
-    "round": nearest_whole,
-    "floor": np.floor,
-    "ceil": np.ceil,
-}
-
-
-def first_open(open_: Sequence[Table], order: Sequence[int]) -> Table:
-    """The first open branch in an order, -1 where none is."""
-    axes = union(open_)
-    arrays = [spread_out(each, axes) for each in open_]
-    codes: Array = np.full(np.broadcast_shapes(*(array.shape for array in arrays)), -1, dtype=np.int64)
-    for branch in reversed(order):
-        codes = np.where(arrays[branch], branch, codes)
-    return Table(axes, codes)
-
-
-def preferred(plan: Plan, id: str) -> list[int]:
-    """The branches in the order in which the reference takes them: the option marked so, then those whose error is
-    stated, the lowest first, then the others as written. Of cases as written."""
-    body = plan.graph.branch_points[id].body
-    if not isinstance(body, m.Choice):
-        return list(range(len(plan.graph.branch_points[id].branches)))
-    marked = [place for place, option in enumerate(body.options) if option.reference]
-    stated = [(option.error, place) for place, option in enumerate(body.options) if option.error is not None]
-    order = [*marked, *(place for _, place in sorted(stated)), *range(len(body.options))]
-    return list(dict.fromkeys(order))
-
-
-def reference_decision(plan: Plan) -> Decide:
-    """Takes the reference at every branch point: its first open branch in the order of ``preferred``."""
-
-    def decide(id: str, open_: Sequence[Table], rows: int) -> Array:
-        return np.broadcast_to(first_open(open_, preferred(plan, id)).data, (rows,))
-
-    return decide
-
-
-def decision(codes: Mapping[str, Array], plan: Plan) -> Decide:
-    """Takes the given branches; where none is given, or it is not open, what ``otherwise`` says: the reference."""
-
-    def decide(id: str, open_: Sequence[Table], rows: int) -> Array:
-        fallback = np.broadcast_to(first_open(open_, preferred(plan, id)).data, (rows,))
-        wanted = codes.get(id)
-        if wanted is None:
-            return fallback
-        can = np.zeros(rows, dtype=bool)
-        for branch, each in enumerate(open_):
-            can |= (wanted == branch) & np.broadcast_to(each.data, (rows,))
-        return np.where(can, wanted, fallback)
-
-    return decide
-
-
-def reached(evaluator: Evaluator) -> dict[str, Array]:
-    """Which rows reach each branch point, when everything is decided: {branch point: yes or no by row}."""
-    plan = evaluator.plan
-    count = evaluator.rows.count
-    active: dict[int, Array] = {plan.root: np.ones(count, dtype=bool)}
-    found: dict[str, Array] = {}
-    for number in range(plan.root, -1, -1):
-        here = active.pop(number, None)
-        if here is None or not here.any():
-            continue
-        node = plan.nodes[number]
-        if node.kind == "select":
-            state = evaluator.state(node.args[0])
-            codes = _codes(state, count)
-            targets = [(node.args[0], here)]
-            targets += [(body, here & (codes == place)) for place, body in enumerate(node.args[1:])]
-        else:
-            if node.kind == "point":
-                found[node.name] = here
-            targets = [(each, here) for each in node.args]
-        for target, where in targets:
-            active[target] = where if target not in active else active[target] | where
-    return found
-
-
-def _codes(state: State, count: int) -> Array:
-    assert state.codes is not None
-    return np.broadcast_to(state.codes.data, (count,))
-
-
-def route_codes(evaluator: Evaluator) -> dict[str, Array]:
-    """The route of each row, when everything is decided: the branch taken at each branch point, -1 for not
-    reached (or stuck)."""
-    where = reached(evaluator)
-    count = evaluator.rows.count
-    found = {}
-    for id, number in evaluator.plan.points.items():
-        here = where.get(id)
-        if here is None:
-            continue
-        found[id] = np.where(here, _codes(evaluator.state(number), count), -1).astype(np.int16)
     return found

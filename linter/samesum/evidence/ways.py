@@ -15,9 +15,9 @@ from typing import Any, Literal
 from samesum.evidence import solver as s
 from samesum.evidence import symbols
 from samesum.evidence.batches import middle
+from samesum.evidence.deciding import preferred
 from samesum.evidence.plan import Node, Plan
 from samesum.evidence.symbols import Bounds, Sum
-from samesum.evidence.values import preferred
 from samesum.reading import model as m
 
 MOST_WAYS = 240

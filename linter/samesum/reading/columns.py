@@ -45,6 +45,7 @@ def read_columns(path: Path, model: m.Model) -> tuple[Columns | None, tuple[Prob
     """The projects of a table and everything that is wrong with them; None when there is anything."""
     try:
         table = _table(path)
+        _ = table.column_names  # names that are not UTF-8 are noticed here
     except ModuleNotFoundError:
         return None, (
             _problem(path, "reading CSV and Parquet needs pyarrow", "install it with samesum's extra `tables`"),
@@ -119,8 +120,8 @@ class _Reader:
         import pyarrow.compute as compute
 
         most = {index.name: index.most for index in self.model.indices}
-        for name in table.column_names:
-            values = table.column(name).combine_chunks()
+        for number, name in enumerate(table.column_names):
+            values = table.column(number).combine_chunks()
             each = declared.get(name)
             if pa.types.is_list(values.type) or pa.types.is_large_list(values.type):
                 size = most.get(each.index, 0) if isinstance(each, m.Fact) else 0
@@ -162,6 +163,10 @@ class _Reader:
             self.report(1, place, f"{declared.name} is not per index", f"call the column `{declared.name}`", "shape")
             return
         domain: m.Domain = m.YesNo() if isinstance(declared, m.Judgement) else declared.domain
+        if not _is_plain(values.type):
+            says = f"the column `{id}` holds {values.type}, which is neither a number nor a text"
+            self.report(1, place, says, "write numbers, names, or yes and no", "shape")
+            return
         has = ~np.asarray(values.is_null().to_numpy(zero_copy_only=False), dtype=bool)
         if isinstance(domain, m.Range):
             assert not isinstance(declared, m.Judgement)
@@ -294,6 +299,16 @@ class _Reader:
                 self._told(
                     np.flatnonzero(~given[id]), 1, lambda row, n=fact.name: f"the fact {n} is missing", "fill the cell"
                 )
+
+
+def _is_plain(kind: Any) -> bool:
+    import pyarrow as pa
+
+    tests = (
+        pa.types.is_integer, pa.types.is_floating, pa.types.is_decimal, pa.types.is_boolean,
+        pa.types.is_string, pa.types.is_large_string, pa.types.is_null,
+    )  # fmt: skip
+    return any(test(kind) for test in tests)
 
 
 def _encoded(values: Any) -> tuple[list[str], Array]:
