@@ -236,6 +236,8 @@ def picked(which: Branch, among: Sequence[Any]) -> Any:
     """For each project the value of its own branch; not finite where it has none."""
     if not isinstance(which, np.ndarray):
         return among[which] if which >= 0 else np.nan
+    if not any(isinstance(value, np.ndarray) and value.ndim for value in among):
+        return np.asarray((*among, np.nan), dtype=np.float64)[which]  # −1 is the last: none
     found: Any = among[0] if int(which.min(initial=0)) >= 0 else np.where(which == 0, among[0], np.nan)
     for number in range(1, len(among)):
         found = np.where(which == number, among[number], found)
