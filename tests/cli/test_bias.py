@@ -7,9 +7,9 @@ from pathlib import Path
 from typing import Any
 
 import pytest
-from support.choosing import either_or
 
 from samesum.cli.main import main
+from support.choosing import either_or
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 
@@ -60,6 +60,39 @@ def test_cases(capsys: pytest.CaptureFixture[str]) -> None:
     }  # fmt: skip
     status, out, _ = said(capsys, file, "--inputs", cases, "--projects", "800")
     assert status == 0 and "each of 4 given ones in turn" in " ".join(out.split())
+
+
+def test_tables_of_projects(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """The same projects from CSV and Parquet as from YAML: the same figures."""
+    import pyarrow.csv as csv
+    import pyarrow.parquet as parquet
+
+    file = str(SAMPLES / "marsh_example.rulebook")
+    table = tmp_path / "projects.csv"
+    table.write_text(
+        "name,soil,salinity,area@1,area@2,plot_mean@1,plot_mean@2,discount\n"
+        "a,peaty,12,120,80,105,98,\nb,organic,30,40,,210,,0.1\nc,mineral,2,10,,90,,\n",
+        encoding="utf-8",
+    )
+    parquet.write_table(csv.read_csv(table), tmp_path / "projects.parquet")
+    (tmp_path / "projects.yaml").write_text(
+        "cases:\n"
+        "  - {name: a, soil: peaty, salinity: 12, area: [120, 80], plot_mean: [105, 98]}\n"
+        "  - {name: b, soil: organic, salinity: 30, area: [40], plot_mean: [210], discount: 0.1}\n"
+        "  - {name: c, soil: mineral, salinity: 2, area: [10], plot_mean: [90]}\n",
+        encoding="utf-8",
+    )
+    found = [
+        answer(capsys, file, "--inputs", str(tmp_path / f"projects.{kind}"), "--projects", "2000")
+        for kind in ("csv", "parquet", "yaml")
+    ]
+    assert found[0] == found[1] == found[2]
+    assert found[0]["projects"] == {
+        "simulated": 2000, "from": "cases", "cases": 3, "outside": 0, "without_result": 1
+    }  # fmt: skip
+    (tmp_path / "bad.csv").write_text("name,soyl\na,peaty\n", encoding="utf-8")
+    status, out, err = said(capsys, file, "--inputs", str(tmp_path / "bad.csv"))
+    assert status == 2 and not out and "soil" in err
 
 
 def test_for_people(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:

@@ -13,6 +13,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from samesum.evidence.batches import batches_of
 from samesum.evidence.bench import Terms, draw_errors
 from samesum.evidence.closed_forms import Noise, indifferent, pick_of_all, second_look
 from samesum.evidence.pointwise import Calculation, NoValue
@@ -21,7 +22,7 @@ from samesum.evidence.projects import (
     BLOCK,
     CannotDraw,
     Projects,
-    from_cases,
+    from_batches,
     from_domains,
     projects_of,
     stretches,
@@ -32,8 +33,9 @@ from samesum.evidence.simulate import evaluate
 from samesum.evidence.witness import Value
 from samesum.graph import build
 from samesum.reading import model as m
-from samesum.reading.cases import read_cases
+from samesum.reading.cases import Case, read_cases
 from samesum.reading.read import read_file
+from samesum.spans import START
 from support.choosing import either_or, figure, found, model_of, simulate, supply
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
@@ -86,7 +88,7 @@ def test_the_cases_of_a_sample_come_out_as_their_annex_says() -> None:
         model = sample(name)
         cases, problems = read_cases(SAMPLES / f"{name}.cases.yaml", model)
         assert not problems
-        given = from_cases(model, [cases.cases[0]])
+        given = from_batches(model, batches_of(model, [cases.cases[0]]))
         source = given.sources[0]
         world = truth(source.program)
         if name == "coastal_wetland":  # the annex takes the fifth report, which nobody calls the reference
@@ -98,23 +100,20 @@ def test_the_cases_of_a_sample_come_out_as_their_annex_says() -> None:
 def test_a_case_outside_or_without_a_result_is_left_out_and_said() -> None:
     model = sample("coastal_wetland")
     cases, _ = read_cases(SAMPLES / "coastal_wetland.cases.yaml", model)
-    given = from_cases(model, cases.cases)
+    given = from_batches(model, batches_of(model, cases.cases))
     assert (given.cases, given.outside, given.without_result) == (5, 0, 1)
     selection = select(given, 400, Terms(0), closures=False)
     assert selection.projects == 400
     with pytest.raises(CannotDraw, match="none of the projects"):
-        from_cases(model, [case for case in cases.cases if case.name == "Curlew Reach"])
+        from_batches(model, batches_of(model, [case for case in cases.cases if case.name == "Curlew Reach"]))
 
 
 def test_each_given_project_counts_alike() -> None:
     """100 and 300 t in turn, one option, no error: the truth of all is their mean."""
     text = either_or([(0, 0.1, 0), (0, 0.1, 0)]).replace("1000 to 1000", "0 to 1000")
     model = model_of(text)
-    from samesum.reading.cases import Case
-    from samesum.spans import START
-
     cases = [Case(name, {"amount": Fraction(value)}, None, START) for name, value in (("a", 100), ("b", 300))]
-    given = from_cases(model, cases)
+    given = from_batches(model, batches_of(model, cases))
     blocks = [projects_of(given, each, 0) for each in stretches(given, 10)]
     assert sum(float(block.inputs["amount"].sum()) for block in blocks) == 2000
 

@@ -24,7 +24,9 @@ MOST_PROJECTS = 10**9
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("file", metavar="FILE", type=Path, help="a .rulebook file")
-    shared.add_inputs(parser)
+    parser.add_argument(
+        "--inputs", type=Path, metavar="CASES", help="simulate these projects: a .yaml, .csv or .parquet file"
+    )
     parser.add_argument(
         "--projects", type=_count, default=PROJECTS, metavar="N", help=f"how many projects to simulate ({PROJECTS:,})"
     )
@@ -102,17 +104,26 @@ def run(arguments: argparse.Namespace) -> int:
 
 def supply_for(model: Model, inputs: Path | None) -> Supply | None:
     """The projects to simulate with; None when the file of cases could not be used, which is then said."""
-    from samesum.evidence.projects import from_cases, from_domains
+    from samesum.evidence.projects import from_batches, from_domains
 
     if inputs is None:
         return from_domains(model)
-    from samesum.reading.cases import read_cases
+    from samesum.evidence.batches import batches_of, batches_of_columns
 
-    cases, problems = read_cases(inputs, model)
-    if problems:
-        shared.report(problems)
-        return None
-    return from_cases(model, cases.cases)
+    if inputs.suffix.lower() in (".csv", ".parquet"):
+        from samesum.reading.columns import read_columns
+
+        columns, problems = read_columns(inputs, model)
+        if columns is not None:
+            return from_batches(model, batches_of_columns(model, columns))
+    else:
+        from samesum.reading.cases import read_cases
+
+        cases, problems = read_cases(inputs, model)
+        if not problems:
+            return from_batches(model, batches_of(model, cases.cases))
+    shared.report(problems)
+    return None
 
 
 def simulated(supply: Supply, arguments: argparse.Namespace) -> Selection:

@@ -22,7 +22,8 @@ Kind = Literal["choice", "overlap", "setting", "judgement", "stated"]
 class Latitude:
     """``id`` is the branch point's general id, or a setting's or judgement's name. ``candidates`` are options, branches
     or values by name; ``reference`` the one that counts as the truth. ``stated``: nobody decides, but the quantity says
-    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this choice, which the truth does not know."""
+    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this choice,
+    which the truth does not know."""
 
     id: str
     kind: Kind
@@ -107,10 +108,12 @@ def _input(each: m.Setting | m.Judgement) -> Latitude:
 
 
 def middle(domain: m.Domain) -> Fraction | str | bool:
-    """Where a setting stands when nobody gives it: mid-domain; its only end; the first name; yes."""
-    if isinstance(domain, m.Range) and domain.low is not None and domain.high is not None:
-        return (domain.low + domain.high) / 2
-    return usual(domain)
+    """Where a setting stands when nobody gives it: mid-domain, its only end or 0; the first name; yes."""
+    if not isinstance(domain, m.Range):
+        return usual(domain)
+    if domain.low is None or domain.high is None:
+        return domain.low if domain.low is not None else domain.high if domain.high is not None else Fraction(0)
+    return (domain.low + domain.high) / 2
 
 
 def _number(each: m.Setting, domain: m.Range) -> Latitude:

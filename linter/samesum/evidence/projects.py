@@ -22,7 +22,7 @@ from samesum.evidence.witness import usual
 from samesum.reading import model as m
 
 if TYPE_CHECKING:
-    from samesum.reading.cases import Case
+    from samesum.evidence.batches import Batch
 
 Array = npt.NDArray[Any]
 BLOCK = 16_384
@@ -108,33 +108,31 @@ def from_domains(model: m.Model, unbounded: bool = False) -> Supply:
     return Supply(model, (Source(program, 0, {}, {}),), 0, 0, 0)
 
 
-def from_cases(model: m.Model, cases: Sequence[Case]) -> Supply:
+def from_batches(model: m.Model, batches: Sequence[Batch]) -> Supply:
     """The given projects, each in turn as often as the others. Those outside the rulebook's applicability, and those
     that have no result on the reference route, are left out and counted.
 
     Raises ``CannotDraw`` when none is left.
     """
-    sized: dict[tuple[tuple[str, int], ...], list[Case]] = {}
-    for case in cases:
-        sized.setdefault(_sizes(model, case), []).append(case)
     sources: list[Source] = []
     outside = without = 0
-    for sizes, group in sorted(sized.items()):
-        program = make_program(model, dict(sizes))
-        inputs, given = _given_inputs(program, group)
+    for batch in sorted(batches, key=lambda each: sorted(each.plan.graph.sizes.items())):
+        rows = batch.rows
+        program = make_program(model, batch.plan.graph.sizes)
+        inputs: dict[str, Array] = {**rows.numbers, **rows.codes, **rows.flags}
+        given = {name: ~free for name, free in rows.free.items() if not free.all()}
         values = evaluate(program, inputs, truth(program))
-        inside = _all([values[number] for number in program.applies], len(group))
-        found = inside & np.isfinite(_full(values[program.result], len(group)))
+        inside = _all([values[number] for number in program.applies], rows.count)
+        found = inside & np.isfinite(_full(values[program.result], rows.count))
         outside += int(np.sum(~inside))
         without += int(np.sum(inside & ~found))
         if np.any(found):
             kept = {name: array[found] for name, array in inputs.items()}
-            sources.append(
-                Source(program, int(np.sum(found)), kept, {name: array[found] for name, array in given.items()})
-            )
+            fixed = {name: array[found] for name, array in given.items()}
+            sources.append(Source(program, int(np.sum(found)), kept, fixed))
     if not sources:
         raise CannotDraw("none of the projects given has a result: see `samesum trial` for each of them")
-    return Supply(model, tuple(sources), len(cases), outside, without)
+    return Supply(model, tuple(sources), sum(batch.rows.count for batch in batches), outside, without)
 
 
 def truth(program: Program) -> World:
@@ -168,42 +166,6 @@ def projects_of(supply: Supply, stretch: Stretch, seed: int) -> Projects:
         given = {name: held[rows] for name, held in source.given.items()}
         return Projects(source.program, inputs, given, stretch.count)
     return Projects(source.program, _drawn(supply.model, source.program, stretch, seed), {}, stretch.count)
-
-
-# --- given projects ----------------------------------------------------------------------------
-
-
-def _sizes(model: m.Model, case: Case) -> tuple[tuple[str, int], ...]:
-    sizes = {}
-    for fact in model.facts:
-        values = case.values.get(fact.name)
-        if fact.index and isinstance(values, tuple):
-            sizes[fact.index] = len(values)
-    return tuple(sorted(sizes.items()))
-
-
-def _given_inputs(program: Program, cases: Sequence[Case]) -> tuple[dict[str, Array], dict[str, Array]]:
-    model, sizes = program.graph.model, program.graph.sizes
-    inputs: dict[str, Array] = {}
-    given: dict[str, Array] = {}
-    for fact in model.facts:
-        columns: list[list[Any]] = [[] for _ in range(sizes[fact.index] if fact.index else 1)]
-        for case in cases:
-            found = case.values.get(fact.name)
-            row = found if isinstance(found, tuple) else (found,) * len(columns)
-            for column, value in zip(columns, row, strict=True):
-                column.append(_coded(value, fact.domain))
-        for place, column in enumerate(columns, start=1):
-            inputs[f"{fact.name}@{place}" if fact.index else fact.name] = np.asarray(column)
-    for each in (*model.settings, *model.judgements):
-        domain = each.domain if isinstance(each, m.Setting) else m.YesNo()
-        stands = _reference_of(each)
-        held = [each.name in case.values for case in cases]
-        values = [_coded(case.values[each.name], domain) if each.name in case.values else stands for case in cases]
-        inputs[each.name] = np.asarray(values)
-        if any(held):
-            given[each.name] = np.asarray(held)
-    return inputs, given
 
 
 def _coded(value: object, domain: m.Domain) -> float | int | bool:
