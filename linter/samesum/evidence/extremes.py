@@ -6,7 +6,7 @@ and its value must be the one that was folded.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -62,7 +62,7 @@ def find_extremes(plan: Plan, rows: Rows, held: frozenset[str] = frozenset()) ->
     size = max(1, MOST_AT_ONCE // per_row)
     if size < rows.count:
         parts = [rows.part(slice(start, start + size)) for start in range(0, rows.count, size)]
-        return joined([find_extremes(plan, part, held) for part in parts])
+        return joined([find_extremes(plan, part, held) for part in parts], list(plan.points))
     bent = _bent(plan, work)
     return _refined(plan, rows, held, bent) if bent else _run(plan, work)
 
@@ -109,7 +109,7 @@ def _refined(plan: Plan, rows: Rows, held: frozenset[str], bent: frozenset[str])
             if rows.count == 1:
                 raise TooMany
             halves = [slice(0, rows.count // 2), slice(rows.count // 2, rows.count)]
-            return joined([_refined(plan, rows.part(half), held, bent) for half in halves])
+            return joined([_refined(plan, rows.part(half), held, bent) for half in halves], list(plan.points))
         found = _run(plan, work)
         for name in bent:
             near = [
@@ -306,9 +306,10 @@ def _replayed(plan: Plan, evaluator: Evaluator, places: Mapping[int, Array], num
     return Extreme(value, route_codes(replay), inputs)
 
 
-def joined(parts: list[Extremes]) -> Extremes:
+def joined(parts: list[Extremes], order: Sequence[str]) -> Extremes:
     def one(extremes: list[Extreme]) -> Extreme:
-        names = dict.fromkeys(name for each in extremes for name in each.route)
+        reached = {name for each in extremes for name in each.route}
+        names = [name for name in order if name in reached]
         route = {
             name: np.concatenate(
                 [each.route.get(name, np.full(len(each.value), -1, dtype=np.int16)) for each in extremes]

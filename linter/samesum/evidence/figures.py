@@ -29,7 +29,8 @@ NO_COUNT = -1
 class Figures:
     """One line a project. ``routes`` is -1 where it could not be counted, ``distinct`` -1 where results are too many to
     tell apart or a setting is free. ``proved``: between what the result is proved to lie where ``complete`` is false.
-    ``moving``: what leaves a choice in some project (kind, id or name)."""
+    ``moving``: what leaves a choice in some project (kind, id or name). ``issued``: lowest, highest and reference after
+    rounding."""
 
     batch: Batch
     outside: Array
@@ -43,12 +44,15 @@ class Figures:
     proved_high: Array
     spread: Array
     moving: tuple[tuple[str, str], ...]
+    issued: tuple[Array, Array, Array]
 
 
 def figures_of(batch: Batch, deadline: float) -> Figures:
     """All figures of a batch. ``deadline`` (monotonic clock) bounds the search where an exact answer would be too
     much work."""
     plan, rows = batch.plan, batch.rows
+    result = plan.graph.model.result
+    assert result is not None
     reference = reference_of(plan, rows)
     outside, routes, distinct, moving = _counted(plan, rows)
     try:
@@ -72,6 +76,11 @@ def figures_of(batch: Batch, deadline: float) -> Figures:
         proved_high,
         spread,
         moving,
+        (
+            issued(extremes.lowest.value, result),
+            issued(extremes.highest.value, result),
+            issued(reference.value, result),
+        ),
     )
 
 

@@ -161,28 +161,23 @@ def case_trial(name: str, figures: Figures, row: int) -> CaseTrial:
         bool(figures.outside[row]),
         None if routes == NO_COUNT else int(routes),
         None if distinct == NO_COUNT else distinct,
-        end_of(figures, figures.lowest, row),
-        end_of(figures, figures.highest, row),
-        end_of(figures, figures.reference, row),
+        end_of(figures, figures.lowest, row, 0),
+        end_of(figures, figures.highest, row, 1),
+        end_of(figures, figures.reference, row, 2),
         spread if np.isfinite(spread) else None,
         complete,
         proved,
     )
 
 
-def end_of(figures: Figures, extreme: Extreme, row: int) -> End | None:
-    """One result of one row, None where there is none."""
+def end_of(figures: Figures, extreme: Extreme, row: int, which: int) -> End | None:
+    """One result of one row, None where there is none. ``which``: 0 lowest, 1 highest, 2 reference."""
     value = float(extreme.value[row])
     if not np.isfinite(value):
         return None
     plan = figures.batch.plan
-    result = plan.graph.model.result
-    assert result is not None
-    route = []
-    for id, point in plan.graph.branch_points.items():
-        codes = extreme.route.get(id)
-        if codes is not None and codes[row] >= 0:
-            route.append((id, point.branches[int(codes[row])]))
+    points = plan.graph.branch_points
+    route = tuple([(id, points[id].branches[codes[row]]) for id, codes in extreme.route.items() if codes[row] >= 0])
     settings: list[tuple[str, Value | float]] = []
     for setting in plan.graph.model.settings:
         if isinstance(setting.domain, m.Range):
@@ -192,7 +187,7 @@ def end_of(figures: Figures, extreme: Extreme, row: int) -> End | None:
         else:
             settings.append((setting.name, bool(extreme.inputs.flags[setting.name][row])))
     judgements = tuple((each.name, bool(extreme.inputs.flags[each.name][row])) for each in plan.graph.model.judgements)
-    return End(value, float(issued(np.array([value]), result)[0]), tuple(route), tuple(settings), judgements)
+    return End(value, float(figures.issued[which][row]), route, tuple(settings), judgements)
 
 
 @dataclass(frozen=True, slots=True)
@@ -214,7 +209,7 @@ def explained(graph: DecisionGraph, case: Case, route: str) -> Explained | str:
     values = dict(case.values)
     if route in ("lowest", "highest"):
         figures = figures_of(batch, time.monotonic() + 5.0)
-        end = end_of(figures, figures.lowest if route == "lowest" else figures.highest, 0)
+        end = end_of(figures, figures.lowest if route == "lowest" else figures.highest, 0, int(route == "highest"))
         if end is None:
             return f"{case.name} has no result on any route"
         taken = dict(end.route)

@@ -66,14 +66,14 @@ def working(
     }
     calculation = Calculation(graph, inputs_of(graph, values), forced)
     assert graph.model.result is not None
-    speaker = _Speaker(graph, calculation)
+    wording = _Wording(graph, calculation)
     lines: list[Line] = []
-    _visit(graph.model.result.name, graph, calculation, speaker, lines, set())
+    _visit(graph.model.result.name, graph, calculation, wording, lines, set())
     return lines
 
 
 def _visit(
-    id: str, graph: DecisionGraph, calculation: Calculation, speaker: _Speaker, lines: list[Line], seen: set[str]
+    id: str, graph: DecisionGraph, calculation: Calculation, wording: _Wording, lines: list[Line], seen: set[str]
 ) -> Fraction | None:
     if id in seen or id not in graph.instances:
         return None
@@ -93,7 +93,7 @@ def _visit(
         for condition in point.conditions:
             if condition is not None:
                 for other in _needed(condition, instance.elements, graph):
-                    _visit(other, graph, calculation, speaker, lines, seen)
+                    _visit(other, graph, calculation, wording, lines, seen)
         try:
             taken = calculation.state(point)
         except NoValue:
@@ -103,18 +103,18 @@ def _visit(
         where = f"{point_id}: {branch.name}"
         asked = walk.condition_of(branch)
         if asked is not None:
-            where += f" ({speaker.condition(asked, instance.elements)}{_but(calculation, asked, instance.elements)})"
+            where += f" ({wording.condition(asked, instance.elements)}{_but(calculation, asked, instance.elements)})"
         branches.append(where)
         body, path = branch.body, (*path, branch.name)
     formula = numbers = ""
     value: Fraction | None = None
     if isinstance(body, m.Formula):
         for other in _needed(body.expression, instance.elements, graph):
-            _visit(other, graph, calculation, speaker, lines, seen)
-        formula = speaker.names(body.expression, instance.elements)
+            _visit(other, graph, calculation, wording, lines, seen)
+        formula = wording.names(body.expression, instance.elements)
         try:
             value = calculation.number(body.expression, instance.elements)
-            numbers = speaker.numbers(body.expression, instance.elements)
+            numbers = wording.numbers(body.expression, instance.elements)
         except NoValue:
             trouble = "the calculation has no value here"
     lines.append(Line(id, quantity.unit, quantity.about.clause, tuple(branches), formula, numbers, value, trouble))
@@ -137,7 +137,7 @@ def _needed(node: walk.Node, elements: Element, graph: DecisionGraph) -> list[st
 
 
 @dataclass(slots=True)
-class _Speaker:
+class _Wording:
     graph: DecisionGraph
     calculation: Calculation
 

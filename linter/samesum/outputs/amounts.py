@@ -19,6 +19,12 @@ def amount(value: float, unit: str = "") -> str:
     return f"{text} {unit}".rstrip()
 
 
+def short_share(value: float | None) -> str:
+    """The same for a narrow column: ``×72,900`` in place of ``72,900 times``."""
+    said = share(value)
+    return f"×{said.removesuffix(' times')}" if said.endswith(" times") else said
+
+
 def share(value: float | None) -> str:
     """``43.4 %``, ``0``; ``7 times`` from ten times on; ``not known``."""
     if value is None or math.isnan(value):

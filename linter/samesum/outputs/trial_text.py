@@ -10,7 +10,7 @@ from samesum.evidence.examples import Example, described
 from samesum.evidence.trial import CaseTrial, TrialEvidence
 from samesum.evidence.witness import Value
 from samesum.evidence.working import Line, in_unit
-from samesum.outputs.amounts import amount, share
+from samesum.outputs.amounts import amount, share, short_share
 from samesum.outputs.counts import title_of
 from samesum.outputs.page import Page, Paper, clean, width_of
 from samesum.outputs.projects import Words, words_for
@@ -197,7 +197,7 @@ def _row(blame: Blame, wide: int) -> str:
     if width_of(name) > wide:
         name = name[: wide - 1] + "…"
     pad = " " * (wide - width_of(name))
-    return f"{name}{pad}  {blame.mover.kind:<10} {blame.mover.by:<10} {share(blame.swing):>9}  {share(blame.left):>9}"
+    return f"{name}{pad}  {blame.mover.kind:<10} {blame.mover.by:<10} {short_share(blame.swing):>9}  {short_share(blame.left):>9}"
 
 
 def _proved(page: Page, evidence: TrialEvidence) -> None:
