@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING
 from samesum.cli import shared
 
 if TYPE_CHECKING:
+    from samesum.evidence.batches import Batch
     from samesum.evidence.selection import Selection
     from samesum.examine import Examined
     from samesum.reading.cases import Case
@@ -98,48 +99,63 @@ def registered(reading: Reading, file: Path, asked: Wanted) -> Gathered | None:
 
 
 def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
-    """Trial on the cases given, and a simulation of the programme; None when the cases cannot be read."""
+    """Trial on the projects given, and a simulation of the programme; None when the projects cannot be read."""
     from samesum.evidence.plan import Unplannable
-    from samesum.evidence.trial import try_out
-    from samesum.reading.cases import read_cases
+    from samesum.evidence.trial import try_batches
     from samesum.reviewing.measured import Tried
 
     evidence = examined.evidence
     assert evidence is not None
     if evidence.model.result is None or examined.problems:
         return Tried(), ["what the numbers come to is left out, because a part of the rulebook could not be read"]
-    cases = None
-    if asked.inputs is not None:
-        cases, problems = read_cases(asked.inputs, evidence.model)
-        if problems:
-            shared.report(problems)
-            return None
     notes: list[str] = []
-    trial = None
-    if cases is not None:
-        try:
-            trial = try_out(evidence.graph, cases.cases, asked.seconds, evidence=evidence)
-        except Unplannable as trouble:
-            notes.append(f"what projects come to is left out: {trouble}")
-    selection = None
-    if asked.projects:
-        from samesum.evidence.projects import CannotDraw
-        from samesum.evidence.selection import NothingTrue
-
-        try:
-            selection = _simulated(evidence.model, None if cases is None else cases.cases, asked)
-        except (CannotDraw, Unplannable) as trouble:
-            notes.append(f"over-issuance is left out: {trouble}")
-        except NothingTrue:
-            notes.append("over-issuance is left out: all projects together have no true credits above zero")
+    trial = selection = given = None
+    try:
+        if asked.inputs is not None:
+            given = _projects_given(asked.inputs, evidence.model)
+            if given is None:
+                return None
+            batches, names, cases = given
+            trial = try_batches(evidence.graph, batches, names, cases, asked.seconds, evidence=evidence)
+        if asked.projects:
+            selection = _simulated(evidence.model, given[0] if given is not None else None, asked, notes)
+    except Unplannable as trouble:
+        notes.append(f"what the numbers come to is left out: {trouble}")
     return Tried(trial, selection), notes
 
 
-def _simulated(model: Model, cases: Sequence[Case] | None, asked: Wanted) -> Selection:
+def _projects_given(inputs: Path, model: Model) -> tuple[Sequence[Batch], Sequence[str], Sequence[Case]] | None:
+    """The projects of a file of cases or of a table; None when there are mistakes in it, which are then said."""
+    from samesum.evidence.batches import batches_of, batches_of_columns
+
+    if inputs.suffix.lower() in (".csv", ".parquet"):
+        from samesum.reading.columns import read_columns
+
+        columns, problems = read_columns(inputs, model)
+        if columns is not None:
+            return batches_of_columns(model, columns), columns.names, ()
+    else:
+        from samesum.reading.cases import read_cases
+
+        cases, problems = read_cases(inputs, model)
+        if not problems:
+            return batches_of(model, cases.cases), [case.name for case in cases.cases], cases.cases
+    shared.report(problems)
+    return None
+
+
+def _simulated(model: Model, batches: Sequence[Batch] | None, asked: Wanted, notes: list[str]) -> Selection | None:
+    """The simulation; None when there is nothing to simulate, and ``notes`` says why."""
     from samesum.cli.bias import cores
     from samesum.evidence.bench import Terms
-    from samesum.evidence.projects import from_cases, from_domains
-    from samesum.evidence.selection import select
+    from samesum.evidence.projects import CannotDraw, from_batches, from_domains
+    from samesum.evidence.selection import NothingTrue, select
 
-    supply = from_domains(model) if cases is None else from_cases(model, cases)
-    return select(supply, asked.projects, Terms(asked.seed), cores())
+    try:
+        supply = from_domains(model) if batches is None else from_batches(model, batches)
+        return select(supply, asked.projects, Terms(asked.seed), cores())
+    except CannotDraw as trouble:
+        notes.append(f"over-issuance is left out: {trouble}")
+    except NothingTrue:
+        notes.append("over-issuance is left out: all projects together have no true credits above zero")
+    return None
