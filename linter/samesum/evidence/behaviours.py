@@ -34,19 +34,19 @@ class Offer:
     def at(self, rows: Array, of: Array) -> Array:
         """For each project the entry of ``of`` in its own row."""
         if len(of) == 2:
-            return np.where(rows == 0, of[0], of[1])
+            return np.asarray(np.where(rows == 0, of[0], of[1]))
         return np.asarray(of[rows, np.arange(len(rows))])
 
 
 def by_cost(money: Array, open_ones: Array) -> Array:
     """The order in which the options are looked at, for each project."""
-    return np.argsort(np.where(open_ones, money, np.inf), axis=0, kind="stable")
+    return np.asarray(np.argsort(np.where(open_ones, money, np.inf), axis=0, kind="stable"))
 
 
 def second_look(offer: Offer) -> Array:
     """Starts with the cheapest; moves on while that gives less than the truth by more than the next one costs; keeps
     the last one tried."""
-    return offer.at(tried(offer), offer.order).astype(np.int8)
+    return np.asarray(offer.at(tried(offer), offer.order), dtype=np.int8)
 
 
 def tried(offer: Offer) -> Array:
@@ -86,14 +86,14 @@ def indifferent(offer: Offer, chance: Array) -> Array:
     """Any of the open options; ``chance`` is uniform on [0, 1)."""
     open_before = np.cumsum(offer.open, axis=0)
     wanted = np.floor(chance * open_before[-1]).astype(np.int64) + 1
-    return np.argmax((open_before == wanted) & offer.open, axis=0).astype(np.int8)
+    return np.asarray(np.argmax((open_before == wanted) & offer.open, axis=0), dtype=np.int8)
 
 
 def _worth(offer: Offer, among: Array) -> Array:
-    return np.where(among & np.isfinite(offer.credits), offer.credits - offer.cost, -np.inf)
+    return np.asarray(np.where(among & np.isfinite(offer.credits), offer.credits - offer.cost, -np.inf))
 
 
 def _best(offer: Offer, worth: Array, otherwise: Array) -> Array:
     best = np.argmax(worth, axis=0)
     better = offer.at(best, worth) > offer.at(otherwise.astype(np.int64), worth)
-    return np.where(better, best, otherwise).astype(np.int8)
+    return np.asarray(np.where(better, best, otherwise), dtype=np.int8)

@@ -176,8 +176,9 @@ class Alone:
         if ways_in(self.bench.program, point):
             return self.credited(decided)
         offer, credits = found[point]
-        if isinstance(decided[point], int):
-            return credits[decided[point]]
+        number = decided[point]
+        if isinstance(number, int):
+            return credits[number]
         return offer.at(decided[point].astype(np.int64), offer.credits)
 
     def credited(self, decided: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None) -> Array:

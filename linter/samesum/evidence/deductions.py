@@ -10,6 +10,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
+from functools import partial
 
 from samesum.evidence import closed_forms as forms
 from samesum.evidence.behaviours import pick_of_all, second_look
@@ -57,7 +58,7 @@ def solve_deductions(
         for behaviour in behaviours:
             found = _exact(benches, latitude, behaviour) if terms.price is None else None
             if found is None:
-                found = _solved(lambda share, of=latitude, how=behaviour: _pooled(benches, of, how, share))
+                found = _solved(partial(_pooled, benches, latitude, behaviour))
             if found is not None:
                 made[latitude.id, behaviour] = found
     return made

@@ -22,8 +22,8 @@ Kind = Literal["choice", "overlap", "setting", "judgement", "stated"]
 class Latitude:
     """``id`` is the branch point's general id, or a setting's or judgement's name. ``candidates`` are options, branches
     or values by name; ``reference`` the one that counts as the truth. ``stated``: nobody decides, but the quantity says
-    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this choice,
-    which the truth does not know."""
+    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this
+    choice, which the truth does not know."""
 
     id: str
     kind: Kind
@@ -77,7 +77,8 @@ def find_latitudes(program: Program) -> tuple[Latitude, ...]:
                 point.general_id, "overlap", "developer", "", point.clause, point.branches, 0
             )
     latitudes = list(found.values())
-    for each in (*graph.model.settings, *graph.model.judgements):
+    inputs: list[m.Setting | m.Judgement] = [*graph.model.settings, *graph.model.judgements]
+    for each in inputs:
         if any(number in live for number in program.inputs.get(each.name, ())):
             latitudes.append(_input(each))
     return tuple(latitudes)

@@ -108,8 +108,7 @@ def make_program(model: m.Model, sizes: Mapping[str, int] | None = None) -> Prog
         if isinstance(point.body, m.Choice):
             for number, option in enumerate(point.body.options):
                 if option.cost is not None:
-                    node = maker.expression(option.cost, graph.instances[point.instance].elements)
-                    costs[id, number] = maker.linear([(node, option.cost.unit.factor)])
+                    costs[id, number] = maker.expression(option.cost, graph.instances[point.instance].elements)
     nodes = tuple(maker.nodes)
     inputs: dict[str, list[int]] = {}
     for number, node in enumerate(nodes):

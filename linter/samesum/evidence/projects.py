@@ -18,11 +18,12 @@ import numpy.typing as npt
 from samesum.evidence.latitudes import middle
 from samesum.evidence.programs import Program, make_program, needed_for
 from samesum.evidence.simulate import World, evaluate
-from samesum.evidence.witness import usual
+from samesum.evidence.witness import Value, usual
 from samesum.reading import model as m
 
 if TYPE_CHECKING:
     from samesum.evidence.batches import Batch
+    from samesum.reading.cases import Case
 
 Array = npt.NDArray[Any]
 BLOCK = 16_384
@@ -135,6 +136,13 @@ def from_batches(model: m.Model, batches: Sequence[Batch]) -> Supply:
     return Supply(model, tuple(sources), sum(batch.rows.count for batch in batches), outside, without)
 
 
+def from_cases(model: m.Model, cases: Sequence[Case]) -> Supply:
+    """The projects of a file of cases. Raises ``CannotDraw`` as ``from_batches`` does."""
+    from samesum.evidence.batches import batches_of
+
+    return from_batches(model, batches_of(model, cases))
+
+
 def truth(program: Program) -> World:
     """The world of the true credits: reference everywhere, no error, deductions for choice left out."""
     return World(inputs=dict.fromkeys(program.withheld, 0.0))
@@ -168,12 +176,11 @@ def projects_of(supply: Supply, stretch: Stretch, seed: int) -> Projects:
     return Projects(source.program, _drawn(supply.model, source.program, stretch, seed), {}, stretch.count)
 
 
-def _coded(value: object, domain: m.Domain) -> float | int | bool:
-    if isinstance(domain, m.OneOf):
-        return domain.values.index(value) if isinstance(value, str) else -1
-    if isinstance(domain, m.YesNo):
-        return value is True
-    return float(value) if isinstance(value, int | float) or hasattr(value, "numerator") else math.nan
+def _coded(value: Value, domain: m.Domain) -> float | int | bool:
+    """A value as the arrays hold it: a number, the place of a name in its domain, yes or no."""
+    if isinstance(value, str):
+        return domain.values.index(value) if isinstance(domain, m.OneOf) else -1
+    return value if isinstance(value, bool) else float(value)
 
 
 def _reference_of(each: m.Setting | m.Judgement) -> float | int | bool:
@@ -201,9 +208,8 @@ def _drawn(model: m.Model, program: Program, stretch: Stretch, seed: int) -> dic
     """
     domains = _fact_domains(model, program)
     count = stretch.count
-    fixed: dict[str, Array] = {
-        each.name: np.full(count, _reference_of(each)) for each in (*model.settings, *model.judgements)
-    }
+    decided: list[m.Setting | m.Judgement] = [*model.settings, *model.judgements]
+    fixed: dict[str, Array] = {each.name: np.full(count, _reference_of(each)) for each in decided}
     groups = _groups(program, domains)
     inputs = dict(fixed)
     kept = np.zeros(count, dtype=bool)

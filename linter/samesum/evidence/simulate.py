@@ -186,8 +186,8 @@ def _point(program: Program, node: plan.Node, values: list[Any], world: World) -
     if choosing is None:
         return _cases(program, node, values, wanted)
     if choosing.leader:
-        taken, reference = values[node.args[-1]]
-        return _mapped(choosing.leader, taken), _mapped(choosing.leader, reference)
+        there = values[node.args[-1]]
+        return _mapped(choosing.leader, there[0]), _mapped(choosing.leader, there[1])
     free = [program.nodes[arg].kind == "true" for arg in node.args]
     reference: Branch = -1
     for number in reversed(choosing.order):

@@ -109,7 +109,7 @@ def _everybody(one: Alone, found: Offers, number: int) -> Array:
 
 
 def _over_periods(first: Array, later: Array, periods: int) -> Array:
-    return (first + (periods - 1) * later) / periods
+    return np.asarray((first + (periods - 1) * later) / periods)
 
 
 def _truth_scatters(one: Alone) -> None:
