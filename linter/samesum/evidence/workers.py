@@ -1,7 +1,7 @@
 """Blocks of work on several cores, their answers in the order of the blocks.
 
-By forked processes, which start at once with everything that was prepared: threads were tried, and spend their time
-handing the interpreter to each other (slower than one). Where processes cannot be forked, one core does it all.
+By forked processes, which start at once with everything that was prepared and share no interpreter. Where processes
+cannot be forked, one core does it all.
 """
 
 from __future__ import annotations
