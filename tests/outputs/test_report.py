@@ -12,10 +12,10 @@ from typing import TYPE_CHECKING, Any
 import pytest
 from hypothesis import given
 from hypothesis import strategies as st
-from support import hostile
 
 from samesum.cli.main import main
 from samesum.outputs.report.layers import Box, draw
+from support import hostile
 
 if TYPE_CHECKING:
     from selenium.webdriver import Chrome

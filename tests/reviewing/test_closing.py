@@ -9,18 +9,18 @@ import re
 
 import numpy as np
 import pytest
+
 from brute.counts import Route, _best, _different
 from brute.evaluate import Evaluator
 from brute.generate import rulebook
 from brute.points import representative
 from brute.rulebooks import Rulebook
 from brute.text import render
-from support.asking import counts_of, reader
-
 from samesum.evidence.closing import Bracket, figures_if_given
 from samesum.evidence.counting import Given
 from samesum.graph import DecisionGraph, build
 from samesum.reading.read import read
+from support.asking import counts_of, reader
 
 SECONDS = 60.0
 

@@ -5,13 +5,13 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from support.asking import reader
 
 from samesum.examine import examine_reading
 from samesum.reading.read import read
 from samesum.reviewing.compare import Comparison, compare
 from samesum.reviewing.record import Record
 from samesum.reviewing.rows import Register, register_of
+from support.asking import reader
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 

@@ -5,12 +5,12 @@ from __future__ import annotations
 from pathlib import Path
 
 import pytest
-from support.asking import reader
 
 from samesum.graph import build
 from samesum.reading.read import read
 from samesum.reviewing.places import Place, changes, fingerprints, places_of
 from samesum.reviewing.places import Source as Text
+from support.asking import reader
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 

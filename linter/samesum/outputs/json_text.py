@@ -18,4 +18,9 @@ def as_json(answer: Mapping[str, Any]) -> str:
     see, is written as an escape, so that nothing of it is lost."""
     with long_integers():
         text = json.dumps(answer, indent=2, ensure_ascii=False)
-    return _UNSEEN.sub(lambda sign: f"\\u{ord(sign[0]):04x}", text) + "\n"
+    return visible(text) + "\n"
+
+
+def visible(text: str) -> str:
+    """JSON with every sign that is not seen as an escape."""
+    return _UNSEEN.sub(lambda sign: f"\\u{ord(sign[0]):04x}", text)

@@ -11,6 +11,7 @@ from typing import Any
 from samesum.evidence.examples import described
 from samesum.evidence.trial import CaseTrial, End, TrialEvidence
 from samesum.evidence.witness import Value
+from samesum.outputs.json_text import visible
 from samesum.written import long_integers, number
 
 
@@ -25,14 +26,14 @@ def trial_json(evidence: TrialEvidence) -> Iterator[str]:
         yield (",\n    " if place else "\n    ") + _dumped(case_json(evidence.case(place)))
     yield "\n  ]" if len(evidence) else "]"
     for name, value in rest_json(evidence).items():
-        text = json.dumps(value, ensure_ascii=False, indent=2).replace("\n", "\n  ")
+        text = visible(json.dumps(value, ensure_ascii=False, indent=2)).replace("\n", "\n  ")
         yield f",\n  {_dumped(name)}: {text}"
     yield "\n}\n"
 
 
 def _dumped(value: Any) -> str:
     with long_integers():
-        return json.dumps(value, ensure_ascii=False)
+        return visible(json.dumps(value, ensure_ascii=False))
 
 
 def case_json(case: CaseTrial) -> dict[str, Any]:
