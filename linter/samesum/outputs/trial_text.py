@@ -197,7 +197,8 @@ def _row(blame: Blame, wide: int) -> str:
     if width_of(name) > wide:
         name = name[: wide - 1] + "…"
     pad = " " * (wide - width_of(name))
-    return f"{name}{pad}  {blame.mover.kind:<10} {blame.mover.by:<10} {short_share(blame.swing):>9}  {short_share(blame.left):>9}"
+    figures = f"{short_share(blame.swing):>9}  {short_share(blame.left):>9}"
+    return f"{name}{pad}  {blame.mover.kind:<10} {blame.mover.by:<10} {figures}"
 
 
 def _proved(page: Page, evidence: TrialEvidence) -> None:
