@@ -10,7 +10,8 @@ The meaning that is followed here, beyond the language's own page:
   same evaluation has a gap), whose questions all have a value, and that has no branch open.
 * A lookup that no row answers is a gap of the innermost branch point whose branch holds the
   expression, else of the quantity (with its element); inside a condition, of the branch point that asks, where
-  all else that it asks has a result.
+  all else that it asks has a result. So is a division by zero, the root of a number below zero, and the
+  logarithm of one that is not above it.
 * Two ``when`` of plain cases overlap where both hold in some evaluation that reaches them with every question
   answered, complete or not.
 * ``applies when``: facts, human inputs and routes for which one fails, or asks something that has no
@@ -321,11 +322,26 @@ class Evaluator:
             each = [self.expression(e.body, {**elements, e.index: k}, owner) for k in self.rulebook.elements(e.index)]
             return reduced(e.name, each)
         if isinstance(e, Call):
-            return reduced(e.name, [self.expression(a, elements, owner) for a in e.arguments])
+            each = [self.expression(a, elements, owner) for a in e.arguments]
+            if e.name in ("sqrt", "ln"):
+                inside = compared(each[0].it, ">=" if e.name == "sqrt" else ">", 0.0, self.same)
+                each = [self.only(Value(np.where(inside, each[0].it, 1.0), each[0].has), inside, owner)]
+            return reduced(e.name, each)
         left, right = self.expression(e.left, elements, owner), self.expression(e.right, elements, owner)
-        has = both(left.has, right.has)
-        with np.errstate(all="ignore"):
-            return Value(_ARITHMETIC[e.operator](left.it, right.it), has)
+        if e.operator == "/":
+            inside = compared(right.it, "<>", 0.0, self.same)
+            right = self.only(Value(np.where(inside, right.it, 1.0), right.has), inside, owner)
+        return Value(_ARITHMETIC[e.operator](left.it, right.it), both(left.has, right.has))
+
+    def only(self, value: Value, inside: Array, owner: str) -> Value:
+        """The value where ``inside``; elsewhere there is none, which is a gap of ``owner``."""
+        lacking = self.all & ~np.asarray(inside)
+        if value.has is not None:
+            lacking = lacking & value.has
+        if not lacking.any():
+            return value
+        self.now.missing.append((owner, lacking))
+        return Value(value.it, both(value.has, ~lacking))
 
     def lookup(self, e: Lookup, elements: Elements, owner: str) -> Value:
         table = self.tables[e.table]
@@ -346,11 +362,7 @@ class Evaluator:
                     in_band(value, label, self.same) if isinstance(label, Band) else value == domain.index(label)
                 )
             found, values = found | here, np.where(here, float(row.value), values)
-        lacking = ~found if has is None else ~found & has
-        if lacking.any():
-            self.now.missing.append((owner, lacking))
-            has = found if has is None else found & has
-        return Value(values, has)
+        return self.only(Value(values, has), found, owner)
 
 
 def _first(holds: dict[str, Array]) -> dict[str, Array]:
@@ -394,8 +406,7 @@ _FUNCTIONS = {"abs": np.abs, "sqrt": np.sqrt, "exp": np.exp, "ln": np.log, "floo
 def reduced(name: str, each: list[Value]) -> Value:
     it, has = each[0].it, each[0].has
     if name in _FUNCTIONS:
-        with np.errstate(all="ignore"):
-            return Value(_FUNCTIONS[name](it), has)
+        return Value(_FUNCTIONS[name](it), has)
     if name == "round":
         return Value(np.floor(np.add(it, 0.5)), has)
     for value in each[1:]:

@@ -12,8 +12,9 @@ from fractions import Fraction
 
 from hypothesis import strategies as st
 
+from brute.declarer import Chance
 from brute.linear import TooLarge
-from brute.maker import Chance, Maker
+from brute.maker import Maker
 from brute.points import representative
 from brute.rulebooks import OneOf, Range, Rulebook, Setting
 

@@ -66,7 +66,7 @@ class _Atoms:
 
     def body(self, body: Body, elements: Elements) -> None:
         if isinstance(body, Formula):
-            self.bands(body.expression, elements)
+            self.valued(body.expression, elements)
         for _, condition, inner in branches(body):
             if condition is not None:
                 self.condition(condition, elements)
@@ -84,21 +84,25 @@ class _Atoms:
         elif isinstance(condition, Not):
             self.condition(condition.part, elements)
 
-    def bands(self, expression: Expression, elements: Elements) -> None:
-        """The atoms of the tables that a formula looks up, whatever else stands in it."""
+    def valued(self, expression: Expression, elements: Elements) -> None:
+        """The atoms that decide where a formula has a value: those of its tables, divisors, roots and logarithms."""
         if isinstance(expression, Lookup):
             self.forms(expression, elements)
         elif isinstance(expression, Op):
-            self.bands(expression.left, elements)
-            self.bands(expression.right, elements)
+            if expression.operator == "/":
+                self.add(self.forms(expression.right, elements))
+            self.valued(expression.left, elements)
+            self.valued(expression.right, elements)
         elif isinstance(expression, Neg):
-            self.bands(expression.operand, elements)
+            self.valued(expression.operand, elements)
         elif isinstance(expression, Call):
+            if expression.name in ("sqrt", "ln"):
+                self.add(self.forms(expression.arguments[0], elements))
             for argument in expression.arguments:
-                self.bands(argument, elements)
+                self.valued(argument, elements)
         elif isinstance(expression, Over):
             for element in self.rulebook.elements(expression.index):
-                self.bands(expression.body, {**elements, expression.index: element})
+                self.valued(expression.body, {**elements, expression.index: element})
 
     def difference(self, left: Expression, right: Expression, elements: Elements) -> None:
         self.add(_sums([self.forms(left, elements), _scaled(self.forms(right, elements), Fraction(-1))]))

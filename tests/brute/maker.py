@@ -5,14 +5,12 @@ What is simplest is drawn as 0, first or no.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Callable
 from fractions import Fraction
-from typing import Protocol, TypeVar
 
+from brute.declarer import Declarer, whole
 from brute.rulebooks import (
     And,
-    Band,
     Body,
     Call,
     Cases,
@@ -20,15 +18,12 @@ from brute.rulebooks import (
     Choice,
     Compare,
     Condition,
-    Constant,
     Expression,
     Fact,
     Follows,
     Formula,
     Holds,
-    Index,
     Is,
-    Judgement,
     Lookup,
     Neg,
     Not,
@@ -42,7 +37,6 @@ from brute.rulebooks import (
     Quantity,
     Range,
     Ref,
-    Row,
     Rulebook,
     Setting,
     Table,
@@ -51,114 +45,14 @@ from brute.rulebooks import (
     YesNo,
 )
 
-T = TypeVar("T")
-
-MOST_BRANCH_POINTS = 7
 OPTIONS = ("default", "plots", "model")
 SWAPPED = {"<": ">=", "<=": ">", ">": "<=", ">=": "<", "=": "<>", "<>": "="}
 
 
-class Chance(Protocol):
-    """Where a maker gets its decisions from."""
-
-    def between(self, low: int, high: int) -> int: ...
-
-
-def whole(value: int) -> Num:
-    return Num(Fraction(value))
-
-
-@dataclass
-class Maker:
+class Maker(Declarer):
     """Builds one rulebook from the inside out: a quantity mentions only quantities made before it.
 
     ``here`` is the index in which something is being written, "" for none."""
-
-    chance: Chance
-    index: str = ""
-    facts: list[Fact] = field(default_factory=list)
-    settings: list[Setting] = field(default_factory=list)
-    judgements: list[Judgement] = field(default_factory=list)
-    constants: list[Constant] = field(default_factory=list)
-    tables: list[Table] = field(default_factory=list)
-    indices: list[Index] = field(default_factory=list)
-    quantities: list[Quantity] = field(default_factory=list)
-    unused: list[str] = field(default_factory=list)
-    budget: int = MOST_BRANCH_POINTS
-
-    # --- chance --------------------------------------------------------------------------
-
-    def maybe(self, percent: int) -> bool:
-        return self.chance.between(0, 99) >= 100 - percent
-
-    def pick(self, things: Sequence[T]) -> T:
-        return things[self.chance.between(0, len(things) - 1)]
-
-    def between(self, low: int, high: int) -> int:
-        return self.chance.between(low, high)
-
-    def who(self) -> str:
-        return self.pick(("developer", "developer", "developer", "verifier", "programme"))
-
-    # --- declarations ----------------------------------------------------------------------
-
-    def declare(self) -> None:
-        if self.maybe(35):
-            self.index = "stratum"
-            self.indices.append(Index("stratum", 3 if self.maybe(25) else 2))
-        for name in ("area", "depth", "slope")[: self.between(1, 3)]:
-            self.facts.append(Fact(name, self.range(), self.index if self.index and self.maybe(50) else ""))
-        if self.maybe(45):
-            values = ("clay", "peat", "sand")[: 3 if self.maybe(40) else 2]
-            self.facts.append(Fact("soil", OneOf(values), self.index if self.index and self.maybe(30) else ""))
-        if self.maybe(35):
-            self.facts.append(Fact("drained", YesNo(), self.index if self.index and self.maybe(30) else ""))
-        if self.maybe(35):
-            self.settings.append(Setting("discount", self.range(bounded=True), self.who()))
-        if self.maybe(25):
-            self.settings.append(Setting("basis", OneOf(("gross", "net")), self.who()))
-        if self.maybe(10):
-            self.settings.append(Setting("strict", YesNo(), self.who()))
-        if self.maybe(35):
-            self.judgements.append(Judgement("access", self.who()))
-        if self.maybe(10):
-            self.judgements.append(Judgement("likely", self.who()))
-        if self.maybe(30):
-            self.constants.append(Constant("factor", Fraction(self.between(1, 8), 4)))
-        named = [d for d in (*self.facts, *self.settings) if isinstance(d.domain, OneOf)]
-        if named and self.maybe(60):
-            self.tables.append(self.named_table(named))
-        if self.maybe(30):
-            self.tables.append(self.band_table())
-
-    def range(self, bounded: bool = False) -> Range:
-        if not bounded and self.maybe(8):
-            return Range(None, None)
-        low = Fraction(-self.between(0, 2) if self.maybe(12) else self.between(0, 1))
-        high = low + self.between(1, 4)
-        return Range(low, high - Fraction(1, 2) if self.maybe(10) else high)
-
-    def named_table(self, named: list[Fact | Setting]) -> Table:
-        keys = [self.pick(named)]
-        if len(named) > 1 and self.maybe(30):
-            keys = named[:2]
-        combinations: list[tuple[str, ...]] = [()]
-        for key in keys:
-            assert isinstance(key.domain, OneOf)
-            combinations = [(*c, v) for c in combinations for v in key.domain.values]
-        rows = [Row(c, Fraction(self.between(0, 4))) for c in combinations]
-        if self.maybe(30):
-            rows.pop(self.between(0, len(rows) - 1))
-        return Table("stock", tuple(k.name for k in keys), tuple(rows))
-
-    def band_table(self) -> Table:
-        edges = sorted({Fraction(self.between(0, 6), 2) for _ in range(self.between(1, 3))})
-        ends: list[Fraction | None] = [None, *edges, None]
-        bands = [Band(ends[k], ends[k + 1]) for k in range(len(ends) - 1)]
-        if self.maybe(30) and len(bands) > 1:
-            bands.pop(self.between(0, len(bands) - 1))
-        rows = tuple(Row((b,), Fraction(self.between(0, 4))) for b in bands)
-        return Table("curve", ("reach",), rows)
 
     # --- what can be mentioned ---------------------------------------------------------------
 
@@ -171,10 +65,10 @@ class Maker:
     def choices(self, here: str) -> list[Quantity]:
         return [q for q in self.known(here) if isinstance(q.body, Choice | Follows)]
 
-    def spread(self) -> list[str]:
-        """Names per index that a reduction can run over."""
-        facts = [f.name for f in self.facts if isinstance(f.domain, Range) and f.index]
-        return [n for n in (*facts, *(q.name for q in self.quantities if q.index)) if self.index]
+    def spread(self) -> list[tuple[str, str]]:
+        """Names per index that a reduction can run over, with their index."""
+        facts = [(f.name, f.index) for f in self.facts if isinstance(f.domain, Range) and f.index]
+        return [*facts, *((q.name, q.index) for q in self.quantities if q.index)]
 
     def use(self, name: str) -> Ref:
         if name in self.unused:
@@ -185,7 +79,7 @@ class Maker:
 
     def number(self) -> Num:
         if self.maybe(20):
-            return Num(Fraction(self.between(-1, 8), self.pick((2, 4))))
+            return Num(Fraction(self.between(-1, 8), self.pick((2, 4, 5))))
         return whole(self.between(0, 4))
 
     def term(self, here: str) -> Expression:
@@ -207,11 +101,11 @@ class Maker:
         return self.pick(ways)()
 
     def reduction(self) -> Expression:
-        name = self.pick(("sum", "sum", "sum", "mean", "min", "max"))
-        inner: Expression = self.use(self.pick(self.spread()))
+        name, index = self.pick(self.spread())
+        inner: Expression = self.use(name)
         if self.maybe(25):
-            inner = Op(self.pick(("+", "-", "*")), inner, self.pick((Position(self.index), self.number())))
-        return Over(name, inner, self.index)
+            inner = Op(self.pick(("+", "-", "*")), inner, self.pick((Position(index), self.number())))
+        return Over(self.pick(("sum", "sum", "sum", "mean", "min", "max")), inner, index)
 
     def usable_tables(self, here: str) -> list[Table]:
         reach = {f.name for f in self.facts if f.index in ("", here)} | {s.name for s in self.settings}
@@ -237,9 +131,25 @@ class Maker:
             e = Op("*", e, self.pick((Ref(free[0]), Op("-", whole(1), Ref(free[0])))))
         if self.maybe(8):
             e = Call(self.pick(("min", "max")), (e, self.term(here)))
+        if self.maybe(8):
+            e = self.bent(e, here)
         if self.maybe(6):
             e = Neg(e) if self.maybe(50) else Call("abs", (e,))
         return e
+
+    def bent(self, e: Expression, here: str) -> Expression:
+        """Something that is not linear, and may have no value in places."""
+        bounded = [f.name for f in self.facts if f.name in self.numeric(here) and f.domain != Range(None, None)]
+        ways: list[Callable[[], Expression]] = [lambda: Op("^", e, whole(2))]
+        numbers = [Ref(name) for name in self.numeric(here)]
+        if numbers:
+            ways += [lambda: Op("/", e, numbers[0]), lambda: Op("+", e, Call("sqrt", (numbers[0],)))]
+            ways += [lambda: Op("-", e, Call("ln", (Op("-", numbers[0], whole(1)),)))]
+        if bounded:
+            ways += [lambda: Op("*", e, Ref(bounded[0])), lambda: Op("/", e, Op("+", whole(5), Ref(bounded[0])))]
+        if self.known(here):
+            ways += [lambda: Op("*", e, self.use(self.pick(self.known(here)).name))]
+        return self.pick(ways)()
 
     # --- conditions --------------------------------------------------------------------------
 
@@ -273,7 +183,7 @@ class Maker:
         return self.pick(("<", ">=", "<=", ">", "<", ">=", "=", "<>"))
 
     def threshold(self) -> Num:
-        return Num(Fraction(self.between(-1, 9), 2)) if self.maybe(15) else whole(self.between(0, 4))
+        return Num(Fraction(self.between(-2, 9), self.pick((2, 5)))) if self.maybe(15) else whole(self.between(0, 4))
 
     def side(self, here: str) -> Expression:
         numbers = [Ref(s.name) for s in self.settings if isinstance(s.domain, Range)]
@@ -319,7 +229,7 @@ class Maker:
     # --- bodies ------------------------------------------------------------------------------
 
     def body(self, here: str, depth: int = 0) -> Body:
-        cost = next(i.most for i in self.indices) if here else 1
+        cost = next((i.most for i in self.indices if i.name == here), 1)
         if self.budget < cost or not self.maybe((80, 30, 20, 0)[depth]):
             return Formula(self.formula(here))
         self.budget -= cost
@@ -395,7 +305,7 @@ class Maker:
     def rulebook(self) -> Rulebook:
         self.declare()
         for name in ("carbon", "methane", "leakage", "buffer")[: self.between(1, 4)]:
-            here = self.index if self.index and self.maybe(45) else ""
+            here = self.over(45)
             quantity = Quantity(name, self.body(here), here)
             self.quantities.append(quantity)
             self.unused.append(name)
@@ -425,9 +335,9 @@ class Maker:
         )
 
     def with_unused(self, e: Expression) -> Expression:
-        indexed = {q.name for q in self.quantities if q.index}
+        indexed = {q.name: q.index for q in self.quantities if q.index}
         for name in list(self.unused):
             if self.maybe(85):
-                term: Expression = Over("sum", self.use(name), self.index) if name in indexed else self.use(name)
+                term: Expression = Over("sum", self.use(name), indexed[name]) if name in indexed else self.use(name)
                 e = Op(self.pick(("+", "-")), e, term)
         return e

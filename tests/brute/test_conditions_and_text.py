@@ -10,6 +10,7 @@ from brute.examples import X, cases, choice, f, less, more, n, result, to, yes
 from brute.rulebooks import (
     And,
     Band,
+    Call,
     Cases,
     Chain,
     Choice,
@@ -159,6 +160,17 @@ def test_a_band_without_a_row() -> None:
     assert count(made).gaps == ("q1",)
     assert count(replace(made, facts=(Fact("x", to(0, 2)),))).gaps == ()
     assert count(replace(made, facts=(Fact("x", to(2, 3)),))).gaps == ("q1",)
+
+
+def test_a_calculation_without_a_value() -> None:
+    """Divided by zero at x = 0 alone; a root below zero; a logarithm at zero and below."""
+    divided, root = Op("/", n(1), Ref("x")), Call("sqrt", (Op("-", Ref("x"), n(1)),))
+    log = Call("ln", (Op("-", Ref("x"), n(2)),))
+    for e, low in ((divided, 1), (root, 1), (log, 3)):
+        assert count(result(f(e), facts=(X,))).gaps == ("q1",)
+        assert count(result(f(e), facts=(Fact("x", to(low, 10)),))).gaps == ()
+    assert count(result(f(root), facts=(Fact("x", to(0, 1)),))).per_project_most == 1
+    assert count(result(f(log), facts=(Fact("x", to(0, 2)),))).per_project_most == 0
 
 
 def test_outside_the_rulebook_is_not_counted() -> None:

@@ -28,6 +28,7 @@ from brute.rulebooks import (
     Neg,
     Not,
     OneOf,
+    Op,
     Option,
     Or,
     Over,
@@ -85,6 +86,10 @@ def features(made: Rulebook) -> set[str]:
     for applies in made.applies:
         if any(isinstance(each, Holds) and each.name in {j.name for j in made.judgements} for each in inside(applies)):
             found.add("applies on a judgement")
+    if len(made.indices) > 1:
+        found.add("two indices")
+    found |= {node.name for node in inside(made) if isinstance(node, Call | Over)}
+    found |= {f"operator {node.operator}" for node in inside(made) if isinstance(node, Op)}
     if any(q.index for q in made.quantities):
         found.add("per index")
     return found
@@ -123,6 +128,15 @@ def test_every_feature_is_generated_often_enough() -> None:
         "validation",
         "period",
         "nested",
+        "two indices",
+        "sum",
+        "mean",
+        "min",
+        "max",
+        "abs",
+        "sqrt",
+        "ln",
+        *(f"operator {sign}" for sign in "+-*/^"),
         "in order",
         "plain cases",
         "no timing",
