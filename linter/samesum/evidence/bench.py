@@ -190,9 +190,23 @@ class Alone:
 def alone(bench: Bench, latitude: Latitude, deduction: float = 0.0) -> Alone:
     """A latitude of this block on its own. ``deduction`` is taken off whatever the choice gives."""
     made = Alone(bench, latitude, latitude.points(bench.program), bench.truth_values, deduction)
-    if latitude.withheld:
-        made.base = bench.values(made.world({}, {}), bench.truth_values, latitude.withheld)
+    if latitude.withheld or deduction:
+        keys = (*latitude.withheld, *made.points)
+        made.base = bench.values(made.world({}, {}), bench.truth_values, keys)
     return made
+
+
+def aimed_at(one: Alone, id: str) -> Array:
+    """What a second look holds an element's credits against: those with this element at its truth and all else as it
+    stands. Without a deduction that is the truth itself; with one, what the other elements lose is none of its doing."""
+    bench = one.bench
+    if one.base is bench.truth_values:
+        return bench.truth
+    select = bench.program.selects[id]
+    pinned = list(one.base)
+    pinned[select] = bench.truth_values[select]
+    later = [number for number in bench.program.after((id,)) if number > select]
+    return bench.full(evaluate(bench.program, bench.projects.inputs, one.world({}, {}), pinned, later))
 
 
 def offers(one: Alone) -> dict[str, tuple[take.Offer, list[Array]]]:
@@ -256,7 +270,8 @@ def _branch_offer(one: Alone, id: str) -> tuple[take.Offer, list[Array]] | None:
             money[number] = bench.truth_values[cost]
     cost_in_credits = money / bench.terms.price if bench.terms.price else np.zeros(money.shape)
     order = take.by_cost(money, open_ones)
-    offer = take.Offer(np.array(credits), open_ones, order, cost_in_credits, bench.truth, reference)
+    aim = bench.truth if forced else aimed_at(one, id)
+    offer = take.Offer(np.array(credits), open_ones, order, cost_in_credits, aim, reference)
     return offer, credits
 
 

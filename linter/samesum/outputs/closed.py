@@ -9,6 +9,10 @@ next, so that what is written always parses. What each way of closing writes:
 * ``fixed``: ``fixed at validation`` on the choice.
 * ``deduct``: a constant that is ``not in reference``, and every option's formula × (1 − constant).
 * ``in order``: ``cases in order``, so that of overlapping conditions the first that holds counts.
+
+What counts as the truth goes with the text. With any option but the reference mandated, or the lowest taken, the
+reference is no longer written down, and ``bias`` on the new file measures against what is left: its figures are then
+not those of the table that the closure was chosen from.
 """
 
 from __future__ import annotations
