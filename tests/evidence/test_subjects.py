@@ -8,9 +8,9 @@ from pathlib import Path
 import pytest
 
 from samesum.evidence.gather import gather
-from samesum.evidence.subject_kinds import CANNOT_TELL, KINDS, Subject
-from samesum.evidence.subjects import subjects_of
-from samesum.evidence.usage import undated_latest
+from samesum.evidence.subjects.all_subjects import subjects_of
+from samesum.evidence.subjects.kinds import CANNOT_TELL, KINDS, Subject
+from samesum.evidence.subjects.usage import undated_latest
 from samesum.graph import build
 from samesum.reading.read import read, read_file
 from samesum.reading.words import RESERVED
@@ -45,9 +45,12 @@ def test_every_subject_has_the_attributes_of_its_kind_and_no_others(path: Path) 
     assert max(repeated.values()) == 1, repeated.most_common(1)
 
 
+NEED_PROJECTS = {"trial", "worked_example"}  # seen by ``tests/rules`` on the projects beside the bad sample
+
+
 def test_every_kind_is_seen_in_the_bad_sample() -> None:
     found = {subject.kind for subject in subjects(SAMPLES / "every_fault.rulebook")}
-    assert found == set(KINDS)
+    assert found == set(KINDS) - NEED_PROJECTS
 
 
 def test_attributes_can_be_asked_by_name() -> None:
