@@ -267,3 +267,19 @@ def test_jobs_change_no_answer(folder: Path, capsys: pytest.CaptureFixture[str])
 
 def test_no_number_of_jobs(capsys: pytest.CaptureFixture[str]) -> None:
     assert said(capsys, "check", "tide.rulebook", "--jobs", "none")[0] == 2
+
+
+def test_a_very_large_rulebook_is_simulated_only_when_asked(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    text = (
+        'rulebook "Large", draft "1"\nresult total [t], rounded down to 1, clause 1\nindex plot, at most 400\n'
+        "quantity q [t] per plot, clause 3\n    choice by developer\n        option low\n            = 1 [t]\n"
+        "        option high\n            = 2 [t]\nquantity total [t], clause 4\n    = sum(q over plot)\n"
+    )
+    (folder / "large.rulebook").write_text(text, encoding="utf-8")
+    capsys.readouterr()
+    assert main(["register", "large.rulebook", "--json"]) == 0
+    out, err = capsys.readouterr()
+    assert "over-issuance is left out, because there are 400 branch points" in err
+    (row,) = json.loads(out)["rows"]
+    assert (row["elements"], row["routes_with"], row["routes_without"]) == (400, 2**400, 1)
+    assert row["over_issuance"] is None

@@ -11,8 +11,8 @@ from typing import TYPE_CHECKING
 from samesum.cli import shared
 
 if TYPE_CHECKING:
-    from samesum.evidence.batches import Batch
-    from samesum.evidence.selection import Selection
+    from samesum.evidence.choosing.batches import Batch
+    from samesum.evidence.choosing.selection import Selection
     from samesum.examine import Examined
     from samesum.reading.cases import Case
     from samesum.reading.model import Model
@@ -21,16 +21,18 @@ if TYPE_CHECKING:
     from samesum.reviewing.rows import Register
 
 PROJECTS = 20_000
+UNASKED_UP_TO = 300
+"""Branch points, each element of an index by itself, that are simulated without ``--projects``: a few seconds."""
 
 
 @dataclass(frozen=True, slots=True)
 class Wanted:
-    """What is to be gathered. ``inputs`` is the file of cases; ``projects`` to simulate, 0 for no simulation;
-    ``record`` whether decisions are read; ``seconds`` bounds each analysis."""
+    """What is to be gathered. ``inputs`` is the file of cases; ``projects`` to simulate, 0 for none, None for the usual
+    number where that takes a few seconds; ``record`` whether decisions are read; ``seconds`` bounds each analysis."""
 
     inputs: Path | None
     seconds: float
-    projects: int = PROJECTS
+    projects: int | None = None
     seed: int = 0
     record: bool = True
 
@@ -49,9 +51,9 @@ def add_projects(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
         "--projects",
         type=_projects,
-        default=PROJECTS,
         metavar="N",
-        help=f"how many projects to simulate for over-issuance ({PROJECTS:,}; 0 for none)",
+        help=f"how many projects to simulate for over-issuance ({PROJECTS:,}; 0 for none, and none for more than "
+        f"{UNASKED_UP_TO} branch points unless it is given)",
     )
     parser.add_argument("--seed", type=_projects, default=0, metavar="S", help="where its random numbers start (0)")
 
@@ -87,7 +89,7 @@ def registered(reading: Reading, file: Path, asked: Wanted) -> Gathered | None:
     from samesum.reviewing.measured import Tried, measures_of
 
     register = register_of(examined.evidence, reading.text, decided, asked.seconds)
-    if asked.inputs is None and not asked.projects:
+    if asked.inputs is None and asked.projects == 0:
         return Gathered(examined, register, Tried())
     found = _tried(examined, asked)
     if found is None:
@@ -100,8 +102,8 @@ def registered(reading: Reading, file: Path, asked: Wanted) -> Gathered | None:
 
 def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
     """Trial on the projects given, and a simulation of the programme; None when the projects cannot be read."""
-    from samesum.evidence.plan import Unplannable
-    from samesum.evidence.trial import try_batches
+    from samesum.evidence.trial.outcome import try_batches
+    from samesum.evidence.trial.plan import Unplannable
     from samesum.reviewing.measured import Tried
 
     evidence = examined.evidence
@@ -117,8 +119,14 @@ def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
                 return None
             batches, names, cases = given
             trial = try_batches(evidence.graph, batches, names, cases, asked.seconds, evidence=evidence)
-        if asked.projects:
-            selection = _simulated(evidence.model, given[0] if given is not None else None, asked, notes)
+        projects = asked.projects
+        if projects is None and len(evidence.graph.branch_points) > UNASKED_UP_TO:
+            points = f"{len(evidence.graph.branch_points):,} branch points, counting each element"
+            notes.append(f"over-issuance is left out, because there are {points}; --projects {PROJECTS} asks for it")
+            projects = 0
+        if projects != 0:
+            drawn_from = given[0] if given is not None else None
+            selection = _simulated(evidence.model, drawn_from, projects or PROJECTS, asked.seed, notes)
     except Unplannable as trouble:
         notes.append(f"what the numbers come to is left out: {trouble}")
     return Tried(trial, selection), notes
@@ -126,7 +134,7 @@ def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
 
 def _projects_given(inputs: Path, model: Model) -> tuple[Sequence[Batch], Sequence[str], Sequence[Case]] | None:
     """The projects of a file of cases or of a table; None when there are mistakes in it, which are then said."""
-    from samesum.evidence.batches import batches_of, batches_of_columns
+    from samesum.evidence.choosing.batches import batches_of, batches_of_columns
 
     if inputs.suffix.lower() in (".csv", ".parquet"):
         from samesum.reading.columns import read_columns
@@ -144,16 +152,18 @@ def _projects_given(inputs: Path, model: Model) -> tuple[Sequence[Batch], Sequen
     return None
 
 
-def _simulated(model: Model, batches: Sequence[Batch] | None, asked: Wanted, notes: list[str]) -> Selection | None:
+def _simulated(
+    model: Model, batches: Sequence[Batch] | None, projects: int, seed: int, notes: list[str]
+) -> Selection | None:
     """The simulation; None when there is nothing to simulate, and ``notes`` says why."""
     from samesum.cli.bias import cores
-    from samesum.evidence.bench import Terms
-    from samesum.evidence.projects import CannotDraw, from_batches, from_domains
-    from samesum.evidence.selection import NothingTrue, select
+    from samesum.evidence.choosing.bench import Terms
+    from samesum.evidence.choosing.projects import CannotDraw, from_batches, from_domains
+    from samesum.evidence.choosing.selection import NothingTrue, select
 
     try:
         supply = from_domains(model) if batches is None else from_batches(model, batches)
-        return select(supply, asked.projects, Terms(asked.seed), cores())
+        return select(supply, projects, Terms(seed), cores())
     except CannotDraw as trouble:
         notes.append(f"over-issuance is left out: {trouble}")
     except NothingTrue:
