@@ -14,7 +14,7 @@ from samesum.problems import Problem
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
-    from samesum.evidence.trial import TrialEvidence
+    from samesum.evidence.trial.outcome import TrialEvidence
     from samesum.judging.judge import Judged
     from samesum.judging.rules import RuleSet
     from samesum.reading.cases import Case
@@ -74,7 +74,7 @@ def examine_reading(
     evidence = gather(build(reading.model), seconds)
     if rules is None:
         return Examined(reading, evidence)
-    from samesum.evidence.subjects import subjects_of
+    from samesum.evidence.subjects.all_subjects import subjects_of
     from samesum.judging.judge import judge
 
     trial = _tried(evidence, cases, seconds) if cases and reading.model.result is not None else None
@@ -84,8 +84,8 @@ def examine_reading(
 
 def _tried(evidence: Evidence, cases: Sequence[Case], seconds: float) -> TrialEvidence | None:
     """What projects show; None where a part that the result needs could not be read (lint rules report that)."""
-    from samesum.evidence.plan import Unplannable
-    from samesum.evidence.trial import try_out
+    from samesum.evidence.trial.outcome import try_out
+    from samesum.evidence.trial.plan import Unplannable
 
     try:
         return try_out(evidence.graph, cases, seconds, evidence=evidence)

@@ -12,8 +12,8 @@ from fractions import Fraction
 
 import numpy as np
 
-from samesum.evidence.batches import batches_of
-from samesum.evidence.figures import figures_of
+from samesum.evidence.choosing.batches import batches_of
+from samesum.evidence.trial.figures import figures_of
 from samesum.reading.cases import Case
 from samesum.reading.read import read
 from samesum.spans import START

@@ -11,8 +11,8 @@ import time
 
 import numpy as np
 
-from samesum.evidence.batches import batches_of
-from samesum.evidence.values import Evaluator
+from samesum.evidence.choosing.batches import batches_of
+from samesum.evidence.trial.values import Evaluator
 from samesum.reading.cases import Case
 from samesum.reading.read import read
 from samesum.spans import START

@@ -10,10 +10,11 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from samesum.evidence import solver as s
-from samesum.evidence import symbols
-from samesum.evidence.cells import Group, cells_at, cut, list_group, representative, sign_over
-from samesum.evidence.symbols import Bounds, Sum
+from samesum.evidence.routes import solver as s
+from samesum.evidence.routes import symbols
+from samesum.evidence.routes.cells import Group, cells_at, cut, list_group, representative, sign_over
+from samesum.evidence.routes.ranges import Bounds
+from samesum.evidence.routes.symbols import Sum
 
 BORDERS = ("above", "below", "apart")
 whole = st.integers(-6, 6).map(Fraction)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from samesum.evidence.control import Control, find_control
+from samesum.evidence.routes.control import Control, find_control
 from samesum.graph import build
 from support.asking import cases, choice, evidence_of, model_of, rulebook
 

@@ -13,12 +13,9 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 from oxidd.bdd import BDDManager
 
-from samesum.evidence.diagrams import (
-    OUTSIDE,
-    Diagrams,
+from samesum.evidence.routes.diagrams import OUTSIDE, Diagrams, Limits, OutOfLimits
+from samesum.evidence.routes.eliminating import (
     Eliminated,
-    Limits,
-    OutOfLimits,
     eliminate,
     evaluate,
     number,

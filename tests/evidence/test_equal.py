@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import pytest
 
-from samesum.evidence.equal import Workshop, is_zero, same_number
+from samesum.evidence.subjects.equal import Workshop, is_zero, same_number
 from samesum.graph import DecisionGraph, build
 from samesum.reading.read import read
 

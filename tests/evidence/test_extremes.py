@@ -8,9 +8,9 @@ from fractions import Fraction
 import numpy as np
 import pytest
 
-from samesum.evidence.batches import batches_of
-from samesum.evidence.extremes import plan_work
-from samesum.evidence.figures import Figures, figures_of
+from samesum.evidence.choosing.batches import batches_of
+from samesum.evidence.trial.extremes import plan_work
+from samesum.evidence.trial.figures import Figures, figures_of
 from samesum.reading.cases import Case, Value
 from samesum.reading.read import read
 from samesum.spans import START

@@ -10,8 +10,8 @@ import pytest
 from hypothesis import given
 from hypothesis import strategies as st
 
-from samesum.evidence import intervals as iv
-from samesum.evidence.intervals import Interval
+from samesum.evidence.trial import intervals as iv
+from samesum.evidence.trial.intervals import Interval
 
 NUMBERS = st.floats(-1e6, 1e6, allow_nan=False)
 

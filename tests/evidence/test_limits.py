@@ -8,10 +8,10 @@ from collections.abc import Callable
 
 import pytest
 
-from samesum.evidence.counting import FIGURES, Counts
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.gather import gather
-from samesum.evidence.subjects import subjects_of
+from samesum.evidence.routes.counting import FIGURES, Counts
+from samesum.evidence.subjects.all_subjects import subjects_of
 from samesum.graph import build
 from support.asking import cases, choice, evidence_of, gaps_of, model_of, rulebook
 from support.replay import check_witnesses

@@ -5,13 +5,13 @@ from __future__ import annotations
 from fractions import Fraction
 
 import pytest
+
 from brute.generate import Dice, case, rulebook
 from brute.linear import TooLarge
 from brute.text import render
 from brute.trial import trial
-
-from samesum.evidence.routes import Given, list_routes
-from samesum.evidence.witness import Value
+from samesum.evidence.routes.listing import Given, list_routes
+from samesum.evidence.routes.witness import Value
 from samesum.graph import build
 from samesum.reading.read import Reader, make_reader, read
 

@@ -13,12 +13,11 @@ from pathlib import Path
 import numpy as np
 import pytest
 
-from samesum.evidence.batches import batches_of
-from samesum.evidence.bench import Terms, draw_errors
-from samesum.evidence.closed_forms import Noise, indifferent, pick_of_all, second_look
-from samesum.evidence.pointwise import Calculation, NoValue
-from samesum.evidence.programs import make_program
-from samesum.evidence.projects import (
+from samesum.evidence.choosing.batches import batches_of
+from samesum.evidence.choosing.bench import Terms, draw_errors
+from samesum.evidence.choosing.closed_forms import Noise, indifferent, pick_of_all, second_look
+from samesum.evidence.choosing.programs import make_program
+from samesum.evidence.choosing.projects import (
     BLOCK,
     CannotDraw,
     Projects,
@@ -28,9 +27,10 @@ from samesum.evidence.projects import (
     stretches,
     truth,
 )
-from samesum.evidence.selection import select
-from samesum.evidence.simulate import evaluate
-from samesum.evidence.witness import Value
+from samesum.evidence.choosing.selection import select
+from samesum.evidence.choosing.simulate import evaluate
+from samesum.evidence.routes.witness import Value
+from samesum.evidence.subjects.pointwise import Calculation, NoValue
 from samesum.graph import build
 from samesum.reading import model as m
 from samesum.reading.cases import Case, read_cases

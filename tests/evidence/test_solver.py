@@ -9,10 +9,11 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from samesum.evidence import solver as s
-from samesum.evidence import symbols
-from samesum.evidence.solver import NEGATIVE, POSITIVE, ZERO, Solver
-from samesum.evidence.symbols import Bounds, Sum, call, multiply, name, number, subtract
+from samesum.evidence.routes import solver as s
+from samesum.evidence.routes import symbols
+from samesum.evidence.routes.ranges import Bounds
+from samesum.evidence.routes.solver import NEGATIVE, POSITIVE, ZERO, Solver
+from samesum.evidence.routes.symbols import Sum, call, multiply, name, number, subtract
 
 BOX = {"x": Bounds(Fraction(-3), Fraction(3)), "y": Bounds(Fraction(-3), Fraction(3))}
 X, Y = name("x"), name("y")
@@ -105,3 +106,15 @@ def test_functions_beyond_the_solver_are_known_to_be(function: str) -> None:
     assert s.beyond(made(function, X))
     assert s.beyond(multiply(Y, made("abs", made(function, X))))
     assert not s.beyond(made("abs", X))
+
+
+def test_what_the_solver_gives_up_on_is_no_refutation() -> None:
+    """Whole x, y, z above 0 with x³ + y³ = z³ (there are none, by Euler 1770; no solver finds that out in a moment)."""
+    box = {each: Bounds(Fraction(1), None) for each in "xyz"}
+    asked = Solver(box, time.monotonic() + 60, patience=200)
+    cubes = []
+    for each in "xyz":
+        whole = made("floor", name(each))
+        cubes.append(multiply(multiply(whole, whole), whole))
+    asked.add(asked.sign(subtract(symbols.add(cubes[0], cubes[1]), cubes[2]), ZERO))
+    assert asked.check() == "cannot tell"

@@ -10,9 +10,10 @@ import pytest
 from hypothesis import assume, given, settings
 from hypothesis import strategies as st
 
-from samesum.evidence import symbols
-from samesum.evidence.solver import sign_at
-from samesum.evidence.symbols import Bounds, Call, Sum, bounds
+from samesum.evidence.routes import symbols
+from samesum.evidence.routes.ranges import Bounds, bounds
+from samesum.evidence.routes.solver import sign_at
+from samesum.evidence.routes.symbols import Call, Sum
 
 NAMES = ("x", "y", "z")
 small = st.fractions(min_value=-4, max_value=4, max_denominator=4)

@@ -7,12 +7,12 @@ from functools import cache
 from pathlib import Path
 
 import pytest
-from support.choosing import figure, found, simulate
 
-from samesum.evidence.bench import Terms
-from samesum.evidence.projects import BLOCK, from_domains
-from samesum.evidence.selection import Selection, select
+from samesum.evidence.choosing.bench import Terms
+from samesum.evidence.choosing.projects import BLOCK, from_domains
+from samesum.evidence.choosing.selection import Selection, select
 from samesum.reading.read import read_file
+from support.choosing import figure, found, simulate
 
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 PROJECTS = 2 * BLOCK

@@ -5,7 +5,7 @@ from __future__ import annotations
 from fractions import Fraction
 
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.witness import Witness
 from support.asking import SAMPLES, cases, choice, evidence_of, rulebook
 from support.replay import check_witnesses
 

@@ -7,7 +7,7 @@ from pathlib import Path
 
 import pytest
 
-from samesum.evidence.subject_kinds import CANNOT_TELL, KINDS, AttributeValue, Subject
+from samesum.evidence.subjects.kinds import CANNOT_TELL, KINDS, AttributeValue, Subject
 from samesum.judging.asking import holds
 from samesum.judging.findings import Finding, at_or_above, identity
 from samesum.judging.judge import judge

@@ -7,6 +7,7 @@ import math
 import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
+
 from support.choosing import either_or, figure, found, simulate
 
 errors = st.floats(0.02, 0.5).map(lambda x: round(x, 4))

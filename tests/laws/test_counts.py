@@ -13,6 +13,8 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, assume, given, settings
+
 from brute import counts as brute
 from brute.evaluate import Evaluator, Pass
 from brute.generate import fits, rulebook, rulebooks
@@ -20,13 +22,11 @@ from brute.linear import TooLarge
 from brute.points import Given, representative
 from brute.rulebooks import OneOf, Rulebook, at
 from brute.text import render
-from hypothesis import HealthCheck, assume, given, settings
-
-from samesum.evidence.conditions import Conditions, examine_conditions
-from samesum.evidence.counting import Counts, count
-from samesum.evidence.diagrams import Limits
-from samesum.evidence.relating import build_network
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.conditions import Conditions, examine_conditions
+from samesum.evidence.routes.counting import Counts, count
+from samesum.evidence.routes.diagrams import Limits
+from samesum.evidence.routes.relating import build_network
+from samesum.evidence.routes.witness import Witness
 from samesum.graph import build
 from samesum.reading.read import Reader, make_reader, read
 

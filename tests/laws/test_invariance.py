@@ -21,8 +21,8 @@ import pytest
 from brute.generate import rulebook as generated
 from brute.rulebooks import And, Body, Cases, Choice, Condition, Follows, Not, Or, Rulebook, Takes
 from brute.text import render
-from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
+from samesum.evidence.routes.counting import Counts
 from samesum.outputs.counts import count_json
 from samesum.outputs.json_text import as_json
 from samesum.reading import model as m

@@ -14,6 +14,7 @@ from fractions import Fraction
 
 import numpy as np
 import pytest
+
 from brute import trial as brute
 from brute.evaluate import Evaluator
 from brute.generate import Dice, case, rulebook
@@ -21,11 +22,10 @@ from brute.linear import TooLarge
 from brute.points import representative
 from brute.rulebooks import Range, Rulebook
 from brute.text import render
-
-from samesum.evidence.batches import batches_of
-from samesum.evidence.blame import Blame, find_blame
-from samesum.evidence.figures import figures_of
-from samesum.evidence.trial import CaseTrial, End, case_trial
+from samesum.evidence.choosing.batches import batches_of
+from samesum.evidence.trial.blame import Blame, find_blame
+from samesum.evidence.trial.figures import figures_of
+from samesum.evidence.trial.outcome import CaseTrial, End, case_trial
 from samesum.reading.cases import Case
 from samesum.reading.read import Reader, make_reader, read
 from samesum.spans import START

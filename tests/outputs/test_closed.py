@@ -12,10 +12,10 @@ import pytest
 
 from samesum.cli.closing import routes_left
 from samesum.cli.main import main
-from samesum.evidence.bench import Terms
-from samesum.evidence.counting import count
-from samesum.evidence.projects import BLOCK, from_domains
-from samesum.evidence.selection import Closure, Found, Selection, select
+from samesum.evidence.choosing.bench import Terms
+from samesum.evidence.choosing.projects import BLOCK, from_domains
+from samesum.evidence.choosing.selection import Closure, Found, Selection, select
+from samesum.evidence.routes.counting import count
 from samesum.graph import build
 from samesum.outputs.closed import Closing, closed
 from samesum.outputs.closed_text import CannotClose, parted

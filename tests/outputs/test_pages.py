@@ -7,7 +7,7 @@ from fractions import Fraction
 
 import pytest
 
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.witness import Witness
 from samesum.outputs.json_text import as_json
 from samesum.outputs.page import Page, Paper, clean, paper_for, wrapped
 from samesum.outputs.projects import Words, as_values, project

@@ -13,7 +13,7 @@ import pytest
 from hypothesis import given, settings
 from hypothesis import strategies as st
 
-from samesum.evidence.closed_forms import (
+from samesum.evidence.choosing.closed_forms import (
     Noise,
     Outcome,
     enrolment_by_estimate,

@@ -10,7 +10,7 @@ from fractions import Fraction
 import pytest
 
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.witness import Witness
 from support.asking import cases, counts_of, dead_of, evidence_of, gaps_of, overlaps_of, rulebook
 from support.replay import check_witnesses
 

@@ -11,7 +11,7 @@ from fractions import Fraction
 
 import pytest
 
-from samesum.evidence.jumps import find_jumps
+from samesum.evidence.subjects.jumps import find_jumps
 from samesum.graph import build
 from samesum.reading.read import read
 

@@ -11,8 +11,8 @@ import random
 import pytest
 from flint import arb, ctx
 
-from samesum.evidence.dividing import range_over_domains
-from samesum.evidence.plan import Plan, make_plan
+from samesum.evidence.trial.dividing import range_over_domains
+from samesum.evidence.trial.plan import Plan, make_plan
 from samesum.graph import build
 from samesum.reading.read import read
 

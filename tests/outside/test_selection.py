@@ -4,9 +4,9 @@ closed form that stands beside it to every digit given. Sources and values as in
 from __future__ import annotations
 
 import pytest
-from support.choosing import either_or, figure, found, simulate
 
-from samesum.evidence.selection import Figure
+from samesum.evidence.choosing.selection import Figure
+from support.choosing import either_or, figure, found, simulate
 
 MILLION = 10**6
 # b_d, s_d, b_m, s_m, rho, c, pick of all, second look: computed by quadrature and 6e7 draws.

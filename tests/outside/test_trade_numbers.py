@@ -6,7 +6,7 @@ from fractions import Fraction
 
 import pytest
 
-from samesum.evidence.trial import CaseTrial, TrialEvidence, try_out
+from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence, try_out
 from samesum.graph import build
 from samesum.reading.cases import Case, Value
 from samesum.reading.read import read

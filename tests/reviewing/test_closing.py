@@ -16,8 +16,8 @@ from brute.generate import rulebook
 from brute.points import representative
 from brute.rulebooks import Rulebook
 from brute.text import render
-from samesum.evidence.closing import Bracket, figures_if_given
-from samesum.evidence.counting import Given
+from samesum.evidence.routes.closing import Bracket, figures_if_given
+from samesum.evidence.routes.layout import Given
 from samesum.graph import DecisionGraph, build
 from samesum.reading.read import read
 from support.asking import counts_of, reader

@@ -6,9 +6,9 @@ from collections.abc import Sequence
 from functools import lru_cache
 from pathlib import Path
 
-from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.gather import gather
+from samesum.evidence.routes.counting import Counts
 from samesum.graph import build
 from samesum.reading.model import Model
 from samesum.reading.read import Reader, make_reader, read

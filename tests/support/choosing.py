@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 
-from samesum.evidence.bench import Terms
-from samesum.evidence.projects import Supply, from_domains
-from samesum.evidence.selection import Figure, Found, Selection, select
+from samesum.evidence.choosing.bench import Terms
+from samesum.evidence.choosing.projects import Supply, from_domains
+from samesum.evidence.choosing.selection import Figure, Found, Selection, select
 from samesum.reading.model import Model
 from samesum.reading.read import read
 

@@ -11,9 +11,9 @@ import operator
 from collections.abc import Iterator, Mapping
 from fractions import Fraction
 
-from samesum.evidence.conditions import Gap, Overlap
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.witness import Value, Witness
+from samesum.evidence.routes.conditions import Gap, Overlap
+from samesum.evidence.routes.witness import Value, Witness
 from samesum.graph import BranchPoint, DecisionGraph, instance_id
 from samesum.reading import model as m
 from samesum.reading import walk

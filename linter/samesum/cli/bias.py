@@ -14,8 +14,8 @@ from typing import TYPE_CHECKING
 from samesum.cli import shared
 
 if TYPE_CHECKING:
-    from samesum.evidence.projects import Supply
-    from samesum.evidence.selection import Selection
+    from samesum.evidence.choosing.projects import Supply
+    from samesum.evidence.choosing.selection import Selection
     from samesum.reading.model import Model
 
 PROJECTS = 100_000
@@ -55,9 +55,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(arguments: argparse.Namespace) -> int:
-    from samesum.evidence.plan import Unplannable
-    from samesum.evidence.projects import CannotDraw
-    from samesum.evidence.selection import NothingTrue
+    from samesum.evidence.choosing.projects import CannotDraw
+    from samesum.evidence.choosing.selection import NothingTrue
+    from samesum.evidence.trial.plan import Unplannable
     from samesum.reading.read import read_file
 
     if arguments.output is not None and not arguments.write_closed:
@@ -104,11 +104,11 @@ def run(arguments: argparse.Namespace) -> int:
 
 def supply_for(model: Model, inputs: Path | None) -> Supply | None:
     """The projects to simulate with; None when the file of cases could not be used, which is then said."""
-    from samesum.evidence.projects import from_batches, from_domains
+    from samesum.evidence.choosing.projects import from_batches, from_domains
 
     if inputs is None:
         return from_domains(model)
-    from samesum.evidence.batches import batches_of, batches_of_columns
+    from samesum.evidence.choosing.batches import batches_of, batches_of_columns
 
     if inputs.suffix.lower() in (".csv", ".parquet"):
         from samesum.reading.columns import read_columns
@@ -128,8 +128,8 @@ def supply_for(model: Model, inputs: Path | None) -> Supply | None:
 
 def simulated(supply: Supply, arguments: argparse.Namespace) -> Selection:
     """The simulation that the command line asks for, with a bar on a terminal when it takes longer than a second."""
-    from samesum.evidence.bench import Terms
-    from samesum.evidence.selection import select
+    from samesum.evidence.choosing.bench import Terms
+    from samesum.evidence.choosing.selection import select
 
     terms = Terms(arguments.seed, arguments.price, arguments.join)
     jobs = arguments.jobs or cores()

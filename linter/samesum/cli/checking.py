@@ -61,7 +61,7 @@ def check_all(paths: Sequence[Path], task: Task, jobs: int) -> list[Outcome]:
 _PRELOADED = (
     "samesum.cli.checking",
     "samesum.evidence.gather",
-    "samesum.evidence.subjects",
+    "samesum.evidence.subjects.all_subjects",
     "samesum.judging.judge",
     "samesum.judging.rulebooks_rules",
     "samesum.outputs.checks",

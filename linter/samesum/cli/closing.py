@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 from samesum.cli import shared
 
 if TYPE_CHECKING:
-    from samesum.evidence.selection import Selection
+    from samesum.evidence.choosing.selection import Selection
     from samesum.outputs.closed import Closing
     from samesum.reading.read import Reading
 
@@ -19,8 +19,8 @@ KINDS = ("mandate", "lowest", "fixed", "deduct", "in-order")
 
 def write_closed(reading: Reading, arguments: argparse.Namespace) -> int:
     """Closes one place after the other and writes the text to ``-o`` or standard output; gives the exit status."""
-    from samesum.evidence.plan import Unplannable
-    from samesum.evidence.projects import CannotDraw
+    from samesum.evidence.choosing.projects import CannotDraw
+    from samesum.evidence.trial.plan import Unplannable
     from samesum.outputs.closed import closed
     from samesum.outputs.closed_text import CannotClose
     from samesum.reading.read import default_cache_folder, make_reader
@@ -97,12 +97,12 @@ def worked_out(reading: Reading, closing: Closing, arguments: argparse.Namespace
     if closing.kind != "lowest" and not needs_share:
         return closing
     from samesum.cli.bias import supply_for
-    from samesum.evidence.bench import Terms
-    from samesum.evidence.deductions import solve_deductions
-    from samesum.evidence.latitudes import find_latitudes
-    from samesum.evidence.leaning import leaning
-    from samesum.evidence.projects import stretches
-    from samesum.evidence.selection import HEADLINE
+    from samesum.evidence.choosing.bench import Terms
+    from samesum.evidence.choosing.deductions import solve_deductions
+    from samesum.evidence.choosing.latitudes import find_latitudes
+    from samesum.evidence.choosing.leaning import leaning
+    from samesum.evidence.choosing.projects import stretches
+    from samesum.evidence.choosing.selection import HEADLINE
     from samesum.outputs.closed import find_body
     from samesum.outputs.closed_text import CannotClose
 
@@ -131,8 +131,8 @@ def worked_out(reading: Reading, closing: Closing, arguments: argparse.Namespace
 def routes_left(reading: Reading, selection: Selection, seconds: float) -> dict[tuple[str, str, str], Any]:
     """The counts of the rulebook with each closure written out, by id, kind and option; those that cannot be written
     out are left out."""
-    from samesum.evidence.counting import count
-    from samesum.evidence.leaning import leaning
+    from samesum.evidence.choosing.leaning import leaning
+    from samesum.evidence.routes.counting import count
     from samesum.graph import build
     from samesum.outputs.closed import Closing, closed
     from samesum.outputs.closed_text import CannotClose

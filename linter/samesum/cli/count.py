@@ -12,7 +12,7 @@ from samesum.cli import shared
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
-    from samesum.evidence.witness import Value
+    from samesum.evidence.routes.witness import Value
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
@@ -60,7 +60,7 @@ def run(arguments: argparse.Namespace) -> int:
     answer = count_json(evidence) if arguments.json else {}
     text = "" if arguments.json else count_text(evidence, paper)
     if chosen is not None:
-        from samesum.evidence.routes import list_routes
+        from samesum.evidence.routes.listing import list_routes
         from samesum.outputs.routes import routes_json, routes_text
 
         name, values = chosen

@@ -74,7 +74,7 @@ def _findings(
     found: gathered.Gathered, arguments: argparse.Namespace
 ) -> tuple[dict[str, list[tuple[str, str]]], str] | None:
     """What the lint rules say of each place, and which rules they are."""
-    from samesum.evidence.subjects import subjects_of
+    from samesum.evidence.subjects.all_subjects import subjects_of
     from samesum.judging.judge import judge
     from samesum.judging.rulebooks_rules import RulesFor
     from samesum.reading.read import default_cache_folder, make_reader

@@ -13,9 +13,9 @@ from typing import TYPE_CHECKING
 from samesum.cli import shared
 
 if TYPE_CHECKING:
-    from samesum.evidence.batches import Batch
-    from samesum.evidence.trial import TrialEvidence
-    from samesum.evidence.working import Line
+    from samesum.evidence.choosing.batches import Batch
+    from samesum.evidence.trial.outcome import TrialEvidence
+    from samesum.evidence.trial.working import Line
     from samesum.graph import DecisionGraph
     from samesum.reading.cases import Case
 
@@ -63,7 +63,7 @@ def run(arguments: argparse.Namespace) -> int:
     if reading.model is None or any(problem.kind != "unit" for problem in reading.problems):
         shared.report(reading.problems)
         return shared.UNUSABLE
-    from samesum.evidence.plan import Unplannable
+    from samesum.evidence.trial.plan import Unplannable
     from samesum.graph import build
 
     model = reading.model
@@ -80,7 +80,7 @@ def run(arguments: argparse.Namespace) -> int:
 
 
 def _cases(graph: DecisionGraph, arguments: argparse.Namespace) -> int:
-    from samesum.evidence.batches import batches_of
+    from samesum.evidence.choosing.batches import batches_of
     from samesum.reading.cases import read_cases
 
     cases, problems = read_cases(arguments.inputs, graph.model)
@@ -103,7 +103,7 @@ def _cases(graph: DecisionGraph, arguments: argparse.Namespace) -> int:
 
 
 def _tables(graph: DecisionGraph, arguments: argparse.Namespace) -> int:
-    from samesum.evidence.batches import batches_of_columns
+    from samesum.evidence.choosing.batches import batches_of_columns
     from samesum.reading.columns import read_columns
 
     if arguments.explain or arguments.case:
@@ -122,7 +122,7 @@ def _try(
     cases: Sequence[Case],
     arguments: argparse.Namespace,
 ) -> int:
-    from samesum.evidence.trial import try_batches
+    from samesum.evidence.trial.outcome import try_batches
 
     bar = _Bar()
     evidence = try_batches(graph, batches, names, cases, arguments.seconds, arguments.tolerance, progress=bar.at)
@@ -142,8 +142,8 @@ def _try(
 
 def _workings(evidence: TrialEvidence) -> Mapping[str, Sequence[Line]]:
     """The calculation of each worked example that does not come out."""
-    from samesum.evidence.plan import resized
-    from samesum.evidence.working import working
+    from samesum.evidence.trial.plan import resized
+    from samesum.evidence.trial.working import working
 
     found = {}
     for example in evidence.examples:
@@ -163,7 +163,7 @@ def _sizes(values: Mapping[str, object], graph: DecisionGraph) -> dict[str, int]
 
 
 def _explain(graph: DecisionGraph, cases: Sequence[Case], arguments: argparse.Namespace) -> int:
-    from samesum.evidence.trial import explained
+    from samesum.evidence.trial.outcome import explained
     from samesum.outputs.page import paper_for
     from samesum.outputs.trial_text import working_text
 

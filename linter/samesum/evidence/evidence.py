@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from samesum.evidence.conditions import Conditions
-from samesum.evidence.control import Control
-from samesum.evidence.counting import Counts
+from samesum.evidence.routes.conditions import Conditions
+from samesum.evidence.routes.control import Control
+from samesum.evidence.routes.counting import Counts
 from samesum.graph import DecisionGraph
 from samesum.reading.model import Model
 

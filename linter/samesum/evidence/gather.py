@@ -4,13 +4,13 @@ from __future__ import annotations
 
 import time
 
-from samesum.evidence.conditions import Conditions, Undecided, examine_conditions
-from samesum.evidence.control import find_control
-from samesum.evidence.counting import count, deep
-from samesum.evidence.diagrams import Limits, OutOfLimits
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.network import Network
-from samesum.evidence.relating import build_network
+from samesum.evidence.routes.conditions import Conditions, Undecided, examine_conditions
+from samesum.evidence.routes.control import find_control
+from samesum.evidence.routes.counting import count, deep
+from samesum.evidence.routes.diagrams import Limits, OutOfLimits
+from samesum.evidence.routes.network import Network
+from samesum.evidence.routes.relating import build_network
 from samesum.graph import DecisionGraph
 
 

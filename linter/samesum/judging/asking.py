@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Mapping
 from fractions import Fraction
 
-from samesum.evidence.subject_kinds import CANNOT_TELL, AttributeValue, Undecided
+from samesum.evidence.subjects.kinds import CANNOT_TELL, AttributeValue, Undecided
 from samesum.reading.where import (
     AllOf,
     AnyOf,

@@ -5,7 +5,7 @@ from __future__ import annotations
 import hashlib
 from dataclasses import dataclass
 
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.witness import Witness
 from samesum.judging.rules import SEVERITIES, Severity
 from samesum.spans import Span
 

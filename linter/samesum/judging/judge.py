@@ -6,7 +6,7 @@ from collections.abc import Iterable
 from dataclasses import dataclass
 from fractions import Fraction
 
-from samesum.evidence.subject_kinds import CANNOT_TELL, AttributeValue, Subject
+from samesum.evidence.subjects.kinds import CANNOT_TELL, AttributeValue, Subject
 from samesum.judging.asking import holds
 from samesum.judging.findings import Doubt, Finding, identity
 from samesum.judging.rules import FIELD, Rule, RuleSet

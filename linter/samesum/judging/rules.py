@@ -13,7 +13,7 @@ from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import Literal, cast
 
-from samesum.evidence.subject_kinds import KINDS, AttributeKind
+from samesum.evidence.subjects.kinds import KINDS, AttributeKind
 from samesum.problems import Problem, in_order
 from samesum.reading.read import Reader
 from samesum.reading.where import WhereCondition, WhereMistake, parse_where, unfit_names

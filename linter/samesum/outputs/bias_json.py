@@ -6,8 +6,17 @@ import math
 from collections.abc import Mapping
 from typing import Any
 
-from samesum.evidence.selection import HEADLINE, Closure, Enrolment, Estimate, Figure, Found, Periods, Selection
-from samesum.evidence.tally import WIDTH
+from samesum.evidence.choosing.selection import (
+    HEADLINE,
+    Closure,
+    Enrolment,
+    Estimate,
+    Figure,
+    Found,
+    Periods,
+    Selection,
+)
+from samesum.evidence.choosing.tally import WIDTH
 from samesum.outputs.bias_text import sentence
 
 

@@ -6,9 +6,9 @@ import math
 from collections.abc import Mapping, Sequence
 from typing import Any
 
-from samesum.evidence.latitudes import Latitude
-from samesum.evidence.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
-from samesum.evidence.tally import BINS, WIDTH
+from samesum.evidence.choosing.latitudes import Latitude
+from samesum.evidence.choosing.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
+from samesum.evidence.choosing.tally import BINS, WIDTH
 from samesum.outputs.page import Page, Paper
 from samesum.outputs.tables import table_lines
 from samesum.written import whole

@@ -7,8 +7,8 @@ from dataclasses import dataclass
 from typing import Any
 
 from samesum import __version__
-from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
+from samesum.evidence.routes.counting import Counts
 from samesum.judging.findings import Finding, at_or_above
 from samesum.judging.judge import Judged
 from samesum.judging.rules import SEVERITIES, RuleSet, Severity

@@ -175,7 +175,7 @@ def _setting_fixed(reading: Reading, setting: m.Setting, closing: Closing) -> li
     last = header_end(lines, first)
     value = closing.option.strip()
     if not value:
-        from samesum.evidence.latitudes import middle
+        from samesum.evidence.choosing.latitudes import middle
 
         stands = middle(setting.domain)
         percent = not setting.unit.text and setting.domain.high is not None and setting.domain.high <= 1
@@ -232,7 +232,7 @@ def _mandated(
 def chosen_option(body: m.Choice, name: str, id: str) -> m.Option:
     """The option of that name, or the one that counts as the reference. Raises ``CannotClose``."""
     if not name:
-        from samesum.evidence.pointwise import preferred
+        from samesum.evidence.subjects.pointwise import preferred
 
         return body.options[preferred(body.options, list(range(len(body.options))))]
     for option in body.options:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 from typing import Any
 
-from samesum.evidence.closing import Bracket
+from samesum.evidence.routes.closing import Bracket
 from samesum.outputs.counts import FIGURES, title_of
 from samesum.outputs.page import Page, Paper
 from samesum.outputs.register_cells import bracket_text, decider, share

@@ -4,9 +4,9 @@ from __future__ import annotations
 
 from typing import Any
 
-from samesum.evidence.counting import Counts
 from samesum.evidence.evidence import Evidence
-from samesum.evidence.witness import Witness
+from samesum.evidence.routes.counting import Counts
+from samesum.evidence.routes.witness import Witness
 from samesum.outputs.page import Page, Paper
 from samesum.outputs.projects import Words, as_values, general_id, project, shown, words_for
 from samesum.reading.model import Model

@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
-from samesum.evidence.witness import Value, Witness
+from samesum.evidence.routes.witness import Value, Witness
 from samesum.reading import model as m
 from samesum.written import number, percent, plain
 

@@ -8,7 +8,7 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
-from samesum.evidence.closing import Bracket
+from samesum.evidence.routes.closing import Bracket
 from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row, RowOption
 from samesum.written import whole

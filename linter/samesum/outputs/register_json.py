@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from samesum.evidence.closing import Bracket
+from samesum.evidence.routes.closing import Bracket
 from samesum.outputs.counts import paths_json, shown_by
 from samesum.outputs.register_cells import decider
 from samesum.reviewing.record import Standing

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from typing import Any
 
-from samesum.evidence.routes import Routes
+from samesum.evidence.routes.listing import Routes
 from samesum.outputs.page import Page, Paper
 from samesum.written import whole
 

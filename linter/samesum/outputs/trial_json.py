@@ -8,9 +8,9 @@ from collections.abc import Iterator, Mapping
 from fractions import Fraction
 from typing import Any
 
-from samesum.evidence.examples import described
-from samesum.evidence.trial import CaseTrial, End, TrialEvidence
-from samesum.evidence.witness import Value
+from samesum.evidence.routes.witness import Value
+from samesum.evidence.trial.examples import described
+from samesum.evidence.trial.outcome import CaseTrial, End, TrialEvidence
 from samesum.outputs.json_text import visible
 from samesum.written import long_integers, number
 

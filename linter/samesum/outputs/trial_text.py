@@ -5,11 +5,11 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping, Sequence
 
-from samesum.evidence.blame import Blame
-from samesum.evidence.examples import Example, described
-from samesum.evidence.trial import CaseTrial, TrialEvidence
-from samesum.evidence.witness import Value
-from samesum.evidence.working import Line, in_unit
+from samesum.evidence.routes.witness import Value
+from samesum.evidence.trial.blame import Blame
+from samesum.evidence.trial.examples import Example, described
+from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
+from samesum.evidence.trial.working import Line, in_unit
 from samesum.outputs.amounts import amount, share, short_share
 from samesum.outputs.counts import title_of
 from samesum.outputs.page import Page, Paper, clean, width_of

@@ -10,8 +10,9 @@ from collections.abc import Collection, Mapping
 from dataclasses import dataclass, replace
 from typing import Literal
 
-from samesum.evidence.closing import Bracket, figures_if_given
-from samesum.evidence.counting import FIGURES, Given
+from samesum.evidence.routes.closing import Bracket, figures_if_given
+from samesum.evidence.routes.counting import FIGURES
+from samesum.evidence.routes.layout import Given
 from samesum.reading import model as m
 from samesum.reviewing.places import changes
 from samesum.reviewing.rows import Register, Row, routes_now
@@ -190,7 +191,7 @@ def _given(new: Register, allow: frozenset[str]) -> Given:
 
 
 def _with_others(figure: str, given: Given) -> Given:
-    from samesum.evidence.counting import ALL_BUT_DEVELOPER
+    from samesum.evidence.routes.layout import ALL_BUT_DEVELOPER
 
     return replace(given, deciders=ALL_BUT_DEVELOPER.deciders) if figure == "developer_most" else given
 

@@ -7,9 +7,9 @@ import time
 from collections.abc import Mapping
 from dataclasses import dataclass
 
-from samesum.evidence.blame import Remaining
-from samesum.evidence.selection import HEADLINE, Closure, Figure, Found, Selection
-from samesum.evidence.trial import TrialEvidence
+from samesum.evidence.choosing.selection import HEADLINE, Closure, Figure, Found, Selection
+from samesum.evidence.trial.blame import Remaining
+from samesum.evidence.trial.outcome import TrialEvidence
 from samesum.reviewing.compare import Moved
 from samesum.reviewing.rows import Measures
 

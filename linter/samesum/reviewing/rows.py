@@ -10,11 +10,11 @@ from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Literal
 
-from samesum.evidence.closing import Bracket, figures_if_given
-from samesum.evidence.conditions import Gap, Overlap
-from samesum.evidence.control import Control, Mover, movers_of
-from samesum.evidence.counting import Given
 from samesum.evidence.evidence import Evidence
+from samesum.evidence.routes.closing import Bracket, figures_if_given
+from samesum.evidence.routes.conditions import Gap, Overlap
+from samesum.evidence.routes.control import Control, Mover, movers_of
+from samesum.evidence.routes.layout import Given
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.reviewing.places import Place, Source, branch_noun, domain_text, exact_percent, places_of

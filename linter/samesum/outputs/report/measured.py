@@ -2,9 +2,9 @@
 
 from __future__ import annotations
 
-from samesum.evidence.selection import HEADLINE, Selection
-from samesum.evidence.tally import WIDTH
-from samesum.evidence.trial import CaseTrial, TrialEvidence
+from samesum.evidence.choosing.selection import HEADLINE, Selection
+from samesum.evidence.choosing.tally import WIDTH
+from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
 from samesum.outputs.bias_text import sentence
 from samesum.outputs.register_cells import share
 from samesum.outputs.report.figures import CaseSpread, ClosingStep, Histogram

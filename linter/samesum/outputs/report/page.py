@@ -14,7 +14,7 @@ from pathlib import Path
 from typing import TYPE_CHECKING
 
 from samesum import __version__
-from samesum.evidence.counting import FIGURES as COUNTED
+from samesum.evidence.routes.counting import FIGURES as COUNTED
 from samesum.outputs.checks import CAUTION
 from samesum.outputs.counts import FIGURES, figure, title_of
 from samesum.outputs.page import clean

@@ -1,0 +1,1 @@
+"""Which routes there are: conditions, exact counts, witnesses, who can move what."""

@@ -1,0 +1,1 @@
+"""Evidence as rows that lint rules ask about."""
