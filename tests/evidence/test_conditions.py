@@ -45,7 +45,23 @@ def only_gap(found: Evidence) -> dict[str, object]:
         ("=", "=", True, True),
     ],
 )
-@pytest.mark.parametrize("subject", ["x", "x + y", "x * y", "3 - x", "x - 2 * y", "max(x, y)", "x ^ 2 - 2", "half"])
+@pytest.mark.parametrize(
+    "subject",
+    [
+        "x",
+        "x + y",
+        "x * y",
+        "3 - x",
+        "x - 2 * y",
+        "max(x, y)",
+        "6 - 2 * max(x, y)",
+        "8 - min(x, y)",
+        "abs(x - 4)",
+        "5 - abs(x - 4)",
+        "x ^ 2 - 2",
+        "half",
+    ],
+)
 def test_two_comparisons_with_one_number(first: str, second: str, gap: bool, overlap: bool, subject: str) -> None:
     half = "quantity half, clause 2\n    = x / 2 + y\n"
     found = told([f"{subject} {first} 2", f"{subject} {second} 2"], XY, half)
@@ -286,6 +302,17 @@ def test_what_a_condition_asks_must_have_a_value_too() -> None:
     found = evidence_of(rulebook(XY, inner, cases("q", ["share < 1", "share >= 1"]), result="q"))
     assert [gap.branch_point for gap in found.conditions.gaps] == ["share"]
     assert found.counts.per_project_least == 0
+
+
+def test_a_number_that_is_missing_is_blamed_where_it_is_missing() -> None:
+    """At x = 0 the share has no value; wherever it has one, the table has a row for it."""
+    facts = (
+        XY
+        + "applies when y <= 5 * x, clause 1\ntable t [t] by size, clause 3\n    up to 2 = 1\n    above 2 up to 5 = 2\n"
+    )
+    share = "quantity share, clause 2\n    = y / x\n"
+    found = evidence_of(rulebook(facts, share, cases("q", ["t(share) < 2 [t]", "t(share) >= 2 [t]"]), result="q"))
+    assert kinds(found) == [("share", "value")]
 
 
 # --- many conditions ---------------------------------------------------------------------------

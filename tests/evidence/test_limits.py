@@ -156,6 +156,8 @@ KNOWN: list[tuple[str, list[str], tuple[int, int, int]]] = [
     (XY + "setting s, 0 to 1, by developer, clause 3\n", ["exp(s) * x < y", "exp(s) * x >= y"], (2, 2, 1)),
     (XY + "setting s, 0 to 1, by developer, clause 3\nsetting v, 1 to 2, by verifier, clause 3\n",
      ["x < s", "x >= s and s * v < 1.5", "x * v > 9"], (2, 2, 1)),
+    # a base below 0 with any exponent has no bounds, so that nothing at all is shown
+    (XY, ["(x - 6) ^ floor(y) < 1", "(x - 6) ^ floor(y) >= 1"], (2, 1, 1)),
     (X + "applies when exp(x) > 3, clause 1\n", ["x < 1", "x >= 1"], (1, 1, 1)),
 ]  # fmt: skip
 
@@ -170,6 +172,37 @@ def test_a_bracket_holds_the_truth(number: int) -> None:
         assert low <= true <= high, (figure, low, high)
     assert (found.counts.at_least == {}) == found.counts.exact
     check_witnesses(found)
+
+
+def holds_the_truth(text: str, truth: dict[str, int]) -> None:
+    found, took = examined(text)
+    assert took < SECONDS + LATE
+    for figure, true in truth.items():
+        low, high = bracket(found.counts, figure)
+        assert low <= true <= high, (figure, low, high)
+
+
+def test_projects_that_may_be_outside_are_not_taken_for_the_fewest() -> None:
+    """S² − 150 S, too long to be written out, is never above 0: else projects with one route would be inside."""
+    text = rulebook(
+        "index stratum, at most 30\nfact a per stratum, 0 to 5, clause 1\nfact f, yes or no, clause 1\n",
+        "quantity s, clause 1\n    = sum(a over stratum)\n",
+        "applies when not f or s * s - 150 * s > 1, clause 1\n",
+        choice("q", ["a", "b"]).replace("option b", "option b, only when not f"),
+        result="q",
+    )
+    holds_the_truth(text, {"per_project_least": 2, "per_project_most": 2, "reachable": 2})
+
+
+def test_what_a_setting_brings_about_elsewhere_is_not_taken_for_the_fewest() -> None:
+    """Where the rulebook applies, exp(s) can be put on either side of y/x = 1.5; at x = 0 it could not."""
+    text = rulebook(
+        XY + "setting s, 0 to 1, by developer, clause 3\napplies when y = 1.5 * x and x >= 1, clause 1\n",
+        cases("q", ["exp(s) * x < y", "exp(s) * x >= y"]),
+        cases("w", ["x = 0", "otherwise"]),
+        result="q + w",
+    )
+    holds_the_truth(text, {"per_project_least": 2, "per_project_most": 2, "reachable": 2})
 
 
 @pytest.mark.parametrize(
