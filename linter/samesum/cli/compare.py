@@ -100,7 +100,7 @@ def _gathered(
         revision, _, file = name.partition(":")
         former = former_text(revision, Path(file))
         if former.text is None:
-            if former.absent and lenient:
+            if former.absent and lenient and Path(file).is_file():
                 shared.report_line(f"{file}: new since {revision}, nothing to compare with")
                 return 0
             shared.refuse(former.says)

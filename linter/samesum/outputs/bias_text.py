@@ -9,7 +9,7 @@ from typing import Any
 from samesum.evidence.choosing.latitudes import Latitude
 from samesum.evidence.choosing.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
 from samesum.evidence.choosing.tally import BINS, WIDTH
-from samesum.outputs.page import Page, Paper
+from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.tables import table_lines
 from samesum.written import whole
 
@@ -47,6 +47,8 @@ def bias_text(selection: Selection, paper: Paper, routes: Routes | None = None) 
         if len(closable) > MOST_CLOSED:
             page.blank()
             page.paragraph(f"… and {len(closable) - MOST_CLOSED} more with --json.", style="quiet")
+    page.blank()
+    page.paragraph(CAUTION, style="quiet")
     return page.text
 
 

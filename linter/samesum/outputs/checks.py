@@ -13,16 +13,12 @@ from samesum.judging.findings import Finding, at_or_above
 from samesum.judging.judge import Judged
 from samesum.judging.rules import SEVERITIES, RuleSet, Severity
 from samesum.outputs.counts import figure, paths_json, shown_by, title_of
-from samesum.outputs.page import Page, Paper
+from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.projects import Words, shown, words_for
 from samesum.outputs.verdict import Verdict, verdict
 from samesum.outputs.verdict import decided as decided_by
 from samesum.reviewing.record import Decision, Standing
 
-CAUTION = (
-    "samesum supports the people who write and review methodologies. It does not replace accredited validation "
-    "and verification, nor the programme's own rules."
-)
 _STYLE = {"error": "bad", "warning": "warn", "note": "link"}
 
 

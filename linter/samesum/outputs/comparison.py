@@ -7,7 +7,7 @@ from typing import Any
 
 from samesum.evidence.routes.closing import Bracket
 from samesum.outputs.counts import FIGURES, title_of
-from samesum.outputs.page import Page, Paper
+from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.register_cells import bracket_text, decider, share
 from samesum.reviewing.compare import Change, Comparison, direction
 from samesum.reviewing.rows import Register, Row
@@ -93,6 +93,8 @@ def comparison_text(found: Sequence[Comparison], paper: Paper) -> str:
     page = Page(paper)
     for each in found:
         _comparison(page, each)
+    page.blank()
+    page.paragraph(CAUTION, style="quiet")
     return page.text
 
 

@@ -7,7 +7,7 @@ from typing import Any
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.routes.counting import Counts
 from samesum.evidence.routes.witness import Witness
-from samesum.outputs.page import Page, Paper
+from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.projects import Words, as_values, general_id, project, shown, words_for
 from samesum.reading.model import Model
 from samesum.written import whole
@@ -116,6 +116,8 @@ def count_text(evidence: Evidence, paper: Paper) -> str:
         page.blank()
         page.paragraph("These figures are bounds, not exact: " + "; ".join(counts.why_inexact) + ".", style="warn")
         page.paragraph("--seconds gives the counting more time.", style="quiet")
+    page.blank()
+    page.paragraph(CAUTION, style="quiet")
     return page.text
 
 

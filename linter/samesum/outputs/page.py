@@ -14,6 +14,10 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import TextIO
 
+CAUTION = (
+    "samesum supports the people who write and review methodologies. It does not replace accredited validation "
+    "and verification, nor the programme's own rules."
+)
 WIDEST = 96
 NARROWEST = 24
 _BEFORE_PERCENT = re.compile(r"(?<=\d) (?=%)")

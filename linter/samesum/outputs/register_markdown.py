@@ -4,7 +4,7 @@ from __future__ import annotations
 
 from samesum.outputs.counts import title_of
 from samesum.outputs.harmless import code, markdown
-from samesum.outputs.page import clean
+from samesum.outputs.page import CAUTION, clean
 from samesum.outputs.register_cells import Cell, columns_for, share, stale_lines
 from samesum.reviewing.rows import Register
 from samesum.written import whole
@@ -22,6 +22,7 @@ def register_markdown(register: Register) -> str:
     stale = stale_lines(register)
     if stale:
         lines += ["", "Decisions that no longer fit:", "", *(f"* {markdown(line)}" for line in stale)]
+    lines += ["", markdown(CAUTION)]
     return "\n".join(lines) + "\n"
 
 

@@ -7,7 +7,7 @@ is quiet, what is accepted is marked.
 from __future__ import annotations
 
 from samesum.outputs.counts import figure, title_of
-from samesum.outputs.page import Page, Paper, clean
+from samesum.outputs.page import CAUTION, Page, Paper, clean
 from samesum.outputs.register_cells import bracket_text, decider, decision, share, stale_lines
 from samesum.outputs.tables import table_lines
 from samesum.reviewing.rows import Register, Row
@@ -27,6 +27,8 @@ def register_text(register: Register, paper: Paper, everything: bool = False) ->
         page.line("No branch point leaves anything to anybody.", "good")
     page.blank()
     _summary(page, register, len(register.rows) - len(rows))
+    page.blank()
+    page.paragraph(CAUTION, style="quiet")
     return page.text
 
 

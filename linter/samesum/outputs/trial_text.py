@@ -12,7 +12,7 @@ from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
 from samesum.evidence.trial.working import Line, in_unit
 from samesum.outputs.amounts import amount, share, short_share
 from samesum.outputs.counts import title_of
-from samesum.outputs.page import Page, Paper, clean, width_of
+from samesum.outputs.page import CAUTION, Page, Paper, clean, width_of
 from samesum.outputs.projects import Words, words_for
 from samesum.outputs.projects import given as given_value
 from samesum.written import whole
@@ -44,6 +44,8 @@ def trial_text(evidence: TrialEvidence, paper: Paper, workings: Mapping[str, Seq
     _examples(page, evidence.examples, workings)
     _movers(page, evidence)
     _proved(page, evidence)
+    page.blank()
+    page.paragraph(CAUTION, style="quiet")
     return page.text
 
 

@@ -197,8 +197,8 @@ def alone(bench: Bench, latitude: Latitude, deduction: float = 0.0) -> Alone:
 
 
 def aimed_at(one: Alone, id: str) -> Array:
-    """What a second look holds an element's credits against: those with this element at its truth and all else as it
-    stands. Without a deduction that is the truth itself; with one, what the other elements lose is none of its doing."""
+    """What a second look holds an element's credits against: those with this element at its truth and all else as
+    it stands. Without a deduction that is the truth itself; with one, what the others lose is none of its doing."""
     bench = one.bench
     if one.base is bench.truth_values:
         return bench.truth

@@ -15,9 +15,8 @@ from typing import TYPE_CHECKING
 
 from samesum import __version__
 from samesum.evidence.routes.counting import FIGURES as COUNTED
-from samesum.outputs.checks import CAUTION
 from samesum.outputs.counts import FIGURES, figure, title_of
-from samesum.outputs.page import clean
+from samesum.outputs.page import CAUTION, clean
 from samesum.outputs.projects import project, words_for
 from samesum.outputs.register_cells import bracket_text, decider, decision, share, stale_lines
 from samesum.outputs.report.chart import charts_of, says
