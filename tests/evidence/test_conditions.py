@@ -306,11 +306,9 @@ def test_what_a_condition_asks_must_have_a_value_too() -> None:
 
 def test_a_number_that_is_missing_is_blamed_where_it_is_missing() -> None:
     """At x = 0 the share has no value; wherever it has one, the table has a row for it."""
-    facts = (
-        XY
-        + "applies when y <= 5 * x, clause 1\ntable t [t] by size, clause 3\n    up to 2 = 1\n    above 2 up to 5 = 2\n"
-    )
-    share = "quantity share, clause 2\n    = y / x\n"
+    facts = XY + "applies when y + 1 <= 5 * x or x = 0, clause 1\n"
+    facts += "table t [t] by size, clause 3\n    up to 2 = 1\n    above 2 up to 5 = 2\n"
+    share = "quantity share, clause 2\n    = (y + 1) / x\n"
     found = evidence_of(rulebook(facts, share, cases("q", ["t(share) < 2 [t]", "t(share) >= 2 [t]"]), result="q"))
     assert kinds(found) == [("share", "value")]
 

@@ -195,11 +195,11 @@ def test_projects_that_may_be_outside_are_not_taken_for_the_fewest() -> None:
 
 
 def test_what_a_setting_brings_about_elsewhere_is_not_taken_for_the_fewest() -> None:
-    """Where the rulebook applies, exp(s) can be put on either side of y/x = 1.5; at x = 0 it could not."""
+    """Where the rulebook applies, exp(s) can be put on either side of y/x; at x = 0 it could not."""
     text = rulebook(
-        XY + "setting s, 0 to 1, by developer, clause 3\napplies when y = 1.5 * x and x >= 1, clause 1\n",
+        XY + "setting s, 0 to 1, by developer, clause 3\napplies when 1.4 * x <= y <= 1.6 * x and x >= 1, clause 1\n",
         cases("q", ["exp(s) * x < y", "exp(s) * x >= y"]),
-        cases("w", ["x = 0", "otherwise"]),
+        cases("w", ["x = 0 and y > 0", "otherwise"]),
         result="q + w",
     )
     holds_the_truth(text, {"per_project_least": 2, "per_project_most": 2, "reachable": 2})

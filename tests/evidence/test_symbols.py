@@ -142,6 +142,9 @@ def test_bounds_of_a_linear_sum_are_sharp(
     ends = {name: (cell.low, cell.high) if factors[name] >= 0 else (cell.high, cell.low) for name, cell in box.items()}
     assert found.low == c + sum(factors[name] * (low or 0) for name, (low, _) in ends.items())
     assert found.high == c + sum(factors[name] * (high or 0) for name, (_, high) in ends.items())
+    asked = [(box[name], factor) for name, factor in factors.items() if factor]
+    assert found.low_open == any(cell.low_open if factor > 0 else cell.high_open for cell, factor in asked)
+    assert found.high_open == any(cell.high_open if factor > 0 else cell.low_open for cell, factor in asked)
 
 
 @settings(max_examples=300)
@@ -208,6 +211,13 @@ def test_bounds_of_a_power_contain_its_values(
     assert found.low is not None and found.high is not None
     assert found.low <= true[0] and found.high >= true[1]
     assert found.high - found.low <= (true[1] - true[0]) * (1 + Fraction(1, 10**9))
+
+
+def test_bounds_of_a_root_hold_to_the_last_digit() -> None:
+    three, half = Bounds(Fraction(3), Fraction(3)), Bounds(Fraction(1, 2), Fraction(1, 2))
+    found = bounds(symbols.name(Call("power", (symbols.name("x"), symbols.name("y")))), {"x": three, "y": half})
+    assert found.low is not None and found.high is not None
+    assert found.low**2 < 3 < found.high**2
 
 
 def test_a_power_of_what_may_be_below_zero_has_no_bounds() -> None:
