@@ -19,10 +19,12 @@ from samesum.reading.model import (
     Takes,
     Unknown,
 )
+from samesum.reading.numbers import as_written
 from samesum.reading.scope import Declared, Scope
 from samesum.reading.typed import agreed, index_is_known
 from samesum.reading.words import listing, nearest
 
+_YES_NO = {"yes": True, "true": True, "no": False, "false": False}
 _Operator = Literal["<", "<=", ">", ">=", "=", "<>"]
 _Asked = Literal["fact", "setting", "judgement"]
 _Valued = Literal["fact", "setting"]
@@ -58,15 +60,62 @@ def resolve_condition(node: tree.Tree, scope: Scope) -> Condition:
 
 def _compared(node: tree.Compared, scope: Scope) -> Condition:
     sides = [node.first, *(side for _, side in node.rest)]
+    if len(sides) == 2 and _asks_for_a_value(node, scope):
+        return Unknown(scope.span(node))
     terms = [(resolve_expression(side, scope), side) for side in sides]
     parts, unit, _ = agreed(terms, scope, "compared")
     found = []
     for at, (sign, side) in enumerate(node.rest):
         span = scope.place.span(sides[at].start, side.end)
         found.append(Comparison(cast(_Operator, sign), parts[at], parts[at + 1], span))
+        _hundredfold(sides[at], side, scope)
     if unit is None:
         return Unknown(scope.span(node))
     return found[0] if len(found) == 1 else All(tuple(found), scope.span(node))
+
+
+def _asks_for_a_value(node: tree.Compared, scope: Scope) -> bool:
+    """``fuel = wood`` and ``urban = yes``, which are asked with ``is`` or by the name alone; reports it."""
+    (sign, second), first = node.rest[0], node.first
+    if sign not in ("=", "<>") or not isinstance(first, tree.Use) or not isinstance(second, tree.Use):
+        return False
+    for subject, value in ((first.name, second.name), (second.name, first.name)):
+        declared = scope.names.get(subject.text)
+        if declared is None or (value.text in scope.names and value.text not in declared.values):
+            continue
+        if declared.kind == "judgement" or declared.yes_no:
+            scope.find(subject)
+            says, remedy = "is yes or no and is not compared", f"write `{subject.text}` or `not {subject.text}`"
+            if value.text in _YES_NO:
+                holds = _YES_NO[value.text] == (sign == "=")
+                remedy = f"write `{subject.text}`" if holds else f"write `not {subject.text}`"
+            scope.report(node, f"`{subject.text}` {says}", remedy)
+            return True
+        if declared.values:
+            scope.find(subject)
+            close = value.text if value.text in declared.values else nearest(value.text, declared.values)
+            asked = f"{subject.text} is {'not ' if sign == '<>' else ''}{close or declared.values[0]}"
+            says = "a named value is asked for with `is`"
+            scope.report(node, says, f"write `{asked}`" if close else f"write it as in `{asked}`")
+            return True
+    return False
+
+
+def _hundredfold(first: tree.Tree, second: tree.Tree, scope: Scope) -> None:
+    """A share compared with 20 where 20 % is meant: reported only where nothing else can be meant, since the number
+    lies beyond the domain by more than the whole of it and its hundredth part inside."""
+    for subject, literal in ((first, second), (second, first)):
+        if not isinstance(subject, tree.Use) or not isinstance(literal, tree.Literal):
+            continue
+        declared = scope.names.get(subject.name.text)
+        value = scope.number(literal)
+        if declared is None or declared.share is None or value is None or literal.percent or literal.unit is not None:
+            continue
+        low, high = declared.share
+        if value > high + (high - low) and low <= value / 100 <= high:
+            percent = literal.text
+            scope.report(literal, f"`{declared.name}` is a share, and {percent} means {as_written(value * 100)} %",
+                         f"write {percent} %", "value")  # fmt: skip
 
 
 def _holds(word: tree.Word, scope: Scope) -> Condition:

@@ -5,9 +5,10 @@ from __future__ import annotations
 from collections.abc import Mapping
 from dataclasses import dataclass
 
+from samesum.reading.habits import PHRASE_STARTS
 from samesum.reading.phrases import ALLOWED, WRITTEN
 from samesum.reading.sight import Mistake, Sight
-from samesum.reading.slips import PHRASE_STARTS, SLIPS
+from samesum.reading.slips import SLIPS
 from samesum.reading.words import DECLARATIONS, PHRASE_WORDS, listing, nearest
 
 
@@ -126,7 +127,7 @@ def _listed(sight: Sight) -> list[str]:
         left.discard("PER")
     words: list[str] = []
     if {"CLAUSE", "SOURCE", "BIAS"} <= left:
-        left -= PHRASE_STARTS | {"MINUS", "NUMBER", "STRING"}
+        left -= PHRASE_STARTS | {"MINUS", "NUMBER", "STRING", "NOT"}
         kind = sight.first_word if sight.first_word in ALLOWED else ""
         words += [WRITTEN[each] for each in ALLOWED[kind]] if kind else ["a phrase such as `clause …`"]
     for together, word in _TOGETHER:

@@ -215,7 +215,7 @@ def _power(node: tree.Power, scope: Scope) -> Typed:
     power = _constant(exponent.expression)
     if exponent.unit is not None and exponent.unit.dimension:
         says = f"an exponent is a plain number, but this is {say_unit(exponent.unit)}"
-        scope.report(node.exponent, says, kind="unit")
+        scope.report(node.exponent, says, "divide by something in the same unit first", "unit")
         return Typed(Arithmetic("^", base.expression, exponent.expression, PLAIN, span), None)
     if power is not None and abs(power) > LARGEST_POWER:
         scope.report(node.exponent, f"the exponent is too large; {LARGEST_POWER} is the most", kind="value")

@@ -3,9 +3,11 @@
 from __future__ import annotations
 
 from dataclasses import dataclass, replace
+from fractions import Fraction
 
 from samesum.reading import tree
 from samesum.reading.model import PLAIN, Unit
+from samesum.reading.numbers import exact
 from samesum.reading.scope import Declared, Kind, Notebook, Scope
 from samesum.reading.units import UnitTable, same_dimension
 from samesum.reading.words import RESERVED, listing
@@ -90,7 +92,23 @@ def _declared(block: Placed, kind: Kind, name: tree.Word, scope: Scope) -> Decla
         options = tuple(dict.fromkeys(option.name.text for option in declaration.body.options))
     per = next((phrase.words[0].text for phrase in declaration.phrases if phrase.kind == "per"), "")
     index = per if kind in ("fact", "quantity") else ""
-    return Declared(name.text, kind, span, unit, index, values, yes_no and not values, options)
+    return Declared(
+        name.text, kind, span, unit, index, values, yes_no and not values, options, _share(declaration, unit)
+    )
+
+
+def _share(declaration: tree.Declaration, unit: Unit | None) -> tuple[Fraction, Fraction] | None:
+    """The domain as plain numbers, where it is written without further units and lies inside 0 to 1."""
+    literals = next((phrase.numbers for phrase in declaration.phrases if phrase.kind == "range"), ())
+    if unit is None or unit.dimension or len(literals) != 2:
+        return None
+    ends = []
+    for literal in literals:
+        value = exact(literal.text)
+        if value is None or literal.unit is not None or literal.negative:
+            return None
+        ends.append(value / 100 if literal.percent else value * unit.factor)
+    return (ends[0], ends[1]) if ends[0] <= ends[1] <= 1 else None
 
 
 def head_unit(declaration: tree.Declaration, scope: Scope) -> Unit | None:

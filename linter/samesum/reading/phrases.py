@@ -9,9 +9,8 @@ from samesum.reading import tree
 from samesum.reading.model import Decider, Unit
 from samesum.reading.scope import Scope
 from samesum.reading.units import conversion, same_dimension
-from samesum.reading.words import listing, nearest
+from samesum.reading.words import DECIDERS, listing, nearest
 
-DECIDERS: tuple[Decider, ...] = ("developer", "verifier", "programme")
 # How each phrase is written; phrases of one group exclude each other.
 WRITTEN: Mapping[str, str] = {
     "clause": "`clause …`",
@@ -122,15 +121,20 @@ def in_unit(literal: tree.Literal, unit: Unit | None, scope: Scope) -> Fraction 
             return None
         if not same_dimension(own, unit):
             scope.report(literal, f"[{own.text}] does not fit here, where numbers are in "
-                         + (f"[{unit.text}]" if unit.text else "no unit"), kind="unit")  # fmt: skip
+                         + (f"[{unit.text}]" if unit.text else "no unit"), _instead_of(unit), "unit")  # fmt: skip
             return None
         return value * conversion(own, unit)
     if literal.percent and unit is not None and value is not None:
         if unit.dimension:
-            scope.report(literal, f"a number in % does not fit here, where numbers are in [{unit.text}]", kind="unit")
+            says = f"a number in % does not fit here, where numbers are in [{unit.text}]"
+            scope.report(literal, says, _instead_of(unit), "unit")
             return None
         return value / unit.factor
     return value
+
+
+def _instead_of(unit: Unit) -> str:
+    return f"write the number in [{unit.text}]" if unit.text else "write a number or a percentage, without a unit"
 
 
 def plain_number(literal: tree.Literal, what: str, scope: Scope) -> Fraction | None:
@@ -143,7 +147,10 @@ def plain_number(literal: tree.Literal, what: str, scope: Scope) -> Fraction | N
 
 def whole_number(literal: tree.Literal, what: str, most: int, scope: Scope) -> int | None:
     """A whole number from 1 to ``most``."""
-    value = plain_number(literal, what, scope)
+    if literal.unit is not None:
+        scope.report(literal.unit, f"{what} has no unit", "leave the unit out", "unit")
+        return None
+    value = scope.number(literal)
     if value is None:
         return None
     if value.denominator != 1 or literal.percent or not 1 <= value <= most:

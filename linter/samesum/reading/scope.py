@@ -27,7 +27,8 @@ class Declared:
 
     ``unreadable`` is a name whose own declaration failed: its uses stay silent. ``unit`` is None when
     the unit could not be read. ``values`` are the named values of a fact or setting; ``options`` those
-    of a quantity whose body is a choice, None when it is something else.
+    of a quantity whose body is a choice, None when it is something else. ``share`` is the domain of a
+    fact or setting that is a plain number inside 0 to 1, as plain numbers.
     """
 
     name: str
@@ -38,6 +39,7 @@ class Declared:
     values: tuple[str, ...] = ()
     yes_no: bool = False
     options: tuple[str, ...] | None = None
+    share: tuple[Fraction, Fraction] | None = None
 
 
 @dataclass(slots=True)

@@ -9,13 +9,10 @@ from __future__ import annotations
 import re
 from collections.abc import Callable, Mapping
 
+from samesum.reading.habits import HABITS, PHRASE_STARTS
 from samesum.reading.sight import Mistake, Sight
 from samesum.reading.words import RESERVED, nearest
 
-PHRASE_STARTS = frozenset((
-    "CLAUSE", "CLAUSE_NUMBER", "SOURCE", "DRAFT", "ROUNDED", "AT", "ONE", "YES", "BY", "PER", "MEAN", "FIXED", "OPEN",
-    "ERRORS", "ONLY", "ERROR", "BIAS", "COST", "REFERENCE",
-))  # fmt: skip
 _OPERATORS = frozenset(("PLUS", "STAR", "SLASH", "CARET"))
 _BODIES = frozenset(("EQUAL", "CASES", "CHOICE"))
 
@@ -42,8 +39,10 @@ _SIGNS: Mapping[str, tuple[str, str]] = {
     "}": ("curly brackets mean nothing here", "write round brackets for a calculation, square ones for a unit"),
     "_": ("a name starts with a letter", "put a letter in front"),
 }
+# Lines on which no `=` gives a value.
+_NO_FORMULA = frozenset(("when", "otherwise", "applies", "cases", "choice", "option"))
 _PAIRS: Mapping[str, str] = {
-    "==": "=", "!=": "<>", "=<": "<=", "=>": ">=", "><": "<>", "**": "^", "&&": "and", "||": "or",
+    "=<": "<=", "=>": ">=", "><": "<>", "**": "^", "&&": "and", "||": "or",
 }  # fmt: skip
 _FORMS: Mapping[str, str] = {
     "clause": "clause 7.1.2(b)",
@@ -64,6 +63,7 @@ _SLIPPED_WORDS: Mapping[str, str] = {
     "alternative": "option", "variable": "fact", "parameter": "fact", "input": "fact", "decision": "choice",
     "formula": "quantity", "equals": "=", "times": "*", "minus": "-", "plus": "+", "per_index": "per",
     "program": "programme", "judgment": "judgement", "equal": "=", "until": "up to", "below": "up to", "under": "up to",
+    "version": "draft", "percent": "%",
 }  # fmt: skip
 
 
@@ -89,7 +89,7 @@ def open_text(sight: Sight) -> Mistake | None:
 
 
 def double_sign(sight: Sight) -> Mistake | None:
-    """``==``, ``!=``, ``=<``, ``=>``, ``><`` and ``**``."""
+    """``=<``, ``=>``, ``><`` and ``**``."""
     for start in (sight.at, sight.at - 1):
         pair = sight.lines[max(0, start) : max(0, start) + 2]
         write = _PAIRS.get(pair)
@@ -129,8 +129,11 @@ def square_bracket(sight: Sight) -> Mistake | None:
 
 def sign(sight: Sight) -> Mistake | None:
     known = _SIGNS.get(sight.text[:1]) if not sight.found else None
-    if sight.text[:1] == ":" and "EQUAL" in sight.expected:
-        return sight.here("a colon means nothing here", "write `=`", 1)
+    if sight.text[:1] == ":" and sight.rest[1:].strip():
+        if "COMMA" in sight.expected and sight.first_word in ("fact", "setting", "judgement", "index"):
+            return sight.here("a colon means nothing here", "write a comma", 1)
+        if "EQUAL" in sight.expected and sight.first_word not in _NO_FORMULA:
+            return sight.here("a colon means nothing here", "write `=`", 1)
     return sight.here(*known, length=1) if known is not None else None
 
 
@@ -235,6 +238,9 @@ def broken_name(sight: Sight) -> Mistake | None:
         name = f"{sight.last_word}_{following}"
         return sight.here("a name holds letters, digits and _ only", f"write `{name}`")
     if sight.found == "NAME":
+        if sight.last_word[:1].isdigit():
+            return sight.here(f"`{sight.text}` follows the number without anything between them",
+                              f"a unit goes in square brackets: [{sight.text}]")  # fmt: skip
         if re.match(r"\w+\s*(\[|$)", sight.rest) and re.search(r"\w\s+\Z", sight.before):
             if "[" in sight.rest:
                 return sight.here("a name is one word", f"write `{sight.last_word}_{sight.text}`")
@@ -243,7 +249,8 @@ def broken_name(sight: Sight) -> Mistake | None:
                 f"a unit goes in square brackets: [{sight.text}]; a name is one word: {sight.last_word}_{sight.text}",
             )
         return sight.here(f"`{sight.text}` follows the name without brackets or comma",
-                          f"a unit goes in square brackets: [{sight.text}]; a phrase comes after a comma")  # fmt: skip
+                          f"a unit goes in square brackets: [{sight.text}]; a phrase comes after a comma; "
+                          f"a name is one word: {sight.last_word}_{sight.text}")  # fmt: skip
     return None
 
 
@@ -301,14 +308,6 @@ def value_list(sight: Sight) -> Mistake | None:
     return None
 
 
-def number_with_comma(sight: Sight) -> Mistake | None:
-    """``1,000`` and ``0,5``."""
-    between = re.search(r"[0-9]\Z", sight.before) and re.match(r",[0-9]", sight.rest)
-    if sight.found != "COMMA" or not between:
-        return None
-    return sight.here("a number has no comma", "write 1000 or 1_000 for a thousand, and 0.5 with a point")
-
-
 def late_note(sight: Sight) -> Mistake | None:
     if sight.found != "STRING" or sight.before.strip():
         return None
@@ -347,6 +346,7 @@ SLIPS: tuple[Callable[[Sight], Mistake | None], ...] = (
     strange_space,
     open_text,
     double_sign,
+    *HABITS,
     square_bracket,
     bracket,
     sign,
@@ -363,7 +363,6 @@ SLIPS: tuple[Callable[[Sight], Mistake | None], ...] = (
     missing_comma,
     unfinished_phrase,
     missing_quotes,
-    number_with_comma,
     late_note,
     missing_operator,
     missing_name,

@@ -8,6 +8,7 @@ from samesum.reading import tree
 from samesum.reading.model import PLAIN, Band, Key, Row, Unit
 from samesum.reading.phrases import in_unit
 from samesum.reading.scope import Scope
+from samesum.reading.typed import say_unit
 from samesum.reading.units import conversion, same_dimension
 from samesum.reading.words import listing, nearest
 
@@ -155,8 +156,9 @@ def _value(row: tree.RowTree, unit: Unit | None, scope: Scope) -> Fraction | Non
     if own is None or (value == 0 and not own.dimension):
         return value
     if not same_dimension(own, unit):
-        scope.report(row.value, f"the table is in [{unit.text}], but this is in [{own.text}]" if unit.text else
-                     f"the table has no unit, but this is in [{own.text}]", kind="unit")  # fmt: skip
+        says = f"the table is in [{unit.text}]" if unit.text else "the table has no unit"
+        remedy = f"write the number in [{unit.text}]" if unit.text else "leave the unit out, or give the table one"
+        scope.report(row.value, f"{says}, but this is {say_unit(own)}", remedy, "unit")
         return None
     return value * conversion(own, unit)
 

@@ -46,11 +46,9 @@ def _bridge(found: Unit, wanted: Unit, scope: Scope) -> str:
     if not found.text and wanted.text:
         return f"write the unit behind the number, as in [{wanted.text}], or multiply by something in [{wanted.text}]"
     factor = multiplied(wanted, found, scope.units, -1)
-    return (
-        f"check the formula, or multiply by something in {say_unit(factor)}"
-        if factor.text and "(" not in factor.text
-        else ""
-    )
+    if factor.text and "(" not in factor.text:
+        return f"check the formula, or multiply by something in {say_unit(factor)}"
+    return "check the formula and the units of what it uses"
 
 
 def scaled(expression: Expression, source: Unit, target: Unit) -> Expression:

@@ -4,12 +4,14 @@ from __future__ import annotations
 
 import unicodedata
 from collections.abc import Iterable
+from typing import Literal
 
 FUNCTIONS = ("abs", "ceil", "exp", "floor", "ln", "max", "mean", "min", "position", "round", "sqrt", "sum")
 DECLARATIONS = (
     "applies", "constant", "fact", "index", "judgement", "periods", "quantity", "result", "rulebook", "setting",
     "table",
 )  # fmt: skip
+DECIDERS: tuple[Literal["developer", "verifier", "programme"], ...] = ("developer", "verifier", "programme")
 PHRASE_WORDS = (
     "above", "and", "applies", "at", "bias", "by", "cases", "choice", "clause", "constant", "correlated", "cost",
     "developer", "draft", "each", "error", "errors", "fact", "fixed", "follows", "in", "index", "is", "judgement",
