@@ -141,3 +141,13 @@ def test_what_cannot_be_simulated(tmp_path: Path, capsys: pytest.CaptureFixture[
         status, out, err = said(capsys, str(file), "--projects", "100")
         assert status == 2 and not out and says in err and err.count("\n") == 1
     assert said(capsys, str(tmp_path / "none.rulebook"))[0] == 2
+
+
+def test_a_long_chain_of_quantities(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    path = tmp_path / "chain.rulebook"
+    lines = ['rulebook "Chain", draft "1"', "result q400 [t CO2e]", "quantity q0 [t CO2e]", "    = 1 [t CO2e]"]
+    for number in range(1, 401):
+        lines += [f"quantity q{number} [t CO2e]", f"    = q{number - 1} + 1 [t CO2e]"]
+    path.write_text("\n".join(lines) + "\n")
+    status, out, err = said(capsys, str(path), "--projects", "64", "--jobs", "1")
+    assert (status, err) == (0, "") and "Chain" in out

@@ -61,8 +61,9 @@ def test_the_page_says_what_each_project_gets(inputs: str, capsys: pytest.Captur
 def test_a_worked_example_that_fails_is_worked_out(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     path = tmp_path / "cases.yaml"
     path.write_text(CASES.format(value=59000))
-    assert main(["trial", MARSH, "--inputs", str(path)]) == 0
+    assert main(["trial", MARSH, "--inputs", str(path)]) == 1
     page = capsys.readouterr().out
+    assert "The worked example does not come out: Heron Flats." in page[page.index("Verdict:") :]
     assert "the worked example says 59000, the rulebook gives 65228" in page
     assert "= 105.5 [t C/ha] * 120 [ha] + 98 [t C/ha] * 80 [ha]" in page
 

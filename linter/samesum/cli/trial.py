@@ -132,12 +132,17 @@ def _try(
 
         for piece in trial_json(evidence):
             shared.write(piece)
-        return 0
+        return _status(evidence)
     from samesum.outputs.page import paper_for
     from samesum.outputs.trial_text import trial_text
 
     shared.write(trial_text(evidence, paper_for(sys.stdout), _workings(evidence)))
-    return 0
+    return _status(evidence)
+
+
+def _status(evidence: TrialEvidence) -> int:
+    """1 when a worked example does not come out, so that a pipeline notices."""
+    return 0 if all(example.agrees for example in evidence.examples) else 1
 
 
 def _workings(evidence: TrialEvidence) -> Mapping[str, Sequence[Line]]:

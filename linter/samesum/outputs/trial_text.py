@@ -209,6 +209,11 @@ def _proved(page: Page, evidence: TrialEvidence) -> None:
     page.blank()
     page.line(f"Verdict: {proof.verdict}", STYLES[proof.verdict])
     page.paragraph(f"{proof.says[0].upper()}{proof.says[1:]}.", indent=4, hanging=0)
+    failed = [example.case for example in evidence.examples if not example.agrees]
+    if failed:
+        listed = ", ".join(failed[:8]) + (" and others" if len(failed) > 8 else "")
+        text = "The worked example does not come out" if len(failed) == 1 else "Worked examples do not come out"
+        page.paragraph(f"{text}: {listed}.", indent=4, style="bad")
     if proof.verdict != "single route" and (proof.low is not None or proof.high is not None):
         low = "0 %" if not proof.low else share(proof.low)
         high = "no bound was proved" if proof.high is None else f"at most {share(proof.high)}, proved by {proof.by}"

@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from samesum.evidence.routes.counting import deep
 from samesum.evidence.subjects.pointwise import preferred
 from samesum.evidence.trial import plan
 from samesum.graph import BranchPoint, DecisionGraph, Element, build
@@ -89,6 +90,11 @@ def make_program(model: m.Model, sizes: Mapping[str, int] | None = None) -> Prog
 
     Raises ``plan.Unplannable`` when a part of the rulebook could not be resolved.
     """
+    with deep():
+        return _program(model, sizes)
+
+
+def _program(model: m.Model, sizes: Mapping[str, int] | None) -> Program:
     stated = replace(model, quantities=tuple(_with_statement(each) for each in model.quantities))
     graph = plan.resized(stated, sizes or {}) if sizes else build(stated)
     withheld = {each.name: float(_plain(each.expression)) for each in model.constants if each.withheld}
