@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from datetime import date
 from fractions import Fraction
 from pathlib import Path
 
@@ -186,6 +187,11 @@ def test_units_in_cells_are_converted(model: m.Model, tmp_path: Path) -> None:
         (("Moor,40,,2", "Moor,,40,2"), "3:1 area has an empty cell before a filled one"),
         (("Moor,40,,2", "Moor,40,50,2"), "3:1 depth and area have different numbers of values"),
         (("yes", "sometimes"), "2:8 flooded is yes or no, not `sometimes`"),
+        (("area@1,area@2", "name,area@1"), "1:2 the column `name` stands here a second time"),
+        ((",120,150", ",120,nan"), "2:3 area: nan is no number"),
+        ((",3,no", ",inf,no"), "3:7 salinity: inf is no number"),
+        ((",120,150", ",NA,150"), "2:2 area: `NA` is no number"),
+        (("Moor", "Heron"), "3:1 two projects are called Heron (first on line 2)"),
         ((",area@2", ",area@1"), "1:3 the column `area@1` stands here a second time"),
     ],
 )
@@ -230,3 +236,74 @@ def test_what_is_no_table_is_said(content: bytes, model: m.Model, tmp_path: Path
         assert columns is None and problems
     columns, problems = read_columns(tmp_path / "nowhere.parquet", model)
     assert columns is None and problems
+
+
+PLAIN: dict[str, object] = {
+    "area@1": [120.0, 40.0],
+    "depth@1": [1.0, 2.0],
+    "soil": ["peaty", "mineral"],
+    "salinity": [12.0, 3.0],
+    "flooded": [True, False],
+}
+
+
+@pytest.mark.parametrize(
+    ("column", "said"),
+    [
+        (pa.array([12.0, float("nan")]), "salinity: nan is no number"),
+        (pa.array([12.0, float("-inf")]), "salinity: -inf is no number"),
+        (pa.array([True, False]), "salinity is a number, and the column holds yes and no"),
+        (pa.array([date(2024, 1, 1), None]), "the column `salinity` holds dates, and not numbers or texts"),
+        (pa.array([b"12", b"3"]), "the column `salinity` holds raw bytes, and not numbers or texts"),
+        (pa.array([{"a": 1}, {"a": 2}]), "the column `salinity` holds several things in one cell, and not numbers"),
+        (pa.array([[1.0], [2.0]]), "salinity has 1 values in a row"),
+    ],
+)
+def test_columns_that_hold_no_numbers(column: pa.Array, said: str, model: m.Model, tmp_path: Path) -> None:
+    path = tmp_path / "projects.parquet"
+    parquet.write_table(pa.table({**PLAIN, "salinity": column}), path)
+    columns, problems = read_columns(path, model)
+    assert columns is None
+    assert any(each.says.startswith(said) for each in problems), problems
+
+
+@pytest.mark.parametrize("element", [{"a": 1}, b"1", date(2024, 1, 1), True, float("nan")])
+def test_lists_that_hold_no_numbers(element: object, model: m.Model, tmp_path: Path) -> None:
+    path = tmp_path / "projects.parquet"
+    kept = {name: values for name, values in PLAIN.items() if name != "area@1"}
+    parquet.write_table(pa.table({**kept, "area": pa.array([[element], [element]])}), path)
+    columns, problems = read_columns(path, model)
+    assert columns is None and any("area" in each.says for each in problems)
+
+
+def test_a_parquet_column_that_stands_twice(model: m.Model, tmp_path: Path) -> None:
+    path = tmp_path / "projects.parquet"
+    parquet.write_table(pa.Table.from_arrays([pa.array([1.0]), pa.array([2.0])], names=["salinity", "salinity"]), path)
+    columns, problems = read_columns(path, model)
+    assert columns is None
+    assert [each.says for each in problems] == ["the column `salinity` stands here a second time"]
+
+
+@pytest.mark.parametrize(
+    ("content", "said"),
+    [
+        ((HEAD + ROWS).replace(",", ";").encode(), "columns are separated by commas here, not by `;`"),
+        (HEAD.replace(",", ";").encode() + b"Heron;1,5;2\n", "columns are separated by commas here, not by `;`"),
+        (b"\x00\x01\x02,\xff\n\x00\n1,2,3\n", "this is not a text file"),
+        (HEAD.encode() + b"Heron,1\n", "the rows do not all have as many cells as there are columns"),
+        (b"", "the file is empty"),
+    ],
+)
+def test_what_a_csv_is_instead(content: bytes, said: str, model: m.Model, tmp_path: Path) -> None:
+    path = tmp_path / "projects.csv"
+    path.write_bytes(content)
+    columns, problems = read_columns(path, model)
+    assert columns is None and len(problems) == 1
+    assert problems[0].says.startswith(said) and problems[0].says.isprintable()
+
+
+def test_a_folder_is_no_table(model: m.Model, tmp_path: Path) -> None:
+    for name in ("folder.csv", "folder.parquet"):
+        (tmp_path / name).mkdir()
+        columns, problems = read_columns(tmp_path / name, model)
+        assert columns is None and [each.says for each in problems] == ["this is a folder"]

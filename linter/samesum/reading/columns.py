@@ -43,6 +43,11 @@ class Columns:
 
 def read_columns(path: Path, model: m.Model) -> tuple[Columns | None, tuple[Problem, ...]]:
     """The projects of a table and everything that is wrong with them; None when there is anything."""
+    if path.is_dir():
+        return None, (_problem(path, "this is a folder", "give the file with the projects, CSV or Parquet"),)
+    twice = _twice(path)
+    if twice:
+        return None, twice
     try:
         table = _table(path)
         _ = table.column_names  # names that are not UTF-8 are noticed here
@@ -53,8 +58,12 @@ def read_columns(path: Path, model: m.Model) -> tuple[Columns | None, tuple[Prob
     except OSError as error:
         says = f"the file cannot be read: {error.strerror or 'it is no such file'}"
         return None, (_problem(path, says, "check the name and that it is CSV in UTF-8, or Parquet"),)
-    except ValueError as error:  # pyarrow's own errors about what is inside are ValueErrors
-        return None, (_problem(path, f"the file cannot be understood: {str(error).splitlines()[0]}", "check its form"),)
+    except ValueError:  # pyarrow's own errors about what is inside are ValueErrors; their text may hold raw bytes
+        return None, (_misunderstood(path),)
+    except NotImplementedError:  # a type of column that pyarrow can store and not read
+        return None, (_problem(path, "a column holds something that cannot be read", "write numbers and texts"),)
+    if len(table.column_names) == 1 and ";" in table.column_names[0]:
+        return None, (_semicolons(path),)
     reader = _Reader(str(path), model, table.num_rows, Numbers(str(path)))
     made = reader.whole(table)
     return (None if reader.problems else made), in_order(reader.problems)
@@ -64,6 +73,46 @@ def _problem(path: Path, says: str, remedy: str) -> Problem:
     return Problem(str(path), START, says, remedy, "file")
 
 
+def _semicolons(path: Path) -> Problem:
+    return _problem(path, "columns are separated by commas here, not by `;`", "save the table as CSV with commas")
+
+
+def _misunderstood(path: Path) -> Problem:
+    """What is wrong with a file that pyarrow could not read, as far as its beginning shows."""
+    if path.suffix.lower() == ".parquet":
+        return _problem(path, "the file is not Parquet, or is damaged", "write it anew as Parquet, or as CSV")
+    with path.open("rb") as file:
+        start = file.read(65_536)
+    if not start.strip():
+        return _problem(path, "the file is empty", "the first line names the columns, every other is a project")
+    if b"\0" in start:
+        return _problem(path, "this is not a text file", "save the table as CSV in UTF-8")
+    heading, *rows = start.splitlines()
+    if heading.count(b";") > heading.count(b","):
+        return _semicolons(path)
+    if any(row.strip() and row.count(b",") != heading.count(b",") for row in rows):
+        says = "the rows do not all have as many cells as there are columns, or a quotation mark is not closed"
+        return _problem(path, says, "give every row as many commas as the first line; write decimals with a point")
+    return _problem(path, "the file is not text in UTF-8", "save the table as CSV in UTF-8")
+
+
+def _twice(path: Path) -> tuple[Problem, ...]:
+    """A column name that a Parquet file has twice: pyarrow would not read the table at all."""
+    if path.suffix.lower() != ".parquet":
+        return ()
+    try:
+        import pyarrow.parquet as parquet
+
+        names = [str(name) for name in parquet.read_schema(path).names]
+    except (ModuleNotFoundError, OSError, ValueError):
+        return ()  # told when the table is read
+    for place, name in enumerate(names, start=1):
+        if name in names[: place - 1]:
+            says = f"the column `{name}` stands here a second time"
+            return (Problem(str(path), Span(1, place, 1, place + 1), says, "keep one of the two", "shape"),)
+    return ()
+
+
 def _table(path: Path) -> Any:
     if path.suffix.lower() == ".parquet":
         import pyarrow.parquet as parquet
@@ -71,7 +120,7 @@ def _table(path: Path) -> Any:
         return parquet.read_table(path)
     import pyarrow.csv as csv
 
-    return csv.read_csv(path, convert_options=csv.ConvertOptions(strings_can_be_null=True))
+    return csv.read_csv(path, convert_options=csv.ConvertOptions(null_values=[""], strings_can_be_null=True))
 
 
 @dataclass(slots=True)
@@ -94,11 +143,17 @@ class _Reader:
         flags: dict[str, Array] = {}
         given: dict[str, Array] = {}
         names = tuple(f"row {row}" for row in range(1, self.rows + 1))
+        named = False
         if not self.rows:
             self.report(1, 1, "the table has no projects", "give one project a row", "shape")
         for place, (name, values) in enumerate(self._spread(table, declared), start=1):
             if name == "name":
+                if named:
+                    self.report(1, place, "the column `name` stands here a second time", "keep one of the two", "shape")
+                    continue
+                named = True
                 names = tuple("" if each is None else str(each) for each in values.to_pylist())
+                self._one_of_each(names, place)
                 continue
             base = name.partition("@")[0]
             if base not in declared:
@@ -113,6 +168,15 @@ class _Reader:
         sizes = self._sizes(given)
         self._missing(given, sizes)
         return Columns(self.file, names, numbers, codes, flags, given, sizes)
+
+    def _one_of_each(self, names: tuple[str, ...], place: int) -> None:
+        """Reports the first project whose name another has already; projects without a name are let be."""
+        first: dict[str, int] = {}
+        for row, name in enumerate(names, start=2):
+            if name and first.setdefault(name, row) != row:
+                says = f"two projects are called {name} (first on line {first[name]})"
+                self.report(row, place, says, "give one of them another name")
+                return
 
     def _spread(self, table: Any, declared: Mapping[str, Any]) -> Iterator[tuple[str, Any]]:
         """Columns by name; a column of lists as one column an element."""
@@ -164,7 +228,7 @@ class _Reader:
             return
         domain: m.Domain = m.YesNo() if isinstance(declared, m.Judgement) else declared.domain
         if not _is_plain(values.type):
-            says = f"the column `{id}` holds {values.type}, which is neither a number nor a text"
+            says = f"the column `{id}` holds {_in_words(values.type)}, and not numbers or texts"
             self.report(1, place, says, "write numbers, names, or yes and no", "shape")
             return
         has = ~np.asarray(values.is_null().to_numpy(zero_copy_only=False), dtype=bool)
@@ -185,9 +249,20 @@ class _Reader:
         if not pa.types.is_string(values.type) and not pa.types.is_large_string(values.type):
             if pa.types.is_null(values.type):
                 return np.zeros(self.rows), has
+            if pa.types.is_boolean(values.type):
+                says = f"{declared.name} is a number, and the column holds yes and no"
+                self.report(1, place, says, "write numbers")
+                return np.zeros(self.rows), has
             found = np.asarray(values.cast(pa.float64(), safe=False).to_numpy(zero_copy_only=False), dtype=np.float64)
-            has = has & ~np.isnan(found)
-            return np.where(has, found, 0.0), has
+            finite = np.isfinite(found)
+            self._told(
+                np.flatnonzero(has & ~finite),
+                place,
+                lambda row: f"{declared.name}: {found[row]:g} is no number",
+                "write a number, or leave the cell empty",
+            )
+            # a cell with nan counts as filled: it is told here, and not a second time as missing
+            return np.where(has & finite, found, 0.0), has
         texts, which = _encoded(values)
         known = np.zeros(max(1, len(texts)))
         for number, text in enumerate(texts):
@@ -309,6 +384,18 @@ def _is_plain(kind: Any) -> bool:
         pa.types.is_string, pa.types.is_large_string, pa.types.is_null,
     )  # fmt: skip
     return any(test(kind) for test in tests)
+
+
+def _in_words(kind: Any) -> str:
+    import pyarrow as pa
+
+    if pa.types.is_temporal(kind):
+        return "dates" if pa.types.is_date(kind) else "times"
+    if pa.types.is_nested(kind):
+        return "several things in one cell"
+    if pa.types.is_binary(kind) or pa.types.is_large_binary(kind) or pa.types.is_fixed_size_binary(kind):
+        return "raw bytes"
+    return str(kind)
 
 
 def _encoded(values: Any) -> tuple[list[str], Array]:
