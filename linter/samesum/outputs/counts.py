@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from typing import Any
+from collections.abc import Callable, Hashable, Iterable, Iterator
+from typing import Any, Protocol, TypeVar
 
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.routes.counting import Counts
@@ -10,6 +11,7 @@ from samesum.evidence.routes.witness import Witness
 from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.projects import Words, as_values, general_id, project, shown, words_for
 from samesum.reading.model import Model
+from samesum.reading.words import listing
 from samesum.written import whole
 
 FIGURES = (
@@ -126,33 +128,65 @@ def _conditions(page: Page, evidence: Evidence, words: Words) -> None:
     if conditions.gaps:
         page.blank()
         page.line("Without a result", "strong")
-        for gap in conditions.gaps:
+        for gap, others in _first_of_each(conditions.gaps, lambda gap: (gap.kind, gap.names)):
             missing = {"row": "no row of a table answers", "value": "a calculation has no value"}
             says = missing.get(gap.kind, "no branch is open")
             page.paragraph(
-                f"{gap.branch_point}: {says} for {_shown(gap.witness, words, general_id(gap.branch_point))}.",
+                f"{gap.branch_point}: {says} for {_shown(gap.witness, words, general_id(gap.branch_point))}{others}.",
                 indent=4,
                 hanging=2,
             )
     if conditions.overlaps:
         page.blank()
         page.line("Two branches at once", "strong")
-        for overlap in conditions.overlaps:
+        for overlap, others in _first_of_each(conditions.overlaps, lambda overlap: overlap.branches):
             both = " and ".join(overlap.branches)
             project_there = _shown(overlap.witness, words, general_id(overlap.branch_point))
-            text = f"{overlap.branch_point}: branches {both} for {project_there}."
+            text = f"{overlap.branch_point}: branches {both} for {project_there}{others}."
             page.paragraph(text, indent=4, hanging=2)
     if conditions.dead_branches:
         page.blank()
         page.line("Never taken", "strong")
-        for dead in conditions.dead_branches:
-            page.paragraph(f"{dead.branch_point}: branch {dead.branch}.", indent=4, hanging=2)
+        for dead, others in _first_of_each(conditions.dead_branches, lambda dead: dead.branch):
+            page.paragraph(f"{dead.branch_point}: branch {dead.branch}{others}.", indent=4, hanging=2)
     if conditions.undecided:
         page.blank()
         page.line("Could not be told in the time given", "strong")
         listed = ", ".join(f"{each.asks} at {each.branch_point}" for each in conditions.undecided[:12])
         more = len(conditions.undecided) - 12
         page.paragraph(listed + (f" and {more} more" if more > 0 else "") + ".", indent=4, hanging=2)
+
+
+class _AtAPoint(Protocol):
+    @property
+    def branch_point(self) -> str: ...
+
+
+_Told = TypeVar("_Told", bound=_AtAPoint)
+
+
+def _first_of_each(everything: Iterable[_Told], tells: Callable[[_Told], Hashable]) -> Iterator[tuple[_Told, str]]:
+    """What stands there for several elements of an index, once: the first, and in words where else it is so."""
+    groups: dict[tuple[str, Hashable], list[_Told]] = {}
+    for each in everything:
+        groups.setdefault((general_id(each.branch_point), tells(each)), []).append(each)
+    for first, *others in groups.values():
+        elements = sorted(int(other.branch_point.partition("@")[2].partition("/")[0]) for other in others)
+        yield first, f" (and the same at {_elements(elements)})" if elements else ""
+
+
+def _elements(numbers: list[int]) -> str:
+    """``@2``, ``@2 to @5``, ``@2, @4 to @6 and @9``."""
+    runs: list[list[int]] = []
+    for number in numbers:
+        if runs and number == runs[-1][-1] + 1:
+            runs[-1].append(number)
+        else:
+            runs.append([number])
+    said = []
+    for run in runs:
+        said += [f"@{run[0]} to @{run[-1]}"] if len(run) > 2 else [f"@{number}" for number in run]
+    return listing(said, "and")
 
 
 def _shown(witness: Witness | None, words: Words, besides: str = "") -> str:

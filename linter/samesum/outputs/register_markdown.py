@@ -5,8 +5,8 @@ from __future__ import annotations
 from samesum.outputs.counts import title_of
 from samesum.outputs.harmless import code, markdown
 from samesum.outputs.page import CAUTION, clean
-from samesum.outputs.register_cells import Cell, columns_for, share, stale_lines
-from samesum.reviewing.rows import Register
+from samesum.outputs.register_cells import Cell, Column, columns_for, share, stale_lines
+from samesum.reviewing.rows import Register, Row
 from samesum.written import whole
 
 
@@ -17,13 +17,29 @@ def register_markdown(register: Register) -> str:
     lines.append("| " + " | ".join(column.title for column in columns) + " |")
     lines.append("|" + "|".join("---" if column.kind == "text" else "---:" for column in columns) + "|")
     for row in register.rows:
-        cells = [code(row.id) if number == 0 else _written(column.of(row)) for number, column in enumerate(columns)]
-        lines.append("| " + " | ".join(cells) + " |")
+        lines.append("| " + " | ".join(_cell(column, row) for column in columns) + " |")
     stale = stale_lines(register)
     if stale:
         lines += ["", "Decisions that no longer fit:", "", *(f"* {markdown(line)}" for line in stale)]
     lines += ["", markdown(CAUTION)]
     return "\n".join(lines) + "\n"
+
+
+def _cell(column: Column, row: Row) -> str:
+    if column.title == "Branch point":
+        return code(row.id)
+    if column.title == "Fixed" and row.kind in ("setting", "judgement"):
+        return "–"  # the language lets only a choice say when it is fixed
+    value = column.of(row)
+    return _with_code(value) if column.title == "Suggested closure" and isinstance(value, str) else _written(value)
+
+
+def _with_code(text: str) -> str:
+    """A sentence of ours, its names between backticks as code."""
+    parts = text.split("`")
+    if len(parts) % 2 == 0 or not all(part.strip() for part in parts[1::2]):
+        return markdown(text)
+    return "".join(code(part) if number % 2 else markdown(part) for number, part in enumerate(parts))
 
 
 def _written(value: Cell) -> str:
