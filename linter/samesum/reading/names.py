@@ -98,9 +98,12 @@ def _declared(block: Placed, kind: Kind, name: tree.Word, scope: Scope) -> Decla
 
 
 def _share(declaration: tree.Declaration, unit: Unit | None) -> tuple[Fraction, Fraction] | None:
-    """The domain as plain numbers, where it is written without further units and lies inside 0 to 1."""
+    """The domain as plain numbers, where the writer says in % that it is a share and it lies inside 0 to 1. A plain
+    `0 to 1` may be anything, and a comparison beyond it is no slip (lint rules find the branch that nobody takes)."""
     literals = next((phrase.numbers for phrase in declaration.phrases if phrase.kind == "range"), ())
     if unit is None or unit.dimension or len(literals) != 2:
+        return None
+    if unit.factor == 1 and not any(literal.percent for literal in literals):
         return None
     ends = []
     for literal in literals:

@@ -28,7 +28,7 @@ class Declared:
     ``unreadable`` is a name whose own declaration failed: its uses stay silent. ``unit`` is None when
     the unit could not be read. ``values`` are the named values of a fact or setting; ``options`` those
     of a quantity whose body is a choice, None when it is something else. ``share`` is the domain of a
-    fact or setting that is a plain number inside 0 to 1, as plain numbers.
+    fact or setting that is written in % and lies inside 0 to 1, as plain numbers.
     """
 
     name: str
