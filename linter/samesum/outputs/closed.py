@@ -222,11 +222,6 @@ def _mandated(
     reading: Reading, quantity: m.Quantity, body: m.Choice, closing: Closing, reader: Reader
 ) -> Reading:
     option = chosen_option(body, closing.option, closing.id)
-    if option.only_when is not None:
-        raise CannotClose(
-            f"{option.name} is open only on a condition, and a project that does not meet it would be left with "
-            "nothing; mandate another option, or write `cases` with that condition by hand"
-        )
     own = body is quantity.body
     if own:
         reading = without_takes(reading, quantity.name, lambda asked: asked == option.name, reader, again)
