@@ -229,16 +229,15 @@ def test_counts_stay_exact_beyond_floating_point() -> None:
     assert number(d, eliminate(d, factors, [10 * k for k in range(200)], "sum")) == 2**199 * 3
 
 
-def test_a_long_chain_is_eliminated_fast() -> None:
+def test_a_long_chain_stays_small() -> None:
     """Neighbours differ: 2 ways for a chain of two-way variables, whatever its length."""
     d = diagrams([2] * 1_000)
     factors = []
     for k in range(999):
         here, following = d.literal(10 * k, (1,)), d.literal(10 * k + 10, (1,))
         factors.append(d.numbers(d.either(d.both(here, d.negate(following)), d.both(d.negate(here), following))))
-    start = time.monotonic()
     assert number(d, eliminate(d, factors, [10 * k for k in range(1_000)], "sum")) == 2
-    assert time.monotonic() - start < 5
+    assert len(d.level) < 30_000
 
 
 def test_projects_outside_the_rulebook_are_nobodys_least() -> None:
