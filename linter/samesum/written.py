@@ -58,6 +58,13 @@ def plain(value: Fraction) -> str:
     return f"{mantissa.rstrip('0').rstrip('.')}e{int(exponent)}"
 
 
+def as_sentence(text: str) -> str:
+    """A phrase as a whole sentence: a capital at the head, a stop at the end; "" stays as it is."""
+    if not text:
+        return ""
+    return text[0].upper() + text[1:] + ("" if text[-1] in ".!?" else ".")
+
+
 def percent(value: Fraction) -> str:
     """A share for people, to three significant digits: ``7.86 %``, ``0.05 %``, ``500 %``."""
     hundred = value * 100
@@ -66,6 +73,7 @@ def percent(value: Fraction) -> str:
     size = decimal(abs(hundred)).adjusted()
     step = Fraction(10) ** (size - 2) if size < 2 else Fraction(1)
     return f"{plain(round(hundred / step) * step)} %"
+
 
 def number(value: Fraction) -> int | float | str:
     """A number for JSON: whole numbers whole, others as the nearest floating-point number where that is exact to

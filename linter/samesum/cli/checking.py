@@ -110,5 +110,6 @@ def check_one(path: Path, task: Task, reader: Reader, chooser: RulesFor) -> Outc
     standing = {}
     if record.decisions:
         standing = standings(record, fingerprints(examined.evidence.graph, examined.reading.text))
-    checked = Checked.of(str(path), examined.evidence, examined.judged, chosen.rules, standing)
+    mistakes = len(examined.problems)
+    checked = Checked.of(str(path), examined.evidence, examined.judged, chosen.rules, standing, mistakes)
     return Outcome(path, (), checked, checked.fails(limit), limit)

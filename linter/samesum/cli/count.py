@@ -48,6 +48,7 @@ def run(arguments: argparse.Namespace) -> int:
     if evidence is None:
         shared.report(examined.problems)
         return shared.UNUSABLE
+    shared.report(examined.problems)
     chosen: tuple[str, Mapping[str, Value | tuple[Value, ...]]] | None = None
     if arguments.list:
         chosen = _project(arguments, evidence)

@@ -77,7 +77,7 @@ def written(register: Register, examined: Examined, form: str, arguments: argpar
         case "html":
             from samesum.outputs.report.page import register_page
 
-            return register_page(register, examined.reading.text)
+            return register_page(register, examined.reading.text, len(examined.problems))
     from samesum.outputs.page import Paper, paper_for
     from samesum.outputs.register_table import register_text
 

@@ -67,6 +67,7 @@ def _extra(found: gathered.Gathered, arguments: argparse.Namespace) -> Extra | N
         histogram=measured.histogram_of(selection) if selection is not None else None,
         findings=by_place,
         origins=tuple(origins),
+        mistakes=len(found.examined.problems),
     )
 
 

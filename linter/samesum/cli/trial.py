@@ -69,13 +69,19 @@ def run(arguments: argparse.Namespace) -> int:
     model = reading.model
     if model.result is None:
         return shared.refuse(f"{arguments.file}: the rulebook has no result, so there is no number to try out")
+    from samesum.evidence.subjects.declared import needed_mismatches
+
+    shared.report(reading.problems)
+    if needed_mismatches(model, reading.problems):
+        return shared.refuse(
+            f"{arguments.file}: no number can be worked out until the mistakes in the units are mended"
+        )
     graph = build(model)
     try:
         if arguments.inputs.suffix.lower() in (".csv", ".parquet"):
             return _tables(graph, arguments)
         return _cases(graph, arguments)
     except Unplannable as unplannable:
-        shared.report(reading.problems)
         return shared.refuse(f"{arguments.file}: the number cannot be worked out: {unplannable}")
 
 

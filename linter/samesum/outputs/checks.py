@@ -44,9 +44,15 @@ class Checked:
 
     @staticmethod
     def of(
-        file: str, evidence: Evidence, judged: Judged, rules: RuleSet, decided: Mapping[str, Standing] | None = None
+        file: str,
+        evidence: Evidence,
+        judged: Judged,
+        rules: RuleSet,
+        decided: Mapping[str, Standing] | None = None,
+        mistakes: int = 0,
     ) -> Checked:
-        """``decided``: the review's decisions by place, held against the rulebook as it is now."""
+        """``decided``: the review's decisions by place, held against the rulebook as it is now. ``mistakes``: how many
+        stand in the rulebook and let it be examined all the same."""
         standing = decided or {}
         model = evidence.model
         return Checked(
@@ -55,7 +61,7 @@ class Checked:
             model.title,
             model.draft,
             evidence.counts,
-            verdict(evidence),
+            verdict(evidence, mistakes),
             decided_by(evidence),
             words_for(model),
             judged,

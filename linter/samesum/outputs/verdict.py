@@ -16,8 +16,11 @@ class Verdict:
     style: str
 
 
-def verdict(evidence: Evidence) -> Verdict:
-    """What counting alone can say; whether several routes give one number is for the trial to find out."""
+def verdict(evidence: Evidence, mistakes: int = 0) -> Verdict:
+    """What counting alone can say; whether several routes give one number is for the trial to find out. ``mistakes``:
+    how many stand in the rulebook; with any, nothing is claimed of it."""
+    if mistakes:
+        return Verdict("cannot tell", waiting(mistakes), "warn")
     counts = evidence.counts
     conditions = evidence.conditions
     if conditions.gaps or (counts.exact and counts.per_project_least == 0):
@@ -31,6 +34,12 @@ def verdict(evidence: Evidence) -> Verdict:
         says = "one route for every project, but somebody sets a number on the way"
         return Verdict("free value", says, "warn")
     return Verdict("single route", "one route for every project: proved", "good")
+
+
+def waiting(mistakes: int) -> str:
+    """``waits until the mistake in the units is mended``."""
+    what = "mistake in the units is" if mistakes == 1 else f"{mistakes} mistakes in the units are"
+    return f"waits until the {what} mended"
 
 
 def decided(evidence: Evidence) -> dict[str, int]:

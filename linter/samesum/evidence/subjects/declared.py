@@ -12,7 +12,7 @@ from samesum.problems import Problem
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.spans import Span
-from samesum.written import percent, plain
+from samesum.written import as_sentence, percent, plain
 
 Declared = m.Fact | m.Setting | m.Judgement | m.Constant | m.Table | m.Quantity | m.Index | m.Result
 
@@ -154,9 +154,20 @@ def unit_mismatches(evidence: Evidence, problems: Iterable[Problem]) -> Iterator
             "has_clause": bool(clause),
             "clause_number": clause,
             "problem": problem.says,
-            "help": problem.remedy,
+            "help": as_sentence(problem.remedy) or "Correct one of the units, or the formula.",
         }
         yield Subject("unit_mismatch", name, problem.says, problem.span, clause, attributes)
+
+
+def needed_mismatches(model: m.Model, problems: Iterable[Problem]) -> tuple[Problem, ...]:
+    """The unit mismatches on the way to the result or to applicability: no number can be worked out past them."""
+    used, _ = used_names(model)
+    leading = {"", "applies when", *used}
+    if model.result is not None:
+        leading.add(model.result.name)
+    return tuple(
+        problem for problem in problems if problem.kind == "unit" and _standing_in(model, problem.span)[0] in leading
+    )
 
 
 def _standing_in(model: m.Model, span: Span) -> tuple[str, str]:

@@ -30,6 +30,7 @@ from samesum.outputs.report.figures import (
     ticks,
 )
 from samesum.outputs.report.layers import path
+from samesum.outputs.verdict import waiting
 from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row
 
@@ -40,7 +41,7 @@ if TYPE_CHECKING:
 @dataclass(frozen=True, slots=True)
 class Extra:
     """What the page shows beyond the register, where it is known. ``origins``: names and values of versions and
-    hashes. ``findings``: what the lint rules say, by place."""
+    hashes. ``findings``: what the lint rules say, by place. ``mistakes``: how many stand in the rulebook."""
 
     cases: tuple[CaseSpread, ...] = ()
     closing: tuple[ClosingStep, ...] = ()
@@ -51,11 +52,12 @@ class Extra:
     findings: Mapping[str, Sequence[tuple[str, str]]] = field(default_factory=dict)
     origins: tuple[tuple[str, str], ...] = ()
     only_register: bool = False
+    mistakes: int = 0
 
 
-def register_page(register: Register, text: str) -> str:
-    """The register alone as a page."""
-    return report_page(register, text, Extra(only_register=True))
+def register_page(register: Register, text: str, mistakes: int = 0) -> str:
+    """The register alone as a page. ``mistakes``: how many stand in the rulebook."""
+    return report_page(register, text, Extra(only_register=True, mistakes=mistakes))
 
 
 def report_page(register: Register, text: str, extra: Extra) -> str:
@@ -134,6 +136,8 @@ def spoken(text: str) -> Markup:
 
 def sentence(register: Register, extra: Extra) -> str:
     """The verdict that counting allows, in a sentence that a committee member understands."""
+    if extra.mistakes:
+        return f"The verdict {waiting(extra.mistakes)}."
     counts = register.evidence.counts
     most = counts.per_project_most
     gap = bool(register.evidence.conditions.gaps) or (counts.exact and counts.per_project_least == 0)
