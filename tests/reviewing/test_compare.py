@@ -7,6 +7,8 @@ from pathlib import Path
 import pytest
 
 from samesum.examine import examine_reading
+from samesum.outputs.comparison import comparison_text
+from samesum.outputs.page import Paper
 from samesum.reading.read import read
 from samesum.reviewing.compare import Comparison, compare
 from samesum.reviewing.record import Record
@@ -159,6 +161,73 @@ def test_every_way_of_leaving_more_is_told(old: str, new: str, name: str, says: 
 )
 def test_what_leaves_no_more_is_let_pass(old: str, new: str) -> None:
     assert not changed((old, new)).grew
+
+
+FIGURED = (
+    ("choice by developer, fixed at validation", "choice by developer, fixed at validation, errors correlated 0.5"),
+    ("option tabled", "option tabled, error 35 %, bias 2 %, cost 0 [USD]"),
+    ("option plots,", "option plots, error 8 %, cost 30 [USD],"),
+)
+
+
+def figured(old: str, new: str) -> Comparison:
+    before = DRAFT
+    for pair in FIGURED:
+        assert before.count(pair[0]) == 1
+        before = before.replace(*pair)
+    assert before.count(old) == 1
+    return compare(register(before), register(before.replace(old, new)), (), 60.0)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "says", "aspect"),
+    [
+        ("error 8 %", "error 30 %", "the error of plots grew from 8 % to 30 %", ("option plots, error", "8 %", "30 %")),
+        ("error 8 %, ", "", "error of plots (8 %) is stated no longer", ("option plots, error", "8 %", "")),
+        ("bias 2 %", "bias -3 %", "biases of the options lie further apart: 3 %, not 2 %",
+         ("option tabled, bias", "2 %", "-3 %")),
+        ("correlated 0.5", "correlated 0.2", "go together less: correlated 20 %, not 50 %",
+         ("errors correlated", "50 %", "20 %")),
+    ],
+)  # fmt: skip
+def test_estimates_that_lie_further_apart_leave_more(
+    old: str, new: str, says: str, aspect: tuple[str, str, str]
+) -> None:
+    found = figured(old, new)
+    [change] = found.changed
+    assert change.aspects == (aspect,)
+    assert found.grew and [each.name for each in found.growth] == ["stock"]
+    assert says in found.growth[0].says
+
+
+@pytest.mark.parametrize(
+    ("old", "new"),
+    [
+        ("error 8 %", "error 7 %"),
+        ("bias 2 %", "bias -2 %"),  # as far from the other one as before
+        ("bias 2 %, ", ""),
+        ("cost 30 [USD]", "cost 3 [USD]"),
+        ("correlated 0.5", "correlated 0.6"),
+    ],
+)
+def test_estimates_that_lie_no_further_apart_are_listed_and_let_pass(old: str, new: str) -> None:
+    found = figured(old, new)
+    assert len(found.changed) == 1 and len(found.changed[0].aspects) == 1
+    assert found.growth == ()
+
+
+def test_an_error_that_is_stated_at_last_is_no_growth() -> None:
+    assert not changed(("option tabled", "option tabled, error 35 %")).grew
+
+
+def test_having_a_result_is_not_called_growth() -> None:
+    gap = ("depth < 5 [m]", "depth < 4 [m]")
+    text = DRAFT.replace(*gap)
+    mended = comparison_text([compare(register(text), register(DRAFT))], Paper(100, False))
+    assert "One project, at least     0 → 2 (every project has a result now)" in mended
+    assert "(grew)" not in mended and "leaves nothing more to anybody" in mended
+    broken = comparison_text([changed(gap)], Paper(100, False))
+    assert "One project, at least     2 → 0 (some projects have no result now)" in broken
 
 
 def test_an_allowed_place_is_allowed_with_all_that_it_brings_about() -> None:

@@ -14,7 +14,16 @@ if TYPE_CHECKING:
     from samesum.reviewing.compare import Comparison, Moved
 
 
+LEAVES_MORE = (
+    "A draft leaves more when a place to decide is new, has more options or values, lost a condition, or can be moved "
+    "by more people; when the error that an option states grew or is stated no longer, the options' biases lie further "
+    "apart or their errors are correlated less; when a project has no result any more, or more routes. A cost "
+    "that changed is listed and leaves nothing more: it moves no number, only what is tried first."
+)
+
+
 def add_arguments(parser: argparse.ArgumentParser) -> None:
+    parser.description = f"{parser.description} {LEAVES_MORE}"
     parser.add_argument(
         "files",
         metavar="FILE",

@@ -154,8 +154,9 @@ def _figures(page: Page, found: Comparison) -> None:
     page.line("Figures", "strong")
     labels = {name: label for name, label, _ in FIGURES}
     for name, (before, after) in found.figures.items():
-        moved = direction(before, after)
-        text = bracket_text(before) if moved == "same" else f"{bracket_text(before)} → {bracket_text(after)} ({moved})"
+        text = bracket_text(before)
+        if direction(before, after) != "same":
+            text += f" → {bracket_text(after)}{_how(name, before, after)}"
         page.entry(labels[name], text, indent=2, column=26, style="")
     for each in found.measured:
         text = f"{_share(each.before)} → {_share(each.after)}" + (" (grew)" if each.grew else "")
@@ -169,6 +170,16 @@ def _figures(page: Page, found: Comparison) -> None:
             else f"{', '.join(before_free) or 'none'} → {', '.join(after_free) or 'none'}"
         )
         page.entry("Free values", text, indent=2, column=26, style="")
+
+
+def _how(name: str, before: Bracket, after: Bracket) -> str:
+    """In brackets how a figure moved. The fewest routes of a project are no measure of what is left to somebody: there
+    only having none counts."""
+    if name != "per_project_least":
+        return f" ({direction(before, after)})"
+    if before.high == 0 and after.low > 0:
+        return " (every project has a result now)"
+    return " (some projects have no result now)" if after.high == 0 and before.low > 0 else ""
 
 
 def _verdict(page: Page, found: Comparison) -> None:

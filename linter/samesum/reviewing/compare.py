@@ -8,14 +8,15 @@ from __future__ import annotations
 
 from collections.abc import Collection, Mapping
 from dataclasses import dataclass, replace
+from fractions import Fraction
 from typing import Literal
 
 from samesum.evidence.routes.closing import Bracket, figures_if_given
 from samesum.evidence.routes.counting import FIGURES
 from samesum.evidence.routes.layout import Given
 from samesum.reading import model as m
-from samesum.reviewing.places import changes
-from samesum.reviewing.rows import Register, Row, routes_now
+from samesum.reviewing.places import changes, exact_percent
+from samesum.reviewing.rows import Register, Row, RowOption, routes_now
 
 ONE_PROJECT = ("per_project_most", "developer_most", "over_periods_most")
 """The figures that say how much is left open to one project."""
@@ -129,13 +130,38 @@ def compare(
 
 def _aspects(before: Row, after: Row) -> tuple[tuple[str, str, str], ...]:
     """What differs in the text, and in what the text amounts to (who can steer it; whether branches overlap)."""
-    found = list(changes(before.place, after.place))
+    found: list[tuple[str, str, str]] = []
+    earlier = {option.name: option for option in before.options}
+    later = {f"option {option.name}": option for option in after.options}
+    for name, old_text, new_text in changes(before.place, after.place):
+        option = later.get(name)
+        if option is not None and option.name in earlier:
+            found += _attributes(name, earlier[option.name], option)
+        else:
+            found.append((name, old_text, new_text))
     if before.kind != after.kind:
         found.insert(0, ("kind", before.kind, after.kind))
     old, new = _steered(before), _steered(after)
     if old != new:
         found.append(("steered through", old, new))
     return tuple(found)
+
+
+def _attributes(name: str, before: RowOption, after: RowOption) -> list[tuple[str, str, str]]:
+    """What differs in an option, one thing at a time, so that a figure is not lost in a long formula."""
+    pairs = [
+        (f"{name}, open when", before.when, after.when),
+        (f"{name}, error", _stated(before.error), _stated(after.error)),
+        (f"{name}, bias", _stated(before.bias), _stated(after.bias)),
+        (f"{name}, cost", before.cost, after.cost),
+        (f"{name}, reference", *("yes" if option.reference else "no" for option in (before, after))),
+        (name, *(option.body if option.nested else f"= {option.body}" for option in (before, after))),
+    ]
+    return [pair for pair in pairs if pair[1] != pair[2]]
+
+
+def _stated(share: Fraction | None) -> str:
+    return "" if share is None else exact_percent(share)
 
 
 def _steered(row: Row) -> str:
@@ -237,6 +263,7 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
         freed = [option.name for option in after.options if conditions.get(option.name) and not option.when]
         if freed:
             found.append(f"options without their condition: {', '.join(freed)}")
+        found += _more_to_pick_from(before, after)
         if _TIGHTNESS[after.fixed] > _TIGHTNESS[before.fixed]:
             found.append("was fixed at validation, is open each period")
     sources = {mover.source for mover in before.movers}
@@ -246,6 +273,47 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
     if before.kind == after.kind == "setting" and _wider(before.id, old, new):
         found.append("the values that may be set are more")
     return found
+
+
+def _more_to_pick_from(before: Row, after: Row) -> list[str]:
+    """Whether the estimates that one may pick from lie further apart. An error that grew, or is stated no longer;
+    biases that lie further apart, where one that all options share leaves nothing to pick; errors that go together
+    less. A cost moves no number, only what is tried first."""
+    found: list[str] = []
+    earlier = {option.name: option for option in before.options}
+    for option in after.options:
+        was = earlier[option.name].error if option.name in earlier else None
+        if was is None:
+            continue
+        if option.error is None:
+            found.append(f"the error of {option.name} ({exact_percent(was)}) is stated no longer")
+        elif option.error > was:
+            found.append(
+                f"the error of {option.name} grew from {exact_percent(was)} to {exact_percent(option.error)}, so that "
+                "its estimates lie further apart"
+            )
+    old, new = _apart(before), _apart(after)
+    if new > old:
+        found.append(f"the biases of the options lie further apart: {exact_percent(new)}, not {exact_percent(old)}")
+    together = [_correlated(row) for row in (before, after)]
+    if together[1] < together[0]:
+        found.append(
+            f"the errors of the options go together less: correlated {exact_percent(together[1])}, not "
+            f"{exact_percent(together[0])}"
+        )
+    return found
+
+
+def _apart(row: Row) -> Fraction:
+    """How far the biases lie apart; one that is not stated is 0."""
+    biases = [option.bias or Fraction(0) for option in row.options]
+    return max(biases, default=Fraction(0)) - min(biases, default=Fraction(0))
+
+
+def _correlated(row: Row) -> Fraction:
+    """How far the errors of the options go together; 0 where that is not said."""
+    body = row.place.points[0].body
+    return (body.correlated or Fraction(0)) if isinstance(body, m.Choice) else Fraction(0)
 
 
 def _wider(name: str, old: m.Model, new: m.Model) -> bool:
