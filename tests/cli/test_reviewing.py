@@ -47,6 +47,15 @@ def git(*words: str) -> None:
 # --- register ------------------------------------------------------------------------------
 
 
+def test_when_it_is_fixed_is_said_only_of_choices(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """A setting cannot say it, so that "not stated" would blame its author for nothing."""
+    silent = MARSH.replace("choice by developer, open each period", "choice by developer")
+    (folder / "tide.rulebook").write_text(silent, encoding="utf-8")
+    out = said(capsys, "register", "tide.rulebook", "--projects", "0", "--as", "csv")[1]
+    fixed = {row["Branch point"]: row["Fixed"] for row in csv.DictReader(out.splitlines())}
+    assert fixed == {"discount": "", "soil_carbon": "not stated", "methane": "", "methane/2": ""}
+
+
 def test_every_form_tells_of_the_same_rows(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     quick = ("register", "tide.rulebook", "--projects", "0")
     status, out, _ = said(capsys, *quick, "--as", "json")

@@ -28,7 +28,7 @@ def register_markdown(register: Register) -> str:
 def _cell(column: Column, row: Row) -> str:
     if column.title == "Branch point":
         return code(row.id)
-    if column.title == "Fixed" and row.kind in ("setting", "judgement"):
+    if column.title == "Fixed" and row.leaves_something and not row.fixed:
         return "–"  # the language lets only a choice say when it is fixed
     value = column.of(row)
     return _with_code(value) if column.title == "Suggested closure" and isinstance(value, str) else _written(value)

@@ -154,10 +154,14 @@ def _attributes(name: str, before: RowOption, after: RowOption) -> list[tuple[st
         (f"{name}, error", _stated(before.error), _stated(after.error)),
         (f"{name}, bias", _stated(before.bias), _stated(after.bias)),
         (f"{name}, cost", before.cost, after.cost),
-        (f"{name}, reference", *("yes" if option.reference else "no" for option in (before, after))),
-        (name, *(option.body if option.nested else f"= {option.body}" for option in (before, after))),
+        (f"{name}, reference", "yes" if before.reference else "no", "yes" if after.reference else "no"),
+        (name, _body(before), _body(after)),
     ]
     return [pair for pair in pairs if pair[1] != pair[2]]
+
+
+def _body(option: RowOption) -> str:
+    return option.body if option.nested else f"= {option.body}"
 
 
 def _stated(share: Fraction | None) -> str:

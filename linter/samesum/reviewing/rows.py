@@ -57,8 +57,9 @@ NOT_MEASURED = Measures()
 
 @dataclass(frozen=True, slots=True)
 class Row:
-    """``decides``: who, "" for nobody; ``movers`` who can steer its conditions. ``without``: routes of one project
-    when the place is closed. ``parent`` and ``leader`` are ids of other places, "" for none."""
+    """``decides``: who, "" for nobody; ``movers`` who can steer its conditions. ``fixed``: when, "" where the language
+    lets nobody say it (only a choice can). ``without``: routes of one project when the place is closed. ``parent`` and
+    ``leader`` are ids of other places, "" for none."""
 
     place: Place
     kind: Kind
@@ -206,8 +207,6 @@ def _branch_point(
     if kind == "choice":
         timings: dict[str, Timing] = {"validation": "at validation", "period": "each period", "": "not stated"}
         fixed = timings[point.timing]
-    if kind == "overlap":
-        fixed = "not stated"
     options = tuple(_option(branch, source) for branch in walk.branches(point.body))
     row = Row(
         place=place,
@@ -268,7 +267,7 @@ def _input(place: Place, model: m.Model, moves: tuple[str, ...], routes: Bracket
         kind="setting" if setting is not None else "judgement",
         quantity="",
         decides=by,
-        fixed="not stated",
+        fixed="",
         elements=1,
         options=options,
         movers=(),
