@@ -75,6 +75,28 @@ def test_every_form_tells_of_the_same_rows(folder: Path, capsys: pytest.CaptureF
     assert (folder / "out.xlsx").read_bytes()[:2] == b"PK"
 
 
+def test_two_forms_at_once_are_refused(capsys: pytest.CaptureFixture[str]) -> None:
+    for words in (("check", "tide.rulebook", "--as", "sarif"), ("register", "tide.rulebook", "--as", "csv")):
+        status, out, err = said(capsys, *words, "--json")
+        assert (status, out) == (2, "")
+        assert err == f"samesum: --as {words[-1]} and --json ask for two forms at once; leave one of them out\n"
+    assert json.loads(said(capsys, "check", "tide.rulebook", "--as", "json", "--json")[1])["findings"]
+
+
+def test_an_ending_without_a_form_is_refused(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    status, out, err = said(capsys, "register", "tide.rulebook", "-o", "foo.pdf")
+    assert (status, out) == (2, "") and err == (
+        "samesum: foo.pdf: no form of the register ends in .pdf; known are .csv, .xlsx, .md, .json, .html, .htm and "
+        ".txt, or say --as FORM\n"
+    )
+    assert said(capsys, "report", "tide.rulebook", "-o", "foo.pdf") == (
+        2, "", "samesum: foo.pdf: the report is a page; write -o foo.html\n"
+    )  # fmt: skip
+    assert not (folder / "foo.pdf").exists()
+    assert said(capsys, "register", "tide.rulebook", "-o", "foo.TXT", "--projects", "0")[0] == 0
+    assert "soil_carbon" in (folder / "foo.TXT").read_text(encoding="utf-8")
+
+
 def test_a_row_says_all_that_is_known(capsys: pytest.CaptureFixture[str]) -> None:
     answer = json.loads(said(capsys, "register", "tide.rulebook", "--json", "--projects", "2000")[1])
     row = next(each for each in answer["rows"] if each["id"] == "soil_carbon")

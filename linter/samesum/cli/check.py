@@ -19,8 +19,8 @@ FORMS = ("text", "json", "sarif", "junit")
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("files", metavar="FILE", nargs="+", type=Path, help=".rulebook files")
-    parser.add_argument("--as", dest="form", choices=FORMS, default="text", help="the form of the answer (text)")
-    parser.add_argument("--json", action="store_const", const="json", dest="form", help="the same as --as json")
+    parser.add_argument("--as", dest="form", choices=FORMS, help="the form of the answer (text)")
+    shared.add_as_json(parser)
     parser.add_argument("--sarif", metavar="OUT", type=Path, help="also write SARIF 2.1.0, for code-scanning services")
     parser.add_argument("--junit", metavar="OUT", type=Path, help="also write JUnit XML, for dashboards")
     shared.add_seconds(parser)
@@ -52,6 +52,9 @@ def _jobs(text: str) -> int:
 def run(arguments: argparse.Namespace) -> int:
     from samesum.cli.checking import Task, check_all
 
+    asked = shared.chosen_form(arguments.form, arguments.json)
+    if asked is None:
+        return shared.UNUSABLE
     paths = list(dict.fromkeys(arguments.files))
     task = Task(arguments.seconds, tuple(arguments.rules), arguments.fail_on, arguments.inputs)
     outcomes: list[Outcome] | None
@@ -71,7 +74,7 @@ def run(arguments: argparse.Namespace) -> int:
     for form, output in (("sarif", arguments.sarif), ("junit", arguments.junit)):
         if output is not None:
             status = max(status, shared.deliver(_written(outcomes, form, arguments), output))
-    shared.write(_written(outcomes, arguments.form, arguments))
+    shared.write(_written(outcomes, asked or "text", arguments))
     return status
 
 

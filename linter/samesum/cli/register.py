@@ -14,13 +14,16 @@ if TYPE_CHECKING:
     from samesum.reviewing.rows import Register
 
 FORMS = ("table", "csv", "xlsx", "markdown", "json", "html")
-_BY_SUFFIX = {".csv": "csv", ".xlsx": "xlsx", ".md": "markdown", ".json": "json", ".html": "html", ".htm": "html"}
+_BY_SUFFIX = {
+    ".csv": "csv", ".xlsx": "xlsx", ".md": "markdown", ".json": "json", ".html": "html", ".htm": "html",
+    ".txt": "table",
+}  # fmt: skip
 
 
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("file", metavar="FILE", type=Path, help="a .rulebook file")
     parser.add_argument("--as", dest="form", choices=FORMS, help="the form of the list (table, or what -o ends in)")
-    parser.add_argument("--json", action="store_const", const="json", dest="form", help="the same as --as json")
+    shared.add_as_json(parser)
     parser.add_argument("-o", "--output", type=Path, metavar="OUT", help="write to this file instead")
     parser.add_argument("--all", action="store_true", help="in the table, show also what facts alone decide")
     shared.add_inputs(parser)
@@ -45,13 +48,30 @@ def run(arguments: argparse.Namespace) -> int:
         from samesum.cli.decide import decide
 
         return decide(arguments)
-    form = arguments.form or _BY_SUFFIX.get(arguments.output.suffix.lower() if arguments.output else "", "table")
+    form = _form(arguments)
+    if form is None:
+        return shared.UNUSABLE
     if form == "xlsx" and arguments.output is None and (sys.stdout is None or sys.stdout.isatty()):
         return shared.refuse("a workbook is no text for a terminal; name a file with -o OUT.xlsx")
     found = gathered.gather_register(arguments.file, gathered.wanted(arguments))
     if found is None:
         return shared.UNUSABLE
     return shared.deliver(written(found.register, found.examined, form, arguments), arguments.output)
+
+
+def _form(arguments: argparse.Namespace) -> str | None:
+    """The form that is asked for, by name or by what -o ends in; None, with the reason said, when there is none."""
+    form = shared.chosen_form(arguments.form, arguments.json)
+    if form != "":
+        return form
+    ending = arguments.output.suffix.lower() if arguments.output is not None else ""
+    if ending in _BY_SUFFIX or not ending:
+        return _BY_SUFFIX.get(ending, "table")
+    from samesum.reading.words import listing
+
+    known = listing(list(dict.fromkeys(_BY_SUFFIX)), "and")
+    shared.refuse(f"{arguments.output}: no form of the register ends in {ending}; known are {known}, or say --as FORM")
+    return None
 
 
 def written(register: Register, examined: Examined, form: str, arguments: argparse.Namespace) -> str | bytes:

@@ -29,6 +29,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
 
 
 def run(arguments: argparse.Namespace) -> int:
+    output = arguments.output
+    if output is not None and output.suffix.lower() not in ("", ".html", ".htm"):
+        return shared.refuse(f"{output}: the report is a page; write -o {output.with_suffix('.html').name}")
     found = gathered.gather_register(arguments.file, gathered.wanted(arguments))
     if found is None:
         return shared.UNUSABLE

@@ -28,6 +28,19 @@ def add_json(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("--json", action="store_true", help="write one JSON object instead of text for people")
 
 
+def add_as_json(parser: argparse.ArgumentParser) -> None:
+    """``--json`` where there is ``--as`` too."""
+    parser.add_argument("--json", action="store_true", help="the same as --as json")
+
+
+def chosen_form(form: str | None, json: bool) -> str | None:
+    """What ``--as`` or ``--json`` ask for, "" when neither does; None, which is said, when they ask for two things."""
+    if json and form not in (None, "json"):
+        refuse(f"--as {form} and --json ask for two forms at once; leave one of them out")
+        return None
+    return "json" if json else form or ""
+
+
 def _seconds(text: str) -> float:
     try:
         value = float(text)
