@@ -1,8 +1,8 @@
 """What expressions and conditions amount to, as diagrams over branch points, named values and signs.
 
-Takes the decision graph, gives for each expression a diagram with exact sums at its ends (one
-for each way that choices and named values lead to), and for each condition a diagram of True and
-False over states of branch points, values of facts, and the signs of sums.
+Takes the decision graph, gives for each expression a diagram with exact sums at its ends (one for each way that
+choices and named values lead to), and for each condition a diagram of True and False over states of branch points,
+values of facts, and the signs of sums. Where there is a value at all is for ``soundness``.
 """
 
 from __future__ import annotations
@@ -11,7 +11,6 @@ from collections.abc import Callable, Iterator
 from dataclasses import dataclass, field
 from fractions import Fraction
 from functools import partial
-from itertools import pairwise
 from typing import Any
 
 from samesum.evidence.routes import ranges, symbols
@@ -62,16 +61,15 @@ class Readings:
     values: dict[str, tuple[str, ...]] = field(default_factory=dict)
     settings: set[str] = field(default_factory=set)
     unsure: dict[int, m.Condition | m.Expression] = field(default_factory=dict)
-    _declared: dict[str, Any] = field(default_factory=dict)
+    declared: dict[str, Any] = field(default_factory=dict)
     _expressions: dict[Any, int] = field(default_factory=dict)
-    _hulls: Hulls = field(init=False)
+    hulls: Hulls = field(init=False)
     _results: dict[str, int] = field(default_factory=dict)
-    _sound: dict[str, int] = field(default_factory=dict)
     _next: int = SPACE
     _beside: dict[int, int] = field(default_factory=dict)
 
     def __post_init__(self) -> None:
-        self._hulls = Hulls(self.graph, self.domains, self._declared)
+        self.hulls = Hulls(self.graph, self.domains, self.declared)
         model = self.graph.model
         both: tuple[m.Fact | m.Setting, ...] = (*model.facts, *model.settings)
         for declared in both:
@@ -86,7 +84,7 @@ class Readings:
                     self.values[id] = declared.domain.values if isinstance(declared.domain, m.OneOf) else ("no", "yes")
         shared: tuple[m.Constant | m.Table, ...] = (*model.constants, *model.tables)
         for each in shared:
-            self._declared[each.name] = each
+            self.declared[each.name] = each
         for id in reading_order(self.graph):
             self.level(id)
 
@@ -214,7 +212,7 @@ class Readings:
                 difference = self._minus(self.expression(left, elements), self.expression(right, elements))
                 hull = Bounds(None, None)
                 if OPAQUE in d.ends(difference):
-                    a, b = self._hulls.of(left, elements), self._hulls.of(right, elements)
+                    a, b = self.hulls.of(left, elements), self.hulls.of(right, elements)
                     hull = Bounds(
                         None if a.low is None or b.high is None else a.low - b.high,
                         None if a.high is None or b.low is None else a.high - b.low,
@@ -238,81 +236,19 @@ class Readings:
             case m.Unknown():
                 return self._unsure(node)
 
-    def sound(self, node: m.Expression | m.Condition, elements: Element, own: bool = False) -> int:
-        """Where everything asked has a value: quantities are not stuck, tables have a row, nothing is
-        divided by zero. ``own`` leaves the quantities' own insides out."""
-        d = self.diagrams
-        match node:
-            case m.Takes() if own:
-                return d.end(True)
-            case m.Takes(quantity=name, index=index):
-                target = instance_id(name, index, elements)
-                stuck = len(self.graph.branch_points[target].branches) + 1
-                return d.negate(self.state(target, (stuck,)))
-            case m.Reference(kind="quantity", name=name, index=index):
-                return d.end(True) if own else self.sound_quantity(instance_id(name, index, elements))
-            case m.Reduction(body=body, index=index):
-                return d.every(
-                    self.sound(body, {**elements, index: element}, own)
-                    for element in range(1, self.graph.sizes.get(index, 0) + 1)
-                )
-            case _:
-                result = d.every(self.sound(part, elements, own) for part in walk.parts(node))
-                if isinstance(node, m.Lookup) and not self._covered(node, elements):
-                    result = d.both(result, d.some(match for match, _ in self._rows(node, elements)))
-                return d.both(result, self._defined(node, elements))
-
-    def _defined(self, node: m.Expression | m.Condition, elements: Element) -> int:
-        """Where the operation itself has a value."""
-        match node:
-            case m.Arithmetic(operator="/", right=operand):
-                return self._asked(operand, "<>", elements)
-            case m.Arithmetic(operator="^"):
-                return self._has_power(node, elements)
-            case m.Function(name="ln", arguments=(operand,)):
-                return self._asked(operand, ">", elements)
-            case m.Function(name="sqrt", arguments=(operand,)):
-                return self._asked(operand, ">=", elements)
-            case _:
-                return self.diagrams.end(True)
-
-    def _has_power(self, node: m.Arithmetic, elements: Element) -> int:
-        """A power has a value where the base is above 0, where it is 0 and the exponent is not below 0, and where
-        it is below 0 and the exponent is whole."""
-        d = self.diagrams
-        base, exponent = node.left, node.right
-        hull = self._hulls.of(exponent, elements)
-        if hull.low is not None and hull.low == hull.high:
-            whole = hull.low.denominator == 1
-            if whole and hull.low >= 0:
-                return d.end(True)
-            return self._asked(base, "<>" if whole else ">=" if hull.low >= 0 else ">", elements)
-        above = self._asked(base, ">", elements)
-        if d.is_end(above, True):
-            return above
-        zero = d.both(self._asked(base, "=", elements), self._asked(exponent, ">=", elements))
-        value = self.expression(exponent, elements)
+    def whole(self, operand: m.Expression, elements: Element) -> int:
+        """Where an expression amounts to a whole number."""
+        value = self.expression(operand, elements)
         broken = self._minus(value, self._called("round", [value]))
-        whole_exponent = self.compared(broken, "=", exponent, Bounds(Fraction(-1, 2), Fraction(1, 2)))
-        below = d.both(self._asked(base, "<", elements), whole_exponent)
-        return d.some((above, zero, below))
+        return self.compared(broken, "=", operand, Bounds(Fraction(-1, 2), Fraction(1, 2)))
 
-    def _asked(self, operand: m.Expression, operator: str, elements: Element) -> int:
+    def against_zero(self, operand: m.Expression, operator: str, elements: Element) -> int:
         """Where ``operand OPERATOR 0``."""
-        hull = self._hulls.of(operand, elements)
+        hull = self.hulls.of(operand, elements)
         decided = self._by_bounds(hull, operator)
         if decided is not None:
             return decided
         return self.compared(self.expression(operand, elements), operator, operand, hull)
-
-    def sound_quantity(self, id: str) -> int:
-        """Where an instance has a value when it is evaluated."""
-        found = self._sound.get(id)
-        if found is None:
-            instance = self.graph.instances[id]
-            found = self._through(id, instance.quantity.body, (), lambda e: self.sound(e, instance.elements), False)
-            self._sound[id] = found
-        return found
 
     # -- values -------------------------------------------------------------------------
 
@@ -322,23 +258,22 @@ class Readings:
         if found is None:
             instance = self.graph.instances[id]
             found = self._bounded(
-                lambda: self._through(
+                lambda: self.through(
                     id, instance.quantity.body, (), lambda e: self.expression(e, instance.elements), None
                 )
             )
             self._results[id] = found
         return found
 
-    def _through(
+    def through(
         self, id: str, body: m.Body, path: tuple[str, ...], leaf: Callable[[m.Expression], int], otherwise: bool | None
     ) -> int:
+        """What ``leaf`` makes of each formula, where its branch is taken; ``otherwise`` elsewhere (None: anything)."""
         if isinstance(body, m.Unknown):
             return self.diagrams.end(OPAQUE) if otherwise is None else self.diagrams.end(True)
         if isinstance(body, m.Formula):
             return leaf(body.expression)
-        below = [
-            self._through(id, branch.body, (*path, branch.name), leaf, otherwise) for branch in walk.branches(body)
-        ]
+        below = [self.through(id, branch.body, (*path, branch.name), leaf, otherwise) for branch in walk.branches(body)]
         result = below[0] if otherwise is None else self.diagrams.end(otherwise)
         level = self.level("point:" + "/".join((id, *path)))
         for number, part in enumerate(below):
@@ -375,7 +310,7 @@ class Readings:
             case m.Number(value=value):
                 return d.end(symbols.number(value))
             case m.Reference(kind="constant", name=name):
-                return self.expression(self._declared[name].expression, {})
+                return self.expression(self.declared[name].expression, {})
             case m.Reference(kind="quantity", name=name, index=index):
                 return self.quantity(instance_id(name, index, elements))
             case m.Reference(name=name, index=index):
@@ -385,7 +320,7 @@ class Readings:
                 return d.end(symbols.number(elements[index]))
             case m.Lookup():
                 result = d.end(OPAQUE)
-                for matches, number in reversed(list(self._rows(node, elements))):
+                for matches, number in reversed(list(self.rows(node, elements))):
                     result = number if result == d.end(OPAQUE) else d.choose(matches, number, result)
                 return result
             case m.Arithmetic(operator=operator, left=left, right=right):
@@ -430,10 +365,10 @@ class Readings:
     def _minus(self, a: int, b: int) -> int:
         return self._bounded(lambda: self.diagrams.apply("number -", lambda x, y: arithmetic("-", x, y), a, b))
 
-    def _rows(self, node: m.Lookup, elements: Element) -> Iterator[tuple[int, int]]:
+    def rows(self, node: m.Lookup, elements: Element) -> Iterator[tuple[int, int]]:
         """Each row of a table: where its labels match the arguments, and its value."""
         d = self.diagrams
-        table: m.Table = self._declared[node.table]
+        table: m.Table = self.declared[node.table]
         for row in table.rows:
             match = d.end(True)
             for label, key, argument in zip(row.labels, table.keys, node.arguments, strict=True):
@@ -449,25 +384,10 @@ class Readings:
                     match = d.both(match, self._unsure(node))
             yield match, d.end(symbols.number(row.value))
 
-    def _covered(self, node: m.Lookup, elements: Element) -> bool:
-        """Whether a table of one key of bands plainly has a row for every number the argument can be."""
-        table: m.Table = self._declared[node.table]
-        if len(table.keys) != 1 or not table.keys[0].bands:
-            return False
-        hull = self._hulls.of(node.arguments[0], elements)
-        bands = [label for row in table.rows for label in row.labels if isinstance(label, m.Band)]
-        bands.sort(key=lambda band: (band.low is not None, band.low or 0))
-        first, last = bands[0], bands[-1]
-        if first.low is not None and (hull.low is None or hull.low <= first.low):
-            return False
-        if last.high is not None and (hull.high is None or hull.high > last.high):
-            return False
-        return all(a.high is not None and a.high == b.low for a, b in pairwise(bands))
-
     def _in_band(self, band: m.Band, argument: m.Expression, elements: Element) -> int:
         d = self.diagrams
         value = self.expression(argument, elements)
-        hull = self._hulls.of(argument, elements) if OPAQUE in d.ends(value) else Bounds(None, None)
+        hull = self.hulls.of(argument, elements) if OPAQUE in d.ends(value) else Bounds(None, None)
         result = d.end(True)
         for bound, operator in ((band.low, ">"), (band.high, "<=")):
             if bound is not None:

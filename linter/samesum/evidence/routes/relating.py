@@ -17,6 +17,7 @@ from samesum.evidence.routes.eliminating import taken_apart
 from samesum.evidence.routes.network import Network, PointRelation
 from samesum.evidence.routes.ranges import Bounds, bounds
 from samesum.evidence.routes.readings import Readings
+from samesum.evidence.routes.soundness import Soundness
 from samesum.evidence.routes.symbols import constant_term, generators, without_constant
 from samesum.graph import BranchPoint, DecisionGraph, Leaf, Mention, asked, mentions, worked_on
 from samesum.reading import model as m
@@ -34,22 +35,23 @@ def build_network(
     d = Diagrams(limits)
     readings = Readings(graph, d)
     readings.domains.update(domains or {})
+    soundness = Soundness(readings)
     wanted = _reachable_instances(graph, on_paper)
     inside = set(wanted)
     points = [point for point in graph.branch_points.values() if point.instance in inside]
-    asking = {point.id: _read_point(point, readings, on_paper) for point in points}
+    asking = {point.id: _read_point(point, soundness, on_paper) for point in points}
     sound_leaves: list[tuple[Leaf, int, int]] = []
     applying: list[int] = []
     if not on_paper:
         for id in wanted:
             elements = graph.instances[id].elements
             for leaf in graph.leaves[id]:
-                sound = readings.sound(leaf.expression, elements, own=True)
+                sound = soundness.of(leaf.expression, elements, own=True)
                 if not d.is_end(sound, True):
                     worked = worked_on(leaf.expression, elements, graph.sizes)
-                    sound_leaves.append((leaf, sound, _parts_sound(worked, readings)))
+                    sound_leaves.append((leaf, sound, _parts_sound(worked, soundness)))
         for each in graph.model.applies:
-            applying += [readings.condition(each.condition, {}), readings.sound(each.condition, {})]
+            applying += [readings.condition(each.condition, {}), soundness.of(each.condition, {})]
     read = [part for each in asking.values() for part in each.parts()]
     cells = _cut_into_cells(readings, [*read, *(part for _, *parts in sound_leaves for part in parts), *applying])
     ways = _Ways(graph, readings, _find_users(graph, inside, on_paper))
@@ -116,7 +118,8 @@ class _Asked:
         )
 
 
-def _read_point(point: BranchPoint, readings: Readings, on_paper: bool) -> _Asked:
+def _read_point(point: BranchPoint, soundness: Soundness, on_paper: bool) -> _Asked:
+    readings = soundness.readings
     d = readings.diagrams
     elements = readings.graph.instances[point.instance].elements
     sound = own_sound = d.end(True)
@@ -126,26 +129,23 @@ def _read_point(point: BranchPoint, readings: Readings, on_paper: bool) -> _Aske
         if condition is None or on_paper:
             holds.append(d.end(True))
             continue
-        sound = d.both(sound, readings.sound(condition, elements))
-        own_sound = d.both(own_sound, readings.sound(condition, elements, own=True))
+        sound = d.both(sound, soundness.of(condition, elements))
+        own_sound = d.both(own_sound, soundness.of(condition, elements, own=True))
         tables.update((node.table, None) for node in walk.inside(condition) if isinstance(node, m.Lookup))
         holds.append(readings.condition(condition, elements))
     conditions = [each for each in point.conditions if each is not None and not on_paper]
     asks = (mention for each in conditions for mention in mentions(each, elements, readings.graph.sizes))
-    return _Asked(tuple(holds), sound, own_sound, _parts_sound(asks, readings), tuple(tables))
+    return _Asked(tuple(holds), sound, own_sound, _parts_sound(asks, soundness), tuple(tables))
 
 
-def _parts_sound(asked: Iterable[Mention], readings: Readings) -> int:
+def _parts_sound(asked: Iterable[Mention], soundness: Soundness) -> int:
     """Where all quantities and choices that are asked have a value."""
-    d = readings.diagrams
-    result = d.end(True)
-    for kind, id in asked:
-        if kind == "value":
-            result = d.both(result, readings.sound_quantity(id))
-        elif kind == "takes":
-            stuck = len(readings.graph.branch_points[id].branches) + 1
-            result = d.both(result, d.negate(readings.state(id, (stuck,))))
-    return result
+    d = soundness.readings.diagrams
+    return d.every(
+        soundness.quantity(id) if kind == "value" else soundness.not_stuck(id)
+        for kind, id in asked
+        if kind in ("value", "takes")
+    )
 
 
 # --- cells -------------------------------------------------------------------------------
