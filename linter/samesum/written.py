@@ -44,14 +44,15 @@ def decimal(value: Fraction) -> Decimal:
 
 
 def plain(value: Fraction) -> str:
-    """A measured or calculated number for people: to six significant digits, whole where it is whole."""
+    """A measured or calculated number for people: to six significant digits, whole where it is whole, with commas
+    from 1,000 on."""
     if value.denominator == 1 and abs(value) < LONGEST_WHOLE:
-        return str(value.numerator)
+        return f"{value.numerator:,}"
     found = decimal(value)
     size = found.adjusted()
     if -5 <= size < 15:
         places = max(0, 5 - size)
-        text = f"{found:.{places}f}"
+        text = f"{found:,.{places}f}"
         return text.rstrip("0").rstrip(".") if "." in text else text
     text = f"{found:.5e}"
     mantissa, _, exponent = text.partition("e")

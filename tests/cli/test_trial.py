@@ -64,7 +64,7 @@ def test_a_worked_example_that_fails_is_worked_out(tmp_path: Path, capsys: pytes
     assert main(["trial", MARSH, "--inputs", str(path)]) == 1
     page = capsys.readouterr().out
     assert "The worked example does not come out: Heron Flats." in page[page.index("Verdict:") :]
-    assert "the worked example says 59000, the rulebook gives 65228" in page
+    assert "the worked example says 59,000, the rulebook gives 65,228" in page
     assert "= 105.5 [t C/ha] * 120 [ha] + 98 [t C/ha] * 80 [ha]" in page
 
 

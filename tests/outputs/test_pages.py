@@ -4,13 +4,18 @@ from __future__ import annotations
 
 import io
 from fractions import Fraction
+from types import SimpleNamespace
+from typing import cast
 
 import pytest
 
 from samesum.evidence.routes.witness import Witness
+from samesum.evidence.trial.outcome import TrialEvidence
+from samesum.outputs import amounts, register_cells
 from samesum.outputs.json_text import as_json
 from samesum.outputs.page import Page, Paper, clean, paper_for, wrapped
-from samesum.outputs.projects import Words, as_values, project
+from samesum.outputs.projects import Words, as_values, given, project
+from samesum.outputs.report.measured import worst_case
 from samesum.written import number, percent, plain, whole
 
 
@@ -43,14 +48,32 @@ def test_a_count_longer_than_python_writes_by_itself() -> None:
         ("0.47", "0.47"),
         ("1/3000000", "3.33333e-7"),
         ("-0.00012", "-0.00012"),
-        ("123456.789", "123457"),
-        ("2500000", "2500000"),
+        ("123456.789", "123,457"),
+        ("1000", "1,000"),
+        ("-9999.5", "-9,999.5"),
+        ("2500000", "2,500,000"),
         ("1e18", "1e18"),
         ("12345678901234567890.5", "1.23457e19"),
     ],
 )
 def test_measured_numbers_for_people(value: str, text: str) -> None:
     assert plain(Fraction(value)) == text
+
+
+@pytest.mark.parametrize(
+    ("value", "text"), [(10.0, "10 times"), (12.34567, "12.3 times"), (21_987_654.0, "22,000,000 times")]
+)
+def test_a_share_is_written_alike_in_trial_register_and_report(value: float, text: str) -> None:
+    assert amounts.share(value) == register_cells.share(value) == text
+    proof = SimpleNamespace(low=value, high=None)
+    assert f"at least {text} of the reference" in worst_case(cast(TrialEvidence, SimpleNamespace(proof=proof)))
+
+
+def test_a_witness_has_separators_for_people_and_none_in_json() -> None:
+    words = Words({"heat": "GJ"}, frozenset(), {"stock": "plot"})
+    assert given("heat", Fraction(90_000), words) == "heat 90,000 GJ"
+    assert given("stock", (Fraction(1234), Fraction(5)), words) == "stock 1,234 / 5 by plot"
+    assert as_values(Witness((("heat", Fraction(90_000)),), (), (), ())) == {"heat": 90_000}
 
 
 @pytest.mark.parametrize(

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
 
 import pytest
@@ -123,3 +124,15 @@ def test_no_two_places_of_the_samples_share_a_fingerprint_by_accident() -> None:
     found = marks((SAMPLES / "coastal_wetland.rulebook").read_text(encoding="utf-8"))
     branch_points = [mark for id, mark in found.items()]
     assert len(set(branch_points)) == len(branch_points)
+
+
+def test_the_commas_that_are_for_people_are_no_part_of_what_was_decided() -> None:
+    wide = TEXT.replace("setting margin, 5 % to 20 %", "setting margin [t], 1_000 to 25_000")
+    text = wide.replace("(1 - margin)", "2")
+    found = read(text, "a.rulebook", reader=reader())
+    assert found.model is not None and not found.problems
+    place = places_of(build(found.model), Text.of(found.text))["margin"]
+    assert place.aspects["values"] == "1,000 to 25,000 t"
+    bare = replace(place, aspects={**place.aspects, "values": "1000 to 25000 t"})
+    other = replace(place, aspects={**place.aspects, "values": "1000 to 25001 t"})
+    assert place.fingerprint == bare.fingerprint != other.fingerprint

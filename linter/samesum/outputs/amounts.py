@@ -13,7 +13,7 @@ def amount(value: float, unit: str = "") -> str:
     if not math.isfinite(value):
         return "unbounded"
     if abs(value) >= 1000:
-        text = f"{value:,.0f}" if abs(value) < 1e15 else f"{value:.4g}"
+        text = f"{value:,.0f}" if abs(value) < 1e15 else plain(Fraction(f"{value:.4g}"))
     else:
         text = plain(Fraction(f"{value:.6g}"))
     return f"{text} {unit}".rstrip()

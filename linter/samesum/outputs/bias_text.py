@@ -9,6 +9,7 @@ from typing import Any
 from samesum.evidence.choosing.latitudes import Latitude
 from samesum.evidence.choosing.selection import HEADLINE, Closure, Estimate, Figure, Found, Selection
 from samesum.evidence.choosing.tally import BINS, WIDTH
+from samesum.outputs.amounts import amount
 from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.tables import table_lines
 from samesum.written import whole
@@ -86,7 +87,7 @@ def _tonnes(value: float) -> str:
 def _percent(value: float, places: int = 2) -> str:
     if not math.isfinite(value):
         return "–"
-    shown = f"{100 * value:.{places}f}"
+    shown = f"{100 * value:,.{places}f}"
     if not shown.strip("-0."):
         shown = shown.replace("-", "")
     return f"{shown} %"
@@ -100,7 +101,7 @@ def _more(value: float) -> str:
 def _error(value: float) -> str:
     if not math.isfinite(value):
         return "–"
-    return "exact" if value == 0 else f"± {100 * value:.2f}"
+    return "exact" if value == 0 else f"± {100 * value:,.2f}"
 
 
 def _of(figures: Sequence[Figure], behaviour: str) -> Figure | None:
@@ -112,9 +113,9 @@ def _drawn_from(selection: Selection) -> str:
     text = f"{selection.projects:,} projects, "
     if supply.cases:
         kept = supply.cases - supply.outside - supply.without_result
-        text += f"each of {kept} given ones in turn"
+        text += f"each of {whole(kept)} given ones in turn"
         left = [
-            f"{count} {what}"
+            f"{whole(count)} {what}"
             for count, what in (
                 (supply.outside, "outside the rulebook"),
                 (supply.without_result, "without a result on the reference route"),
@@ -126,7 +127,7 @@ def _drawn_from(selection: Selection) -> str:
         text += "drawn from the declared domains (those without a result on the reference route drawn again)"
     text += f"; seed {selection.terms.seed}"
     if selection.terms.price is not None:
-        text += f"; {selection.terms.price:g} a credit"
+        text += f"; {amount(selection.terms.price)} a credit"
     else:
         text += "; no price given, so that costs only say what is tried first"
     return text + ". A project counts by its tonnes; ± is one standard error."
@@ -147,8 +148,8 @@ def _behaviours(page: Page, figures: Sequence[Figure]) -> None:
 
 
 def _enrolment(page: Page, selection: Selection) -> None:
-    k = selection.terms.join
-    page.paragraph(f"When only projects join that would be credited more than {k:g} × their truth:")
+    k = selection.terms.join or 0.0
+    page.paragraph(f"When only projects join that would be credited more than {amount(k)} × their truth:")
     rows = []
     for each in selection.figures:
         if each.joined is not None:
@@ -230,8 +231,8 @@ def _ranking(page: Page, selection: Selection) -> None:
             continue
         rows.append(
             (
-                f"{each.per_thousand:+.1f}" if abs(each.per_thousand) >= 0.05 else "0.0",
-                f"{each.per_thousand_error:.1f}" if each.per_thousand_error else "exact",
+                f"{each.per_thousand:+,.1f}" if abs(each.per_thousand) >= 0.05 else "0.0",
+                f"{each.per_thousand_error:,.1f}" if each.per_thousand_error else "exact",
                 _beyond(each),
                 latitude.id,
                 latitude.clause,
@@ -255,13 +256,13 @@ def _beyond(found: Found) -> str:
     if picked is None:
         return "–"
     tonnes = 1000 * picked.difference
-    return f"{tonnes:+.1f}" if abs(tonnes) >= 0.05 else "0.0"
+    return f"{tonnes:+,.1f}" if abs(tonnes) >= 0.05 else "0.0"
 
 
 def _closures(page: Page, found: Found, routes: Routes) -> None:
     page.blank()
     latitude = found.latitude
-    page.line(f"{_name(latitude)}: {found.per_thousand:+.1f} t for 1,000", "strong")
+    page.line(f"{_name(latitude)}: {found.per_thousand:+,.1f} t for 1,000", "strong")
     rows = []
     for each in found.closures:
         row = [_closed_how(each, latitude), _with_error(each.left), _with_error(each.whole_left)]

@@ -18,6 +18,7 @@ from samesum.outputs.projects import Words, shown, words_for
 from samesum.outputs.verdict import Verdict, verdict
 from samesum.outputs.verdict import decided as decided_by
 from samesum.reviewing.record import Decision, Standing
+from samesum.written import whole
 
 _STYLE = {"error": "bad", "warning": "warn", "note": "link"}
 
@@ -225,9 +226,9 @@ def _summary(page: Page, checked: Checked) -> None:
     page.line("What it comes to", "strong")
     standing = [finding for finding in checked.judged.findings if finding.id not in checked.accepted]
     number = {each: sum(finding.severity == each for finding in standing) for each in SEVERITIES}
-    listed = [f"{count} {name}{'' if count == 1 else 's'}" for name, count in number.items() if count]
+    listed = [f"{whole(count)} {name}{'' if count == 1 else 's'}" for name, count in number.items() if count]
     if checked.accepted:
-        listed.append(f"{len(checked.accepted)} accepted by the review")
+        listed.append(f"{whole(len(checked.accepted))} accepted by the review")
     page.entry("findings", ", ".join(listed) if listed else "none", indent=2, column=16)
     page.entry("branch points", spoken_branch_points(checked.branch_points), indent=2, column=16)
     least, most = figure(counts, "per_project_least"), figure(counts, "per_project_most")
@@ -253,7 +254,7 @@ def _summary(page: Page, checked: Checked) -> None:
 
 def _some(places: list[str], most: int = 4) -> str:
     shown = ", ".join(places[:most])
-    return shown if len(places) <= most else f"{shown} and {len(places) - most} more"
+    return shown if len(places) <= most else f"{shown} and {whole(len(places) - most)} more"
 
 
 def spoken_branch_points(found: Mapping[str, int]) -> str:
@@ -266,5 +267,5 @@ def spoken_branch_points(found: Mapping[str, int]) -> str:
         "tied": "tied to another choice",
         "facts": "settled by facts",
     }
-    parts = [f"{found[key]} {says}" for key, says in words.items() if found[key]]
-    return f"{found['total']}: {', '.join(parts)}" if parts else "none"
+    parts = [f"{whole(found[key])} {says}" for key, says in words.items() if found[key]]
+    return f"{whole(found['total'])}: {', '.join(parts)}" if parts else "none"

@@ -11,6 +11,7 @@ from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.register_cells import bracket_text, decider, share
 from samesum.reviewing.compare import Change, Comparison, direction
 from samesum.reviewing.rows import Register, Row
+from samesum.written import whole
 
 
 def comparison_json(found: Comparison) -> dict[str, Any]:
@@ -132,7 +133,7 @@ def _rows(page: Page, title: str, sign: str, rows: Sequence[Row], style: str) ->
     if not rows:
         return
     page.blank()
-    page.line(f"{title} ({len(rows)})", "strong")
+    page.line(f"{title} ({whole(len(rows))})", "strong")
     for row in rows:
         page.paragraph(f"{sign} {_place(row)}", indent=2, hanging=2, style=style)
 

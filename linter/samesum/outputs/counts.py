@@ -97,8 +97,12 @@ def count_text(evidence: Evidence, paper: Paper) -> str:
     page.heading(title_of(model))
     for name, label, says in FIGURES:
         if name == "over_periods_most":
-            label = f"Over {counts.periods} period{'s' if counts.periods != 1 else ''}"
-            says = f"{says}: sequences of {counts.periods} routes" if counts.periods != 1 else f"{says}, in one period"
+            label = f"Over {whole(counts.periods)} period{'s' if counts.periods != 1 else ''}"
+            says = (
+                f"{says}: sequences of {whole(counts.periods)} routes"
+                if counts.periods != 1
+                else f"{says}, in one period"
+            )
         page.blank()
         page.line(f"{label}: {figure(counts, name)}", "strong")
         page.paragraph(says[0].upper() + says[1:] + ".", indent=4)

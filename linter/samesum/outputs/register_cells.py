@@ -9,6 +9,7 @@ from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 
 from samesum.evidence.routes.closing import Bracket
+from samesum.outputs import amounts
 from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row, RowOption
 from samesum.written import whole
@@ -114,10 +115,12 @@ def decision(row: Row) -> str:
 
 
 def share(value: float) -> str:
-    """A measured share for people: ``12.3 %``, ``0.4 %``, ``150 %``."""
+    """A measured share for people, short enough for a table: ``12.3 %``, ``0.4 %``, ``150 %``, ``12.5 times``."""
     hundred = value * 100
     if not hundred:
         return "0 %"
+    if abs(value) >= 10:
+        return amounts.share(value)
     digits = 0 if abs(hundred) >= 99.95 else 1 if abs(hundred) >= 1 else 2
     text = f"{hundred:.{digits}f}"
     return f"{text} %" if float(text) else f"{'-' if hundred < 0 else ''}< 0.01 %"

@@ -14,6 +14,7 @@ from samesum.outputs.page import CAUTION, Page, Paper, clean, width_of
 from samesum.outputs.register_cells import bracket_text, decider, decision, share, stale_lines
 from samesum.outputs.tables import table_lines
 from samesum.reviewing.rows import Register, Row
+from samesum.written import whole
 
 
 def register_text(register: Register, paper: Paper, everything: bool = False) -> str:
@@ -116,13 +117,13 @@ def _share(value: float | None) -> str:
 def _summary(page: Page, register: Register, hidden: int) -> None:
     leaving = sum(row.leaves_something for row in register.rows)
     accepted = sum(row.standing is not None and row.standing.accepted for row in register.rows)
-    said = f"{leaving} of {len(register.rows)} places leave something to somebody"
-    page.paragraph(said + (f"; {accepted} accepted by the review." if accepted else "."), style="strong")
+    said = f"{whole(leaving)} of {whole(len(register.rows))} places leave something to somebody"
+    page.paragraph(said + (f"; {whole(accepted)} accepted by the review." if accepted else "."), style="strong")
     page.paragraph(
         f"Routes open to one project, at most: {figure(register.evidence.counts, 'per_project_most')}. "
         "Without it: the most that are left when this one place is closed."
     )
     if hidden:
-        page.paragraph(f"{hidden} that facts alone decide are not shown; --all shows them.", style="quiet")
+        page.paragraph(f"{whole(hidden)} that facts alone decide are not shown; --all shows them.", style="quiet")
     for line in stale_lines(register):
         page.paragraph(clean(f"Stale: {line}."), style="warn", hanging=2)

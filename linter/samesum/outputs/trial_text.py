@@ -184,7 +184,7 @@ def _movers(page: Page, evidence: TrialEvidence) -> None:
     for blame in shown:
         page.line("    " + _row(blame, wide))
     if len(moving) > len(shown):
-        page.line(f"    … and {len(moving) - len(shown)} more", "quiet")
+        page.line(f"    … and {whole(len(moving) - len(shown))} more", "quiet")
     if evidence.closing:
         page.blank()
         page.line("Close them in this order", "strong")

@@ -11,6 +11,7 @@ from samesum.outputs.counts import FIGURES, figure
 from samesum.outputs.page import Page, Paper, clean
 from samesum.outputs.projects import project
 from samesum.problems import Problem
+from samesum.written import whole
 
 _STYLE = {"error": "bad", "warning": "warn", "note": "link"}
 
@@ -83,9 +84,9 @@ def _listed(names: Sequence[str]) -> str:
 def _standing(checked: Checked) -> str:
     standing = [finding for finding in checked.judged.findings if finding.id not in checked.accepted]
     number = {name: sum(each.severity == name for each in standing) for name in ("error", "warning", "note")}
-    parts = [f"{count} {name}{'' if count == 1 else 's'}" for name, count in number.items() if count]
+    parts = [f"{whole(count)} {name}{'' if count == 1 else 's'}" for name, count in number.items() if count]
     if checked.accepted:
-        parts.append(f"{len(checked.accepted)} accepted")
+        parts.append(f"{whole(len(checked.accepted))} accepted")
     most = figure(checked.counts, "per_project_most")
     return f"{', '.join(parts) or 'No findings'}; routes open to one project at most: {most}."
 

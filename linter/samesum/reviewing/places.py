@@ -23,6 +23,7 @@ from samesum.spans import Span
 
 _TOKEN = re.compile(r'"[^"\n]*"|#[^\n]*|\[[^\]\n]*\]|[^\W\d]\w*|\d[\d_]*(?:\.\d[\d_]*)?(?:[eE][-+]?\d+)?|<=|>=|<>|\S')
 _NO_CALLS = frozenset(("and", "or", "not", "is", "of", "to", "over"))
+_COMMA = re.compile(r"(?<=\d),(?=\d{3})")  # for people only; what was decided does not hang on it
 NOT_SAID_TWICE = ("clause",)
 """Aspects that a fingerprint leaves out: renumbering a clause changes nothing that was decided."""
 
@@ -81,7 +82,11 @@ class Place:
     @property
     def fingerprint(self) -> str:
         """Sixteen hexadecimal digits (SHA-256, cut) of all that is said here."""
-        said = "\n".join(f"{name}: {text}" for name, text in sorted(self.aspects.items()) if name not in NOT_SAID_TWICE)
+        said = "\n".join(
+            f"{name}: {_COMMA.sub('', text) if name == 'values' else text}"
+            for name, text in sorted(self.aspects.items())
+            if name not in NOT_SAID_TWICE
+        )
         return hashlib.sha256(said.encode()).hexdigest()[:16]
 
 

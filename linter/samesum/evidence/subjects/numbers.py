@@ -150,7 +150,8 @@ def jumps(evidence: Evidence, seconds: float) -> Iterator[Subject]:
 
 
 def _key(jump: Jump) -> str:
-    return f"{jump.table} {jump.asked} {plain(jump.at)}"
+    """A name for the jump, which a finding's ``id`` leans on: without the commas that are for people."""
+    return f"{jump.table} {jump.asked} {plain(jump.at).replace(',', '')}"
 
 
 def _signed(size: Fraction) -> str:

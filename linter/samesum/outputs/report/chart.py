@@ -14,6 +14,7 @@ from samesum.graph import links
 from samesum.outputs.page import width_of
 from samesum.outputs.report.layers import Box, Line, Placed, draw
 from samesum.reviewing.rows import Register, Row
+from samesum.written import whole
 
 WHOLE_UP_TO = 40
 """Branch points that one chart may hold; beyond, it is drawn by clauses."""
@@ -243,8 +244,8 @@ def _summary(group: str, members: Sequence[_Draft], chart: str) -> _Draft:
         if any(who in row.decides for row in loud)
     ]
     lines = (
-        f"{len(rows)} branch points" if len(rows) != 1 else "1 branch point",
-        f"{len(loud)} left to somebody" if loud else "all by facts",
+        f"{whole(len(rows))} branch points" if len(rows) != 1 else "1 branch point",
+        f"{whole(len(loud))} left to somebody" if loud else "all by facts",
         *((cut(", ".join(whose), WIDEST_TEXT + 8),) if whose else ()),
     )
     return _Draft(group, "clause", _title(group), "", (), lines if rows else ("no branch point",), chart)

@@ -5,8 +5,8 @@ from __future__ import annotations
 from samesum.evidence.choosing.selection import HEADLINE, Selection
 from samesum.evidence.choosing.tally import WIDTH
 from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
+from samesum.outputs.amounts import amount, share
 from samesum.outputs.bias_text import sentence
-from samesum.outputs.register_cells import share
 from samesum.outputs.report.figures import CaseSpread, ClosingStep, Histogram
 from samesum.reviewing.measured import headline
 from samesum.written import whole
@@ -44,13 +44,6 @@ def _case(case: CaseTrial, unit: str) -> CaseSpread:
     )
 
 
-def amount(value: float, unit: str) -> str:
-    """A result for people, with its unit."""
-    size = abs(value)
-    text = f"{value:,.0f}" if size >= 100 or value == int(value) else f"{value:,.4g}"
-    return f"{text} {unit}".rstrip()
-
-
 def closing_steps(trial: TrialEvidence) -> tuple[ClosingStep, ...]:
     """The order of closing."""
     return tuple(ClosingStep(step.general, step.left) for step in trial.closing)
@@ -61,13 +54,13 @@ def worst_case(trial: TrialEvidence) -> str:
     proof = trial.proof
     if proof.low is None and proof.high is None:
         return ""
-    low = _times(proof.low) if proof.low is not None else "something"
+    low = share(proof.low) if proof.low is not None else "something"
     everywhere = "Over all projects in the declared domains, results"
     if proof.high is None:
         return f"{everywhere} can lie at least {low} of the reference apart; no bound above was proved."
     if proof.low == proof.high == 0:
         return f"{everywhere} are proved not to lie apart."
-    high = _times(proof.high)
+    high = share(proof.high)
     return f"{everywhere} can lie {low} of the reference apart, and are proved to lie at most {high} apart."
 
 
@@ -77,10 +70,6 @@ def proved(trial: TrialEvidence) -> str:
     if proof.verdict not in ("single route", "same number", "within tolerance") or not proof.says:
         return ""
     return f"Proved: {proof.says}."
-
-
-def _times(value: float) -> str:
-    return share(value) if value < 10 else f"{value:,.0f} times" if value < 1e7 else f"{value:.0e} times"
 
 
 def histogram_of(selection: Selection) -> Histogram | None:

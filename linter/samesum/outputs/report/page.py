@@ -33,6 +33,7 @@ from samesum.outputs.report.layers import path
 from samesum.outputs.verdict import waiting
 from samesum.reviewing.places import exact_percent
 from samesum.reviewing.rows import Register, Row
+from samesum.written import whole
 
 if TYPE_CHECKING:
     from markupsafe import Markup
@@ -175,7 +176,7 @@ def _key_figures(register: Register, extra: Extra) -> list[tuple[str, str, str]]
             "loud" if counts.per_project_most > 1 else "calm",
         ),
         (
-            f"{len(loud)} of {len(register.rows)}",
+            f"{whole(len(loud))} of {whole(len(register.rows))}",
             "places leave something to somebody",
             "loud" if loud else "calm",
         ),
@@ -196,7 +197,7 @@ def _key_figures(register: Register, extra: Extra) -> list[tuple[str, str, str]]
         )
     accepted = sum(row.standing is not None and row.standing.accepted for row in register.rows)
     if accepted:
-        found.append((str(accepted), "accepted by the review", "calm"))
+        found.append((whole(accepted), "accepted by the review", "calm"))
     return found
 
 

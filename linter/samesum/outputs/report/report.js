@@ -143,7 +143,7 @@
       row.hidden = !fits;
       if (fits) kept += 1;
     });
-    count.textContent = `${kept} of ${rows.length} shown`;
+    count.textContent = `${kept.toLocaleString("en")} of ${rows.length.toLocaleString("en")} shown`;
   };
   const byText = new Intl.Collator("en", { numeric: true, sensitivity: "base" }).compare;
   const sort = (column, falling) => {
