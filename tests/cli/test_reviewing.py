@@ -127,6 +127,31 @@ def test_trial_evidence_comes_with_inputs(capsys: pytest.CaptureFixture[str]) ->
     assert rows["density"]["over_issuance"] is None
 
 
+@pytest.mark.parametrize("given", [True, False])
+def test_the_figures_say_what_they_were_simulated_on(
+    given: bool, folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    shutil.copy(SAMPLES / "waste_heat.rulebook", "w.rulebook")
+    inputs = ("--inputs", str(SAMPLES / "waste_heat.cases.yaml")) if given else ()
+    words = ("register", "w.rulebook", *inputs, "--projects", "500", "--as")
+    says = "the 3 given cases and no others" if given else "500 projects drawn from the declared domains"
+    for form in ("table", "markdown", "html"):
+        out = said(capsys, *words, form)[1]
+        assert f"Over-issuance is simulated on {says}" in " ".join(out.split()), form
+    assert says in " ".join(said(capsys, "report", *words[1:-1])[1].split())
+    rows = list(csv.DictReader(said(capsys, *words, "csv")[1].splitlines()))
+    told = {row["Simulated on"] for row in rows if row["Over-issuance"]}
+    assert told == {"the 3 given cases" if given else "declared domains"}
+    simulated = json.loads(said(capsys, *words, "json")[1])["simulated"]
+    origin = {"from": "cases", "cases": 3} if given else {"from": "domains"}
+    assert simulated == {"projects": 500, **origin, "seed": 0}
+
+
+def test_nothing_is_said_of_a_simulation_that_was_not(capsys: pytest.CaptureFixture[str]) -> None:
+    assert "imulated" not in said(capsys, "register", "tide.rulebook", "--projects", "0")[1]
+    assert json.loads(said(capsys, "register", "tide.rulebook", "--projects", "0", "--json")[1])["simulated"] is None
+
+
 def test_the_same_register_gives_the_same_bytes(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     for form in ("csv", "xlsx", "markdown", "json", "html"):
         for name in ("one", "two"):

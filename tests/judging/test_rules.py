@@ -15,6 +15,7 @@ from samesum.judging.rules import RuleSet, load_rules
 from samesum.judging.settings import read_settings, settings_file_for, unknown_rules
 from samesum.reading.read import Reader, make_reader
 from samesum.reading.where import WhereMistake, parse_where
+from samesum.shipped import shipped_folder
 from samesum.spans import Span
 
 GOOD = """name: {name}
@@ -242,3 +243,10 @@ def test_a_rule_that_there_is_not(tmp_path: Path) -> None:
         "there is no rule `own-rul`",
         "did you mean `own-rule`?",
     )
+
+
+def test_the_rule_on_over_issuance_says_whose_choices_it_counts() -> None:
+    rules, problems = load_rules([shipped_folder("rules")], reader())
+    assert not problems
+    [rule] = [each for each in rules.rules if each.name == "over-issuance-above-limit"]
+    assert "what the developer picks here" in rule.why and "only choices by the developer" in rule.wrong_when

@@ -11,7 +11,7 @@ from dataclasses import dataclass
 from samesum.evidence.routes.closing import Bracket
 from samesum.outputs import amounts
 from samesum.reviewing.places import exact_percent
-from samesum.reviewing.rows import Register, Row, RowOption
+from samesum.reviewing.rows import Register, Row, RowOption, Simulated
 from samesum.written import whole
 
 Cell = str | int | float | None
@@ -42,6 +42,7 @@ COLUMNS: tuple[Column, ...] = (
     Column("Swing", "share", 9, lambda row: row.measures.swing),
     Column("Left if closed", "share", 9, lambda row: row.measures.left_if_closed),
     Column("Over-issuance", "share", 9, lambda row: row.measures.over_issuance),
+    Column("Simulated on", "text", 18, lambda row: drawn_from(row.measures.simulated)),
     Column("Suggested closure", "text", 44, lambda row: row.measures.closure or row.closure),
     Column("Decision", "text", 14, lambda row: decision(row)),
     Column("Reason", "text", 36, lambda row: row.standing.decision.reason if row.standing else ""),
@@ -52,16 +53,36 @@ COLUMNS: tuple[Column, ...] = (
 
 def columns_for(register: Register) -> tuple[Column, ...]:
     """The columns that have anything to say: shares only when trial or bias was asked, the reviewers' words only
-    when there are decisions."""
+    when there are decisions; what is the same in every row is left to a sentence (``simulated_text``)."""
     measured = {"Swing", "Left if closed", "Over-issuance"}
     decided = {"Reason", "Decided by", "Decided on"}
     rows = register.rows
     return tuple(
         column
         for column in COLUMNS
-        if (column.title not in measured and column.title not in decided)
-        or any(column.of(row) not in (None, "") for row in rows)
+        if column.title != "Simulated on"
+        and (column.title not in measured | decided or any(column.of(row) not in (None, "") for row in rows))
     )
+
+
+def drawn_from(simulated: Simulated | None) -> str:
+    """``the 3 given cases``, ``declared domains``; "" where nothing was simulated."""
+    if simulated is None:
+        return ""
+    if not simulated.given:
+        return "declared domains"
+    return "the given case" if simulated.given == 1 else f"the {whole(simulated.given)} given cases"
+
+
+def simulated_text(register: Register) -> str:
+    """What over-issuance rests on, in a sentence; "" where nothing was simulated."""
+    simulated = register.simulated
+    if simulated is None:
+        return ""
+    projects = f"{whole(simulated.projects)} projects"
+    if not simulated.given:
+        return f"Over-issuance is simulated on {projects} drawn from the declared domains."
+    return f"Over-issuance is simulated on {drawn_from(simulated)} and no others ({projects}, the cases in turn)."
 
 
 def decider(row: Row) -> str:

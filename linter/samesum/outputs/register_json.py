@@ -21,11 +21,21 @@ def register_json(register: Register) -> dict[str, Any]:
         "file": model.file,
         "paths": paths_json(register.evidence.counts),
         "free_values": list(register.evidence.counts.free_values),
+        "simulated": _simulated(register),
         "rows": [row_json(row) for row in register.rows],
         "stale_decisions": [
             {"branch_point": each.decision.place, "why": each.stale, **_decision(each)} for each in register.stale
         ],
     }
+
+
+def _simulated(register: Register) -> dict[str, Any] | None:
+    """What over-issuance was simulated on; null when it was not."""
+    found = register.simulated
+    if found is None:
+        return None
+    origin = {"from": "cases", "cases": found.given} if found.given else {"from": "domains"}
+    return {"projects": found.projects, **origin, "seed": found.seed}
 
 
 def row_json(row: Row) -> dict[str, Any]:

@@ -5,7 +5,7 @@ from __future__ import annotations
 from samesum.outputs.counts import title_of
 from samesum.outputs.harmless import code, markdown
 from samesum.outputs.page import CAUTION, clean
-from samesum.outputs.register_cells import Cell, Column, columns_for, share, stale_lines
+from samesum.outputs.register_cells import Cell, Column, columns_for, share, simulated_text, stale_lines
 from samesum.reviewing.rows import Register, Row
 from samesum.written import whole
 
@@ -18,6 +18,9 @@ def register_markdown(register: Register) -> str:
     lines.append("|" + "|".join("---" if column.kind == "text" else "---:" for column in columns) + "|")
     for row in register.rows:
         lines.append("| " + " | ".join(_cell(column, row) for column in columns) + " |")
+    simulated = simulated_text(register)
+    if simulated:
+        lines += ["", markdown(simulated)]
     stale = stale_lines(register)
     if stale:
         lines += ["", "Decisions that no longer fit:", "", *(f"* {markdown(line)}" for line in stale)]

@@ -11,7 +11,7 @@ from itertools import zip_longest
 
 from samesum.outputs.counts import figure, title_of
 from samesum.outputs.page import CAUTION, Page, Paper, clean, width_of
-from samesum.outputs.register_cells import bracket_text, decider, decision, share, stale_lines
+from samesum.outputs.register_cells import bracket_text, decider, decision, share, simulated_text, stale_lines
 from samesum.outputs.tables import table_lines
 from samesum.reviewing.rows import Register, Row
 from samesum.written import whole
@@ -123,6 +123,9 @@ def _summary(page: Page, register: Register, hidden: int) -> None:
         f"Routes open to one project, at most: {figure(register.evidence.counts, 'per_project_most')}. "
         "Without it: the most that are left when this one place is closed."
     )
+    simulated = simulated_text(register)
+    if simulated:
+        page.paragraph(simulated)
     if hidden:
         page.paragraph(f"{whole(hidden)} that facts alone decide are not shown; --all shows them.", style="quiet")
     for line in stale_lines(register):

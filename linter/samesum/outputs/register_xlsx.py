@@ -8,7 +8,7 @@ from datetime import UTC, datetime
 from samesum.outputs.counts import FIGURES, figure, title_of
 from samesum.outputs.harmless import is_formula
 from samesum.outputs.page import clean
-from samesum.outputs.register_cells import COLUMNS, stale_lines
+from samesum.outputs.register_cells import COLUMNS, simulated_text, stale_lines
 from samesum.reviewing.rows import Register
 from samesum.written import whole
 
@@ -70,7 +70,11 @@ def register_xlsx(register: Register) -> bytes:
         counts.write_string(line, 0, label, loud)
         counts.write_string(line, 1, _text(figure(register.evidence.counts, name)), loud)
         counts.write_string(line, 2, _text(says), quiet)
-    for line, stale in enumerate(stale_lines(register), start=len(FIGURES) + 1):
+    told = len(FIGURES) + 1
+    if simulated_text(register):
+        counts.write_string(told, 0, _text(simulated_text(register)), loud)
+        told += 1
+    for line, stale in enumerate(stale_lines(register), start=told):
         counts.write_string(line, 0, _text(f"Stale decision: {stale}"), loud)
     book.close()
     return out.getvalue()

@@ -11,7 +11,7 @@ from samesum.evidence.choosing.selection import HEADLINE, Closure, Figure, Found
 from samesum.evidence.trial.blame import Remaining
 from samesum.evidence.trial.outcome import TrialEvidence
 from samesum.reviewing.compare import Moved
-from samesum.reviewing.rows import Measures
+from samesum.reviewing.rows import Measures, Simulated
 
 STANDARD_ERRORS = 4
 """A difference of simulated figures counts from so many of its standard errors on."""
@@ -29,15 +29,22 @@ def measures_of(tried: Tried, seconds: float = 5.0) -> dict[str, Measures]:
     """Measures by id of the place (all elements of an index together)."""
     swings, left = _blame(tried.trial, seconds) if tried.trial is not None else ({}, {})
     found = {each.latitude.id: each for each in tried.selection.found} if tried.selection is not None else {}
-    return {
-        id: Measures(
-            swings.get(id),
-            left.get(id),
-            over_issuance(found[id]) if id in found else None,
-            closure_text(found[id]) if id in found else "",
+    simulated = simulated_on(tried.selection) if tried.selection is not None else None
+    measures = {}
+    for id in dict.fromkeys([*swings, *found]):
+        over = over_issuance(found[id]) if id in found else None
+        closure = closure_text(found[id]) if id in found else ""
+        measures[id] = Measures(
+            swings.get(id), left.get(id), over, closure, simulated if over is not None or closure else None
         )
-        for id in dict.fromkeys([*swings, *found])
-    }
+    return measures
+
+
+def simulated_on(selection: Selection) -> Simulated:
+    """What a simulation drew its projects from; given ones that are outside or have no result are not counted."""
+    supply = selection.supply
+    given = supply.cases - supply.outside - supply.without_result if supply.cases else 0
+    return Simulated(selection.projects, given, selection.terms.seed)
 
 
 def _blame(trial: TrialEvidence, seconds: float) -> tuple[Mapping[str, float | None], Mapping[str, float | None]]:

@@ -41,15 +41,26 @@ class RowOption:
 
 
 @dataclass(frozen=True, slots=True)
+class Simulated:
+    """What over-issuance was simulated on: how many ``projects``; ``given`` ones in turn, or, at 0, drawn from the
+    declared domains."""
+
+    projects: int
+    given: int
+    seed: int
+
+
+@dataclass(frozen=True, slots=True)
 class Measures:
     """What ``trial`` and ``bias`` found about one place; None where they were not asked or cannot tell.
     ``swing``, ``left_if_closed`` and ``over_issuance`` are shares (0.05 for 5 %). ``closure`` is the closing
-    that bias evidence speaks for, "" when it has none."""
+    that bias evidence speaks for, "" when it has none. ``simulated`` goes with ``over_issuance``."""
 
     swing: float | None = None
     left_if_closed: float | None = None
     over_issuance: float | None = None
     closure: str = ""
+    simulated: Simulated | None = None
 
 
 NOT_MEASURED = Measures()
@@ -102,6 +113,11 @@ class Register:
     rows: tuple[Row, ...]
     record: Record
     stale: tuple[Standing, ...]
+
+    @property
+    def simulated(self) -> Simulated | None:
+        """What over-issuance was simulated on; None when no row has any."""
+        return next((row.measures.simulated for row in self.rows if row.measures.simulated is not None), None)
 
     def measured(self, measures: Mapping[str, Measures]) -> Register:
         """The same register with what trial and bias found, by id of the place."""

@@ -18,7 +18,7 @@ from samesum.evidence.routes.counting import FIGURES as COUNTED
 from samesum.outputs.counts import FIGURES, figure, title_of
 from samesum.outputs.page import CAUTION, clean
 from samesum.outputs.projects import project, words_for
-from samesum.outputs.register_cells import bracket_text, decider, decision, share, stale_lines
+from samesum.outputs.register_cells import bracket_text, decider, decision, share, simulated_text, stale_lines
 from samesum.outputs.report.chart import charts_of, says
 from samesum.outputs.report.figures import (
     CaseSpread,
@@ -101,6 +101,7 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
         rows=[_row(number, row, register, extra) for number, row in enumerate(register.rows)],
         any_swing=any(row.measures.swing is not None for row in register.rows),
         any_left=any(row.measures.left_if_closed is not None for row in register.rows),
+        simulated=simulated_text(register),
         any_over=any(row.measures.over_issuance is not None for row in register.rows),
         kinds=list(dict.fromkeys(row.kind for row in register.rows)),
         deciders=[
