@@ -313,6 +313,66 @@ def test_a_number_that_is_missing_is_blamed_where_it_is_missing() -> None:
     assert kinds(found) == [("share", "value")]
 
 
+CURVE = "table curve [t] by reach, clause 3\n    above 2 = 4\n"
+CARBON = "quantity carbon, clause 2\n    = curve(0) / 1 [t]\n"  # has no value: the curve has no row for 0
+
+
+@pytest.mark.parametrize("formula", ["curve(0) + curve(carbon)", "curve(carbon) + curve(0)", "curve(0) / carbon"])
+def test_each_lookup_of_a_formula_answers_for_its_own_argument(formula: str) -> None:
+    """``curve(0)`` has no row, whatever else the formula asks."""
+    found = evidence_of(rulebook(CURVE, CARBON, result=formula))
+    assert kinds(found) == [("carbon", "row"), ("r", "row")]
+    check_witnesses(found)
+
+
+@pytest.mark.parametrize(
+    "formula",
+    [
+        "(1 [t] + curve(carbon)) / 2",
+        "curve(carbon) * carbon ^ -1",
+        "-curve(carbon / 2)",
+        "1 [t] / carbon",
+        "curve(curve(carbon) / 1 [t])",
+        "1 [t] * 2 ^ carbon",
+        "1 [t] * ln(carbon)",
+    ],
+)
+def test_a_formula_that_only_inherits_a_gap_has_none_of_its_own(formula: str) -> None:
+    found = evidence_of(rulebook(CURVE, CARBON, f"quantity buffer [t], clause 2\n    = {formula}\n", result="buffer"))
+    assert kinds(found) == [("carbon", "row")]
+    check_witnesses(found)
+
+
+TWO_TABLES = X + TABLE + "table v by size, clause 3\n    up to 5 = 1\n    above 6 up to 10 = 2\n"
+MISSING_ROWS = [
+    ("t(x) + v(x) * 1 [t]", "t", 2, 3),
+    ("v(x) * 1 [t] + t(x)", "v", 5, 6),
+    ("t(x / 5) + v(x) * 1 [t]", "v", 5, 6),
+    ("t(x / 5) + v(x) * 1 [t] + t(x)", "v", 5, 6),
+    ("t(v(x) + 1.5)", "v", 5, 6),
+    ("t(v(x / 2) + 1.5)", "t", -1, 10),
+    ("1 [t] * v(x) / (x - 1)", "v", 5, 6),
+    ("t(x / 5) / x", "", -1, 0),
+]
+
+
+@pytest.mark.parametrize(("formula", "table", "above", "up_to"), MISSING_ROWS)
+def test_a_gap_names_the_table_that_lacks_the_row_for_its_witness(
+    formula: str, table: str, above: Fraction, up_to: Fraction
+) -> None:
+    """The table's own missing band holds the witness, where another table or a divisor is wanting elsewhere."""
+    in_a_formula = evidence_of(rulebook(TWO_TABLES, result=formula))
+    conditions = [f"{formula} < 2 [t]", f"{formula} >= 2 [t]"]
+    in_a_condition = evidence_of(rulebook(TWO_TABLES, cases("q", conditions), result="q"))
+    for found in (in_a_formula, in_a_condition):
+        (gap,) = found.conditions.gaps
+        assert (gap.kind, gap.names) == (("row", (table,)) if table else ("value", ()))
+        x = only_gap(found).get("x", Fraction(0))
+        assert isinstance(x, Fraction)
+        assert above < x <= up_to
+        check_witnesses(found)
+
+
 # --- many conditions ---------------------------------------------------------------------------
 
 

@@ -8,7 +8,7 @@ point depends on.
 from __future__ import annotations
 
 import time
-from collections.abc import Sequence
+from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 from itertools import combinations
 
@@ -18,8 +18,6 @@ from samesum.evidence.routes.eliminating import COMBINE, Eliminated, eliminate, 
 from samesum.evidence.routes.layout import EVERYTHING, Layout
 from samesum.evidence.routes.network import Network, PointRelation, cone
 from samesum.evidence.routes.witness import Witness, witness_from
-from samesum.reading import model as m
-from samesum.reading import walk
 
 
 @dataclass(frozen=True, slots=True)
@@ -35,7 +33,8 @@ class Overlap:
 class Gap:
     """No branch of ``branch_point`` is open at ``witness``, or a table has no row there. ``branch_point`` is
     the quantity's own name when its formula stands outside any branch point. ``kind``: ``conditions`` (no branch
-    open), ``row`` (no row of a table answers) or ``value`` (a calculation has no value, such as a division by zero)."""
+    open), ``row`` (no row of a table answers; ``names`` has the table) or ``value`` (a calculation has no value,
+    such as a division by zero). ``kind`` and ``names`` are true of the witness: elsewhere another may be missing."""
 
     branch_point: str
     witness: Witness | None
@@ -203,59 +202,48 @@ def _find_dead(
 def _rowless_conditions(network: Network, relation: PointRelation, found: _Found) -> None:
     """Operations in the branch point's own conditions that have no value for some project: no row of a table, or a
     division by zero."""
-    d = network.diagrams
-    if d.is_end(relation.own_sound, True):
-        return
-    answer = _ask(network, [relation.reach, relation.parts_sound], relation, relation.stuck, without=relation.own_sound)
-    if answer.says == "yes":
-        kind = "row" if relation.tables else "value"
-        found.gaps.append(Gap(relation.point.id, answer.witness, kind, relation.tables))
-    elif answer.says == "cannot tell":
-        found.undecided.append(Undecided(relation.point.id, "gap"))
+    id = relation.point.id
+    answers = ((table, _ask(network, [relation.reach, where], None, None)) for table, where in relation.lacking.items())
+    _rowless(id, answers, found)
 
 
 def _rowless_formulas(network: Network, found: _Found) -> None:
     """Formulas whose own operations have no value for some project: no row, or a division by zero."""
-    for leaf, evaluated, sound in network.leaves:
-        answer = _ask(network, [evaluated], None, None, without=sound)
+    for each in network.leaves:
+        answers = ((table, _ask(network, [each.evaluated, where], None, None)) for table, where in each.lacking.items())
+        _rowless(each.leaf.id, answers, found)
+
+
+def _rowless(id: str, answers: Iterable[tuple[str, _Answer]], found: _Found) -> None:
+    """The gap of the first table that is shown to have no row, so that what is said of it is true of its witness."""
+    undecided = False
+    for table, answer in answers:
         if answer.says == "yes":
-            lookups = [node.table for node in walk.inside(leaf.expression) if isinstance(node, m.Lookup)]
-            tables = tuple(dict.fromkeys(lookups))
-            found.gaps.append(Gap(leaf.id, answer.witness, "row" if tables else "value", tables))
-        elif answer.says == "cannot tell":
-            found.undecided.append(Undecided(leaf.id, "gap"))
+            found.gaps.append(Gap(id, answer.witness, "row" if table else "value", (table,) if table else ()))
+            return
+        undecided = undecided or answer.says == "cannot tell"
+    if undecided:
+        found.undecided.append(Undecided(id, "gap"))
 
 
 def _ask(
-    network: Network,
-    parts: Sequence[int],
-    relation: PointRelation | None,
-    state: int | None,
-    show: bool = True,
-    without: int | None = None,
+    network: Network, parts: Sequence[int], relation: PointRelation | None, state: int | None, show: bool = True
 ) -> _Answer:
-    """Whether the parts can hold together (and ``without`` not) somewhere inside the rulebook, with the branch
-    point in ``state`` where one is given without parts; ``show`` asks for the witness too."""
+    """Whether the parts can hold together somewhere inside the rulebook, with the branch point in ``state`` where
+    one is given without parts; ``show`` asks for the witness too."""
     try:
-        return _asked(network, parts, relation, state, show, without)
+        return _asked(network, parts, relation, state, show)
     except OutOfLimits:
         return _Answer("cannot tell")
 
 
 def _asked(
-    network: Network,
-    parts: Sequence[int],
-    relation: PointRelation | None,
-    state: int | None,
-    show: bool,
-    without: int | None,
+    network: Network, parts: Sequence[int], relation: PointRelation | None, state: int | None, show: bool
 ) -> _Answer:
     d = network.diagrams
     together = d.every(parts)
     if not parts and relation is not None and state is not None:
         together = d.literal(relation.level, (state,))
-    if without is not None:
-        together = d.both(together, d.negate(without))
     if d.is_end(together, False):
         return _Answer("no")
     start = [together, *network.applies]

@@ -24,8 +24,8 @@ class PointRelation:
     """One branch point's part: where it is reached, where all it asks has a value, where each branch
     is open (both only meant where reached), and the relation of its state to the rest.
 
-    ``own_sound`` and ``parts_sound`` share out ``sound``: the operations written in the branch point's own
-    conditions (``tables`` names the tables they call), and the quantities and choices these ask."""
+    ``lacking``: where operations written in its own conditions have no value although all that is asked has one, by
+    the table that has no row ("" for calculations)."""
 
     point: BranchPoint
     level: int
@@ -33,9 +33,7 @@ class PointRelation:
     sound: int
     open: tuple[int, ...]
     factor: int
-    own_sound: int
-    parts_sound: int
-    tables: tuple[str, ...]
+    lacking: Mapping[str, int]
 
     @property
     def not_reached(self) -> int:
@@ -47,12 +45,23 @@ class PointRelation:
 
 
 @dataclass(frozen=True, slots=True)
+class LeafRelation:
+    """A formula whose own operations may lack a value: where it is evaluated, where they have one (only meant where
+    all that it mentions has one), and ``lacking`` as for branch points."""
+
+    leaf: Leaf
+    evaluated: int
+    sound: int
+    lacking: Mapping[str, int]
+
+
+@dataclass(frozen=True, slots=True)
 class Network:
     """The whole relation.
 
-    ``leaves``: where each formula that may lack a value is evaluated and its operations have what they work on,
-    and where these operations have a value. ``applies``: where the rulebook applies, as parts that must all hold.
-    ``flows``: where the number of a formula reaches the result. ``cells``: of each number that is compared, by level.
+    ``leaves``: formulas that may lack a value of their own. ``applies``: where the rulebook applies, as parts that must
+    all hold. ``flows``: where the number of a formula reaches the result. ``cells``: of each number that is compared,
+    by level.
     """
 
     graph: DecisionGraph
@@ -60,7 +69,7 @@ class Network:
     variables: Mapping[int, Variable]
     levels: Mapping[str, int]
     points: Mapping[str, PointRelation]
-    leaves: tuple[tuple[Leaf, int, int], ...]
+    leaves: tuple[LeafRelation, ...]
     flows: tuple[tuple[Leaf, int], ...]
     applies: tuple[int, ...]
     cells: Mapping[int, tuple[Bounds, ...]]
@@ -82,7 +91,7 @@ def complete_factors(network: Network) -> list[int]:
     """The relation of complete routes: nothing stuck, every formula with a value, the rulebook applies."""
     d = network.diagrams
     factors = [_not_stuck(network, each) for each in network.points.values()]
-    factors += [d.either(d.negate(evaluated), sound) for _, evaluated, sound in network.leaves]
+    factors += [d.either(d.negate(each.evaluated), each.sound) for each in network.leaves]
     return [d.numbers(factor) for factor in (*factors, *network.applies)]
 
 

@@ -14,14 +14,12 @@ from samesum.evidence.routes import groups
 from samesum.evidence.routes.cells import cut, sign_over
 from samesum.evidence.routes.diagrams import Diagrams, Limits
 from samesum.evidence.routes.eliminating import taken_apart
-from samesum.evidence.routes.network import Network, PointRelation
+from samesum.evidence.routes.network import LeafRelation, Network, PointRelation
 from samesum.evidence.routes.ranges import Bounds, bounds
 from samesum.evidence.routes.readings import Readings
 from samesum.evidence.routes.soundness import Soundness
 from samesum.evidence.routes.symbols import constant_term, generators, without_constant
-from samesum.graph import BranchPoint, DecisionGraph, Leaf, Mention, asked, mentions, worked_on
-from samesum.reading import model as m
-from samesum.reading import walk
+from samesum.graph import BranchPoint, DecisionGraph, Leaf, Mention, asked, mentions
 
 
 def build_network(
@@ -40,7 +38,7 @@ def build_network(
     inside = set(wanted)
     points = [point for point in graph.branch_points.values() if point.instance in inside]
     asking = {point.id: _read_point(point, soundness, on_paper) for point in points}
-    sound_leaves: list[tuple[Leaf, int, int]] = []
+    lacking_leaves: list[tuple[Leaf, int, Mapping[str, int]]] = []
     applying: list[int] = []
     if not on_paper:
         for id in wanted:
@@ -48,12 +46,12 @@ def build_network(
             for leaf in graph.leaves[id]:
                 sound = soundness.of(leaf.expression, elements, own=True)
                 if not d.is_end(sound, True):
-                    worked = worked_on(leaf.expression, elements, graph.sizes)
-                    sound_leaves.append((leaf, sound, _parts_sound(worked, soundness)))
+                    lacking_leaves.append((leaf, sound, soundness.lacking(leaf.expression, elements)))
         for each in graph.model.applies:
             applying += [readings.condition(each.condition, {}), soundness.of(each.condition, {})]
     read = [part for each in asking.values() for part in each.parts()]
-    cells = _cut_into_cells(readings, [*read, *(part for _, *parts in sound_leaves for part in parts), *applying])
+    read += [part for _, sound, lacking in lacking_leaves for part in (sound, *lacking.values())]
+    cells = _cut_into_cells(readings, [*read, *applying])
     ways = _Ways(graph, readings, _find_users(graph, inside, on_paper))
     relations: dict[str, PointRelation] = {}
     for point in points:
@@ -78,8 +76,8 @@ def build_network(
         dict(readings.levels),
         relations,
         tuple(
-            (leaf, d.both(ways.evaluated(leaf), cells.settle(parts)), cells.settle(sound))
-            for leaf, sound, parts in sound_leaves
+            LeafRelation(leaf, ways.evaluated(leaf), cells.settle(sound), _settled(lacking, cells.settle))
+            for leaf, sound, lacking in lacking_leaves
         ),
         tuple(flows),
         taken_apart(d, d.every(cells.settle(each) for each in applying)),
@@ -96,46 +94,46 @@ def build_network(
 
 @dataclass(frozen=True, slots=True)
 class _Asked:
-    """What a branch point asks: each branch's condition, and where what they ask has a value."""
+    """What a branch point asks: each branch's condition, where what they ask has a value, and where an operation of
+    their own lacks one (by table)."""
 
     holds: tuple[int, ...]
     sound: int
-    own_sound: int
-    parts_sound: int
-    tables: tuple[str, ...]
+    lacking: Mapping[str, int]
 
     def parts(self) -> tuple[int, ...]:
-        return (*self.holds, self.sound, self.own_sound, self.parts_sound)
+        return (*self.holds, self.sound, *self.lacking.values())
 
     def settled(self, settle: Callable[[int], int]) -> _Asked:
         """The same on cells instead of signs."""
-        return _Asked(
-            tuple(map(settle, self.holds)),
-            settle(self.sound),
-            settle(self.own_sound),
-            settle(self.parts_sound),
-            self.tables,
-        )
+        return _Asked(tuple(map(settle, self.holds)), settle(self.sound), _settled(self.lacking, settle))
+
+
+def _settled(lacking: Mapping[str, int], settle: Callable[[int], int]) -> dict[str, int]:
+    return {table: settle(where) for table, where in lacking.items()}
 
 
 def _read_point(point: BranchPoint, soundness: Soundness, on_paper: bool) -> _Asked:
     readings = soundness.readings
     d = readings.diagrams
     elements = readings.graph.instances[point.instance].elements
-    sound = own_sound = d.end(True)
-    tables: dict[str, None] = {}
+    sound = d.end(True)
+    lacking: dict[str, int] = {}
     holds: list[int] = []
     for condition in point.conditions:
         if condition is None or on_paper:
             holds.append(d.end(True))
             continue
         sound = d.both(sound, soundness.of(condition, elements))
-        own_sound = d.both(own_sound, soundness.of(condition, elements, own=True))
-        tables.update((node.table, None) for node in walk.inside(condition) if isinstance(node, m.Lookup))
+        for table, where in soundness.lacking(condition, elements).items():
+            lacking[table] = d.either(lacking.get(table, d.end(False)), where)
         holds.append(readings.condition(condition, elements))
-    conditions = [each for each in point.conditions if each is not None and not on_paper]
-    asks = (mention for each in conditions for mention in mentions(each, elements, readings.graph.sizes))
-    return _Asked(tuple(holds), sound, own_sound, _parts_sound(asks, soundness), tuple(tables))
+    if lacking:
+        conditions = [each for each in point.conditions if each is not None]
+        asks = (mention for each in conditions for mention in mentions(each, elements, readings.graph.sizes))
+        parts_sound = _parts_sound(asks, soundness)
+        lacking = {table: d.both(where, parts_sound) for table, where in lacking.items()}
+    return _Asked(tuple(holds), sound, lacking)
 
 
 def _parts_sound(asked: Iterable[Mention], soundness: Soundness) -> int:
@@ -359,6 +357,4 @@ def _relate(point: BranchPoint, reach: int, asked: _Asked, readings: Readings, o
     parts.append(d.both(stuck, d.literal(level, (count + 1,))))
     for number, each in enumerate(holds):
         parts.append(d.both(d.both(working, each), d.literal(level, (number,))))
-    return PointRelation(
-        point, level, reach, sound, tuple(holds), d.some(parts), asked.own_sound, asked.parts_sound, asked.tables
-    )
+    return PointRelation(point, level, reach, sound, tuple(holds), d.some(parts), asked.lacking)

@@ -56,6 +56,28 @@ class Soundness:
         stuck = len(self.readings.graph.branch_points[point].branches) + 1
         return self.readings.diagrams.negate(self.readings.state(point, (stuck,)))
 
+    def lacking(self, node: m.Expression | m.Condition, elements: Element) -> dict[str, int]:
+        """Where an operation written in ``node`` has no value although all that it works on has one: by the table that
+        has no row, "" for calculations. What nothing lacks is left out."""
+        found: dict[str, int] = {}
+        self._lacking(node, elements, found)
+        return found
+
+    def _lacking(self, node: m.Expression | m.Condition, elements: Element, found: dict[str, int]) -> None:
+        if isinstance(node, m.Reduction):
+            for element in range(1, self.readings.graph.sizes.get(node.index, 0) + 1):
+                self._lacking(node.body, {**elements, node.index: element}, found)
+            return
+        for part in walk.parts(node):
+            self._lacking(part, elements, found)
+        d = self.readings.diagrams
+        here = d.negate(self._operation(node, elements))
+        for part in _works_on(node) if not d.is_end(here, False) else ():
+            here = d.both(here, self.of(part, elements))
+        if not d.is_end(here, False):
+            name = node.table if isinstance(node, m.Lookup) else ""
+            found[name] = d.either(found.get(name, d.end(False)), here)
+
     # -- operations ---------------------------------------------------------------------
 
     def _operation(self, node: m.Expression | m.Condition, elements: Element) -> int:
@@ -121,3 +143,16 @@ class Soundness:
         if last.high is not None and (hull.high is None or hull.high > last.high):
             return False
         return all(a.high is not None and a.high == b.low for a, b in pairwise(bands))
+
+
+def _works_on(node: m.Expression | m.Condition) -> tuple[m.Expression, ...]:
+    """The parts that decide whether an operation has a value: it does not lack one where they lack theirs."""
+    match node:
+        case m.Lookup(arguments=inner) | m.Function(arguments=inner):
+            return inner
+        case m.Arithmetic(operator="/", right=divisor):
+            return (divisor,)
+        case m.Arithmetic(left=left, right=right):
+            return (left, right)
+        case _:
+            return ()
