@@ -5,7 +5,6 @@ The only module that knows all stages.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from dataclasses import dataclass, replace
 from pathlib import Path
 from typing import TYPE_CHECKING
@@ -14,10 +13,10 @@ from samesum.problems import Problem
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
+    from samesum.evidence.given import Given
     from samesum.evidence.trial.outcome import TrialEvidence
     from samesum.judging.judge import Judged
     from samesum.judging.rules import RuleSet
-    from samesum.reading.cases import Case
     from samesum.reading.read import Reader, Reading
 
 
@@ -43,8 +42,8 @@ def examine(
     inputs: Path | None = None,
 ) -> Examined:
     """A rulebook file, read, examined and, where ``rules`` are given, judged. ``seconds`` bounds the analysis, not
-    the reading. ``reader`` may be handed in when several files are read. ``inputs``: projects to try it on (a file of
-    cases); mistakes in them are problems like any other.
+    the reading. ``reader`` may be handed in when several files are read. ``inputs``: projects to try it on (a file
+    of cases or a table); mistakes in them are problems like any other.
 
     A unit mismatch does not stand in the way: the expression is left out, and lint rules report it.
     """
@@ -53,16 +52,16 @@ def examine(
     reading = read_file(path, reader=reader)
     if inputs is None or reading.model is None:
         return examine_reading(reading, seconds, rules)
-    from samesum.reading.cases import read_cases
+    from samesum.evidence.given import read_given
 
-    cases, problems = read_cases(inputs, reading.model)
-    if problems:
+    given, problems = read_given(inputs, reading.model)
+    if given is None:
         return Examined(replace(reading, problems=(*reading.problems, *problems)), None)
-    return examine_reading(reading, seconds, rules, cases.cases)
+    return examine_reading(reading, seconds, rules, given)
 
 
 def examine_reading(
-    reading: Reading, seconds: float = 10.0, rules: RuleSet | None = None, cases: Sequence[Case] = ()
+    reading: Reading, seconds: float = 10.0, rules: RuleSet | None = None, given: Given | None = None
 ) -> Examined:
     """What was read, examined: ``examine`` for a text that stands in no file, or was read already."""
     usable = reading.model is not None and all(problem.kind == "unit" for problem in reading.problems)
@@ -77,17 +76,18 @@ def examine_reading(
     from samesum.evidence.subjects.all_subjects import subjects_of
     from samesum.judging.judge import judge
 
-    trial = _tried(evidence, cases, seconds) if cases and reading.model.result is not None else None
+    trial = _tried(evidence, given, seconds) if given and given.names and reading.model.result is not None else None
     subjects = subjects_of(evidence, reading.problems, seconds / 2, trial)
     return Examined(reading, evidence, judge(reading.model.file, subjects, rules))
 
 
-def _tried(evidence: Evidence, cases: Sequence[Case], seconds: float) -> TrialEvidence | None:
+def _tried(evidence: Evidence, given: Given, seconds: float) -> TrialEvidence | None:
     """What projects show; None where a part that the result needs could not be read (lint rules report that)."""
-    from samesum.evidence.trial.outcome import try_out
+    from samesum.evidence.trial.outcome import try_batches
     from samesum.evidence.trial.plan import Unplannable
 
     try:
-        return try_out(evidence.graph, cases, seconds, evidence=evidence)
+        batches = given.batches(evidence.graph.model)
+        return try_batches(evidence.graph, batches, given.names, given.cases, seconds, evidence=evidence)
     except Unplannable:
         return None

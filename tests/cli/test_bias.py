@@ -107,6 +107,36 @@ def test_for_people(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     assert all(len(line) <= 80 for line in out.split("\n")) and "\x1b" not in out
 
 
+def test_a_formula_with_sampled_weights_has_its_error(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """What the choice is worth in a project hangs on a fact that is drawn: another seed gives another figure."""
+    file = tmp_path / "one.rulebook"
+    text = either_or([(0, 0.3, 0), (0, 0.1, 1)], formula="stock + rest")
+    file.write_text(text + "fact rest [t CO2e], 0 to 3000\n", encoding="utf-8")
+    status, out, _ = said(capsys, str(file), "--projects", "2000")
+    assert status == 0
+    row = next(line for line in out.splitlines() if line.startswith(" second look"))
+    assert "± 0." in row and "by formula" not in row
+    assert "weighted by what the choice is worth in the projects simulated" in " ".join(out.split())
+    other = said(capsys, str(file), "--projects", "2000", "--seed", "5")[1]
+    assert row.split()[2] != next(line for line in other.splitlines() if line.startswith(" second look")).split()[2]
+    # all that is mandated without bias is exact whatever the weights
+    assert "by formula" in next(line for line in out.splitlines() if line.startswith(" mandated:"))
+
+
+@pytest.mark.parametrize("width", [24, 30, 40, 60])
+def test_a_narrow_page_is_kept(width: int, monkeypatch: pytest.MonkeyPatch, capsys: pytest.CaptureFixture[str]) -> None:
+    monkeypatch.setenv("COLUMNS", str(width))
+    out = said(capsys, str(SAMPLES / "marsh_example.rulebook"), "--projects", "500", "--join", "1")[1]
+    assert [line for line in out.splitlines() if len(line) > width] == []
+    assert "█" in out and "issued/true" in out.lower()
+
+
+def test_the_help_names_every_way_of_closing(capsys: pytest.CaptureFixture[str]) -> None:
+    out = " ".join(said(capsys, "--help")[1].split())
+    for form in ("mandate:ID", "mandate=OPTION:ID", "mandate=VALUE:SETTING", "deduct=P%:ID", "in-order:ID"):
+        assert form in out
+
+
 def test_nothing_to_choose(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
     file = str(SAMPLES / "waste_heat_repaired.rulebook")
     status, out, _ = said(capsys, file, "--projects", "500")

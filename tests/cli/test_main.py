@@ -271,3 +271,23 @@ def test_an_interrupt_ends_quietly(tmp_path: Path) -> None:
         _, err = process.communicate(timeout=60)
     assert process.returncode == 130
     assert err == "samesum: stopped\n"
+
+
+def test_a_table_of_projects_is_read_wherever_projects_are(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    table = tmp_path / "projects.csv"
+    table.write_text(
+        "name,area@1,area@2,plot_mean@1,plot_mean@2,soil,salinity,access\n"
+        "Heron Flats,120,80,100,150,peaty,12,yes\nCurlew Reach,300,,90,,peaty,4,\n",
+        encoding="utf-8",
+    )
+    inputs = ("--inputs", str(table))
+    status, out, _ = said(capsys, "check", MARSH, *inputs, "--json")
+    found = [each for each in json.loads(out)["findings"] if each["rule"] == "spread-over-limit"]
+    assert status == 1 and len(found) == 1 and "Heron Flats" in found[0]["says"]
+    for words in (("register", MARSH), ("report", MARSH), ("bias", MARSH), ("compare", MARSH, MARSH)):
+        assert said(capsys, *words, *inputs, "--projects", "100")[0] == 0, words
+    status, out, err = said(capsys, "count", MARSH, "--list", "2", *inputs)
+    assert (status, out) == (2, "") and "which a .yaml file has to hold" in err and err.count("\n") == 1
+    table.write_text("name,area@1,plot_mean@1,soil,salinity\nHeron Flats,120,100,peat,12\n", encoding="utf-8")
+    status, out, err = said(capsys, "check", MARSH, *inputs)
+    assert (status, out) == (2, "") and "projects.csv:2:4: soil is mineral, peaty or organic" in err

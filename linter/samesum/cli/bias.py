@@ -25,7 +25,10 @@ MOST_PROJECTS = 10**9
 def add_arguments(parser: argparse.ArgumentParser) -> None:
     parser.add_argument("file", metavar="FILE", type=Path, help="a .rulebook file")
     parser.add_argument(
-        "--inputs", type=Path, metavar="CASES", help="simulate these projects: a .yaml, .csv or .parquet file"
+        "--inputs",
+        type=Path,
+        metavar="CASES",
+        help="simulate these projects and no others: a .yaml, .csv or .parquet file",
     )
     parser.add_argument(
         "--projects", type=_count, default=PROJECTS, metavar="N", help=f"how many projects to simulate ({PROJECTS:,})"
@@ -48,8 +51,9 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         "--write-closed",
         nargs="+",
         metavar="KIND:BRANCH_POINT",
-        help="mandate:ID (the reference), mandate=OPTION:ID, lowest:ID, fixed:ID, deduct:ID (so that a second look "
-        "comes out even), deduct=P%%:ID, in-order:ID for overlapping cases",
+        help="mandate:ID (the reference), mandate=OPTION:ID, mandate=VALUE:SETTING (also yes or no of a judgement), "
+        "lowest:ID, fixed:ID, deduct:ID (so that a second look comes out even), deduct=P%%:ID, in-order:ID for "
+        "overlapping cases",
     )
     closing.add_argument("-o", "--output", type=Path, metavar="OUT", help="where to (standard output)")
 
@@ -108,22 +112,13 @@ def supply_for(model: Model, inputs: Path | None) -> Supply | None:
 
     if inputs is None:
         return from_domains(model)
-    from samesum.evidence.choosing.batches import batches_of, batches_of_columns
+    from samesum.evidence.given import read_given
 
-    if inputs.suffix.lower() in (".csv", ".parquet"):
-        from samesum.reading.columns import read_columns
-
-        columns, problems = read_columns(inputs, model)
-        if columns is not None:
-            return from_batches(model, batches_of_columns(model, columns))
-    else:
-        from samesum.reading.cases import read_cases
-
-        cases, problems = read_cases(inputs, model)
-        if not problems:
-            return from_batches(model, batches_of(model, cases.cases))
-    shared.report(problems)
-    return None
+    given, problems = read_given(inputs, model)
+    if given is None:
+        shared.report(problems)
+        return None
+    return from_batches(model, given.batches(model))
 
 
 def simulated(supply: Supply, arguments: argparse.Namespace) -> Selection:

@@ -42,11 +42,12 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
     )
     parser.add_argument(
         "--inputs",
-        metavar="CASES.yaml",
+        metavar="CASES",
         type=Path,
         action="append",
         default=[],
-        help="projects for both drafts; given twice, for OLD and for NEW: adds spread and over-issuance",
+        help="projects for both drafts, a .yaml, .csv or .parquet file; given twice, for OLD and for NEW: adds spread "
+        "and over-issuance",
     )
     gathered.add_projects(parser)
     shared.add_json(parser)

@@ -26,7 +26,7 @@ def add_arguments(parser: argparse.ArgumentParser) -> None:
         default=0,
         help="also list the first N routes open to one project: the one that has most, unless --inputs names another",
     )
-    parser.add_argument("--inputs", metavar="CASES", type=Path, help="a file of projects for --list")
+    parser.add_argument("--inputs", metavar="CASES", type=Path, help="a .yaml file of projects for --list")
     parser.add_argument("--case", metavar="NAME", help="which project of --inputs (the first)")
 
 
@@ -88,8 +88,12 @@ def _project(
             shared.refuse("the project with the most routes is not known: name one with --inputs and --case")
             return None
         return "the project with the most", dict(witness.facts)
+    from samesum.evidence.given import is_table
     from samesum.reading.cases import read_cases
 
+    if is_table(arguments.inputs):
+        shared.refuse(f"{arguments.inputs}: --list names the routes of one project, which a .yaml file has to hold")
+        return None
     found, problems = read_cases(arguments.inputs, evidence.model)
     if problems:
         shared.report(problems)

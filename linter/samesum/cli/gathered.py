@@ -52,8 +52,9 @@ def add_projects(parser: argparse.ArgumentParser) -> None:
         "--projects",
         type=_projects,
         metavar="N",
-        help=f"how many projects to simulate for over-issuance ({PROJECTS:,}; 0 for none, and none for more than "
-        f"{UNASKED_UP_TO} branch points unless it is given)",
+        help="how many projects to simulate for over-issuance: those of --inputs in turn and no others, else drawn "
+        f"from the domains ({PROJECTS:,}; 0 for none, and none for more than {UNASKED_UP_TO} branch points unless it "
+        "is given)",
     )
     parser.add_argument("--seed", type=_projects, default=0, metavar="S", help="where its random numbers start (0)")
 
@@ -134,22 +135,13 @@ def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
 
 def _projects_given(inputs: Path, model: Model) -> tuple[Sequence[Batch], Sequence[str], Sequence[Case]] | None:
     """The projects of a file of cases or of a table; None when there are mistakes in it, which are then said."""
-    from samesum.evidence.choosing.batches import batches_of, batches_of_columns
+    from samesum.evidence.given import read_given
 
-    if inputs.suffix.lower() in (".csv", ".parquet"):
-        from samesum.reading.columns import read_columns
-
-        columns, problems = read_columns(inputs, model)
-        if columns is not None:
-            return batches_of_columns(model, columns), columns.names, ()
-    else:
-        from samesum.reading.cases import read_cases
-
-        cases, problems = read_cases(inputs, model)
-        if not problems:
-            return batches_of(model, cases.cases), [case.name for case in cases.cases], cases.cases
-    shared.report(problems)
-    return None
+    given, problems = read_given(inputs, model)
+    if given is None:
+        shared.report(problems)
+        return None
+    return given.batches(model), given.names, given.cases
 
 
 def _simulated(

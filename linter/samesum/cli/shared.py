@@ -80,7 +80,10 @@ def write(text: str) -> None:
 
 def add_inputs(parser: argparse.ArgumentParser) -> None:
     parser.add_argument(
-        "--inputs", type=Path, metavar="CASES.yaml", help="projects to try the rulebook on: adds what they show"
+        "--inputs",
+        type=Path,
+        metavar="CASES",
+        help="projects to try the rulebook on, a .yaml, .csv or .parquet file: adds what they show",
     )
 
 

@@ -69,6 +69,7 @@ def run(arguments: argparse.Namespace) -> int:
     model = reading.model
     if model.result is None:
         return shared.refuse(f"{arguments.file}: the rulebook has no result, so there is no number to try out")
+    from samesum.evidence.given import is_table
     from samesum.evidence.subjects.declared import needed_mismatches
 
     shared.report(reading.problems)
@@ -78,7 +79,7 @@ def run(arguments: argparse.Namespace) -> int:
         )
     graph = build(model)
     try:
-        if arguments.inputs.suffix.lower() in (".csv", ".parquet"):
+        if is_table(arguments.inputs):
             return _tables(graph, arguments)
         return _cases(graph, arguments)
     except Unplannable as unplannable:

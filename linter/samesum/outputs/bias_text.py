@@ -15,6 +15,7 @@ from samesum.outputs.tables import table_lines
 from samesum.written import whole
 
 MOST_CLOSED = 6
+_NO_ERROR = 5e-7  # what is below is rounding, not chance
 _KINDS = {"choice": "choice", "overlap": "overlap", "setting": "free value", "judgement": "judgement"}
 
 
@@ -25,7 +26,7 @@ def bias_text(selection: Selection, paper: Paper, routes: Routes | None = None) 
     """The whole answer for people. ``routes``: the counts that closing leaves, where they were asked for."""
     page = Page(paper)
     draft = f", draft {selection.model.draft}" if selection.model.draft else ""
-    page.line(f"{selection.model.title}{draft}", "strong")
+    page.paragraph(f"{selection.model.title}{draft}", style="strong")
     page.blank()
     page.paragraph(sentence(selection))
     page.blank()
@@ -138,13 +139,20 @@ def _behaviours(page: Page, figures: Sequence[Figure]) -> None:
     for each in figures:
         closed = "" if each.closed_form is None else f"{_more(each.simulated)} {_error(each.simulated_error)}"
         name = f"{each.behaviour}: {each.option}" if each.option else each.behaviour
-        exact = "by formula" if each.closed_form is not None else _error(each.standard_error)
+        formula = each.closed_form is not None and each.standard_error < _NO_ERROR
+        exact = "by formula" if formula else _error(each.standard_error)
         rows.append((name, _more(each.over_issuance), exact, _percent(each.over_credited, 0), closed))
     titles = ["behaviour", "over-issued", "±", "projects over-credited"]
     if any(row[4] for row in rows):
         titles.append("simulated")
     numbers = titles[1:]
     page.lines += table_lines(titles, [row[: len(titles)] for row in rows], page.paper, numbers=numbers)
+    if any(each.closed_form is not None and each.standard_error >= _NO_ERROR for each in figures):
+        page.paragraph(
+            "Where a simulated figure stands beside it, over-issued is by formula, weighted by what the choice is "
+            "worth in the projects simulated; its ± is that of the weights.",
+            style="quiet",
+        )
 
 
 def _enrolment(page: Page, selection: Selection) -> None:
@@ -183,10 +191,14 @@ def _bars(page: Page, histograms: Mapping[str, tuple[int, ...]]) -> None:
     if not used:
         page.paragraph("No project has true credits above zero.")
         return
-    room = max(6, (page.paper.width - 15) // 2)
+    room = (page.paper.width - 15) // 2
     whole = max(sum(left), 1), max(sum(right), 1)
     longest = max(max(left) / whole[0], max(right) / whole[1])
-    page.lines.append(f"{'all on the reference':>{room}}  issued/true  as developers choose")
+    titles = "all on the reference", "as developers choose"
+    if room >= max(map(len, titles)):
+        page.lines.append(f"{titles[0]:>{room}}  issued/true  {titles[1]}")
+    else:
+        page.paragraph(f"Issued/true in the middle; to the left {titles[0]}, to the right {titles[1]}.")
     for number in range(used[0], used[-1] + 1):
         low, high = number * WIDTH * steps, (number + 1) * WIDTH * steps
         label = f"{low:.1f} to {high:.1f}" if number < len(left) - 1 else f"{low:.1f} and up"
@@ -262,7 +274,7 @@ def _beyond(found: Found) -> str:
 def _closures(page: Page, found: Found, routes: Routes) -> None:
     page.blank()
     latitude = found.latitude
-    page.line(f"{_name(latitude)}: {found.per_thousand:+,.1f} t for 1,000", "strong")
+    page.paragraph(f"{_name(latitude)}: {found.per_thousand:+,.1f} t for 1,000", style="strong")
     rows = []
     for each in found.closures:
         row = [_closed_how(each, latitude), _with_error(each.left), _with_error(each.whole_left)]

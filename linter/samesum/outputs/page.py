@@ -114,10 +114,11 @@ class Page:
         self.lines.extend(" " * (indent + column) + line for line in lines[1:])
 
     def heading(self, text: str) -> None:
-        """A title with a rule after it."""
-        shown = clean(text)
+        """A title with a rule after it, in lines where the page is narrow."""
+        *above, shown = wrapped(clean(text), self.paper.width) or [""]
         room = self.paper.width - width_of(shown) - 1
         self.blank()
+        self.lines += [self.styled(line, "strong") for line in above]
         self.lines.append(self.styled(shown, "strong") + (" " + self.styled("─" * room, "quiet") if room > 2 else ""))
 
     @property
