@@ -373,6 +373,19 @@ def test_a_gap_names_the_table_that_lacks_the_row_for_its_witness(
         check_witnesses(found)
 
 
+@pytest.mark.parametrize(
+    "subject",
+    ["1 / x", "1 / x + y", "2 / (x - 1)", "y / (x - y)", "sqrt(x)", "sqrt(x) + y", "sqrt(x - y)", "sqrt(1 / x)",
+     "ln(x)", "ln(x) + y", "x ^ 0.5", "1 / sqrt(x + y)"],
+)  # fmt: skip
+def test_a_comparison_with_something_that_has_no_value_is_a_gap_with_a_witness(subject: str) -> None:
+    facts = "fact x, -1 to 10, clause 2\nfact y, 0 to 10, clause 2\n"
+    found = told([f"{subject} < 2", f"{subject} >= 2"], facts)
+    assert kinds(found) == [("q", "value")]
+    assert found.counts.per_project_least == 0
+    assert found.conditions.gaps[0].witness is not None
+
+
 # --- many conditions ---------------------------------------------------------------------------
 
 

@@ -98,3 +98,17 @@ def test_facts_that_hang_together_through_a_quantity() -> None:
 def test_settings_alone_leave_every_project_the_same() -> None:
     settings = "setting s, 0 to 1, by developer, clause 3\nsetting v, 0 to 1, by verifier, clause 3\n"
     assert figures(["s < v", "s = v", "s > v"], settings) == (3, 3, 3, 3)
+
+
+@pytest.mark.parametrize(
+    ("subject", "routes"), [("sqrt(s) + x", (2, 2)), ("sqrt(s + x)", (2, 2)), ("sqrt(x) + s / 9", (1, 2))]
+)
+def test_a_root_moves_with_the_setting_in_it(subject: str, routes: tuple[int, int]) -> None:
+    """Whoever sets ``s`` from 0 to 9 takes its root from 0 to 3. Where the solver cannot say which projects that leaves
+    a choice, the figures say so."""
+    facts = "fact x, 0 to 1.5, clause 2\nsetting s, 0 to 9, by developer, clause 3\n"
+    text = rulebook(facts, cases("q", [f"{subject} < 1.6", f"{subject} >= 1.6"]), result="q")
+    counts = evidence_of(text).counts
+    least = counts.per_project_least if counts.exact else counts.at_least["per_project_least"]
+    assert least <= routes[0] <= counts.per_project_least
+    assert counts.per_project_most == routes[1]

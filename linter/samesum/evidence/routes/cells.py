@@ -9,10 +9,11 @@ from __future__ import annotations
 
 import random
 import time
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
+from itertools import islice, product
 
 from samesum.evidence.routes import ranges, symbols
 from samesum.evidence.routes import solver as s
@@ -147,7 +148,8 @@ class _Lister:
     def __init__(self, group: Group, deadline: float) -> None:
         self.group = group
         self.deadline = deadline
-        self.solver = s.Solver(dict(zip(group.names, group.domains, strict=True)), deadline)
+        domains = dict(zip(group.names, group.domains, strict=True))
+        self.solver = s.Solver(domains, deadline, whole=domains)
         self.constraints = [
             [self.solver.within(self.solver.term(each), cell) for cell in cells]
             for each, cells in zip(group.sums, group.sum_cells, strict=True)
@@ -280,8 +282,7 @@ def _seen(group: Group, deadline: float, draws: int = 1_000) -> dict[Vector, tup
             name: _inside(cells[number], random_numbers)
             for name, cells, number in zip(group.names, group.name_cells, chosen, strict=True)
         }
-        found = cells_at(group, point)
-        if found is not None:
+        for found in _all_cells_at(group, point):
             shown.setdefault((*chosen, *found), tuple(point.values()))
     return shown
 
@@ -290,6 +291,19 @@ def _inside(cell: Bounds, random_numbers: random.Random) -> Fraction:
     if cell.low is None or cell.high is None or cell.low == cell.high:
         return representative(cell)
     return cell.low + (cell.high - cell.low) * Fraction(random_numbers.randrange(1, 1000), 1000)
+
+
+def _all_cells_at(group: Group, point: Mapping[str, Fraction]) -> Iterator[Vector]:
+    """The cells of the sums at a point, a sum without a value there in each of its cells; none if one cannot be
+    told."""
+    options: list[tuple[int, ...]] = []
+    for each, cells in zip(group.sums, group.sum_cells, strict=True):
+        cell = cell_at(each, cells, point)
+        if cell is not None:
+            options.append((cell,))
+        else:
+            options.append(tuple(range(len(cells))) if ranges.has_no_value(each, point) else ())
+    return islice(product(*options), MOST_BOXES)
 
 
 def cells_at(group: Group, point: Mapping[str, Fraction]) -> Vector | None:

@@ -217,8 +217,8 @@ def _sets(
     when the solver cannot tell them all."""
     if len(candidates) > MOST_KINDS or any(s.beyond(each) for each in group.sums):
         return None
-    made = s.Solver({}, deadline)
     domains = dict(zip(group.names, group.domains, strict=True))
+    made = s.Solver({}, deadline, whole=domains)
     terms = [*(made.name(name) for name in group.names), *(made.term(each) for each in group.sums)]
 
     def constraint(position: int, cell: int) -> list[object]:

@@ -42,6 +42,38 @@ def bounds(a: Sum, box: Mapping[str, Bounds]) -> Bounds:
     return result
 
 
+def has_no_value(a: Sum, point: Mapping[str, Fraction]) -> bool:
+    """Whether the sum plainly has no value at a point: it divides by zero there, or takes a root or logarithm of what
+    has none."""
+    here = {name: Bounds(value, value) for name, value in point.items()}
+    return any(
+        not isinstance(generator, str)
+        and (any(has_no_value(inner, point) for inner in generator.arguments) or _no_value(generator, here))
+        for monomial, _ in a.terms
+        for generator, _power in monomial
+    )
+
+
+def _no_value(made: Call, here: Mapping[str, Bounds]) -> bool:
+    first, *others = (bounds(argument, here) for argument in made.arguments)
+    match made.function:
+        case "inverse":
+            return first.low == first.high == 0
+        case "sqrt":
+            return first.high is not None and first.high < 0
+        case "ln":
+            return first.high is not None and first.high <= 0
+        case "power":
+            exponent = others[0]
+            if first.low == first.high == 0:
+                return exponent.high is not None and exponent.high < 0
+            if exponent.low is None or exponent.low != exponent.high:
+                return False
+            return first.high is not None and first.high < 0 and exponent.low.denominator != 1
+        case _:
+            return False
+
+
 def _product(a: Bounds, b: Bounds) -> Bounds:
     if a.low == a.high == 0 or b.low == b.high == 0:
         return Bounds(Fraction(0), Fraction(0))

@@ -5,14 +5,11 @@ from __future__ import annotations
 import time
 from collections.abc import Mapping, Sequence
 from fractions import Fraction
-from typing import TYPE_CHECKING, Any, Literal
+from typing import Any, Literal
 
 from samesum.evidence.routes import ranges
 from samesum.evidence.routes.ranges import Bounds
-from samesum.evidence.routes.symbols import Call, Sum
-
-if TYPE_CHECKING:
-    pass
+from samesum.evidence.routes.symbols import Call, Sum, generators
 
 Answer = Literal["yes", "no", "cannot tell"]
 NEGATIVE, ZERO, POSITIVE = 0, 1, 2
@@ -37,10 +34,17 @@ class Solver:
     """One z3 solver over real numbers with the names' domains asserted.
 
     Each check stops at ``deadline`` (monotonic clock) or after ``patience`` milliseconds and is then
-    "cannot tell". A context of its own, so that nothing is shared between analyses.
+    "cannot tell". A context of its own, so that nothing is shared between analyses. A root of a number below 0 is
+    not possible, unless ``whole`` domains are given: inside them it is any number, as 1 / 0 is.
     """
 
-    def __init__(self, box: Mapping[str, Bounds], deadline: float, patience: int = 1500) -> None:
+    def __init__(
+        self,
+        box: Mapping[str, Bounds],
+        deadline: float,
+        patience: int = 1500,
+        whole: Mapping[str, Bounds] | None = None,
+    ) -> None:
         import z3
 
         self._z3 = z3
@@ -50,7 +54,9 @@ class Solver:
         self._patience = patience
         self._names: dict[str, Any] = {}
         self._calls: dict[Call, Any] = {}
+        self._roots: dict[Call, tuple[Any, list[Any]]] = {}
         self._box = box
+        self._whole = whole
         for name in box:
             self.name(name)
 
@@ -123,7 +129,12 @@ class Solver:
                 found = self.value(Fraction(1)) / first
             case "sqrt":
                 found = z3.FreshReal("root", self._context)
-                self._solver.add(found >= zero, found * found == first)
+                meaning = [found >= zero, found * found == first]
+                low = None if self._whole is None else ranges.bounds(made.arguments[0], self._whole).low
+                if self._whole is not None and (low is None or low < 0):
+                    meaning = [z3.Or(first < zero, z3.And(*meaning))]
+                self._roots[made] = (found, meaning)
+                self._solver.add(*meaning)
             case _:
                 found = z3.FreshReal(made.function, self._context)
                 if made.function == "exp":
@@ -183,6 +194,10 @@ class Solver:
         domains = [
             part for name in names if name in self._box for part in self.within(self.name(name), self._box[name])
         ]
+        for made, (root, meaning) in self._roots.items():
+            if generators(made.arguments[0]) & set(names):  # a root of something bound is bound with it
+                bound.append(root)
+                domains += meaning
         goal = z3.Goal(ctx=self._context)
         goal.add(z3.Exists(bound, z3.And(*domains, *constraints)))
         left = self._deadline - time.monotonic()

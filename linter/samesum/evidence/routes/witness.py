@@ -10,7 +10,7 @@ from samesum.evidence.routes import solver as s
 from samesum.evidence.routes.cells import cell_at, representative
 from samesum.evidence.routes.groups import ListedGroup
 from samesum.evidence.routes.network import Network
-from samesum.evidence.routes.ranges import Bounds
+from samesum.evidence.routes.ranges import Bounds, has_no_value
 from samesum.evidence.routes.symbols import nearest
 from samesum.reading import model as m
 
@@ -118,7 +118,7 @@ def group_point(
         if not all(_inside(point[name], cell) for name, cell in wanted.items()):
             return False
         return all(
-            number is None or cell_at(each, cells, point) == number
+            number is None or cell_at(each, cells, point) == number or has_no_value(each, point)
             for each, cells, number in zip(group.sums, group.sum_cells, assigned, strict=True)
         )
 
@@ -129,7 +129,7 @@ def group_point(
     middle = {name: representative(cell) for name, cell in wanted.items()}
     if fits(middle):
         return dict(middle)
-    made = s.Solver(wanted, network.diagrams.limits.deadline + 2.0)
+    made = s.Solver(wanted, network.diagrams.limits.deadline + 2.0, whole=wanted)
     for each, cells, number in zip(group.sums, group.sum_cells, assigned, strict=True):
         if number is not None:
             made.add(*made.within(made.term(each), cells[number]))
