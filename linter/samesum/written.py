@@ -76,6 +76,19 @@ def percent(value: Fraction) -> str:
     return f"{plain(round(hundred / step) * step)} %"
 
 
+def share(value: float) -> str:
+    """A share of something for people: ``43.4 %``; ``153,000 times`` from ten times on, ``0 %``."""
+    if abs(value) < 10:
+        return percent(Fraction(f"{value:.6g}"))
+    return f"{plain(Fraction(f'{value:.3g}'))} times"
+
+
+def of_reference(value: float) -> str:
+    """``43.4 % of the reference``; ``153,000 times the reference`` from ten times on."""
+    said = share(value)
+    return f"{said} the reference" if said.endswith(" times") else f"{said} of the reference"
+
+
 def number(value: Fraction) -> int | float | str:
     """A number for JSON: whole numbers whole, others as the nearest floating-point number where that is exact to
     its last digit, else as a fraction ``"125/6"``, so that a witness can be replayed exactly."""

@@ -65,8 +65,8 @@ def test_measured_numbers_for_people(value: str, text: str) -> None:
 )
 def test_a_share_is_written_alike_in_trial_register_and_report(value: float, text: str) -> None:
     assert amounts.share(value) == register_cells.share(value) == text
-    proof = SimpleNamespace(low=value, high=None)
-    assert f"at least {text} of the reference" in worst_case(cast(TrialEvidence, SimpleNamespace(proof=proof)))
+    proof = SimpleNamespace(low=value, high=None, unbounded="")
+    assert f"at least {text} the reference apart" in worst_case(cast(TrialEvidence, SimpleNamespace(proof=proof)))
 
 
 def test_a_witness_has_separators_for_people_and_none_in_json() -> None:

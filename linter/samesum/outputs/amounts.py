@@ -5,7 +5,8 @@ from __future__ import annotations
 import math
 from fractions import Fraction
 
-from samesum.written import percent, plain
+from samesum import written
+from samesum.written import plain
 
 
 def amount(value: float, unit: str = "") -> str:
@@ -31,6 +32,4 @@ def share(value: float | None) -> str:
         return "not known"
     if math.isinf(value):
         return "no bound"
-    if abs(value) >= 10:
-        return f"{amount(float(f'{value:.3g}'))} times"
-    return percent(Fraction(f"{value:.6g}")) if value else "0 %"
+    return written.share(value)

@@ -15,7 +15,7 @@ from samesum.outputs.counts import title_of
 from samesum.outputs.page import CAUTION, Page, Paper, clean, width_of
 from samesum.outputs.projects import Words, words_for
 from samesum.outputs.projects import given as given_value
-from samesum.written import whole
+from samesum.written import of_reference, whole
 
 MOST_CASES = 12
 MOST_MOVERS = 14
@@ -68,7 +68,7 @@ def _case(page: Page, case: CaseTrial, unit: str, widest: float) -> None:
         page.entry("reference", amount(case.reference.issued, unit), 4, 14)
     page.entry("highest", amount(case.highest.issued, unit), 4, 14)
     if case.spread is not None:
-        page.entry("spread", f"{share(case.spread)} of the reference", 4, 14)
+        page.entry("spread", of_reference(case.spread), 4, 14)
     if case.spread:
         _bar(page, case, widest)
     if not case.complete:
@@ -109,7 +109,7 @@ def _summary(page: Page, evidence: TrialEvidence, unit: str) -> None:
             "same number", f"{whole(sum(1 for each in known if each < 1e-12))}: one result on every route", 4, 14
         )
         middle = known[len(known) // 2]
-        page.entry("spread", f"{share(middle)} of the reference in the middle, {share(known[-1])} at most", 4, 14)
+        page.entry("spread", f"{of_reference(middle)} in the middle, {share(known[-1])} at most", 4, 14)
     order = sorted(
         (place for place in range(len(evidence)) if math.isfinite(spreads[place])), key=lambda p: (-spreads[p], p)
     )
@@ -214,9 +214,11 @@ def _proved(page: Page, evidence: TrialEvidence) -> None:
         listed = ", ".join(failed[:8]) + (" and others" if len(failed) > 8 else "")
         text = "The worked example does not come out" if len(failed) == 1 else "Worked examples do not come out"
         page.paragraph(f"{text}: {listed}.", indent=4, style="bad")
-    if proof.verdict != "single route" and (proof.low is not None or proof.high is not None):
-        low = "0 %" if not proof.low else share(proof.low)
+    if proof.verdict != "single route" and (proof.low is not None or proof.high is not None or proof.unbounded):
+        low = of_reference(proof.low or 0.0)
         high = "no bound was proved" if proof.high is None else f"at most {share(proof.high)}, proved by {proof.by}"
+        if proof.unbounded:
+            high = f"there is no bound, for {proof.unbounded}"
         page.paragraph(f"Worst case over all projects: at least {low}; {high}.", indent=4)
     if proof.witness is not None and not proof.witness.case:
         page.paragraph(f"The project that was found: {_described(proof.witness.values, words)}.", 4, "quiet")

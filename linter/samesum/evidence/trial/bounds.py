@@ -55,9 +55,13 @@ class Boxes:
 
 def domain_boxes(plan: Plan) -> Boxes:
     """One box that holds every project and everything that anybody decides."""
-    low = {name: np.array([-math.inf if each.low is None else float(each.low)]) for name, each in plan.numeric.items()}
+    low = {
+        name: np.full(1, -math.inf) if each.low is None else iv.exactly(each.low).low
+        for name, each in plan.numeric.items()
+    }
     high = {
-        name: np.array([math.inf if each.high is None else float(each.high)]) for name, each in plan.numeric.items()
+        name: np.full(1, math.inf) if each.high is None else iv.exactly(each.high).high
+        for name, each in plan.numeric.items()
     }
     codes = {name: np.ones((len(values), 1), dtype=bool) for name, values in plan.named.items()}
     yes = np.ones(1, dtype=bool)

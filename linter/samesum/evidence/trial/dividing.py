@@ -1,7 +1,9 @@
 """The lowest of a number over a box of inputs, found and proved by dividing the box (branch and bound).
 
 Many problems go side by side. A box whose proved bound cannot beat what was found is dropped; the others are
-pinned in every input in which the number only rises or only falls, and halved where the number moves most.
+pinned in every input in which the number only rises or only falls, and halved where the number moves most. Where
+conditions must hold besides, boxes in which one fails for certain are dropped, and a box in which one may fail is
+pinned only for its bound.
 """
 
 from __future__ import annotations
@@ -44,6 +46,8 @@ def lowest_over(
     problems: Array | None = None,
     scale: Array | None = None,
     most: int = MOST_BOXES,
+    known: Array | None = None,
+    conditions: tuple[int, ...] = (),
 ) -> Bracket:
     """The lowest (or ``highest``) of a node over each box, splitting the inputs ``names``. Stops when found and
     proved are within ``close`` of each other (relative to what was found), at ``deadline``, or when there are too
@@ -52,10 +56,12 @@ def lowest_over(
     ``reached``: what the caller knows to be reached, problem by problem; then nothing else is looked for. Without
     it, only one route may be open (``taken`` settles the others), so that a number in the middle of a box is reached.
     ``problems``: the problem of each box, where several boxes belong to one. ``scale``: what ``close`` is
-    relative to where a problem's own number is smaller; ``most``: boxes looked at, all in all."""
+    relative to where a problem's own number is smaller; ``most``: boxes looked at, all in all; ``known``: what is
+    reached elsewhere, to be bettered; ``conditions``: nodes that must hold."""
     if problems is None:
         problems = np.arange(boxes.count)
-    work = _Division(plan, node, boxes, names, problems, -1.0 if highest else 1.0, reached, scale, most)
+    sign = -1.0 if highest else 1.0
+    work = _Division(plan, node, boxes, names, problems, sign, reached, scale, most, known, conditions)
     return work.run(deadline, close)
 
 
@@ -81,13 +87,16 @@ class _Division:
     reached: Array | None
     scale: Array | None
     most: int
+    known: Array | None = None
+    conditions: tuple[int, ...] = ()
 
     def run(self, deadline: float, close: float) -> Bracket:
         count = int(self.problems.max()) + 1 if len(self.problems) else 0
+        start = self.known if self.reached is None else self.reached
         found: Array = (
             np.full(count, np.inf)
-            if self.reached is None
-            else self.sign * np.where(np.isnan(self.reached), self.sign * np.inf, self.reached)
+            if start is None
+            else self.sign * np.where(np.isnan(start), self.sign * np.inf, start)
         )
         point = {name: np.full(count, np.nan) for name in self.names}
         owner = np.arange(self.boxes.count)
@@ -148,20 +157,36 @@ class _Division:
             lows[name], highs[name] = low[place], high[place]
         return Boxes(len(owner), lows, highs, part.codes, part.flags, part.taken)
 
-    def _ranged(self, owner: Array, low: Array, high: Array, slopes: bool) -> Ranged:
+    def _ranges(self, owner: Array, low: Array, high: Array, slopes: bool) -> Ranges:
         names = frozenset(self.names) if slopes else frozenset[str]()
-        return Ranges(self.plan, self._inputs(owner, low, high), names).number(self.node)
+        return Ranges(self.plan, self._inputs(owner, low, high), names)
+
+    def _ranged(self, owner: Array, low: Array, high: Array) -> Ranged:
+        return self._ranges(owner, low, high, False).number(self.node)
+
+    def _asked(self, ranges: Ranges, size: int) -> tuple[Array, Array]:
+        """Boxes in which a condition fails for certain, and those in which one may fail."""
+        fails: Array = np.zeros(size, dtype=bool)
+        doubtful: Array = np.zeros(size, dtype=bool)
+        for each in self.conditions:
+            verdict = ranges.verdict(each)
+            fails = fails | ~verdict.may
+            doubtful = doubtful | verdict.may_not
+        return fails, doubtful
 
     def _bounded(self, owner: Array, low: Array, high: Array) -> tuple[Array, Array, Array, Array]:
         """A lower bound of each box, the box pinned where that loses nothing, and which input to split."""
         size = len(owner)
-        ranged = self._ranged(owner, low, high, True)
+        ranges = self._ranges(owner, low, high, True)
+        ranged = ranges.number(self.node)
+        fails, doubtful = self._asked(ranges, size)
+        whole_low, whole_high = low, high
         bound = np.broadcast_to(self._low(ranged.value), (size,)).copy()
         low, high = low.copy(), high.copy()
         steep: Array = np.zeros((max(1, len(self.names)), size))
         pinned: Array = np.zeros(size, dtype=bool)
         empty = np.broadcast_to(ranged.value.low > ranged.value.high, (size,))
-        bound[empty] = np.inf
+        bound[empty | fails] = np.inf
         for place, name in enumerate(self.names):
             slope = ranged.slopes.get(name)
             down, up = (np.zeros(size), np.zeros(size)) if slope is None else self._signed(slope, size)
@@ -177,10 +202,22 @@ class _Division:
             )
         if pinned.any():
             again = np.flatnonzero(pinned)
-            inner = self._ranged(owner[again], low[:, again], high[:, again], False)
+            inner = self._ranged(owner[again], low[:, again], high[:, again])
             bound[again] = np.maximum(bound[again], self._low(inner.value))
         bound = np.maximum(bound, self._mean_value(owner, low, high, ranged, size))
-        return bound, low, high, np.argmax(steep, axis=0)
+        split = np.argmax(steep, axis=0)
+        if doubtful.any():
+            low, high = np.where(doubtful, whole_low, low), np.where(doubtful, whole_high, high)
+            split = np.where(doubtful, self._widest(owner, low, high), split)
+        return bound, low, high, split
+
+    def _widest(self, owner: Array, low: Array, high: Array) -> Array:
+        """The input of each box that is widest in proportion to where it began."""
+        if not self.names:
+            return np.zeros(len(owner), dtype=np.intp)
+        whole = np.stack([self.boxes.high[name][owner] - self.boxes.low[name][owner] for name in self.names])
+        with np.errstate(all="ignore"):
+            return np.asarray(np.argmax(np.where(whole > 0, (high - low) / whole, 0.0), axis=0))
 
     def _signed(self, slope: Interval, size: int) -> tuple[Array, Array]:
         down, up = np.broadcast_to(slope.low, (size,)), np.broadcast_to(slope.high, (size,))
@@ -192,7 +229,7 @@ class _Division:
     def _mean_value(self, owner: Array, low: Array, high: Array, ranged: Ranged, size: int) -> Array:
         """The number in the middle, and how far its slopes can take it from there."""
         middle = (low + high) / 2
-        at = self._ranged(owner, middle, middle, False).value
+        at = self._ranged(owner, middle, middle).value
         total = Interval(np.broadcast_to(at.low, (size,)), np.broadcast_to(at.high, (size,)))
         with np.errstate(all="ignore"):
             for place, name in enumerate(self.names):
@@ -208,9 +245,11 @@ class _Division:
         """What the number is at some points: the upper end of its interval there is reached or bettered."""
         if self.reached is not None:
             return
-        value = self._ranged(owner, at, at, False).value
+        ranges = self._ranges(owner, at, at, False)
+        value = ranges.number(self.node).value
+        fails, doubtful = self._asked(ranges, len(owner))
         here = np.broadcast_to(value.high if self.sign > 0 else -value.low, (len(owner),))
-        here = np.where(np.isfinite(here), here, np.inf)
+        here = np.where(np.isfinite(here) & ~fails & ~doubtful, here, np.inf)
         mine = self.problems[owner]
         order = np.lexsort((here, mine))
         first = order[np.concatenate([[True], np.diff(mine[order]) != 0])] if len(order) else order

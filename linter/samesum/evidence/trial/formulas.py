@@ -48,8 +48,19 @@ def atoms_box(ranges: Ranges, sums: Iterable[Sum]) -> dict[str, tuple[float, flo
     return found
 
 
+OPERATORS = {(-1,): "<", (-1, 0): "<=", (0,): "=", (-1, 1): "<>", (0, 1): ">=", (1,): ">"}
+
+
 def mini_plan(plan: Plan, above: Sum, below: Sum | None = None) -> tuple[Plan, int]:
     """A plan of ``above / below`` over the names as inputs, and its node."""
+    made, node, _ = mini_plan_under(plan, above, below, ())
+    return made, node
+
+
+def mini_plan_under(
+    plan: Plan, above: Sum, below: Sum | None, signs: Iterable[tuple[Sum, frozenset[int]]]
+) -> tuple[Plan, int, tuple[int, ...]]:
+    """The same with nodes that say that each of the ``signs``' sums has one of its signs (-1, 0, 1)."""
     builder = _Builder()
     node = builder.sum(above)
     if below is not None and below != symbols.number(1):
@@ -57,9 +68,14 @@ def mini_plan(plan: Plan, above: Sum, below: Sum | None = None) -> tuple[Plan, i
             node = builder.make(Node("linear", (node,), weights=(1 / below.constant,)))
         else:
             node = builder.make(Node("divide", (node, builder.sum(below))))
+    conditions = []
+    for value, wanted in signs:
+        sides = (builder.sum(value), builder.number(Fraction(0)))
+        conditions.append(builder.make(Node("compare", sides, OPERATORS[tuple(sorted(wanted))])))
     names = {each.name for each in builder.nodes if each.kind == "input"}
     numeric = MappingProxyType({name: m.Range(None, None) for name in sorted(names)})
-    return replace(plan, nodes=tuple(builder.nodes), root=node, result=node, points={}, numeric=numeric), node
+    made = replace(plan, nodes=tuple(builder.nodes), root=node, result=node, points={}, numeric=numeric)
+    return made, node, tuple(conditions)
 
 
 class _Builder:

@@ -10,24 +10,29 @@ from fractions import Fraction
 from typing import TYPE_CHECKING, Literal
 
 from samesum.evidence.routes.conditions import Gap
-from samesum.evidence.routes.witness import usual
+from samesum.evidence.trial.bracket import CLOSE, proved_worst, sizes_below
 from samesum.evidence.trial.deviation import Deviations
 from samesum.evidence.trial.figures import Figures, codes_of
-from samesum.evidence.trial.plan import Plan, Unplannable, make_plan
-from samesum.evidence.trial.ways import Apart, further_apart
-from samesum.evidence.trial.worst import Project, Worst, project_at, values_of, widest, worst_at, worst_case_of
+from samesum.evidence.trial.plan import Plan, Unplannable, make_plan, resized
+from samesum.evidence.trial.unbounded import NEAR_ZERO, NEXT_TO_ZERO, no_bound
+from samesum.evidence.trial.ways import further_apart
+from samesum.evidence.trial.worst import Worst, project_at, project_of, values_of, widest, worst_at, worst_case_of
 from samesum.graph import DecisionGraph
-from samesum.written import percent
+from samesum.written import of_reference
 
 if TYPE_CHECKING:
     from samesum.evidence.evidence import Evidence
+
+INTERVALS = "outward-rounded intervals"
+MOST_SIZES = 200
 
 Verdict = Literal["single route", "same number", "within tolerance", "agrees on these cases", "differs", "gap"]
 
 
 @dataclass(frozen=True, slots=True)
 class Proof:
-    """``low`` is reached by ``witness``; ``high`` is proved, None where no bound was. ``by`` says how it was proved.
+    """``low`` is reached by ``witness``; ``high`` is proved, None where no bound was. ``by`` says how it was proved,
+    ``unbounded`` why there can be no bound, where that is known.
     ``gaps``: branch points at which some project has no result. ``harmless``: overlaps proved to give one number
     (branch point, branches)."""
 
@@ -40,6 +45,7 @@ class Proof:
     gaps: tuple[Gap, ...]
     harmless: tuple[tuple[str, tuple[str, str]], ...]
     stuck_cases: tuple[str, ...]
+    unbounded: str = ""
 
 
 def prove(
@@ -75,9 +81,10 @@ def prove(
     }
     high, by = _upper(plan, overlapping, tolerance, deadline)
     worst = _lower(plan, figures, names, at, high, tolerance, deadline)
+    high, by, worst, unbounded = _closer(plan, high, by, worst, deadline)
     case = worst_case_of(figures, names)
     given = None if case is None else (case[0], case[1])
-    return _verdict(evidence, stuck, tolerance, high, by, worst, harmless, bool(len(names)), given)
+    return _verdict(evidence, stuck, tolerance, high, by, worst, harmless, bool(len(names)), given, unbounded)
 
 
 def _single_route(evidence: Evidence, stuck: Sequence[str]) -> str:
@@ -108,17 +115,79 @@ def harmless_overlaps(evidence: Evidence, seconds: float) -> tuple[tuple[str, tu
 def _upper(plan: Plan, overlapping: frozenset[str], tolerance: Fraction, deadline: float) -> tuple[float | None, str]:
     """A proved bound of the spread over all projects, and by what."""
     until = time.monotonic() + max(0.2, (deadline - time.monotonic()) / 3)
+    high, by = _upper_of(plan, overlapping, tolerance, until)
+    smaller = None if high is None else _smaller(plan)
+    if high is None or smaller is None:
+        return None, ""
+    for each in smaller:
+        also, how = _upper_of(each, overlapping | _loose(each), tolerance, until)
+        if also is None:
+            return None, ""
+        high, by = max((high, by), (also, how))
+    return high, by
+
+
+def _upper_of(plan: Plan, overlapping: frozenset[str], tolerance: Fraction, until: float) -> tuple[float | None, str]:
+    """The same over projects of the plan's size."""
     found = Deviations(plan, overlapping, until).result()
     if found is None:
         return 0.0, "the formulas are the same"
     high = math.nextafter(float(found.high[0]) - float(found.low[0]), math.inf)
     bound = high if math.isfinite(high) else None
     if bound is not None and bound <= tolerance:
-        return bound, "outward-rounded intervals"
+        return bound, INTERVALS
     apart = further_apart(plan, tolerance, until)
     if apart.answer == "no":
-        return float(tolerance), "the solver"
-    return bound, "outward-rounded intervals" if bound is not None else ""
+        return min(float(tolerance), math.inf if bound is None else bound), "the solver"
+    return bound, INTERVALS if bound is not None else ""
+
+
+def _smaller(plan: Plan) -> list[Plan] | None:
+    """The plans of all projects with fewer elements; None when there are too many sizes."""
+    model = plan.graph.model
+    if math.prod(each.most for each in model.indices) > MOST_SIZES:
+        return None
+    sizes = sizes_below([(each.name, each.most) for each in model.indices])
+    return [make_plan(resized(model, each)) for each in sizes]
+
+
+def _loose(plan: Plan) -> frozenset[str]:
+    """Cases that ask for sums over elements: whether two of them hold at once may rest on how many there are."""
+    asked: list[frozenset[str]] = []
+    for node in plan.nodes:
+        own = {node.name.rpartition("@")[2]} if node.kind in ("input", "code", "holds") and "@" in node.name else set()
+        asked.append(frozenset(own).union(*(asked[each] for each in node.args)))
+    return frozenset(
+        id
+        for id, number in plan.points.items()
+        if plan.graph.branch_points[id].kind == "cases"
+        and asked[number] - {id.partition("/")[0].rpartition("@")[2] if "@" in id else ""}
+    )
+
+
+def _closer(
+    plan: Plan, high: float | None, by: str, worst: Worst | None, deadline: float
+) -> tuple[float | None, str, Worst | None, str]:
+    """Both ends of the worst case nearer to each other: the bound, by what, the widest spread found, and why there is
+    no bound where there is none."""
+    low = 0.0 if worst is None or worst.spread is None else worst.spread
+    if high is not None and high <= low * (1 + CLOSE):
+        return high, by, worst, ""
+    if high is None:
+        none = no_bound(plan)
+        if none is not None:
+            return None, "", worst if low else worst_at(plan, none.project), none.why
+    smaller = _smaller(plan)
+    if smaller is None:
+        return high, by, worst, ""
+    proved, shown = proved_worst((plan, *smaller), low, deadline)
+    if shown is not None:
+        worst = shown
+    if proved is not None and (high is None or proved < high):
+        high, by = proved, INTERVALS
+    if high is None and worst is not None and worst.spread is not None and worst.spread > NEAR_ZERO:
+        return None, "", worst, NEXT_TO_ZERO
+    return high, by, worst, ""
 
 
 def _lower(
@@ -153,32 +222,10 @@ def _lower(
     if (best is None or best.spread is None or best.spread <= float(tolerance)) and time.monotonic() < deadline:
         apart = further_apart(plan, tolerance, deadline)
         if apart.answer == "yes":
-            shown = worst_at(plan, _project(plan, apart))
+            shown = worst_at(plan, project_of(plan, apart.point, apart.names))
             if shown.spread is not None and (best is None or best.spread is None or shown.spread > best.spread):
                 best = shown
     return best
-
-
-def _project(plan: Plan, apart: Apart) -> Project:
-    project: Project = {}
-    for fact in plan.graph.model.facts:
-        size = plan.graph.sizes.get(fact.index, 0)
-        for element in range(1, size + 1) if fact.index else (0,):
-            id = f"{fact.name}@{element}" if fact.index else fact.name
-            value = usual(fact.domain)
-            if id in apart.point:
-                value = apart.point[id]
-            elif id in apart.names:
-                code = apart.names[id]
-                value = plan.named[id][code] if id in plan.named else bool(code)
-            project[id] = value
-    return project
-
-
-def _share(value: float) -> str:
-    if value >= 10:
-        return f"{value:,.3g} times" if value < 1e6 else f"{value:.2e} times"
-    return percent(Fraction(f"{value:.6g}"))
 
 
 def _verdict(
@@ -191,21 +238,24 @@ def _verdict(
     harmless: tuple[tuple[str, tuple[str, str]], ...],
     any_cases: bool,
     given: tuple[float, str] | None,
+    unbounded: str,
 ) -> Proof:
     gaps = evidence.conditions.gaps
     low = worst.spread if worst is not None else None
     if high is not None and low is not None:
         # what rounding of floats makes of two equal numbers is no difference
         low = 0.0 if high == 0.0 or low < 1e-12 else min(low, high)
-    witness = worst if low else None
+    witness = worst if low or unbounded else None
 
     def made(verdict: Verdict, says: str) -> Proof:
-        return Proof(verdict, says, low, high, by, witness, gaps, harmless, stuck)
+        return Proof(verdict, says, low, high, by, witness, gaps, harmless, stuck, unbounded)
 
     if low is not None and low > tolerance:
         if given is not None and given[0] > max(float(tolerance), 1e-12):
-            return made("differs", f"the results of {given[1]} lie {_share(given[0])} of the reference apart")
-        return made("differs", f"a project was found whose results lie {_share(low)} of the reference apart")
+            return made("differs", f"the results of {given[1]} lie {of_reference(given[0])} apart")
+        return made("differs", f"a project was found whose results lie {of_reference(low)} apart")
+    if unbounded and not low:
+        return made("differs", "a project was found whose reference result is zero and whose results lie apart")
     if gaps or stuck or (evidence.counts.exact and evidence.counts.per_project_least == 0):
         places = ", ".join(dict.fromkeys(gap.branch_point for gap in gaps))
         return made("gap", f"some project has no result at {places}" if places else "some project has no result")
@@ -215,9 +265,7 @@ def _verdict(
     if high is not None and high <= tolerance and certain:
         if high == 0.0 or not tolerance:
             return made("same number", f"several routes, proved to give one number ({by})")
-        return made(
-            "within tolerance", f"no project's results lie further apart than {_share(high)} of the reference ({by})"
-        )
+        return made("within tolerance", f"no project's results lie further apart than {of_reference(high)} ({by})")
     if any_cases:
         return made("agrees on these cases", "no difference was found, and none was ruled out")
     return made("agrees on these cases", "no difference was found among the projects tried, and none was ruled out")

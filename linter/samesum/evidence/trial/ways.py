@@ -324,20 +324,39 @@ class Apart:
     names: Mapping[str, int | bool] = field(default_factory=dict)
 
 
-def further_apart(plan: Plan, tolerance: Fraction, deadline: float) -> Apart:
-    """Whether results can lie further apart than ``tolerance`` × |reference|, by the solver. "no" is a proof."""
+@dataclass(frozen=True, slots=True)
+class Question:
+    """Two results that one project can have, ``high`` and ``low``, its ``reference``, and under ``when``."""
+
+    when: Conditions
+    high: Sum
+    low: Sum
+    reference: Sum
+
+
+def all_questions(plan: Plan, deadline: float) -> tuple[list[Question], dict[str, Bounds]] | None:
+    """Every pair of results that one project can have, and the domains of the names in them; settings of ``low`` end
+    in ``'``, those of the reference are numbers. None when there are too many."""
     box: dict[str, Bounds] = {}
     try:
         first = Executor(plan, False, "", box, deadline).result()
         second = Executor(plan, False, "'", box, deadline).result()
         references = Executor(plan, True, "", box, deadline).result()
-        questions = list(_questions(first, second, references))
+        return list(_questions(first, second, references)), box
     except TooManyWays:
+        return None
+
+
+def further_apart(plan: Plan, tolerance: Fraction, deadline: float) -> Apart:
+    """Whether results can lie further apart than ``tolerance`` × |reference|, by the solver. "no" is a proof."""
+    asked = all_questions(plan, deadline)
+    if asked is None:
         return Apart("cannot tell")
+    questions, box = asked
     answer: Answer = "no"
     solver = s.Solver(box, deadline)
-    for when, high, low, reference in questions:
-        found = _ask(solver, plan, when, high, low, reference, tolerance)
+    for each in questions:
+        found = _ask(solver, plan, each.when, each.high, each.low, each.reference, tolerance)
         if found.answer == "yes":
             return found
         if found.answer == "cannot tell":
@@ -345,9 +364,7 @@ def further_apart(plan: Plan, tolerance: Fraction, deadline: float) -> Apart:
     return Apart(answer)
 
 
-def _questions(
-    first: Sequence[Way], second: Sequence[Way], references: Sequence[Way]
-) -> Iterator[tuple[Conditions, Sum, Sum, Sum]]:
+def _questions(first: Sequence[Way], second: Sequence[Way], references: Sequence[Way]) -> Iterator[Question]:
     count = 0
     for one in first:
         for other in second:
@@ -359,7 +376,7 @@ def _questions(
                         count += 1
                         if count > MOST_QUESTIONS:
                             raise TooManyWays
-                        yield when, one.value, other.value, reference.value
+                        yield Question(when, one.value, other.value, reference.value)
 
 
 def _ask(

@@ -14,7 +14,7 @@ from fractions import Fraction
 import numpy as np
 
 from samesum.evidence.choosing.batches import middle, rows_of
-from samesum.evidence.routes.witness import Value
+from samesum.evidence.routes.witness import Value, usual
 from samesum.evidence.trial.arrays import Array
 from samesum.evidence.trial.extremes import Extremes, find_extremes, find_range
 from samesum.evidence.trial.figures import Figures, reference_of, spread_of
@@ -24,6 +24,7 @@ from samesum.reading import model as m
 from samesum.reading.cases import Case
 from samesum.spans import START
 
+SEED = 20_06
 DRAWN = 96
 ROUNDS = 14
 MUTANTS = 64
@@ -43,12 +44,17 @@ class Worst:
     case: str = ""
 
 
-def widest(plan: Plan, deadline: float, seed: int = 20_06) -> Worst:
+def drawn(plan: Plan, draw: random.Random) -> list[Project]:
+    """Projects of full size at the domains' ends, at thresholds and in between."""
+    marks = _marks(plan)
+    return [_drawn(plan, draw, marks) for _ in range(DRAWN)]
+
+
+def widest(plan: Plan, deadline: float, seed: int = SEED) -> Worst:
     """The widest spread found over projects of full size, by drawing and then changing a few facts at a time."""
     draw = random.Random(seed)
     marks = _marks(plan)
-    projects = [_drawn(plan, draw, marks) for _ in range(DRAWN)]
-    best = _tried(plan, projects)
+    best = _tried(plan, drawn(plan, draw))
     for _ in range(ROUNDS):
         if best is None or time.monotonic() > deadline:
             break
@@ -118,6 +124,28 @@ def project_at(plan: Plan, rows: Rows, row: int) -> Project:
             else:
                 project[id] = Fraction(repr(float(rows.numbers[id][row])))
     return project
+
+
+def project_of(plan: Plan, numbers: Mapping[str, Fraction], names: Mapping[str, int | bool]) -> Project:
+    """A project with these numbers and codes, inside the domains; what is not given stands half-way."""
+    project: Project = {}
+    for fact in plan.graph.model.facts:
+        size = plan.graph.sizes.get(fact.index, 0)
+        for element in range(1, size + 1) if fact.index else (0,):
+            id = f"{fact.name}@{element}" if fact.index else fact.name
+            value = usual(fact.domain)
+            if id in numbers and isinstance(fact.domain, m.Range):
+                value = _clipped(numbers[id], fact.domain)
+            elif id in names:
+                code = names[id]
+                value = plan.named[id][code] if id in plan.named else bool(code)
+            project[id] = value
+    return project
+
+
+def _clipped(value: Fraction, domain: m.Range) -> Fraction:
+    low = value if domain.low is None else max(value, domain.low)
+    return low if domain.high is None else min(low, domain.high)
 
 
 def _spreads(plan: Plan, projects: Sequence[Project]) -> tuple[Extremes, Array]:

@@ -9,7 +9,7 @@ from samesum.outputs.amounts import amount, share
 from samesum.outputs.bias_text import sentence
 from samesum.outputs.report.figures import CaseSpread, ClosingStep, Histogram
 from samesum.reviewing.measured import headline
-from samesum.written import whole
+from samesum.written import of_reference, whole
 
 MOST_CASES = 40
 
@@ -54,14 +54,15 @@ def worst_case(trial: TrialEvidence) -> str:
     proof = trial.proof
     if proof.low is None and proof.high is None:
         return ""
-    low = share(proof.low) if proof.low is not None else "something"
+    low = of_reference(proof.low) if proof.low is not None else "something"
     everywhere = "Over all projects in the declared domains, results"
     if proof.high is None:
-        return f"{everywhere} can lie at least {low} of the reference apart; no bound above was proved."
+        above = f"there is no bound above, for {proof.unbounded}" if proof.unbounded else "no bound above was proved"
+        return f"{everywhere} can lie at least {low} apart; {above}."
     if proof.low == proof.high == 0:
         return f"{everywhere} are proved not to lie apart."
     high = share(proof.high)
-    return f"{everywhere} can lie {low} of the reference apart, and are proved to lie at most {high} apart."
+    return f"{everywhere} can lie {low} apart, and are proved to lie at most {high} apart."
 
 
 def proved(trial: TrialEvidence) -> str:
