@@ -115,10 +115,18 @@ class Maker(Declarer):
         table = self.pick(self.usable_tables(here))
         if table.name != "curve":
             return Lookup(table.name, tuple(Ref(k) for k in table.keys))
-        places = [Ref(n) for n in self.numeric(here)] or [whole(1)]
-        if self.known(here) and self.maybe(25):
-            return Lookup("curve", (self.use(self.pick(self.known(here)).name),))
-        return Lookup("curve", (self.pick(places),))
+        return self.banded(here)
+
+    def banded(self, here: str, depth: int = 0) -> Expression:
+        """The table of bands asked with a fact, a number, something calculated, or what it answers itself."""
+        numbers = self.numeric(here)
+        ways: list[Callable[[], Expression]] = [lambda: Ref(self.pick(numbers)) if numbers else whole(1)] * 4
+        ways += [self.number]
+        if self.known(here):
+            ways += [lambda: self.use(self.pick(self.known(here)).name)] * 2
+        if depth < 2:
+            ways += [lambda: self.banded(here, depth + 1)]
+        return Lookup("curve", (self.pick(ways)(),))
 
     def formula(self, here: str) -> Expression:
         e = self.term(here)
@@ -131,6 +139,8 @@ class Maker(Declarer):
             e = Op("*", e, self.pick((Ref(free[0]), Op("-", whole(1), Ref(free[0])))))
         if self.maybe(8):
             e = Call(self.pick(("min", "max")), (e, self.term(here)))
+        if any(table.name == "curve" for table in self.tables) and self.maybe(20):
+            e = Op(self.pick(("+", "-", "/")), e, self.banded(here))
         if self.maybe(8):
             e = self.bent(e, here)
         if self.maybe(6):
