@@ -194,30 +194,6 @@ def mentions(node: m.Expression | m.Condition, elements: Element, sizes: Mapping
                 yield from mentions(part, elements, sizes)
 
 
-def worked_on(node: m.Expression | m.Condition, elements: Element, sizes: Mapping[str, int]) -> Iterator[Mention]:
-    """What is mentioned inside operations that may have no value: a table's arguments, a divisor, a
-    logarithm or a root."""
-    match node:
-        case m.Lookup(arguments=inner):
-            found: tuple[m.Expression, ...] = inner
-        case m.Arithmetic(operator="/", right=divisor):
-            found = (divisor,)
-        case m.Arithmetic(operator="^", left=base):
-            found = (base,)
-        case m.Function(name="ln" | "sqrt", arguments=inner):
-            found = inner
-        case m.Reduction(body=body, index=index):
-            for element in range(1, sizes.get(index, 0) + 1):
-                yield from worked_on(body, {**elements, index: element}, sizes)
-            return
-        case _:
-            for part in walk.parts(node):
-                yield from worked_on(part, elements, sizes)
-            return
-    for part in found:
-        yield from mentions(part, elements, sizes)
-
-
 def links(graph: DecisionGraph) -> networkx.DiGraph[str]:
     """What leads to what, by declared name (elements together): an edge A → B where B uses A.
 
