@@ -83,6 +83,12 @@ def features(made: Rulebook) -> set[str]:
                 found.add("a setting compared")
         if isinstance(node, Cases | Choice) and any(not isinstance(b, Formula) for _, _, b in branches(node)):
             found.add("nested")
+        if isinstance(node, Lookup) and any(isinstance(each, Lookup) for a in node.arguments for each in inside(a)):
+            found.add("a table asked with what a table answers")
+        if isinstance(node, Op) and all(
+            any(isinstance(each, Lookup) for each in inside(side)) for side in (node.left, node.right)
+        ):
+            found.add("tables on both sides of an operation")
     for applies in made.applies:
         if any(isinstance(each, Holds) and each.name in {j.name for j in made.judgements} for each in inside(applies)):
             found.add("applies on a judgement")
@@ -148,6 +154,8 @@ def test_every_feature_is_generated_often_enough() -> None:
         "a calculated quantity that hangs on a setting compared",
         "two names compared",
         "a setting compared",
+        "a table asked with what a table answers",
+        "tables on both sides of an operation",
         "a gap",
         "an overlap",
         "a dead branch",
