@@ -1,8 +1,9 @@
 """The decision graph: branch points, branches, quantities and what leads to what.
 
-Takes a ``Model``, gives a ``DecisionGraph``. A quantity per index becomes one instance for each
-element; each instance has branch points of its own. Everything stands in one order: the
-quantities as written, elements by number, outer bodies before inner ones.
+Takes a ``Model``, gives a ``DecisionGraph``. What the rulebook has settled is no branch point of it.
+A quantity per index becomes one instance for each element; each instance has branch points of its
+own. Everything stands in one order: the quantities as written, elements by number, outer bodies
+before inner ones.
 """
 
 from __future__ import annotations
@@ -14,6 +15,7 @@ from typing import TYPE_CHECKING, Literal
 
 from samesum.reading import model as m
 from samesum.reading import walk
+from samesum.settled import settled
 from samesum.spans import Span
 
 if TYPE_CHECKING:
@@ -81,9 +83,11 @@ class Leaf:
 
 @dataclass(frozen=True, slots=True)
 class DecisionGraph:
-    """Instances, branch points and leaves of a rulebook, in one order."""
+    """Instances, branch points and leaves of a rulebook, in one order. ``model`` is the rulebook as it is applied
+    (``settled``), ``written`` as it was read."""
 
     model: m.Model
+    written: m.Model
     instances: Mapping[str, Instance]
     branch_points: Mapping[str, BranchPoint]
     leaves: Mapping[str, tuple[Leaf, ...]]
@@ -98,6 +102,7 @@ def instance_id(name: str, index: str, elements: Element) -> str:
 
 def build(model: m.Model) -> DecisionGraph:
     """The decision graph of a model. Bodies that failed to resolve have no branch points."""
+    written, model = model, settled(model)
     sizes = {index.name: index.most for index in model.indices}
     instances: dict[str, Instance] = {}
     points: dict[str, BranchPoint] = {}
@@ -116,7 +121,12 @@ def build(model: m.Model) -> DecisionGraph:
                     found.append(item)
             leaves[id] = tuple(found)
     return DecisionGraph(
-        model, MappingProxyType(instances), MappingProxyType(points), MappingProxyType(leaves), MappingProxyType(sizes)
+        model,
+        written,
+        MappingProxyType(instances),
+        MappingProxyType(points),
+        MappingProxyType(leaves),
+        MappingProxyType(sizes),
     )
 
 

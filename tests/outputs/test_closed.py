@@ -14,7 +14,7 @@ from samesum.cli.closing import routes_left
 from samesum.cli.main import main
 from samesum.evidence.choosing.bench import Terms
 from samesum.evidence.choosing.projects import BLOCK, from_domains
-from samesum.evidence.choosing.selection import Closure, Found, Selection, select
+from samesum.evidence.choosing.selection import Closure, Figure, Found, Selection, select
 from samesum.evidence.routes.counting import count
 from samesum.graph import build
 from samesum.outputs.closed import Closing, closed
@@ -26,6 +26,7 @@ from support.choosing import either_or, figure, found, model_of, simulate
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 DRAFTS = ("coastal_wetland", "waste_heat", "woodland")
 READER = make_reader()
+FEW = 2000
 
 
 def written(text: str, *closings: Closing) -> Reading:
@@ -43,34 +44,79 @@ def comments(text: str) -> list[str]:
 def sample(name: str) -> tuple[Reading, Selection]:
     reading = read_file(SAMPLES / f"{name}.rulebook", reader=READER)
     assert reading.model is not None
-    return reading, select(from_domains(reading.model), 2000, Terms(0))
+    return reading, select(from_domains(reading.model), FEW, Terms(0))
+
+
+def second_row(selection: Selection) -> Figure:
+    return figure(selection.figures, "second look")
 
 
 def second(selection: Selection) -> float:
-    return figure(selection.figures, "second look").simulated
+    return second_row(selection).simulated
 
 
 # --- samples --------------------------------------------------------------------------------------
 
 
 @pytest.mark.parametrize("name", DRAFTS)
-def test_every_closure_of_a_sample_reads_back(name: str) -> None:
-    """With a fresh reader, without a problem, with every comment; what was closed is gone."""
+def test_every_closure_of_a_sample_reads_back_and_leaves_what_the_table_says(name: str) -> None:
+    """With a fresh reader, without a problem, with every comment; nobody decides any more what was closed, and what is
+    over-issued is what the table promised.
+
+    A rulebook that still holds the reference is simulated with the very errors that the table was made with: then the
+    figures are the same to rounding. Where the reference is all that is left (``plain``), its errors are drawn under
+    another name, so that the two differ by chance: four standard errors.
+    """
     reading, selection = sample(name)
     assert reading.model is not None
     fresh = make_reader()
     for each in selection.found:
         for closure in each.closures:
-            if each.latitude.kind == "judgement":
-                continue
             share = closure.percent.value if closure.percent is not None else 0.0
-            after = closed(reading, Closing(closure.kind, each.latitude.id, closure.option, share), READER)
+            closing = Closing(closure.kind, each.latitude.id, closure.option, share, each.latitude.leaning < 0)
+            after = closed(reading, closing, READER)
             again = read(after.text, "again.rulebook", reader=fresh)
             assert again.model is not None and not again.problems
             assert set(comments(reading.text)) <= set(comments(after.text))
-            points = {point.general_id for point in build(again.model).branch_points.values()}
-            if closure.kind == "mandate":
-                assert each.latitude.id not in {*points, *(setting.name for setting in again.model.settings)}
+            left = {point.general_id for point in build(again.model).branch_points.values() if point.kind == "choice"}
+            decided = {*left, *(setting.name for setting in again.model.settings if setting.takes is None)}
+            decided |= {judgement.name for judgement in again.model.judgements if judgement.takes is None}
+            if closure.kind in ("mandate", "lowest"):
+                assert each.latitude.id not in decided
+            if closure.kind in ("fixed", "deduct"):
+                assert each.latitude.id in decided
+            _leaves_what_was_promised(
+                closure, each.latitude.id, select(from_domains(again.model), FEW, Terms(0), closures=False)
+            )
+
+
+def _leaves_what_was_promised(closure: Closure, id: str, selection: Selection) -> None:
+    alone = next((each for each in selection.found if each.latitude.id == id), None)
+    if closure.kind == "fixed":
+        assert alone is not None
+        periods = next(each for each in alone.periods if each.behaviour == closure.behaviour)
+        assert periods.anew["fixed"].value == pytest.approx(closure.left.value, abs=1e-12)
+        return
+    if closure.kind == "deduct":
+        assert alone is not None
+        row = figure(alone.figures, closure.behaviour)
+        by_formula = closure.percent is not None and closure.percent.error == 0
+        # The text gives the percentage to three digits; one from a formula is right for all projects, not for these.
+        slack = 4 * row.simulated_error if by_formula else 1e-5
+        assert row.simulated == pytest.approx(closure.left.value, abs=slack), id
+        return
+    assert closure.whole_left is not None
+    plain = (
+        f"{closure.kind} of {closure.option}" if alone is None or alone.latitude.candidates == ("as stated",) else ""
+    )
+    whole = second_row(selection)
+    slack = 4 * math.hypot(whole.simulated_error, closure.whole_left.error) if plain else 1e-12
+    assert whole.simulated == pytest.approx(closure.whole_left.value, abs=slack), (id, closure.kind, closure.option)
+    if alone is None:
+        return
+    row = next(each for each in alone.figures if each.behaviour == "mandated")
+    slack = 4 * max(row.simulated_error, closure.left.error)  # a formula may stand for the simulation here
+    assert row.simulated == pytest.approx(closure.left.value, abs=max(slack, 1e-12)), (id, closure.kind, closure.option)
 
 
 def test_the_routes_are_those_promised() -> None:
@@ -123,8 +169,12 @@ def test_a_mandated_reference_leaves_what_the_table_says(name: str) -> None:
 
 # --- one choice: what is left is what was promised ------------------------------------------------
 
-ONE = either_or([(-0.05, 0.3, 0), (0, 0.1, 1)]).replace("result", "periods 5\nresult").replace(
-    "    choice by developer", "    # why there is a choice\n    choice by developer, open each period  # so far"
+ONE = (
+    either_or([(-0.05, 0.3, 0), (0, 0.1, 1)])
+    .replace("result", "periods 5\nresult")
+    .replace(
+        "    choice by developer", "    # why there is a choice\n    choice by developer, open each period  # so far"
+    )
 )
 
 
@@ -138,10 +188,12 @@ def promised(selection: Found, kind: str, option: str = "", behaviour: str = "")
 
 def test_mandate() -> None:
     stock = found(simulate(ONE, 4 * BLOCK, closures=True), "stock")
-    for option, bias in (("way_1", -0.05), ("way_2", 0.0)):
-        after = written(ONE, Closing("mandate", "stock", option))
-        assert "choice" not in after.text.replace("One choice", "").replace("there is a choice", "")
-        assert "    = amount" in after.text and comments(after.text) == comments(ONE)
+    reference = written(ONE, Closing("mandate", "stock", "way_2"))
+    assert "choice" not in reference.text.replace("One choice", "").replace("there is a choice", "")
+    assert "    = amount" in reference.text and comments(reference.text) == comments(ONE)
+    other = written(ONE, Closing("mandate", "stock", "way_1"))
+    assert "    choice takes way_1  # so far\n" in other.text and comments(other.text) == comments(ONE)
+    for after, option, bias in ((other, "way_1", -0.05), (reference, "way_2", 0.0)):
         left = promised(stock, "mandate", option).left
         assert left.value == pytest.approx(bias, abs=1e-12)
         again = figure(simulate(after.text, 4 * BLOCK).figures, "mandated", "reference")
@@ -151,10 +203,49 @@ def test_mandate() -> None:
 def test_lowest() -> None:
     left = promised(found(simulate(ONE, 4 * BLOCK, closures=True), "stock"), "lowest").left
     after = written(ONE, Closing("lowest", "stock"))
-    assert "    = min(stock_way_1, stock_way_2)" in after.text and comments(after.text) == comments(ONE)
+    assert "    choice takes lowest value  # so far\n" in after.text and comments(after.text) == comments(ONE)
     again = figure(simulate(after.text, 4 * BLOCK).figures, "mandated", "reference")
     assert left.value < -0.1
     assert abs(again.simulated - left.value) < 4 * again.simulated_error
+
+
+def test_the_lowest_keeps_the_correlation_of_the_errors() -> None:
+    """Of two estimates that always err alike none is the lower; a rulebook that forgot it would lose credits."""
+    text = either_or([(0, 0.1, 0), (0, 0.1, 1)]).replace(
+        "choice by developer", "choice by developer, errors correlated 1"
+    )
+    after = written(text, Closing("lowest", "stock"))
+    assert "choice takes lowest value, errors correlated 1\n" in after.text
+    assert abs(second(simulate(after.text, BLOCK))) < 4 * second_row(simulate(after.text, BLOCK)).simulated_error
+    assert second(simulate(after.text.replace(", errors correlated 1", ""), BLOCK)) < -0.05
+
+
+def test_a_setting_and_a_judgement() -> None:
+    text = """rulebook "Inputs", draft "1"
+result credits [t CO2e]
+fact amount [t CO2e], 100 to 100
+setting share, 10 % to 20 %, by developer, clause 3  # how much
+setting reach [km], 5 to 50, by programme
+judgement exposed, "exposed sites", by verifier,
+    clause 4
+quantity credits [t CO2e]
+    cases
+        when exposed
+            = amount * (1 - share)
+        otherwise
+            = amount * (1 - share) * 40 [km] / (reach + 10 [km])
+"""
+    middle = written(text, Closing("mandate", "share"))
+    assert "constant share = 15 %, clause 3\n" in middle.text
+    end = written(text, Closing("mandate", "share", "12.5 %"))
+    assert "setting share, 10 % to 20 %, by developer, clause 3, takes 12.5 %  # how much\n" in end.text
+    assert second(simulate(end.text, 1000)) == pytest.approx(0.875 / 0.85 - 1)
+    far = written(text, Closing("mandate", "reach", "50 km"))
+    assert "by programme, takes 50 [km]\n" in far.text
+    read_no = written(far.text, Closing("mandate", "exposed", "no"), Closing("mandate", "share", "10 %"))
+    assert "    clause 4, takes no\n" in read_no.text
+    assert second(simulate(read_no.text, 1000)) == pytest.approx(0.9 * 40 / 60 / 0.85 - 1)
+    assert count(build(model_of(read_no.text))).per_project_most == 1
 
 
 def test_fixed() -> None:
@@ -282,25 +373,18 @@ def body(text: str, name: str) -> str:
     return re.sub(r"\s+", " ", found_text[1]).strip()
 
 
-def test_mandate_carries_what_follows_and_what_asks() -> None:
-    rough = written(TIED, Closing("mandate", "stock", "rough")).text
-    assert (body(rough, "share"), body(rough, "asked")) == ("# the rough one = 20 %", "= 3")
+def test_a_mandated_reference_carries_what_follows_and_what_asks() -> None:
     fine = written(TIED, Closing("mandate", "stock", "fine")).text
     assert body(fine, "share") == "# the rough one = 0"
     assert body(fine, "asked") == "cases in order when wet = 3 otherwise = 5"
-    none = written(TIED, Closing("mandate", "stock", "none")).text
-    assert body(none, "share") == "# the rough one = 1"
-    assert body(none, "asked").startswith("cases when wet = 1 when not wet = 2 otherwise")
 
 
-def test_lowest_carries_what_follows_and_what_asks() -> None:
+def test_another_option_mandated_is_one_line_of_the_text() -> None:
+    for option in ("rough", "none"):
+        text = written(TIED, Closing("mandate", "stock", option)).text
+        assert text == TIED.replace("choice by developer", f"choice takes {option}")
     text = written(TIED, Closing("lowest", "stock")).text
-    assert body(text, "stock") == (
-        "cases when wet = min(stock_rough, stock_fine, stock_none) otherwise = min(stock_rough, stock_fine)"
-    )
-    assert body(text, "share").startswith("cases in order when stock = stock_rough # the rough one = 20 %")
-    assert "when stock = stock_none and wet" in text and "takes" not in text
-    assert count(build(model_of(text))).per_project_most == 1
+    assert text == TIED.replace("choice by developer", "choice takes lowest value")
 
 
 def test_what_cannot_be_closed_is_said_in_words(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
@@ -329,7 +413,6 @@ def test_the_command_writes_whole_files_and_only_where_asked(
     assert main(["bias", str(file), "--write-closed", "mandate:stock"]) == 0
     assert capsys.readouterr().out == written(TIED, Closing("mandate", "stock")).text
     assert main(["bias", str(file), "--write-closed", "mandate=rough:stock", "-o", str(out)]) == 0
-    assert "the reference is no longer in the text" in capsys.readouterr().err
     assert out.read_text(encoding="utf-8") == written(TIED, Closing("mandate", "stock", "rough")).text
     assert file.read_text(encoding="utf-8") == TIED
     assert sorted(each.name for each in tmp_path.iterdir()) == ["a.rulebook", "b.rulebook"]

@@ -35,30 +35,10 @@ def write_closed(reading: Reading, arguments: argparse.Namespace) -> int:
     for number, closing in enumerate(wanted):
         try:
             ready = worked_out(reading, closing, arguments)
-            if loses_the_reference(reading, ready):
-                shared.report_line(
-                    f"samesum: {closing.id}: the reference is no longer in the text, so that `samesum bias` on it "
-                    "measures against what is left, not against what this closure was compared with"
-                )
             reading = closed(reading, ready, reader)
         except (CannotClose, CannotDraw, Unplannable) as trouble:
             return shared.refuse(f"{arguments.write_closed[number]}: {trouble}; nothing was written")
     return shared.deliver(reading.text, arguments.output)
-
-
-def loses_the_reference(reading: Reading, closing: Closing) -> bool:
-    """Whether the option that counts as the truth goes, or is no longer the only one that counts."""
-    from samesum.outputs.closed import chosen_option, find_body
-    from samesum.reading.model import Choice
-
-    assert reading.model is not None
-    if closing.kind not in ("mandate", "lowest") or any(each.name == closing.id for each in reading.model.settings):
-        return False
-    body = find_body(reading.model, closing.id)[1]
-    if not isinstance(body, Choice):
-        return False
-    reference = chosen_option(body, "", closing.id)
-    return closing.kind == "lowest" or chosen_option(body, closing.option, closing.id) is not reference
 
 
 def asked(words: str) -> Closing | str:
@@ -131,7 +111,6 @@ def worked_out(reading: Reading, closing: Closing, arguments: argparse.Namespace
 def routes_left(reading: Reading, selection: Selection, seconds: float) -> dict[tuple[str, str, str], Any]:
     """The counts of the rulebook with each closure written out, by id, kind and option; those that cannot be written
     out are left out."""
-    from samesum.evidence.choosing.leaning import leaning
     from samesum.evidence.routes.counting import count
     from samesum.graph import build
     from samesum.outputs.closed import Closing, closed
@@ -145,9 +124,9 @@ def routes_left(reading: Reading, selection: Selection, seconds: float) -> dict[
         latitude = found.latitude
         for closure in found.closures:
             key = (latitude.id, closure.kind, closure.option)
-            if key in made or latitude.kind == "judgement":
+            if key in made:
                 continue
-            subtracted = closure.kind == "lowest" and leaning(selection.supply, latitude, selection.terms) < 0
+            subtracted = latitude.leaning < 0
             share = closure.percent.value if closure.percent is not None else 0.0
             closing = Closing(closure.kind, latitude.id, closure.option, share, subtracted)
             try:

@@ -28,7 +28,7 @@ def gather(graph: DecisionGraph, seconds: float = 10.0) -> Evidence:
     left = seconds - (time.monotonic() - start)
     counts = count(graph, max(left, 0.5), network)
     overlapping = [overlap.branch_point for overlap in conditions.overlaps]
-    return Evidence(graph.model, graph, counts, conditions, find_control(graph, overlapping))
+    return Evidence(graph.written, graph, counts, conditions, find_control(graph, overlapping))
 
 
 def _network(graph: DecisionGraph, seconds: float) -> Network | None:

@@ -3,16 +3,15 @@
 Text and model in, text out; the rest of the file keeps its comments and layout. Every step is read again before the
 next, so that what is written always parses. What each way of closing writes:
 
-* ``mandate``: the body of one option in place of the choice (also where another choice follows it, and in conditions
-  that ask what it took); the quantity keeps the option's error and bias, which only ``bias`` looks at.
-* ``lowest``: a quantity for each option, and ``= min(…)`` of them (``max`` for what is subtracted).
+* ``mandate``: of the reference, its formula in place of the choice (also where another choice follows it, and in
+  conditions that ask what it took); of another option, or one that is open only sometimes, ``choice takes …``, so that
+  the reference stays in the text and ``bias`` goes on measuring against it.
+* ``lowest``: ``choice takes lowest value`` (``highest`` for what is subtracted).
+* a setting: a constant, or ``takes …`` with another value than the one it stands at in comparisons; a judgement:
+  ``takes yes`` or ``no``.
 * ``fixed``: ``fixed at validation`` on the choice.
 * ``deduct``: a constant that is ``not in reference``, and every option's formula × (1 − constant).
 * ``in order``: ``cases in order``, so that of overlapping conditions the first that holds counts.
-
-What counts as the truth goes with the text. With any option but the reference mandated, or the lowest taken, the
-reference is no longer written down, and ``bias`` on the new file measures against what is left: its figures are then
-not those of the table that the closure was chosen from.
 """
 
 from __future__ import annotations
@@ -20,6 +19,7 @@ from __future__ import annotations
 import re
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
+from fractions import Fraction
 
 from samesum.outputs.closed_conditions import without_takes
 from samesum.outputs.closed_text import (
@@ -27,11 +27,9 @@ from samesum.outputs.closed_text import (
     Replacement,
     above,
     comments_in,
-    extent,
     formulas,
     header_end,
     instead,
-    moved,
     parted,
     replaced,
     spliced,
@@ -41,13 +39,13 @@ from samesum.outputs.closed_text import (
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.reading.read import Reader, Reading, read
-from samesum.reading.words import nearest
+from samesum.reading.words import listing, nearest
 
 
 @dataclass(frozen=True, slots=True)
 class Closing:
-    """``id``: a branch point without an element's number, or a setting. ``option``: what is mandated ("" for the
-    reference). ``share``: what is deducted (below zero: added). ``subtracted``: the quantity counts against the
+    """``id``: a branch point without an element's number, a setting or a judgement. ``option``: what is mandated (""
+    for the reference). ``share``: what is deducted (below zero: added). ``subtracted``: the quantity counts against the
     credits, so that its highest value credits least."""
 
     kind: str
@@ -63,6 +61,9 @@ def closed(reading: Reading, closing: Closing, reader: Reader) -> Reading:
     setting = next((each for each in reading.model.settings if each.name == closing.id), None)
     if setting is not None:
         return again(reading, _setting_fixed(reading, setting, closing), reader)
+    judgement = next((each for each in reading.model.judgements if each.name == closing.id), None)
+    if judgement is not None:
+        return again(reading, _judgement_read(reading, judgement, closing), reader)
     quantity, body = find_body(reading.model, closing.id)
     if closing.kind == "in order":
         return again(reading, _in_order(reading, body, closing), reader)
@@ -73,9 +74,8 @@ def closed(reading: Reading, closing: Closing, reader: Reader) -> Reading:
     if closing.kind == "deduct":
         return again(reading, _deducted(reading, quantity, body, closing), reader)
     if closing.kind == "lowest":
-        from samesum.outputs.closed_lowest import lowest
-
-        return lowest(reading, quantity, body, closing.id, closing.subtracted, reader)
+        extreme = m.HIGHEST if closing.subtracted else m.LOWEST
+        return again(reading, _taken(reading, body, extreme), reader)
     if closing.kind == "mandate":
         return _mandated(reading, quantity, body, closing, reader)
     raise CannotClose(f"there is no way of closing called `{closing.kind}`")
@@ -100,13 +100,8 @@ def find_body(model: m.Model, id: str) -> tuple[m.Quantity, m.Body]:
         branch = next((each for each in walk.branches(body) if each.name == step), None) if body is not None else None
         body = branch.body if branch is not None else None
     if quantity is None or body is None or not walk.branches(body):
-        judged = any(each.name == id for each in model.judgements)
-        if judged:
-            raise CannotClose(
-                f"{id} is a judgement: put a fact that everybody reads alike in its place, as in "
-                f"`fact {id}, yes or no`, with what counts as yes in its note"
-            )
-        known = [*(each.name for each in model.settings), *_ids(model)]
+        inputs = [*(each.name for each in model.settings), *(each.name for each in model.judgements)]
+        known = [*inputs, *_ids(model)]
         close = nearest(id, known)
         raise CannotClose(f"there is no branch point {id}" + (f"; did you mean `{close}`?" if close else ""))
     return quantity, body
@@ -166,29 +161,78 @@ def _in_order(reading: Reading, body: m.Body, closing: Closing) -> list[str]:
 
 
 def _setting_fixed(reading: Reading, setting: m.Setting, closing: Closing) -> list[str]:
+    """A constant, where the value is the one that counts in comparisons; else the setting with what it takes."""
     if closing.kind != "mandate":
         raise CannotClose(f"{setting.name} is a value that somebody sets: write `mandate=VALUE:{setting.name}`")
-    if not isinstance(setting.domain, m.Range):
-        raise CannotClose(f"{setting.name} has no number that could be written down as a constant; make it a fact")
+    from samesum.evidence.choosing.latitudes import middle
+
     lines = reading.text.split("\n")
     first = setting.about.span.line
     last = header_end(lines, first)
     value = closing.option.strip()
-    if not value:
-        from samesum.evidence.choosing.latitudes import middle
-
-        stands = middle(setting.domain)
-        percent = not setting.unit.text and setting.domain.high is not None and setting.domain.high <= 1
-        value = f"{float(stands) * (100 if percent else 1):.12g}{' %' if percent else ''}"
+    if not isinstance(setting.domain, m.Range):
+        known = ("yes", "no") if isinstance(setting.domain, m.YesNo) else setting.domain.values
+        if value and value not in known:
+            raise CannotClose(f"{setting.name} cannot be {value}; its values are {listing(known, 'and')}")
+        return _with_taken(lines, first, last, value or known[0])
     unit = f" [{setting.unit.text}]" if setting.unit.text else ""
-    if unit and "[" not in value:
-        number = re.match(r"[-+]?[0-9_.]+(?:[eE][-+]?[0-9]+)?", value)
-        value = (number[0] if number else value) + unit
+    stands = middle(setting.domain)
+    if value and not _is_number(value, stands, setting):
+        return _with_taken(lines, first, last, value)
+    percent = not setting.unit.text and setting.domain.high is not None and setting.domain.high <= 1
+    value = f"{float(stands) * (100 if percent else 1):.12g}{' %' if percent else ''}{unit}"
     text = f"constant {setting.name}{unit} = {value}"
     if setting.about.clause:
         plain = re.fullmatch(r'[^\s,"#]+', setting.about.clause)
         text += f", clause {setting.about.clause if plain else chr(34) + setting.about.clause + chr(34)}"
     comments = comments_in(lines, first, last, 0)
+    return replaced(lines, [Replacement(first, last, (*comments, text))])
+
+
+def _is_number(value: str, stands: Fraction | str | bool, setting: m.Setting) -> bool:
+    """Whether what was asked for is the number that the setting stands at. A unit of its own is left to the reader of
+    rulebooks."""
+    found = re.fullmatch(r"([-+]?[0-9_.]+(?:[eE][-+]?[0-9]+)?) ?(%?) ?(?:\[(.*)\]|(.*))", value)
+    if found is None or (found[3] or found[4] or "") not in ("", setting.unit.text):
+        return False
+    try:
+        number = Fraction(found[1]) / (100 if found[2] else 1)
+    except ValueError:
+        return False
+    return number == stands
+
+
+def _with_taken(lines: list[str], first: int, last: int, value: str) -> list[str]:
+    """A declaration with what it takes at its end; a unit behind a number gets its brackets."""
+    found = re.fullmatch(r"([-+]?[0-9][0-9_.]*) ?([A-Za-z][^\[\]]*)", value)
+    said = f"{found[1]} [{found[2].strip()}]" if found else value
+    made = list(lines[first - 1 : last])
+    made[-1] = with_phrase(made[-1], f"takes {said}")
+    return replaced(lines, [Replacement(first, last, tuple(made))])
+
+
+def _judgement_read(reading: Reading, judgement: m.Judgement, closing: Closing) -> list[str]:
+    if closing.kind != "mandate":
+        raise CannotClose(f"{judgement.name} is a judgement: write `mandate=yes:{judgement.name}` or `mandate=no:…`")
+    if closing.option not in ("", "yes", "no"):
+        raise CannotClose(f"{judgement.name} is read as yes or no, not as {closing.option}")
+    lines = reading.text.split("\n")
+    first = judgement.about.span.line
+    return _with_taken(lines, first, header_end(lines, first), closing.option or "yes")
+
+
+def _taken(reading: Reading, body: m.Choice, takes: str) -> list[str]:
+    """The choice with what everybody takes in place of who chooses; its options stay as they are."""
+    lines = reading.text.split("\n")
+    first, last = body.span.line, header_end(lines, body.span.line)
+    indent = " " * (body.span.column - 1)
+    text = f"{indent}choice takes {takes}"
+    if body.correlated is not None:
+        text += f", errors correlated {float(body.correlated):.10g}"
+    if first == last:
+        comment = parted(lines[first - 1])[1]
+        return replaced(lines, [Replacement(first, last, (text + (f"  {comment}" if comment else ""),))])
+    comments = comments_in(lines, first, last, body.span.column - 1)
     return replaced(lines, [Replacement(first, last, (*comments, text))])
 
 
@@ -223,10 +267,17 @@ def _mandated(
 ) -> Reading:
     option = chosen_option(body, closing.option, closing.id)
     own = body is quantity.body
-    if own:
-        reading = without_takes(reading, quantity.name, lambda asked: asked == option.name, reader, again)
-        reading = _followers_mandated(reading, quantity.name, option.name, reader)
-    return one_option(reading, closing.id, option.name, reader)
+    reference = chosen_option(body, "", closing.id) is option
+    if reference and option.only_when is None and (own or not errors_said(option)):
+        try:
+            kept = reading
+            if own:
+                kept = without_takes(kept, quantity.name, lambda asked: asked == option.name, reader, again)
+                kept = _followers_mandated(kept, quantity.name, option.name, reader)
+            return one_option(kept, closing.id, option.name, reader)
+        except CannotClose:
+            pass  # what hangs on the choice cannot be written without it
+    return again(reading, _taken(reading, body, option.name), reader)
 
 
 def chosen_option(body: m.Choice, name: str, id: str) -> m.Option:
@@ -267,13 +318,13 @@ def one_option(reading: Reading, id: str, name: str, reader: Reader) -> Reading:
     assert isinstance(option, m.Option)
     lines = reading.text.split("\n")
     errs = errors_said(option)
+    if errs and body is not quantity.body:
+        raise CannotClose(f"the error of {name} at {id} has no place but at the option")
     if not errs:
         return again(reading, replaced(lines, [instead(lines, body, option.body)]), reader)
-    if body is quantity.body and isinstance(option.body, m.Formula):
-        end = header_end(lines, quantity.about.span.line)
-        header = Replacement(end, end, (with_phrase(lines[end - 1], errs),))
-        return again(reading, replaced(lines, [header, instead(lines, body, option.body)]), reader)
-    return again(reading, _apart(reading, quantity, body, option, errs), reader)
+    end = header_end(lines, quantity.about.span.line)
+    header = Replacement(end, end, (with_phrase(lines[end - 1], errs),))
+    return again(reading, replaced(lines, [header, instead(lines, body, option.body)]), reader)
 
 
 def errors_said(option: m.Option) -> str:
@@ -284,36 +335,3 @@ def errors_said(option: m.Option) -> str:
     if option.bias:
         said.append(f"bias {100 * float(option.bias):.10g} %")
     return ", ".join(said)
-
-
-def declaration(quantity: m.Quantity, name: str, phrases: str = "") -> str:
-    """The first line of a quantity of the same unit, index and clause."""
-    text = f"quantity {name}"
-    if quantity.unit.text:
-        text += f" [{quantity.unit.text}]"
-    if quantity.index:
-        text += f" per {quantity.index}"
-    if phrases:
-        text += f", {phrases}"
-    clause = quantity.about.clause
-    return text + (f", clause {clause}" if re.fullmatch(r'[^\s,"#]+', clause) else "")
-
-
-def _apart(reading: Reading, quantity: m.Quantity, body: m.Body, option: m.Option, errs: str) -> list[str]:
-    """The option as a quantity of its own, which can state its error, and its name where the choice stood."""
-    assert reading.model is not None
-    lines = reading.text.split("\n")
-    name = unused_name(reading.model, f"{quantity.name}_{option.name}")
-    first, last = extent(body)
-    start, end = extent(option.body)
-    indent = body.span.column - 1
-    made = [*comments_in(lines, first, start - 1, indent), " " * indent + f"= {name}"]
-    made += comments_in(lines, end + 1, last, indent)
-    inner = moved(lines, start, end, 4 - (option.body.span.column - 1))
-    if isinstance(option.body, m.Formula):
-        new = [declaration(quantity, name, errs), *inner]
-    else:
-        plain = unused_name(reading.model, f"{quantity.name}_{option.name}_worked_out")
-        new = [declaration(quantity, name, errs), f"    = {plain}", "", declaration(quantity, plain), *inner]
-    after = quantity.about.span.end_line
-    return replaced(lines, [Replacement(first, last, tuple(made)), Replacement(after + 1, after, ("", *new))])

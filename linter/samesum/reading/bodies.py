@@ -10,6 +10,8 @@ from samesum.reading import tree
 from samesum.reading.conditions import resolve_condition
 from samesum.reading.expressions import resolve_expression
 from samesum.reading.model import (
+    HIGHEST,
+    LOWEST,
     Body,
     Cases,
     Choice,
@@ -69,8 +71,8 @@ def _cases(body: tree.CasesTree, unit: Unit | None, scope: Scope, level: int) ->
 
 
 def _choice(body: tree.ChoiceTree, unit: Unit | None, scope: Scope, level: int) -> Choice:
-    phrases = read_phrases("choice", body.phrases, scope)
-    by = decider_of(phrases, "this choice", body, scope)
+    phrases = read_phrases("choice that takes one option" if body.takes else "choice", body.phrases, scope)
+    by = decider_of(phrases, "this choice", body, scope) if not body.takes else "programme"
     timing: Literal["validation", "period", ""] = (
         "validation" if "fixed" in phrases else "period" if "open" in phrases else ""
     )
@@ -84,7 +86,29 @@ def _choice(body: tree.ChoiceTree, unit: Unit | None, scope: Scope, level: int) 
             scope.report(literal, f"{len(options)} errors cannot be correlated this much",
                          f"write a number from {low} to 1", "value")  # fmt: skip
             correlated = None
-    return Choice(by, options, scope.span(body), timing, correlated)
+    return Choice(by, options, scope.span(body), timing, correlated, _taken(body, options, scope))
+
+
+def _taken(body: tree.ChoiceTree, options: tuple[Option, ...], scope: Scope) -> str:
+    """What a choice takes that nobody makes."""
+    if not body.takes:
+        return ""
+    names = [option.name for option in options]
+    said = " ".join(word.text for word in body.takes)
+    if said in (LOWEST, HIGHEST) or said in names:
+        return said
+    word = body.takes[0]
+    if len(body.takes) > 1:
+        says = f"`{said}` is nothing that a choice can take"
+        scope.report(body.takes[1], says, f"write one of its options, `{LOWEST}` or `{HIGHEST}`")
+    else:
+        close = nearest(word.text, names)
+        ours = f"its options are {listing(names, 'and')}"
+        remedy = f"did you mean `{close}`?" if close else ours
+        if word.text in ("lowest", "highest"):
+            remedy = f"write `choice takes {word.text} value`"
+        scope.report(word, f"`{word.text}` is no option of this choice", remedy, "name")
+    return names[0] if names else ""
 
 
 def _possible(correlation: Fraction, count: int) -> bool:

@@ -92,7 +92,8 @@ def _phrase(kind: str) -> Callable[[Any, list[Any]], tree.Phrase]:
         words: tuple[tree.Word, ...] = ()
         for item in items:
             if isinstance(item, Token):
-                words += _words([item], "NAME", "STRING", "CLAUSE_NUMBER")
+                answers = ("YES", "NO") if kind == "settled" else ()
+                words += _words([item], "NAME", "STRING", "CLAUSE_NUMBER", *answers)
             elif isinstance(item, tuple):
                 words += item
         numbers = _nodes(items, tree.Literal) if kind not in ("cost", "only_when") else ()
@@ -225,6 +226,7 @@ class Building(Transformer[Token, Any]):
     cost = _phrase("cost")
     reference = _phrase("reference")
     withheld = _phrase("withheld")
+    settled = _phrase("settled")
 
     # bodies
 
@@ -252,6 +254,13 @@ class Building(Transformer[Token, Any]):
         phrases = items[3].items
         end = _end(phrases[-1]) if phrases else _end(items[2])
         return tree.ChoiceTree(_start(items[0]), end, _word(items[2]), phrases, _nodes(items, tree.OptionTree))
+
+    def settled_choice(self, items: list[Any]) -> tree.ChoiceTree:
+        takes = _words(items[2:4], "NAME")
+        [listed] = (item for item in items if isinstance(item, _Phrases))
+        phrases = tuple(part for part in listed.items if isinstance(part, tree.Phrase))
+        end = _end(phrases[-1]) if phrases else _end(takes[-1])
+        return tree.ChoiceTree(_start(items[0]), end, None, phrases, _nodes(items, tree.OptionTree), takes)
 
     def option(self, items: list[Any]) -> tree.OptionTree:
         phrases = items[2].items

@@ -163,8 +163,33 @@ def resolve_setting(block: Placed, scope: Scope) -> Setting:
     word = _name(block)
     unit = _unit(block, scope)
     domain = _domain(block, phrases, unit, scope)
-    by = decider_of(phrases, f"the setting `{word.text}`", word, scope)
-    return Setting(word.text, unit or PLAIN, domain, by, about(block, phrases, scope))
+    nobody = "settled" in phrases and "by" not in phrases
+    by = decider_of(phrases, f"the setting `{word.text}`", word, scope) if not nobody else "programme"
+    takes = _taken(phrases["settled"], domain, unit, scope) if "settled" in phrases else None
+    return Setting(word.text, unit or PLAIN, domain, by, about(block, phrases, scope), takes)
+
+
+def _taken(phrase: tree.Phrase, domain: Domain, unit: Unit | None, scope: Scope) -> Fraction | str | bool | None:
+    """The value that everybody takes; None, with a problem noted, when it is none of the domain's."""
+    word = phrase.words[0] if phrase.words else None
+    if isinstance(domain, Range):
+        if word is not None:
+            remedy = "write the value that everybody takes, as in `takes 12 %`"
+            scope.report(word, f"`{word.text}` is no number", remedy)
+            return None
+        value = in_unit(phrase.numbers[0], unit, scope)
+        if value is None:
+            return None
+        if (domain.low is not None and value < domain.low) or (domain.high is not None and value > domain.high):
+            scope.report(phrase.numbers[0], "this value is outside the domain", "take one inside it", "value")
+            return None
+        return value
+    known = ("yes", "no") if isinstance(domain, YesNo) else domain.values
+    if word is None or word.text not in known:
+        says = f"`{word.text}` is none of its values" if word is not None else "a number is none of its values"
+        scope.report(word or phrase, says, f"write {listing(known)}", "value")
+        return None
+    return word.text == "yes" if isinstance(domain, YesNo) else word.text
 
 
 def _domain(block: Placed, phrases: Mapping[str, tree.Phrase], unit: Unit | None, scope: Scope) -> Domain:
@@ -202,8 +227,11 @@ def resolve_judgement(block: Placed, scope: Scope) -> Judgement:
     if "wording" not in phrases:
         scope.report(word, f"the judgement `{word.text}` does not give the wording that is read",
                      f"write `judgement {word.text}, \"where …\", by developer`")  # fmt: skip
-    by = decider_of(phrases, f"the judgement `{word.text}`", word, scope)
-    return Judgement(word.text, text_of(phrases, "wording"), by, about(block, phrases, scope))
+    nobody = "settled" in phrases and "by" not in phrases
+    by = decider_of(phrases, f"the judgement `{word.text}`", word, scope) if not nobody else "programme"
+    taken = _taken(phrases["settled"], YesNo(), None, scope) if "settled" in phrases else None
+    takes = taken if isinstance(taken, bool) else None
+    return Judgement(word.text, text_of(phrases, "wording"), by, about(block, phrases, scope), takes)
 
 
 def resolve_constant(block: Placed, scope: Scope) -> Constant:

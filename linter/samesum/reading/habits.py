@@ -13,7 +13,7 @@ from samesum.reading.words import DECIDERS, DECLARATIONS, RESERVED, listing
 
 PHRASE_STARTS = frozenset((
     "CLAUSE", "CLAUSE_NUMBER", "SOURCE", "DRAFT", "ROUNDED", "AT", "ONE", "YES", "BY", "PER", "MEAN", "FIXED", "OPEN",
-    "ERRORS", "ONLY", "ERROR", "BIAS", "COST", "REFERENCE",
+    "ERRORS", "ONLY", "ERROR", "BIAS", "COST", "REFERENCE", "TAKES",
 ))  # fmt: skip
 _NUMBER = r"-?[0-9][0-9_.]*(?:[eE][+-]?[0-9]+)?(?:\s*%)?(?:\s*\[[^\]\n]*\])?"
 _NAME = r"[^\W\d]\w*"

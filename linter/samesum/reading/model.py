@@ -261,15 +261,22 @@ class Option:
     reference: bool = False
 
 
+LOWEST, HIGHEST = "lowest value", "highest value"
+
+
 @dataclass(frozen=True, slots=True)
 class Choice:
-    """``timing`` is "validation", "period" or "" when the rulebook does not say."""
+    """``timing`` is "validation", "period" or "" when the rulebook does not say.
+
+    ``takes`` is "" for a choice that ``by`` makes. Else nobody chooses: the option of that name is taken wherever it
+    is open, or the one that gives ``LOWEST`` or ``HIGHEST`` of those that are."""
 
     by: Decider
     options: tuple[Option, ...]
     span: Span
     timing: Literal["validation", "period", ""] = ""
     correlated: Fraction | None = None
+    takes: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -363,19 +370,25 @@ class Fact:
 
 @dataclass(frozen=True, slots=True)
 class Setting:
+    """``takes``: the value that the rulebook prescribes, so that nobody sets it any more; None where somebody does."""
+
     name: str
     unit: Unit
     domain: Domain
     by: Decider
     about: About
+    takes: Fraction | str | bool | None = None
 
 
 @dataclass(frozen=True, slots=True)
 class Judgement:
+    """``takes``: how the rulebook has it read, so that nobody judges any more; None where somebody does."""
+
     name: str
     wording: str
     by: Decider
     about: About
+    takes: bool | None = None
 
 
 @dataclass(frozen=True, slots=True)

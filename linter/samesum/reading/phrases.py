@@ -34,6 +34,7 @@ WRITTEN: Mapping[str, str] = {
     "cost": "`cost …`",
     "reference": "`reference`",
     "withheld": "`not in reference`",
+    "settled": "`takes …`",
 }
 _GROUPS = {"range": "domain", "one_of": "domain", "yes_no": "domain", "fixed": "timing", "open": "timing"}
 _DOMAIN = ("range", "one_of", "yes_no")
@@ -44,13 +45,14 @@ ALLOWED: Mapping[str, tuple[str, ...]] = {
     "applies": ("clause", "source"),
     "index": ("at_most", "clause", "source"),
     "fact": ("per", *_DOMAIN, "spread", "clause", "source"),
-    "setting": (*_DOMAIN, "by", "clause", "source"),
-    "judgement": ("wording", "by", "clause", "source"),
+    "setting": (*_DOMAIN, "by", "settled", "clause", "source"),
+    "judgement": ("wording", "by", "settled", "clause", "source"),
     "constant": ("clause", "source", "withheld"),
     "table": ("clause", "source"),
     "quantity": ("per", "error", "bias", "clause", "source"),
     "choice": ("by", "fixed", "open", "correlated"),
     "choice that follows another": (),
+    "choice that takes one option": ("correlated",),
     "option": ("only_when", "error", "bias", "cost", "reference"),
 }
 

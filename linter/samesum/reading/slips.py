@@ -279,8 +279,8 @@ def unfinished_phrase(sight: Sight) -> Mistake | None:
     form = _FORMS.get(phrase[0], "")
     if sight.first_word == "index" and sight.expected <= {"TO", "PERCENT", "UNIT"}:
         form = "at most 4"
-    if sight.first_word == "choice" and sight.expected <= {"BY", "FOLLOWS"}:
-        form = "choice by developer` or `choice follows QUANTITY"
+    if sight.first_word == "choice" and sight.expected <= {"BY", "FOLLOWS", "TAKES"}:
+        form = "choice by developer`, `choice follows QUANTITY` or `choice takes OPTION"
     if not form:
         return None
     found = f"`{sight.text}` cannot stand here" if sight.text else "the line ends too early"

@@ -199,11 +199,13 @@ class OptionTree(Node):
 
 @dataclass(frozen=True, slots=True)
 class ChoiceTree(Node):
-    """``start`` to ``end`` is the line ``choice …``; ``follows`` is the quantity followed, if any."""
+    """``start`` to ``end`` is the line ``choice …``; ``follows`` is the quantity followed, if any; ``takes`` the words
+    that say what everybody takes, where nobody chooses."""
 
     follows: Word | None
     phrases: tuple[Phrase, ...]
     options: tuple[OptionTree, ...]
+    takes: tuple[Word, ...] = ()
 
 
 BodyTree = FormulaTree | CasesTree | ChoiceTree

@@ -76,12 +76,6 @@ def pick_of_all(offer: Offer) -> Array:
     return _best(offer, _worth(offer, offer.open), offer.reference)
 
 
-def lowest_of_all(offer: Offer) -> Array:
-    """The option that credits least."""
-    worth = np.where(offer.open & np.isfinite(offer.credits), -offer.credits, -np.inf)
-    return _best(offer, worth, offer.reference)
-
-
 def indifferent(offer: Offer, chance: Array) -> Array:
     """Any of the open options; ``chance`` is uniform on [0, 1)."""
     open_before = np.cumsum(offer.open, axis=0)

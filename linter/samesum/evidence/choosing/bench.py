@@ -59,7 +59,6 @@ class Decided:
 
     second: Mapping[str, Any]
     pick: Mapping[str, Any]
-    lowest: Mapping[str, Any]
     indifferent: Mapping[str, Any]
     learned: Mapping[str, Any]
 
@@ -163,7 +162,7 @@ class Alone:
         program = self.bench.program
         withheld = {name: value if name in self.latitude.withheld else 0.0 for name, value in program.withheld.items()}
         factors = {self.latitude.id: 1.0 - self.deduction} if self.deduction else {}
-        if self.latitude.kind in ("setting", "judgement"):
+        if self.latitude.is_input:
             return World(inputs={**withheld, **decided})
         return World(decided, withheld, errors, factors)
 
@@ -291,11 +290,10 @@ def ways_in(program: Program, id: str) -> dict[str, Any]:
 
 def decide(one: Alone, found: Mapping[str, tuple[take.Offer, list[Array]]]) -> Decided:
     """What the developer takes at each point, each behaviour."""
-    second, pick, lowest, any_one, learned = {}, {}, {}, {}, {}
+    second, pick, any_one, learned = {}, {}, {}, {}
     for id, (offer, _) in found.items():
         chance = generator(one.bench.terms.seed, one.bench.number, "indifferent", id).random(len(offer.truth))
         pick[id] = take.pick_of_all(offer)
-        lowest[id] = take.lowest_of_all(offer)
         if one.latitude.kind == "choice":
             second[id] = take.second_look(offer)
             learned[id] = take.learned(offer)
@@ -304,16 +302,14 @@ def decide(one: Alone, found: Mapping[str, tuple[take.Offer, list[Array]]]) -> D
             second[id] = learned[id] = pick[id]
         any_one[id] = take.indifferent(offer, chance)
     if one.latitude.kind not in ("setting", "judgement"):
-        return Decided(second, pick, lowest, any_one, learned)
+        return Decided(second, pick, any_one, learned)
     name = one.latitude.id
     if one.latitude.kind == "setting" and one.latitude.high > one.latitude.low:
         spread = one.latitude.low + (one.latitude.high - one.latitude.low) * chance
     else:
         spread = np.asarray(one.latitude.values)[any_one[name]]
-    best, least = (
-        {name: one.bench.set_to(name, np.asarray(one.latitude.values)[which[name]])} for which in (pick, lowest)
-    )
-    return Decided(best, best, least, {name: one.bench.set_to(name, spread)}, best)
+    best = {name: one.bench.set_to(name, np.asarray(one.latitude.values)[pick[name]])}
+    return Decided(best, best, {name: one.bench.set_to(name, spread)}, best)
 
 
 # --- rows ----------------------------------------------------------------------------------------

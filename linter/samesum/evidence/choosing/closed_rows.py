@@ -30,6 +30,8 @@ def closed_rows(one: Alone, found: Mapping[str, tuple[Offer, list[Array]]]) -> N
         worth = slope(one, id)
         bench.sums.tallies[latitude.id, "weight", id, "closed"] = tally(bench.truth + worth, bench.truth)
         for key, value in _over_issued(noises, correlation, found[id][0], worth, bench.terms.price).items():
+            if key[0] == "lowest" and not _one_way(one, id, worth):
+                value = None
             if key not in extra:
                 extra[key] = value
             else:
@@ -40,6 +42,12 @@ def closed_rows(one: Alone, found: Mapping[str, tuple[Offer, list[Array]]]) -> N
             number = int(option) if option else -1
             name = latitude.candidates[number] if option else ""
             bench.sums.tallies[latitude.id, behaviour, name, "closed"] = tally(bench.truth + credited, bench.truth)
+
+
+def _one_way(one: Alone, id: str, worth: Array) -> bool:
+    """Whether the rule that takes the lowest (or highest) value takes what credits least in every project."""
+    value = np.asarray(one.bench.truth_values[one.bench.program.selects[id]])
+    return bool(np.all(np.sign(worth) * np.sign(value) * one.latitude.leaning >= 0)) and one.latitude.leaning != 0
 
 
 def noises_of(one: Alone) -> tuple[list[Noise] | None, float]:

@@ -6,12 +6,13 @@ All elements of an index together are one latitude, each element with a decision
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, field
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from typing import Literal
 
-from samesum.evidence.choosing.programs import STATED, Program
+from samesum.evidence.choosing.programs import LOWEST, STATED, Program
 from samesum.evidence.routes.witness import usual
+from samesum.graph import BranchPoint
 from samesum.reading import model as m
 from samesum.reading import walk
 
@@ -22,8 +23,9 @@ Kind = Literal["choice", "overlap", "setting", "judgement", "stated"]
 class Latitude:
     """``id`` is the branch point's general id, or a setting's or judgement's name. ``candidates`` are options, branches
     or values by name; ``reference`` the one that counts as the truth. ``stated``: nobody decides, but the quantity says
-    how it errs. ``noises``: bias and error of each option that states one. ``withheld``: deductions against this
-    choice, which the truth does not know."""
+    how it errs, or the rulebook has settled what is taken. ``noises``: bias and error of each option that states one.
+    ``withheld``: deductions against this choice, which the truth does not know. ``leaning``: of a choice, 1 where more
+    of what it gives credits more, −1 where it credits less, 0 where it goes both ways or nobody asked."""
 
     id: str
     kind: Kind
@@ -37,10 +39,16 @@ class Latitude:
     values: tuple[float | int | bool, ...] = ()
     low: float = 0.0
     high: float = 0.0
+    leaning: int = 0
+
+    @property
+    def is_input(self) -> bool:
+        """Whether this is a setting or a judgement, settled ones included."""
+        return bool(self.values)
 
     def points(self, program: Program) -> tuple[str, ...]:
         """The branch points in projects of this size, one an element; the name itself for an input."""
-        if self.kind in ("setting", "judgement"):
+        if self.is_input:
             return (self.id,) if self.id in program.inputs else ()
         graph = program.graph
         mine = (id for id in program.points if graph.branch_points[id].general_id == self.id)
@@ -55,7 +63,9 @@ def find_latitudes(program: Program) -> tuple[Latitude, ...]:
     for id, point in graph.branch_points.items():
         if point.general_id in found or program.selects.get(id) not in live:
             continue
-        if isinstance(point.body, m.Choice):
+        if id in program.taken:
+            found[point.general_id] = _settled(point, program.taken[id])
+        elif isinstance(point.body, m.Choice):
             stated = point.branches == (STATED,)
             found[point.general_id] = Latitude(
                 id=point.general_id,
@@ -80,8 +90,24 @@ def find_latitudes(program: Program) -> tuple[Latitude, ...]:
     inputs: list[m.Setting | m.Judgement] = [*graph.model.settings, *graph.model.judgements]
     for each in inputs:
         if any(number in live for number in program.inputs.get(each.name, ())):
-            latitudes.append(_input(each))
+            known = _input(each)
+            if each.name in program.prescribed:
+                value = program.prescribed[each.name]
+                known = replace(known, kind="stated", candidates=("as prescribed",), reference=0, values=(value,))
+            latitudes.append(known)
     return tuple(latitudes)
+
+
+def _settled(point: BranchPoint, branch: int) -> Latitude:
+    """A choice that nobody makes any more."""
+    assert isinstance(point.body, m.Choice)
+    name = m.LOWEST if branch == LOWEST else m.HIGHEST if branch < 0 else point.branches[branch]
+    noises = {
+        option.name: (float(option.bias or 0), float(option.error or 0))
+        for option in point.body.options
+        if option.name == name and (option.error is not None or option.bias is not None)
+    }
+    return Latitude(point.general_id, "stated", point.body.by, "", point.clause, (name,), 0, noises)
 
 
 def _withheld(program: Program, quantity: str) -> tuple[str, ...]:

@@ -34,7 +34,7 @@ class OverIssuing:
 
 def errs(body: m.Body) -> bool:
     """Whether this is a choice of which two options or more say how they err."""
-    if not isinstance(body, m.Choice):
+    if not isinstance(body, m.Choice) or body.takes:
         return False
     return sum(option.error is not None or option.bias is not None for option in body.options) > 1
 

@@ -13,11 +13,14 @@ from typing import Any
 import numpy as np
 
 from samesum.evidence.routes.counting import deep
-from samesum.evidence.subjects.pointwise import preferred
 from samesum.evidence.trial import plan
 from samesum.graph import BranchPoint, DecisionGraph, Element, build
 from samesum.reading import model as m
+from samesum.settled import by_preference, reopened
 
+LOWEST, HIGHEST = -2, -3
+"""What a branch point takes whose lowest or highest option counts, in place of a branch's number."""
+_EXTREMES = {m.LOWEST: LOWEST, m.HIGHEST: HIGHEST}
 STATED = "as stated"
 """The one branch of a quantity that states an error without offering a choice."""
 
@@ -38,7 +41,9 @@ class Choosing:
 @dataclass(frozen=True, slots=True)
 class Program:
     """``nodes`` in an order in which each stands after what it uses; ``live`` those that anything asked for needs.
-    ``known_linear``: what ``linear`` found out about it before."""
+    ``taken``: by id of a branch point that the rulebook has settled, the branch that everybody takes, ``LOWEST`` or
+    ``HIGHEST``; ``prescribed``: by name, the value of a setting or judgement that it has. Only the truth knows
+    nothing of either. ``known_linear``: what ``linear`` found out about it before."""
 
     graph: DecisionGraph
     nodes: tuple[plan.Node, ...]
@@ -53,6 +58,8 @@ class Program:
     weights: Mapping[int, tuple[float, ...]]
     inputs: Mapping[str, tuple[int, ...]]
     withheld: Mapping[str, float]
+    taken: Mapping[str, int] = field(default_factory=dict)
+    prescribed: Mapping[str, float | int | bool] = field(default_factory=dict)
     _after: dict[frozenset[str], tuple[int, ...]] = field(default_factory=dict)
     known_linear: dict[frozenset[str], bool] = field(default_factory=dict)
 
@@ -67,8 +74,11 @@ class Program:
                     if number is not None:
                         changed[number] = 1
             for number in self.live:
-                if not changed[number] and any(changed[arg] for arg in self.nodes[number].args):
+                node = self.nodes[number]
+                if not changed[number] and any(changed[arg] for arg in node.args):
                     changed[number] = 1
+                if changed[number] and node.kind == "select" and self.taken.get(node.name, 0) < 0:
+                    changed[self.points[node.name]] = 1  # which option is the lowest may have changed
             found = tuple(number for number in self.live if changed[number])
             self._after[wanted] = found
         return found
@@ -96,8 +106,14 @@ def make_program(model: m.Model, sizes: Mapping[str, int] | None = None) -> Prog
 
 def _program(model: m.Model, sizes: Mapping[str, int] | None) -> Program:
     stated = replace(model, quantities=tuple(_with_statement(each) for each in model.quantities))
+    stated, prescribed = reopened(stated)
     graph = plan.resized(stated, sizes or {}) if sizes else build(stated)
     withheld = {each.name: float(_plain(each.expression)) for each in model.constants if each.withheld}
+    taken = {
+        id: _EXTREMES[what] if what in _EXTREMES else point.branches.index(what)
+        for id, point in graph.branch_points.items()
+        if (what := prescribed.choices.get(point.general_id))
+    }
     maker = _Maker(graph, withheld)
     if model.result is None:
         raise plan.Unplannable("the rulebook has no result")
@@ -138,15 +154,28 @@ def _program(model: m.Model, sizes: Mapping[str, int] | None) -> Program:
         },
         inputs={name: tuple(found) for name, found in inputs.items()},
         withheld=withheld,
-    )
+        taken={id: branch for id, branch in taken.items() if id in selects},
+        prescribed={
+            name: value if isinstance(value, bool) else maker.named[name].index(value) if isinstance(value, str)
+            else float(value) for name, value in prescribed.inputs.items()
+        },
+    )  # fmt: skip
 
 
 class _Maker(plan.Maker):
-    """The plan's maker, except that a constant which is not in the reference stays an input."""
+    """The plan's maker, except that a constant which is not in the reference stays an input, and that what asks which
+    option a choice took comes after its options: the lowest of them may be taken."""
 
     def __init__(self, graph: DecisionGraph, withheld: Mapping[str, float]) -> None:
         super().__init__(graph)
         self._withheld = withheld
+
+    def point(self, id: str) -> int:
+        first = id not in self._points
+        found = super().point(id)
+        if first and id in self.graph.instances:
+            self.instance(id)
+        return found
 
     def expression(self, node: m.Expression, elements: Element) -> int:
         if isinstance(node, m.Reference) and node.kind == "constant" and node.name in self._withheld:
@@ -165,12 +194,6 @@ def _with_statement(quantity: m.Quantity) -> m.Quantity:
 
 def _choosing(point: BranchPoint, graph: DecisionGraph) -> Choosing:
     options = point.body.options if isinstance(point.body, (m.Choice, m.Follows)) else ()
-    left = list(range(len(options)))
-    order: list[int] = []
-    while left:
-        best = preferred(options, left)
-        order.append(best)
-        left.remove(best)
     leader: tuple[int, ...] = ()
     if point.leader:
         names = graph.branch_points[point.leader].branches
@@ -180,7 +203,7 @@ def _choosing(point: BranchPoint, graph: DecisionGraph) -> Choosing:
         tuple(id for id in graph.branch_points if id == inside or id.startswith(inside + "/")) for inside in insides
     )
     stated = tuple(option.error is not None or option.bias is not None for option in options)
-    return Choosing(point, stated, tuple(order), leader, nested)
+    return Choosing(point, stated, by_preference(options), leader, nested)
 
 
 def _plain(expression: m.Expression) -> Any:

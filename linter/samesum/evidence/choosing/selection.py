@@ -16,6 +16,7 @@ from samesum.evidence.choosing.bench import Row, Sums, Terms
 from samesum.evidence.choosing.closed_forms import enrolment_by_estimate, enrolment_by_truth
 from samesum.evidence.choosing.deductions import Deduction, solve_deductions
 from samesum.evidence.choosing.latitudes import Latitude, find_latitudes
+from samesum.evidence.choosing.leaning import leaning
 from samesum.evidence.choosing.projects import Stretch, Supply, projects_of, stretches
 from samesum.evidence.choosing.tally import BINS, Tally
 from samesum.evidence.choosing.trials_of_choice import (
@@ -151,6 +152,10 @@ def select(
     ``jobs``. Raises ``NothingTrue``, and ``projects.CannotDraw`` when projects cannot be drawn."""
     model = supply.model
     latitudes = _latitudes(supply)
+    if closures:
+        latitudes = tuple(
+            replace(each, leaning=leaning(supply, each, terms)) if each.kind == "choice" else each for each in latitudes
+        )
     sums = Sums()
     done = 0
     parts = stretches(supply, projects)
@@ -329,15 +334,10 @@ class _Rows:
                 made.append(Closure(kind, "" if kind == "in order" else each.option, left, whole))
         if latitude.kind != "choice":
             return tuple(made)
-        lowest = self.figure((id, LOWEST, ""), self.sums.tallies[id, LOWEST, ""])
-        made.append(
-            Closure(
-                "lowest",
-                "",
-                Estimate(lowest.over_issuance, lowest.standard_error),
-                self.estimate((WHOLE, id, LOWEST, "")),
-            )
-        )
+        if latitude.leaning:
+            lowest = self.figure((id, LOWEST, ""), self.sums.tallies[id, LOWEST, ""])
+            left = Estimate(lowest.over_issuance, lowest.standard_error)
+            made.append(Closure("lowest", "", left, self.estimate((WHOLE, id, LOWEST, ""))))
         fixed = self.estimate((id, "periods", SECOND, ANEW, "fixed"))
         if fixed is not None and latitude.timing != "validation":
             stay = self.estimate((id, "periods", SECOND, STAY, "fixed"))

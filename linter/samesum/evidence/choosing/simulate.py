@@ -17,7 +17,7 @@ from typing import Any
 import numpy as np
 import numpy.typing as npt
 
-from samesum.evidence.choosing.programs import Lookup, Program, needed_for
+from samesum.evidence.choosing.programs import LOWEST, Lookup, Program, needed_for
 from samesum.evidence.trial import plan
 
 Array = npt.NDArray[Any]
@@ -26,9 +26,10 @@ Branch = int | Array
 
 @dataclass(frozen=True, slots=True)
 class World:
-    """``branches``: the branch wanted at a branch point (else the reference's); where it is not open, the reference
-    counts. ``inputs``: facts, settings, judgements set otherwise than the projects say. ``errors``: e of an option's
-    estimate by branch point and option (else 0). ``factors``: what a choice's value is multiplied by, by general id."""
+    """``branches``: the branch wanted at a branch point (else the reference's), or ``LOWEST`` or ``HIGHEST``; where it
+    is not open, the reference counts. ``inputs``: facts, settings, judgements set otherwise than the projects say.
+    ``errors``: e of an option's estimate by branch point and option (else 0). ``factors``: what a choice's value is
+    multiplied by, by general id."""
 
     branches: Mapping[str, Branch] = field(default_factory=dict)
     inputs: Mapping[str, Any] = field(default_factory=dict)
@@ -190,7 +191,7 @@ def _point(program: Program, node: plan.Node, values: list[Any], world: World) -
     reference: Branch = -1
     for number in reversed(choosing.order):
         reference = number if free[number] else _where(values[node.args[number]], number, reference)
-    if wanted is None:
+    if wanted is None or (isinstance(wanted, int) and wanted < 0):  # which is the lowest is for its select to find out
         return reference, reference
     taken = wanted
     for number, arg in enumerate(node.args):
@@ -248,17 +249,17 @@ def _selected(program: Program, node: plan.Node, values: list[Any], inputs: Mapp
     choosing = program.choosing.get(node.name)
     if choosing is None:
         return picked(taken, bodies)
-    if not any(choosing.stated):
-        chosen = picked(taken, bodies)
-    else:
+    extreme = world.branches.get(node.name)
+    sought = extreme if isinstance(extreme, int) and extreme < 0 else 0
+    offered = list(bodies)
+    if any(choosing.stated):
         clean = [
             _as_reference(program, node.args[1 + number], nested, values, inputs, world) if nested else bodies[number]
             for number, nested in enumerate(choosing.nested)
         ]
         truth = picked(reference, clean)
-        offered = list(bodies)
         for number, stated in enumerate(choosing.stated):
-            if not stated or not _any(taken, number):
+            if not stated or not (sought or _any(taken, number)):
                 continue
             error = world.errors.get((node.name, number))
             estimate = truth if error is None else truth * (1.0 + error)
@@ -267,9 +268,26 @@ def _selected(program: Program, node: plan.Node, values: list[Any], inputs: Mapp
                 ratio = bodies[number] / clean[number]
                 estimate = np.where(np.equal(clean[number], 0.0), estimate, estimate * ratio)
             offered[number] = estimate
-        chosen = picked(taken, offered)
+    if sought:
+        guards = [values[arg] for arg in program.nodes[node.args[0]].args]
+        taken = _extreme(offered, guards, choosing.order, sought)
+        values[node.args[0]] = (taken, reference)
+    chosen = picked(taken, offered)
     factor = world.factors.get(choosing.point.general_id)
     return chosen if factor is None else chosen * factor
+
+
+def _extreme(offered: Sequence[Any], guards: Sequence[Any], order: Sequence[int], sought: int) -> Branch:
+    """The open branch with the lowest (or highest) value; of several alike the one most fit to stand for the truth."""
+    sign = 1.0 if sought == LOWEST else -1.0
+    best: Any = np.inf
+    taken: Branch = -1
+    for number in order:
+        value = np.where(guards[number], sign * np.asarray(offered[number], dtype=np.float64), np.inf)
+        lower = value < best
+        taken = _where(lower, number, taken)
+        best = np.where(lower, value, best)
+    return taken
 
 
 def _any(taken: Branch, number: int) -> bool:

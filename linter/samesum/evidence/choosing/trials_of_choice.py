@@ -26,6 +26,8 @@ from samesum.evidence.choosing.bench import (
 )
 from samesum.evidence.choosing.closed_rows import closed_rows
 from samesum.evidence.choosing.latitudes import Latitude
+from samesum.evidence.choosing.programs import HIGHEST as MOST
+from samesum.evidence.choosing.programs import LOWEST as LEAST
 from samesum.evidence.choosing.projects import Projects
 from samesum.evidence.choosing.simulate import World
 
@@ -58,7 +60,10 @@ def work(projects: Projects, number: int, latitudes: Sequence[Latitude], terms: 
 
 
 def _stated_rows(one: Alone) -> None:
-    record(one.bench, (one.latitude.id, MANDATED, one.latitude.candidates[0]), one.credited({}))
+    program = one.bench.program
+    held: Mapping[str, Any] = program.prescribed if one.latitude.is_input else program.taken
+    decided = {id: held[id] for id in one.points if id in held}
+    record(one.bench, (one.latitude.id, MANDATED, one.latitude.candidates[0]), one.credited(decided))
 
 
 def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> None:
@@ -72,7 +77,7 @@ def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> No
         comparison = mandated[reference]
         for name, credited in mandated.items():
             record(bench, (latitude.id, MANDATED, name), credited, comparison)
-    rows = {SECOND: decided.second, PICK: decided.pick, LOWEST: decided.lowest, INDIFFERENT: decided.indifferent}
+    rows = {SECOND: decided.second, PICK: decided.pick, INDIFFERENT: decided.indifferent}
     credited_by: dict[str, Array] = {}
     for behaviour, taken in rows.items():
         same = next((other for other in credited_by if rows[other] is taken), None)
@@ -82,6 +87,8 @@ def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> No
     record_histogram(bench, (latitude.id, SECOND), credited_by[SECOND])
     if latitude.kind != "choice":
         return
+    if latitude.leaning:
+        record(bench, (latitude.id, LOWEST, ""), one.credited(_least(latitude, one.points)), comparison)
     if periods > 1:
         learned = one.taking(decided.learned, found)
         fresh = {key: error for key, error in bench.fresh.items() if key[0] in one.points}
@@ -96,6 +103,11 @@ def _alone_rows(one: Alone, found: Offers, decided: Decided, periods: int) -> No
     closed_rows(one, found)
     if bench.terms.join is not None:
         _truth_scatters(one)
+
+
+def _least(latitude: Latitude, points: Sequence[str]) -> dict[str, Any]:
+    """The rule that takes whichever option credits least."""
+    return dict.fromkeys(points, LEAST if latitude.leaning > 0 else MOST)
 
 
 def _everybody(one: Alone, found: Offers, number: int) -> Array:
@@ -153,13 +165,15 @@ class _Whole:
             point for each in latitudes if each.timing == "validation" for point in each.points(bench.program)
         }
         self.choices = [each for each in latitudes if each.id in decided]
-        keys = {id for id, _ in bench.errors} | set(bench.program.withheld)
+        program = bench.program
+        keys = {id for id, _ in bench.errors} | {*program.withheld, *program.taken, *program.prescribed}
         self.start = bench.values(self.world({}), bench.truth_values, sorted(keys))
 
     def world(self, taken: Mapping[str, Any], errors: Mapping[tuple[str, int], Array] | None = None) -> World:
-        branches = {key: value for key, value in taken.items() if key not in self.inputs}
+        program = self.bench.program
+        branches = {**program.taken, **{key: value for key, value in taken.items() if key not in self.inputs}}
         inputs = {key: value for key, value in taken.items() if key in self.inputs}
-        inputs = {**self.bench.program.withheld, **inputs}
+        inputs = {**program.withheld, **program.prescribed, **inputs}
         return World(branches, inputs, self.bench.errors if errors is None else errors)
 
     def credited(
@@ -234,8 +248,8 @@ class _Whole:
                     closed[name] = {each.id: bench.set_to(each.id, value)}
             for name, taken in closed.items():
                 self._closure((WHOLE, each.id, MANDATED, name), {**second, **taken}, values, points)
-            if each.kind == "choice":
-                lowest = {**second, **self.decided[each.id].lowest}
+            if each.leaning:
+                lowest = {**second, **_least(each, points)}
                 self._closure((WHOLE, each.id, LOWEST, ""), lowest, values, points)
 
     def _closure(self, row: Row, taken: Mapping[str, Any], values: Sequence[Any], keys: Sequence[str]) -> None:

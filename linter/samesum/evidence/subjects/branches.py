@@ -164,7 +164,7 @@ def _gaps(evidence: Evidence, points: Mapping[str, BranchPoint]) -> Iterator[Sub
 
 def _gap(evidence: Evidence, points: Mapping[str, BranchPoint], id: str, kind: str, gaps: Sequence[Gap]) -> Subject:
     point = points.get(id)
-    span, clause = _place(evidence.model, id, point)
+    span, clause = _place(evidence.graph.model, id, point)
     first = gaps[0] if gaps else None
     tables = _rowless(evidence, first) if first is not None else ()
     attributes: dict[str, AttributeValue] = {

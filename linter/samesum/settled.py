@@ -1,0 +1,386 @@
+"""A rulebook as it is applied, once what nobody decides any more is put where the decision stood.
+
+Takes a ``Model``, gives a ``Model`` without a choice, setting or judgement that ``takes`` something: a mandated
+option's body, the lowest or highest of the options, a prescribed value. What follows such a choice, or asks which
+option it took, gets the branch or the answer that goes with it. ``reopened`` is for whoever compares with the truth,
+for which the options that are not taken still count.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass, field, replace
+from fractions import Fraction
+from itertools import combinations
+
+from samesum.reading import model as m
+from samesum.reading import walk
+from samesum.spans import Span
+
+Answer = m.Condition | bool
+
+
+def settled(model: m.Model) -> m.Model:
+    """The model with everything put in its place that takes something; the same model where nothing does."""
+    settled_in = [
+        quantity
+        for quantity in model.quantities
+        if any(isinstance(body, m.Choice) and body.takes for body in walk.bodies(quantity.body))
+    ]
+    inputs: tuple[m.Setting | m.Judgement, ...] = (*model.settings, *model.judgements)
+    values = {each.name: each.takes for each in inputs if each.takes is not None}
+    if not settled_in and not values:
+        return model
+    own = (quantity for quantity in settled_in if isinstance(quantity.body, m.Choice) and quantity.body.takes)
+    choices = {quantity.name: quantity for quantity in own}
+    maker = _Maker(choices, values, _asked_of(model))
+    quantities: list[m.Quantity] = []
+    for quantity in model.quantities:
+        body = maker.body(quantity, quantity.body, quantity.name)
+        quantities += [replace(quantity, body=body), *maker.made]
+        maker.made.clear()
+    return replace(
+        model,
+        applies=tuple(replace(each, condition=maker.condition(each.condition)) for each in model.applies),
+        settings=tuple(each for each in model.settings if each.takes is None),
+        judgements=tuple(each for each in model.judgements if each.takes is None),
+        constants=(*model.constants, *_constants(model)),
+        quantities=tuple(quantities),
+    )
+
+
+@dataclass(frozen=True, slots=True)
+class Prescribed:
+    """What nobody decides: what each choice takes, by its id without an element's number, and the value of each setting
+    and judgement, by its name."""
+
+    choices: Mapping[str, str]
+    inputs: Mapping[str, Fraction | str | bool]
+
+
+def reopened(model: m.Model) -> tuple[m.Model, Prescribed]:
+    """The model with every choice, setting and judgement as if somebody decided it, and what the rulebook takes."""
+    taken: dict[str, str] = {}
+
+    def body(old: m.Body, id: str) -> m.Body:
+        if isinstance(old, m.Choice) and old.takes:
+            taken[id] = old.takes
+            old = replace(old, takes="")
+        return _with_bodies(old, tuple(body(each.body, f"{id}/{each.name}") for each in walk.branches(old)))
+
+    quantities = tuple(replace(each, body=body(each.body, each.name)) for each in model.quantities)
+    everyone: tuple[m.Setting | m.Judgement, ...] = (*model.settings, *model.judgements)
+    inputs = {each.name: each.takes for each in everyone if each.takes is not None}
+    if not taken and not inputs:
+        return model, Prescribed({}, {})
+    settings = tuple(replace(each, takes=None) for each in model.settings)
+    judgements = tuple(replace(each, takes=None) for each in model.judgements)
+    reopened = replace(model, quantities=quantities, settings=settings, judgements=judgements)
+    return reopened, Prescribed(taken, inputs)
+
+
+def by_preference(options: tuple[m.Option, ...]) -> tuple[int, ...]:
+    """The options from the most to the least fit to stand for the truth: the reference, then those with the lowest
+    stated errors, then the others as written."""
+
+    def rank(number: int) -> tuple[bool, bool, Fraction, int]:
+        option = options[number]
+        return (not option.reference, option.error is None, option.error or Fraction(0), number)
+
+    return tuple(sorted(range(len(options)), key=rank))
+
+
+def _constants(model: m.Model) -> Iterator[m.Constant]:
+    for setting in model.settings:
+        if isinstance(setting.takes, Fraction):
+            number = m.Number(setting.takes, setting.unit, setting.about.name_span)
+            yield m.Constant(setting.name, setting.unit, number, setting.about)
+
+
+def _asked_of(model: m.Model) -> frozenset[str]:
+    """The quantities whose choice something follows, or asks what it took."""
+    found: set[str] = set()
+    conditions = [each.condition for each in model.applies]
+    for quantity in model.quantities:
+        for body in walk.bodies(quantity.body):
+            if isinstance(body, m.Follows):
+                found.add(body.quantity)
+            conditions += [condition for each in walk.branches(body) if (condition := walk.condition_of(each))]
+    for condition in conditions:
+        found |= {each.quantity for each in walk.inside(condition) if isinstance(each, m.Takes)}
+    return frozenset(found)
+
+
+def _with_bodies(body: m.Body, inner: tuple[m.Body, ...]) -> m.Body:
+    match body:
+        case m.Cases(branches=branches):
+            whens = tuple(replace(each, body=new) for each, new in zip(branches, inner, strict=True))
+            return replace(body, branches=whens)
+        case m.Choice(options=options) | m.Follows(options=options):
+            return replace(
+                body, options=tuple(replace(each, body=new) for each, new in zip(options, inner, strict=True))
+            )
+        case _:
+            return body
+
+
+# --- conditions that are always or never true ------------------------------------------------------
+
+
+def _never(span: Span) -> m.Condition:
+    return m.Comparison("=", m.Number(Fraction(0), m.PLAIN, span), m.Number(Fraction(1), m.PLAIN, span), span)
+
+
+def _always(span: Span) -> m.Condition:
+    return m.Comparison("=", m.Number(Fraction(0), m.PLAIN, span), m.Number(Fraction(0), m.PLAIN, span), span)
+
+
+def _written(answer: Answer, span: Span) -> m.Condition:
+    if isinstance(answer, bool):
+        return _always(span) if answer else _never(span)
+    return answer
+
+
+def _all(parts: list[Answer], span: Span) -> Answer:
+    if any(part is False for part in parts):
+        return False
+    left = tuple(part for part in parts if not isinstance(part, bool))
+    return m.All(left, span) if len(left) > 1 else left[0] if left else True
+
+
+def _not(part: Answer, span: Span) -> Answer:
+    return not part if isinstance(part, bool) else m.Not(part, span)
+
+
+@dataclass(slots=True)
+class _Maker:
+    """``choices``: quantities whose own choice nobody makes. ``values``: what settings and judgements take. ``asked``:
+    quantities whose choice is followed or asked. ``made``: quantities that stand for options, to be added."""
+
+    choices: Mapping[str, m.Quantity]
+    values: Mapping[str, Fraction | str | bool | None]
+    asked: frozenset[str]
+    made: list[m.Quantity] = field(default_factory=list)
+
+    # -- bodies ---------------------------------------------------------------------------
+
+    def body(self, quantity: m.Quantity, body: m.Body, id: str) -> m.Body:
+        match body:
+            case m.Formula(expression=expression):
+                return replace(body, expression=self.expression(expression))
+            case m.Cases():
+                return self._cases(quantity, body, id)
+            case m.Choice(takes=takes) if takes:
+                return self._taken(quantity, body, id)
+            case m.Follows() if body.quantity in self.choices:
+                return self._follows(quantity, body, id)
+            case m.Choice(options=options) | m.Follows(options=options):
+                return replace(body, options=tuple(self._option(quantity, each, id) for each in options))
+            case _:
+                return body
+
+    def _cases(self, quantity: m.Quantity, body: m.Cases, id: str) -> m.Body:
+        answers = [True if each.condition is None else self._answer(each.condition) for each in body.branches]
+        asked = [
+            each for each, answer in zip(body.branches, answers, strict=True) if each.condition and answer is not False
+        ]
+        branches: list[m.When] = []
+        for when, answer in zip(body.branches, answers, strict=True):
+            if answer is False:
+                continue
+            inner = self.body(quantity, when.body, f"{id}/{when.name}")
+            # Of conditions without an order, one that always holds still overlaps with the others.
+            surely = answer is True and (when.condition is None or body.in_order or len(asked) == 1)
+            condition = None if surely else _written(answer, when.span)
+            branches.append(replace(when, condition=condition, body=inner))
+            if surely:
+                break
+        if not branches:
+            first = body.branches[0]
+            inner = self.body(quantity, first.body, f"{id}/{first.name}")
+            branches = [replace(first, condition=_never(first.span), body=inner)]
+        if branches[0].condition is None:
+            return branches[0].body
+        return replace(body, branches=tuple(branches))
+
+    def _option(self, quantity: m.Quantity, option: m.Option, id: str) -> m.Option:
+        guard = self._guard(option)
+        return replace(
+            option,
+            body=self.body(quantity, option.body, f"{id}/{option.name}"),
+            only_when=None if guard is True else _written(guard, option.span),
+            cost=self.expression(option.cost) if option.cost is not None else None,
+        )
+
+    def _taken(self, quantity: m.Quantity, body: m.Choice, id: str) -> m.Body:
+        if body.takes not in (m.LOWEST, m.HIGHEST):
+            inner: dict[str, m.Body] = {}
+            for option in body.options:
+                whole = self.body(quantity, option.body, f"{id}/{option.name}")
+                inner[option.name] = whole if isinstance(whole, m.Formula) else self._apart(quantity, option, whole, id)
+            return self._in_order(body, inner, body.span)
+        return self._extreme(quantity, body, self._terms(quantity, body, id))
+
+    def _follows(self, quantity: m.Quantity, body: m.Follows, id: str) -> m.Body:
+        leader = self.choices[body.quantity].body
+        assert isinstance(leader, m.Choice)
+        inner = {each.name: self.body(quantity, each.body, f"{id}/{each.name}") for each in body.options}
+        if leader.takes not in (m.LOWEST, m.HIGHEST):
+            return self._in_order(leader, inner, body.span)
+        branches = []
+        for number, option in enumerate(leader.options, start=1):
+            was = self._is_extreme(option.name, leader, body.quantity, body.index, body.span)
+            branches.append(m.When(str(number), _written(was, body.span), inner[option.name], option.span))
+        return m.Cases(True, tuple(branches), body.span)
+
+    def _in_order(self, choice: m.Choice, inner: Mapping[str, m.Body], span: Span) -> m.Body:
+        """The mandated option's body where it is open, else that of the first other one that is."""
+        branches: list[m.When] = []
+        for number, option in enumerate(_order(choice), start=1):
+            guard = self._guard(option)
+            if guard is False:
+                continue
+            condition = None if guard is True else _written(guard, option.span)
+            branches.append(m.When(str(number) if condition is not None else "otherwise", condition,
+                                   inner[option.name], option.span))  # fmt: skip
+            if guard is True:
+                break
+        if not branches:
+            first = _order(choice)[0]
+            branches = [m.When("1", _never(span), inner[first.name], first.span)]
+        return branches[0].body if branches[0].condition is None else m.Cases(True, tuple(branches), span)
+
+    # -- the lowest or highest ------------------------------------------------------------------
+
+    def _terms(self, quantity: m.Quantity, body: m.Choice, id: str) -> dict[str, m.Expression]:
+        """What each option gives, as a part of a formula; as a quantity of its own where it is more than a formula,
+        or where somebody asks which of them it was."""
+        asked = body is quantity.body and quantity.name in self.asked
+        terms: dict[str, m.Expression] = {}
+        for option in body.options:
+            inner = self.body(quantity, option.body, f"{id}/{option.name}")
+            if isinstance(inner, m.Formula) and not asked:
+                terms[option.name] = inner.expression
+                continue
+            terms[option.name] = self._apart(quantity, option, inner, id).expression
+        return terms
+
+    def _apart(self, quantity: m.Quantity, option: m.Option, body: m.Body, id: str) -> m.Formula:
+        """An option as a quantity of its own, so that what is decided inside keeps its id; its name in its place."""
+        name = f"{id}/{option.name}"
+        about = replace(quantity.about, span=option.span)
+        self.made.append(m.Quantity(name, quantity.unit, quantity.index, body, about))
+        whole = m.Reference(name, "quantity", quantity.index, quantity.unit, option.span)
+        return m.Formula(whole, option.span)
+
+    def _extreme(self, quantity: m.Quantity, body: m.Choice, terms: Mapping[str, m.Expression]) -> m.Body:
+        """The lowest of the options that are open. Of sets of options the larger come first: the first that is open
+        altogether holds every option that is."""
+        guards = {each.name: self._guard(each) for each in body.options}
+        always = {name for name, guard in guards.items() if guard is True}
+        sometimes = [name for name, guard in guards.items() if not isinstance(guard, bool)]
+        branches: list[m.When] = []
+        for size in range(len(sometimes), -1, -1):
+            for among in combinations(sometimes, size):
+                inside = [terms[each.name] for each in body.options if each.name in always or each.name in among]
+                if not inside:
+                    continue
+                asked = _all([guards[name] for name in among], body.span)
+                condition = None if isinstance(asked, bool) else asked
+                name = str(len(branches) + 1) if condition is not None else "otherwise"
+                branches.append(m.When(name, condition, self._one_of(quantity, body, inside), body.span))
+        if not branches:
+            number = m.Formula(m.Number(Fraction(0), quantity.unit, body.span), body.span)
+            branches = [m.When("1", _never(body.span), number, body.span)]
+        return branches[0].body if branches[0].condition is None else m.Cases(True, tuple(branches), body.span)
+
+    def _one_of(self, quantity: m.Quantity, body: m.Choice, among: list[m.Expression]) -> m.Formula:
+        function = "min" if body.takes == m.LOWEST else "max"
+        lowest = m.Function(function, tuple(among), quantity.unit, body.span)
+        return m.Formula(among[0] if len(among) == 1 else lowest, body.span)
+
+    def _guard(self, option: m.Option) -> Answer:
+        return self._answer(option.only_when) if option.only_when is not None else True
+
+    def _is_extreme(self, name: str, choice: m.Choice, quantity: str, index: str, span: Span) -> Answer:
+        """Whether the option of that name was the lowest; of several alike the one most fit to stand for the truth."""
+        unit = self.choices[quantity].unit
+        result = m.Reference(quantity, "quantity", index, unit, span)
+
+        def equals(option: m.Option) -> Answer:
+            term = m.Reference(f"{quantity}/{option.name}", "quantity", index, unit, span)
+            guard = self._guard(option)
+            return _all([guard, m.Comparison("=", result, term, span)], span)
+
+        parts: list[Answer] = []
+        for number in by_preference(choice.options):
+            option = choice.options[number]
+            if option.name == name:
+                return _all([*parts, equals(option)], span)
+            parts.append(_not(equals(option), span))
+        return False
+
+    # -- conditions and expressions -----------------------------------------------------------------
+
+    def condition(self, condition: m.Condition) -> m.Condition:
+        return _written(self._answer(condition), condition.span)
+
+    def _answer(self, condition: m.Condition) -> Answer:
+        """The condition as it is now, or whether it always or never holds."""
+        match condition:
+            case m.All(parts=parts, span=span):
+                return _all([self._answer(part) for part in parts], span)
+            case m.Some(parts=parts, span=span):
+                found = [self._answer(part) for part in parts]
+                if any(each is True for each in found):
+                    return True
+                left = tuple(each for each in found if not isinstance(each, bool))
+                return m.Some(left, span) if len(left) > 1 else left[0] if left else False
+            case m.Not(part=part, span=span):
+                return _not(self._answer(part), span)
+            case m.Holds(name=name) if name in self.values:
+                return self.values[name] is True
+            case m.Is(subject=subject, values=values) if subject.name in self.values:
+                return self.values[subject.name] in values
+            case m.Takes(quantity=quantity, index=index, option=option, span=span) if quantity in self.choices:
+                return self._took(option, quantity, index, span)
+            case m.Comparison(left=left, right=right):
+                return replace(condition, left=self.expression(left), right=self.expression(right))
+            case _:
+                return condition
+
+    def _took(self, option: str, quantity: str, index: str, span: Span) -> Answer:
+        choice = self.choices[quantity].body
+        assert isinstance(choice, m.Choice)
+        if choice.takes in (m.LOWEST, m.HIGHEST):
+            return self._is_extreme(option, choice, quantity, index, span)
+        parts: list[Answer] = []
+        for each in _order(choice):
+            guard = self._guard(each)
+            if each.name == option:
+                return _all([*parts, guard], span)
+            parts.append(_not(guard, span))
+        return False
+
+    def expression(self, expression: m.Expression) -> m.Expression:
+        match expression:
+            case m.Reference(kind="setting", name=name, span=span) if name in self.values:
+                value = self.values[name]
+                return m.Value(value, span) if isinstance(value, str) else replace(expression, kind="constant")
+            case m.Lookup(arguments=arguments) | m.Function(arguments=arguments):
+                return replace(expression, arguments=tuple(self.expression(each) for each in arguments))
+            case m.Arithmetic(left=left, right=right):
+                return replace(expression, left=self.expression(left), right=self.expression(right))
+            case m.Negation(operand=operand) | m.Scaled(operand=operand):
+                return replace(expression, operand=self.expression(operand))
+            case m.Reduction(body=body):
+                return replace(expression, body=self.expression(body))
+            case _:
+                return expression
+
+
+def _order(choice: m.Choice) -> tuple[m.Option, ...]:
+    """The mandated option first, then the others as they are fit to stand for the truth."""
+    first = tuple(each for each in choice.options if each.name == choice.takes)
+    others = (choice.options[number] for number in by_preference(choice.options))
+    return (*first, *(each for each in others if each.name != choice.takes))
