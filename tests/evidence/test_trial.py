@@ -245,8 +245,8 @@ def test_steps_name_the_formula_its_numbers_and_the_clause() -> None:
     assert loss.clause == "5.2" and loss.branches == ("boiler_loss@1: 2 (efficiency@1 <= 85 %)",)
     baseline = lines["heat_baseline@1"]
     assert baseline.formula.startswith("steam@1 * (1 - meter_drift) / (efficiency@1 * (1 - boiler_loss@1))")
-    assert "180000 [GJ] * (1 - 1 %)" in baseline.numbers
-    assert lines["past_mean"].numbers == "mean(310000 [t], 325000 [t], 340000 [t])"
+    assert "180,000 [GJ] * (1 - 1 %)" in baseline.numbers
+    assert lines["past_mean"].numbers == "mean(310,000 [t], 325,000 [t], 340,000 [t])"
 
 
 def test_a_route_that_cannot_be_understood() -> None:

@@ -27,7 +27,8 @@ from samesum.evidence.trial.values import Evaluator, Rows, TooMany
 LARGE = 4096  # combinations beyond which a shared part may stand for itself
 MOST_AT_ONCE = 3_000_000  # cells in one table
 GRID = 33
-ROUNDS = 16
+ROUNDS = 26  # each to a quarter: from a grid of 33 to neighbouring floats
+STILL = 4  # rounds without a better value after which a smooth extreme is found
 
 
 @dataclass(frozen=True, slots=True)
@@ -103,14 +104,18 @@ def _refined(plan: Plan, rows: Rows, held: frozenset[str], bent: frozenset[str])
     spread = {name: np.linspace(*_domain(plan, rows, name), lines) for name in bent}
     spacing = {name: (each[-1] - each[0]) / (lines - 1) for name, each in spread.items()}
     found: Extremes | None = None
-    for _ in range(ROUNDS):
+    still = 0
+    for number in range(ROUNDS):
         work = plan_work(plan, rows, held, spread, bent)
         if work.largest * rows.count > 4 * MOST_AT_ONCE:
             if rows.count == 1:
                 raise TooMany
             halves = [slice(0, rows.count // 2), slice(rows.count // 2, rows.count)]
             return joined([_refined(plan, rows.part(half), held, bent) for half in halves], list(plan.points))
-        found = _run(plan, work)
+        before, found = found, _run(plan, work)
+        still = still + 1 if before is not None and _same_ends(before, found) else 0
+        if still >= STILL and number > ROUNDS // 2:
+            break
         for name in bent:
             near = [
                 extreme.inputs.numbers[name] + step * spacing[name] / 4
@@ -123,6 +128,12 @@ def _refined(plan: Plan, rows: Rows, held: frozenset[str], bent: frozenset[str])
     assert found is not None
     moved = np.logical_or.reduce([rows.free[name] for name in bent])
     return Extremes(found.lowest, found.highest, found.exact & ~moved)
+
+
+def _same_ends(one: Extremes, other: Extremes) -> bool:
+    return np.array_equal(one.lowest.value, other.lowest.value, equal_nan=True) and np.array_equal(
+        one.highest.value, other.highest.value, equal_nan=True
+    )
 
 
 def _domain(plan: Plan, rows: Rows, name: str) -> tuple[Array, Array]:

@@ -20,6 +20,7 @@ from samesum.evidence.trial.structure import find_structure
 from samesum.evidence.trial.values import Evaluator, Rows, TooMany
 
 MOST_WAYS = 512
+NEAR = 1e-12  # what is found and what is proved are one number: the rounding of floats, and no more
 
 
 def search(plan: Plan, rows: Rows, start: Extremes | None, deadline: float) -> tuple[Extremes, Array, Array]:
@@ -34,8 +35,9 @@ def search(plan: Plan, rows: Rows, start: Extremes | None, deadline: float) -> t
         low = np.where(start.exact, start.lowest.value, low)
         high_bound = np.where(start.exact, start.highest.value, high_bound)
     meet = np.ones(rows.count, dtype=bool)
-    for value, bound in ((found[0].value, low), (found[1].value, high_bound)):
-        meet &= np.abs(value - bound) <= 1e-9 * _scale(found[0].value, found[1].value)
+    for side, bound in enumerate((low, high_bound)):
+        value, other = found[side].value, found[1 - side].value
+        meet &= np.abs(value - bound) <= NEAR * _scale(value, other)
     exact = meet if start is None else meet | start.exact
     return Extremes(found[0], found[1], exact), low, high_bound
 
@@ -47,20 +49,21 @@ def _proved(plan: Plan, rows: Rows, lowest: Array, highest: Array, deadline: flo
     boxes, names = open_boxes(plan, rows)
     boxes, problems = _routes_apart(plan, rows, boxes)
     left = (deadline - time.monotonic()) / 2
-    scale = _scale(lowest, highest)
     sides = []
-    for high, reached in ((False, lowest), (True, highest)):
+    for high, reached, other in ((False, lowest, highest), (True, highest, lowest)):
         until = time.monotonic() + left if not high else deadline
         bracket = lowest_over(
-            plan, plan.root, boxes, names, until, 5e-10, highest=high, reached=reached, problems=problems, scale=scale
-        )
+            plan, plan.root, boxes, names, until, NEAR / 2, highest=high, reached=reached, problems=problems,
+            scale=_scale(reached, other),
+        )  # fmt: skip
         sides.append(bracket.proved)
     return sides[0], sides[1]
 
 
-def _scale(lowest: Array, highest: Array) -> Array:
-    """What differences are small in proportion to."""
-    return np.nan_to_num(np.maximum(np.abs(lowest), np.abs(highest)), nan=1.0) + 1e-9
+def _scale(value: Array, other: Array) -> Array:
+    """What differences from one end are small in proportion to: its size, or a hundredth of the other end's, since
+    both come of the same numbers."""
+    return np.nan_to_num(np.maximum(np.abs(value), np.abs(other) / 100), nan=1.0) + 1e-9
 
 
 def _routes_apart(plan: Plan, rows: Rows, boxes: Boxes) -> tuple[Boxes, Array]:
