@@ -58,3 +58,21 @@ def test_what_was_not_found_to_the_last_digits_is_not_called_complete() -> None:
     assert not found.complete or found.highest.value == pytest.approx(10 * math.sqrt(0.5), rel=1e-12)
     assert found.complete or (found.proved is not None and found.proved[1] is not None)
     assert found.complete or (found.proved is not None and (found.proved[1] or 0) >= 10 * math.sqrt(0.5))
+
+
+def test_an_extreme_that_is_only_approached_is_told_as_near_as_comparisons_tell_values_apart() -> None:
+    # 10·d where d < 7/10: below 7, and nowhere 7
+    found = trial_of(
+        "    cases\n        when d < 0.7\n            = k * d\n        when d >= 0.7\n            = 0.1", 10
+    )
+    assert found.complete and found.highest is not None
+    assert 7 * (1 - 1e-11) < found.highest.value < 7
+    # the same where the setting is small beside what is compared
+    body = (
+        "    cases\n        when 1000 + d / 1000 < 1000.0005\n            = k * d\n"
+        "        when 1000 + d / 1000 >= 1000.0005\n            = 0.1"
+    )
+    found = trial_of(body, 10)
+    assert found.highest is not None
+    # 2·10⁻¹² × 2000 / (1/1000) is 4·10⁻⁶ of d beside 1/2, and up to twice that
+    assert 5 - 1e-4 < found.highest.value < 5

@@ -1,7 +1,8 @@
 """At which values a free setting has to be tried: its ends, and where a condition or a band of a table turns.
 
 Between two such values the same branches are open, so a result that only rises or only falls in the setting has
-its extremes at them. A turn that belongs to one side only is tried just beside it as well.
+its extremes at them. A turn that belongs to one side only is tried just beside it as well: as near as a comparison
+can tell apart.
 """
 
 from __future__ import annotations
@@ -10,13 +11,17 @@ from collections.abc import Iterator, Mapping
 
 import numpy as np
 
-from samesum.evidence.trial.arrays import Array, combined, constant
+from samesum.evidence.trial.arrays import Array, Table, combined, constant
+from samesum.evidence.trial.operations import TIE
 from samesum.evidence.trial.plan import Plan
 from samesum.evidence.trial.values import Evaluator, Rows, TooMany
 from samesum.reading import model as m
 
 MOST_LINES = 240
-BESIDE = 1e-9  # of the domain's width
+BESIDE = 1e-9  # of the domain's width, where it cannot be told how near a comparison can tell values apart
+
+Turn = tuple[Array, Array]
+"""A value of the setting, and how far beside it a comparison tells it from the value itself."""
 
 
 def candidates_of(
@@ -90,7 +95,7 @@ def _turns(
     known: Mapping[str, Array],
     held: frozenset[str],
     unsure: Array,
-) -> list[Array]:
+) -> list[Turn]:
     """Where the difference of a comparison is zero between two values known so far. It must be a straight line
     there."""
     lines = known[name]
@@ -103,15 +108,20 @@ def _turns(
     else:
         left, right = evaluator.number(node), constant(bound)
     difference = combined(np.subtract, left, right)
+    terms = [left, right] if bound is not None else [evaluator.scale(each) for each in plan.nodes[node].args]
+    scale = combined(lambda x, a, b: np.abs(a) + np.abs(b) + 0 * x, difference, *terms)
     axis = next(
         (place for place, each in enumerate(evaluator.axes) if each.kind == "numeric" and each.name == name), -1
     )
     if axis not in difference.axes:
         return []
-    data = np.moveaxis(difference.data, difference.axes.index(axis), 0)
-    data = np.broadcast_to(
-        data.reshape(len(points), -1, data.shape[-1]), (len(points), difference.cells // len(points), rows.count)
-    )
+
+    def by_lines(table: Table) -> Array:
+        moved = np.moveaxis(table.data, table.axes.index(axis), 0)
+        flat = moved.reshape(len(points), -1, moved.shape[-1])
+        return np.broadcast_to(flat, (len(points), flat.shape[1], rows.count))
+
+    data = by_lines(difference)
     low, middle, high = data[0:-1:2], data[1::2], data[2::2]
     width = lines[-1] - lines[0]
     clean = ((lines[1:] - lines[:-1]) > 2.5 * BESIDE * width)[:, None, :] & rows.free[name]
@@ -120,26 +130,37 @@ def _turns(
         crossing = clean & (low * high < 0)
         share = low / (low - high)
     unsure |= bent.any(axis=(0, 1))
-    found: list[Array] = []
+    aside = _beside(lines, data[0::2], by_lines(scale)[0::2]) if scale.axes == difference.axes else None
+    usual = BESIDE * width
+    found: list[Turn] = []
     # a turn at one of the values known so far: what lies just beside it is another matter
     size = np.nanmax(np.abs(data), axis=0, initial=0.0)
     touching = ((np.abs(data[0::2]) <= 1e-9 * size) & (size > 0)).any(axis=1) & rows.free[name]
-    for line, here in zip(lines, touching, strict=True):
+    for number, (line, here) in enumerate(zip(lines, touching, strict=True)):
         if here.any():
-            found.append(np.where(here, line, lines[0]))
+            near = usual if aside is None else aside[[max(number - 1, 0), min(number, len(aside) - 1)]].max(axis=(0, 1))
+            found.append((np.where(here, line, lines[0]), np.where(np.isfinite(near), near, usual)))
     for cell, combination in np.argwhere(crossing.any(axis=2)).tolist():
         here = crossing[cell, combination]
         at = lines[cell] + np.where(here, share[cell, combination], 0) * (lines[cell + 1] - lines[cell])
-        found.append(np.where(here, at, lines[0]))
+        near = usual if aside is None else aside[cell, combination]
+        found.append((np.where(here, at, lines[0]), np.where(np.isfinite(near), near, usual)))
         if len(found) > MOST_LINES:
             raise TooMany
     return found
 
 
-def _with_turns(lines: Array, turns: list[Array]) -> Array:
+def _beside(lines: Array, data: Array, scale: Array) -> Array:
+    """Between any two values known so far: how far a comparison's difference has to go to be seen as one (twice
+    what it takes for equal), in the setting's own measure."""
+    with np.errstate(all="ignore"):
+        slope = np.abs(data[1:] - data[:-1]) / (lines[1:] - lines[:-1])[:, None, :]
+        return np.asarray(2 * TIE * np.maximum(scale[1:], scale[:-1]) / slope)
+
+
+def _with_turns(lines: Array, turns: list[Turn]) -> Array:
     """The values known so far with turns, and what lies just beside each, among them."""
     low, high = lines[0], lines[-1]
-    beside = BESIDE * (high - low)
-    more = [np.clip(turn + step * beside, low, high) for turn in turns for step in (-1, 0, 1)]
+    more = [np.clip(turn + step * beside, low, high) for turn, beside in turns for step in (-1, 0, 1)]
     made: Array = np.sort(np.concatenate([lines, np.stack(more)]), axis=0)
     return made

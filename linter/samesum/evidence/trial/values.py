@@ -172,7 +172,7 @@ class Evaluator:
 
     def _compared(self, node: Node) -> Truth:
         left, right = self.number(node.args[0]), self.number(node.args[1])
-        scales = [self._scale(each) for each in node.args]
+        scales = [self.scale(each) for each in node.args]
         axes = union([left, right, *scales])
         self._check(axes)
         a, b, s, t = (spread_out(each, axes) for each in (left, right, *scales))
@@ -194,7 +194,7 @@ class Evaluator:
         missing = np.isnan(difference)
         return Truth(Table(axes, holds), Table(axes, ~missing) if missing.any() else None)
 
-    def _scale(self, number: int) -> Table:
+    def scale(self, number: int) -> Table:
         """The size of the terms of a sum: what its rounding errors are in proportion to."""
         node = self.plan.nodes[number]
         if node.kind != "linear" or len(node.args) < 2:
