@@ -31,9 +31,8 @@ def settled(model: m.Model) -> m.Model:
     values = {each.name: each.takes for each in inputs if each.takes is not None}
     if not settled_in and not values:
         return model
-    own = (quantity for quantity in settled_in if isinstance(quantity.body, m.Choice) and quantity.body.takes)
-    choices = {quantity.name: quantity for quantity in own}
-    maker = _Maker(choices, values, _asked_of(model))
+    choices = _leaders(model)
+    maker = _Maker(choices, values, frozenset(choices[name].name for name in _asked_of(model) if name in choices))
     quantities: list[m.Quantity] = []
     for quantity in model.quantities:
         body = maker.body(quantity, quantity.body, quantity.name)
@@ -95,6 +94,20 @@ def _constants(model: m.Model) -> Iterator[m.Constant]:
         if isinstance(setting.takes, Fraction):
             number = m.Number(setting.takes, setting.unit, setting.about.name_span)
             yield m.Constant(setting.name, setting.unit, number, setting.about)
+
+
+def _leaders(model: m.Model) -> dict[str, m.Quantity]:
+    """By the name of each quantity whose choice nobody makes, or that follows one through any number of others, the
+    quantity with that choice."""
+    quantities = {quantity.name: quantity for quantity in model.quantities}
+    found: dict[str, m.Quantity] = {}
+    for quantity in model.quantities:
+        leader = quantity
+        while isinstance(leader.body, m.Follows) and leader.body.quantity in quantities:
+            leader = quantities[leader.body.quantity]
+        if isinstance(leader.body, m.Choice) and leader.body.takes:
+            found[quantity.name] = leader
+    return found
 
 
 def _asked_of(model: m.Model) -> frozenset[str]:
@@ -222,14 +235,15 @@ class _Maker:
         return self._extreme(quantity, body, self._terms(quantity, body, id))
 
     def _follows(self, quantity: m.Quantity, body: m.Follows, id: str) -> m.Body:
-        leader = self.choices[body.quantity].body
+        quantity_led = self.choices[body.quantity]
+        leader = quantity_led.body
         assert isinstance(leader, m.Choice)
         inner = {each.name: self.body(quantity, each.body, f"{id}/{each.name}") for each in body.options}
         if leader.takes not in (m.LOWEST, m.HIGHEST):
             return self._in_order(leader, inner, body.span)
         branches = []
         for number, option in enumerate(leader.options, start=1):
-            was = self._is_extreme(option.name, leader, body.quantity, body.index, body.span)
+            was = self._is_extreme(option.name, leader, quantity_led, body.span)
             branches.append(m.When(str(number), _written(was, body.span), inner[option.name], option.span))
         return m.Cases(True, tuple(branches), body.span)
 

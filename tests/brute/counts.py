@@ -101,6 +101,22 @@ def count(rulebook: Rulebook) -> Counts:
     )
 
 
+def per_project(rulebook: Rulebook) -> tuple[int, int, int, int]:
+    """per_project_most, per_project_least, developer_most and over_periods_most; also of a rulebook in which
+    nobody makes some choice, whose other figures depend on how that is written out as cases."""
+    points = representative(rulebook)
+    evaluator = Evaluator(rulebook, points)
+    routes: list[Route] = []
+    open_at: list[Array] = []
+    counted = np.zeros(points.rows, dtype=bool)
+    for one in evaluator.passes():
+        counted |= one.mask & one.inside
+        if one.complete.any():
+            routes.append({id: branch for id, branch in one.states.items() if branch is not None})
+            open_at.append(one.complete)
+    return _per_project(evaluator, points, routes, open_at, counted)
+
+
 @dataclass
 class _Found:
     """Gaps, overlaps and branches taken, over all evaluations."""
@@ -155,11 +171,10 @@ def _per_project(
     projects = np.logical_or.reduceat(table, points.projects, axis=1)[:, eligible]
     totals = projects.sum(axis=0)
     fixed = np.logical_or.reduceat(table, points.fixed, axis=1)
-    chosen = {id for id, body in evaluator.written.items() if isinstance(body, Choice) and body.by != "developer"}
+    choices = {id: body for id, body in evaluator.written.items() if isinstance(body, Choice) and not body.takes}
+    chosen = {id for id, body in choices.items() if body.by != "developer"}
     developer = max(_best([routes[k] for k in np.flatnonzero(one)], chosen) for one in _different(fixed))
-    validation = [
-        id for id, body in evaluator.written.items() if isinstance(body, Choice) and body.timing == "validation"
-    ]
+    validation = [id for id, body in choices.items() if body.timing == "validation"]
     n = evaluator.rulebook.periods
     periods = 0
     for one in _different(projects):

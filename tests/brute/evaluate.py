@@ -18,6 +18,7 @@ The meaning that is followed here, beyond the language's own page:
   result, are outside: not counted, no gap, overlap or dead branch is told of them. What it asks
   is evaluated, so its branch points are on the route. A project counts for the figures per project when some
   evaluation of it is inside.
+* What ``takes`` means stands in ``taking``.
 
 How. What is asked next depends on nothing but the branches taken before, so one pass along given branches does for
 all points at once: an array holds, for each point, what a condition or an expression comes to, and a
@@ -35,12 +36,14 @@ import numpy as np
 from brute.linear import TooLarge
 from brute.points import Points
 from brute.rulebooks import (
+    LOWEST,
     And,
     Band,
     Body,
     Call,
     Cases,
     Chain,
+    Choice,
     Compare,
     Condition,
     Expression,
@@ -63,6 +66,7 @@ from brute.rulebooks import (
     at,
     branches,
 )
+from brute.taking import Taking, open_sets, preference
 
 Elements = dict[str, int]
 Array = np.ndarray
@@ -130,6 +134,7 @@ class Evaluator:
             d.name: d.domain.values for d in (*rulebook.facts, *rulebook.settings) if isinstance(d.domain, OneOf)
         }
         self.written = dict(written(rulebook))
+        self.taking = Taking(rulebook)
         self.all = np.ones(points.rows, dtype=bool)
         self.plain: dict[tuple[int, int], Value] = {}
 
@@ -144,6 +149,7 @@ class Evaluator:
             self.step = 0
             self.others: list[tuple[str | None, ...]] = []
             self.values: dict[str, Value] = {}
+            self.terms: dict[str, dict[str, Value]] = {}
             self.answered: Array | None = None
             self.now = Pass(self.all)
             self.now.inside = self.all
@@ -179,38 +185,85 @@ class Evaluator:
         """Reaches the branch point ``id``, if it has not been, and gives its branch."""
         if id in self.now.states:
             return self.now.states[id]
-        has: Array | None = None
-        holds: dict[str, Array] = {}
-        target: str | None = ""
         before, self.answered = self.answered, None
         own = len(self.now.missing)
-        if isinstance(body, Follows):
-            target = self.target(body.quantity, elements)
-        for name, condition, _ in branches(body):
-            if condition is None:
-                holds[name] = self.all
-            else:
-                answer = self.condition(condition, elements, id)
-                holds[name] = self.all & answer.it
-                has = both(has, answer.has)
-        if isinstance(body, Follows):
-            if target is None:
-                has = self.answered = self.all & False
-            holds = {name: where if name == target else where & False for name, where in holds.items()}
+        has, open_ = self.open(id, body, elements)
         if self.answered is not None:
             # A row that is missing here is told only where nothing else that is asked lacks a result.
             for k, (owner, lacking) in enumerate(self.now.missing[own:], start=own):
                 self.now.missing[k] = (owner, lacking & self.answered if owner == id else lacking)
         self.answered = before
-        open_ = _first(holds) if isinstance(body, Cases) and body.in_order else holds
-        if isinstance(body, Cases) and "otherwise" in open_:
-            others = [where for name, where in holds.items() if name != "otherwise"]
-            open_ = {**open_, "otherwise": ~np.logical_or.reduce(others)}
         self.now.asked[id] = (has, open_)
         ways: dict[str | None, Array] = {name: where if has is None else where & has for name, where in open_.items()}
         ways[None] = ~np.logical_or.reduce(list(ways.values()))
         self.now.states[id] = self.decide(ways)
         return self.now.states[id]
+
+    def open(self, id: str, body: Body, elements: Elements) -> tuple[Array | None, dict[str, Array]]:
+        """Asks a branch point all its questions: where they all have an answer, and where each branch is open."""
+        if isinstance(body, Choice) and body.extreme:
+            has, holds = self.holding([(o.name, o.only_when) for o in body.options], elements, id)
+            return has, open_sets(holds)
+        if isinstance(body, Choice) and body.takes:
+            has, holds = self.holding(self.taking.line(body), elements, id)
+            return has, _first(holds)
+        if isinstance(body, Follows):
+            return self.following(id, body, elements)
+        has, holds = self.holding([(name, condition) for name, condition, _ in branches(body)], elements, id,
+                                  isinstance(body, Cases) and body.in_order)  # fmt: skip
+        open_ = _first(holds) if isinstance(body, Cases) and body.in_order else holds
+        if isinstance(body, Cases) and "otherwise" in open_:
+            others = [where for name, where in holds.items() if name != "otherwise"]
+            open_ = {**open_, "otherwise": ~np.logical_or.reduce(others)}
+        return has, open_
+
+    def holding(
+        self, questions: list[tuple[str, Condition | None]], elements: Elements, id: str, in_order: bool = False
+    ) -> tuple[Array | None, dict[str, Array]]:
+        """Where all have an answer, and where each condition holds. What comes ``in_order`` behind a condition that
+        the text alone answers with yes is not asked."""
+        has: Array | None = None
+        holds: dict[str, Array] = {}
+        for name, condition in questions:
+            answer = Value(True) if condition is None else self.condition(condition, elements, id)
+            holds[name] = self.all & answer.it
+            has = both(has, answer.has)
+            if in_order and condition is not None and self.taking.known(condition):
+                break
+        return has, holds
+
+    def following(self, id: str, body: Follows, elements: Elements) -> tuple[Array | None, dict[str, Array]]:
+        leader = self.taking.leader(body.quantity)
+        if leader is not None:
+            name, choice = leader
+            if choice.extreme:
+                return self.extreme_of(name, choice, elements)
+            has, holds = self.holding(self.taking.line(choice), self.inside(name, elements), id)
+            return has, _first(holds)
+        target = self.target(body.quantity, elements)
+        if target is None:
+            self.answered = self.all & False
+        return self.answered, {name: self.all & (name == target) for name, _, _ in branches(body)}
+
+    def extreme_of(self, name: str, choice: Choice, elements: Elements) -> tuple[Array | None, dict[str, Array]]:
+        """Which of the open options of a quantity has its lowest or highest value; of several alike the first in the
+        order of preference."""
+        value = self.quantity(name, elements)
+        self.answered = both(self.answered, value.has)
+        index = self.quantities[name].index
+        terms = self.terms.get(at(name, elements[index] if index else 0), {})
+        found: dict[str, Array] = {}
+        for option in preference(choice):
+            there = option.name in terms
+            found[option.name] = self.all & (
+                compared(value.it, "=", terms[option.name].it, self.same) if there else False
+            )
+        return value.has, _first(found)
+
+    def inside(self, name: str, elements: Elements) -> Elements:
+        """The elements inside the body of a quantity."""
+        index = self.quantities[name].index
+        return {index: elements[index]} if index else {}
 
     def target(self, name: str, elements: Elements) -> str | None:
         """Reaches the choice of a quantity, without evaluating what stands under it."""
@@ -234,6 +287,12 @@ class Evaluator:
         if isinstance(body, Formula):
             return self.expression(body.expression, elements, owner)
         taken = self.reach(id, body, elements)
+        if isinstance(body, Choice) and body.extreme and taken is not None:
+            open_ = taken.split("+")
+            terms = {o.name: self.body(o.body, f"{id}/{o.name}", id, elements)
+                     for o in body.options if o.name in open_}  # fmt: skip
+            self.terms[id] = terms
+            return reduced("min" if body.takes == LOWEST else "max", list(terms.values()))
         for name, _, inner in branches(body):
             if name == taken:
                 return self.body(inner, f"{id}/{name}", id, elements)
@@ -242,6 +301,9 @@ class Evaluator:
     # --- conditions ----------------------------------------------------------------------
 
     def condition(self, c: Condition, elements: Elements, owner: str) -> Value:
+        known = self.taking.known(c)
+        if known is not None:
+            return Value(known)
         key = (id(c), next(iter(elements.values()), 0))
         if key not in self.plain:
             answer = self.answer(c, elements, owner)
@@ -278,6 +340,8 @@ class Evaluator:
             return Value(np.isin(self.outside(c.name, elements), wanted))
         if isinstance(c, Holds):
             return Value(self.outside(c.name, elements))
+        if isinstance(c, Takes) and (leader := self.taking.leader(c.quantity)):
+            return self.took(c.option, *leader, elements, owner)
         if isinstance(c, Takes):
             taken = self.target(c.quantity, elements)
             has = self.all & False if taken is None else None
@@ -292,6 +356,16 @@ class Evaluator:
             holds = holds & part.it if isinstance(c, And) else holds | part.it
             has = both(has, part.has)
         return Value(holds, has)
+
+    def took(self, option: str, name: str, choice: Choice, elements: Elements, owner: str) -> Value:
+        """Whether a choice that nobody makes took that option. Only the options that come before it are asked."""
+        if choice.extreme:
+            has, found = self.extreme_of(name, choice, elements)
+            return Value(found[option], has)
+        line = self.taking.line(choice)
+        until = [each for each, _ in line].index(option)
+        has, holds = self.holding(line[: until + 1], self.inside(name, elements), owner)
+        return Value(_first(holds)[option], has)
 
     def outside(self, name: str, elements: Elements) -> Array:
         """A fact, setting or judgement at every point."""

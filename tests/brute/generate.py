@@ -83,6 +83,6 @@ def case(made: Rulebook, chance: Chance) -> dict[str, object]:
     for fact in made.facts:
         found[fact.name] = [value(fact.domain) for _ in range(sizes[fact.index])] if fact.index else value(fact.domain)
     for human in (*made.settings, *made.judgements):
-        if chance.between(0, 9) >= 7:
+        if chance.between(0, 9) >= 7 and human.takes is None:
             found[human.name] = value(human.domain if isinstance(human, Setting) else None)
     return found

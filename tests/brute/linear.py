@@ -17,6 +17,7 @@ from brute.rulebooks import (
     Body,
     Call,
     Chain,
+    Choice,
     Compare,
     Condition,
     Expression,
@@ -34,6 +35,7 @@ from brute.rulebooks import (
     at,
     branches,
 )
+from brute.taking import Taking, asked
 
 
 class TooLarge(Exception):
@@ -60,9 +62,14 @@ class _Atoms:
         self.tables = {t.name: t for t in rulebook.tables}
         for applies in rulebook.applies:
             self.condition(applies, {})
+        taking = Taking(rulebook)
+        followed = {leader[0] for name in asked(rulebook) if (leader := taking.leader(name))}
         for quantity in rulebook.quantities:
             for element in rulebook.elements(quantity.index):
-                self.body(quantity.body, {quantity.index: element} if quantity.index else {})
+                inside = {quantity.index: element} if quantity.index else {}
+                self.body(quantity.body, inside)
+                if quantity.name in followed and isinstance(quantity.body, Choice) and quantity.body.extreme:
+                    self.either([self.anything(option.body, inside) for option in quantity.body.options])
 
     def body(self, body: Body, elements: Elements) -> None:
         if isinstance(body, Formula):
@@ -161,10 +168,13 @@ class _Atoms:
         if name not in self.bodies:
             return frozenset({(((here, Fraction(1)),), Fraction(0))})
         if here not in self.known:
-            inside = {index: elements[index]} if index else {}
-            found = frozenset().union(*(self.forms(f, inside) for f in _formulas(self.bodies[name])))
-            self.known[here] = found
+            self.known[here] = self.anything(self.bodies[name], {index: elements[index]} if index else {})
         return self.known[here]
+
+    def anything(self, body: Body, elements: Elements) -> frozenset[Form]:
+        """Every linear form that a body may stand for. The lowest of several has the sign that the lowest of their
+        signs is, so that it needs no form of its own."""
+        return frozenset().union(*(self.forms(f, elements) for f in _formulas(body)))
 
     def lookup(self, e: Lookup, elements: Elements) -> frozenset[Form]:
         table = self.tables[e.table]

@@ -30,6 +30,7 @@ import numpy as np
 
 from brute.linear import Form, TooLarge, atoms
 from brute.rulebooks import Domain, OneOf, Range, Rulebook, at
+from brute.taking import prescribed
 
 MOST_ROWS = 30_000
 MOST_VARIABLES = 3
@@ -165,9 +166,9 @@ def variables(rulebook: Rulebook) -> Iterator[tuple[str, Domain | None, int]]:
 
 def representative(rulebook: Rulebook, given: Mapping[str, Given] | None = None) -> Points:
     """The points that stand for all projects and human inputs. What ``given`` holds (values as in
-    ``Points.columns``) has that value only. Raises ``TooLarge`` beyond three variables that are compared with
-    each other, or beyond ``MOST_ROWS`` points."""
-    given = given or {}
+    ``Points.columns``) has that value only, and so has what is prescribed. Raises ``TooLarge`` beyond three
+    variables that are compared with each other, or beyond ``MOST_ROWS`` points."""
+    given = {**prescribed(rulebook), **(given or {})}
     parts: list[tuple[list[int], list[int], dict[str, list[object]]]] = []
     numeric: dict[str, Variable] = {}
     for name, domain, group in variables(rulebook):

@@ -128,6 +128,8 @@ Condition = Compare | Chain | Is | Holds | Takes | And | Or | Not
 
 # --- bodies ------------------------------------------------------------------------------
 
+LOWEST, HIGHEST = "lowest value", "highest value"
+
 
 @dataclass(frozen=True)
 class Formula:
@@ -160,9 +162,16 @@ class Option:
 
 @dataclass(frozen=True)
 class Choice:
+    """``takes``: an option, ``LOWEST`` or ``HIGHEST`` where nobody chooses; "" where ``by`` does."""
+
     by: str
     options: tuple[Option, ...]
     timing: str = ""  # "", "validation" or "period"
+    takes: str = ""
+
+    @property
+    def extreme(self) -> bool:
+        return self.takes in (LOWEST, HIGHEST)
 
 
 @dataclass(frozen=True)
@@ -212,15 +221,21 @@ class Fact:
 
 @dataclass(frozen=True)
 class Setting:
+    """``takes``: its value where nobody sets it."""
+
     name: str
     domain: Domain
     by: str
+    takes: Fraction | str | bool | None = None
 
 
 @dataclass(frozen=True)
 class Judgement:
+    """``takes``: how it is read where nobody judges."""
+
     name: str
     by: str
+    takes: bool | None = None
 
 
 @dataclass(frozen=True)

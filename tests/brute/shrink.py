@@ -17,6 +17,7 @@ from brute.rulebooks import (
     Formula,
     Holds,
     Is,
+    Judgement,
     Lookup,
     Neg,
     Not,
@@ -28,6 +29,7 @@ from brute.rulebooks import (
     Position,
     Ref,
     Rulebook,
+    Setting,
     Takes,
     branches,
 )
@@ -77,6 +79,10 @@ def _instead(node: object) -> Iterator[object]:
                 yield replace(node, **{name: plain})
     if isinstance(node, Choice) and node.timing:
         yield replace(node, timing="")
+    if isinstance(node, Choice) and node.takes:
+        yield replace(node, takes="")
+    if isinstance(node, Setting | Judgement) and node.takes is not None:
+        yield replace(node, takes=None)
     if isinstance(node, Rulebook):
         if node.periods > 1:
             yield replace(node, periods=1)

@@ -112,7 +112,7 @@ def _body(body: Body, indent: int) -> Iterator[str]:
     else:
         if isinstance(body, Choice):
             timing = {"": "", "validation": ", fixed at validation", "period": ", open each period"}[body.timing]
-            yield f"{pad}choice by {body.by}{timing}"
+            yield f"{pad}choice takes {body.takes}" if body.takes else f"{pad}choice by {body.by}{timing}"
         else:
             yield f"{pad}choice follows {body.quantity}"
         for option in body.options:
@@ -141,6 +141,14 @@ def _domain(domain: Domain) -> str:
     return f", {number(domain.low)} to {number(domain.high)}"
 
 
+def _taken(value: Fraction | str | bool | None) -> str:
+    if value is None:
+        return ""
+    if isinstance(value, bool):
+        return f", takes {'yes' if value else 'no'}"
+    return f", takes {value if isinstance(value, str) else number(value)}"
+
+
 def _label(label: str | Band) -> str:
     if isinstance(label, str):
         return label
@@ -160,8 +168,8 @@ def render(rulebook: Rulebook) -> str:
     for fact in rulebook.facts:
         per = f" per {fact.index}" if fact.index else ""
         lines.append(f"fact {fact.name}{per}{_domain(fact.domain)}")
-    lines += [f"setting {s.name}{_domain(s.domain)}, by {s.by}" for s in rulebook.settings]
-    lines += [f'judgement {j.name}, "{j.name} is practicable", by {j.by}' for j in rulebook.judgements]
+    lines += [f"setting {s.name}{_domain(s.domain)}, by {s.by}{_taken(s.takes)}" for s in rulebook.settings]
+    lines += [f'judgement {j.name}, "{j.name} is practicable", by {j.by}{_taken(j.takes)}' for j in rulebook.judgements]
     lines += [f"constant {c.name} = {number(c.value)}" for c in rulebook.constants]
     for table in rulebook.tables:
         lines += ["", f"table {table.name} by {', '.join(table.keys)}"]

@@ -30,6 +30,7 @@ import numpy as np
 from brute.evaluate import Array, Evaluator, Pass
 from brute.points import FACT, Points, representative, variables
 from brute.rulebooks import Body, Choice, Follows, OneOf, Range, Rulebook, at
+from brute.taking import preference, prescribed
 
 Given = Fraction | str | bool
 Case = Mapping[str, Given | Sequence[Given]]
@@ -137,7 +138,7 @@ class _Route:
 
 def _stray(body: Body, taken: str, open_: dict[str, Array]) -> Array:
     better: Array = np.zeros(len(open_[taken]), dtype=bool)
-    if isinstance(body, Follows):
+    if isinstance(body, Follows) or (isinstance(body, Choice) and body.takes):
         return better
     for name in preferred(body, list(open_)):
         if name == taken:
@@ -150,9 +151,7 @@ def preferred(body: Body, names: list[str]) -> list[str]:
     """The branches in the order in which the reference policy takes them."""
     if not isinstance(body, Choice):
         return names
-    marked = [o.name for o in body.options if o.reference]
-    known = sorted((o for o in body.options if o.error is not None), key=lambda o: o.error or Fraction(0))
-    return list(dict.fromkeys([*marked, *(o.name for o in known), *names]))
+    return [option.name for option in preference(body)]
 
 
 def rounded(values: Array, rulebook: Rulebook) -> list[float]:
@@ -179,7 +178,7 @@ def project(rulebook: Rulebook, case: Case) -> tuple[Rulebook, dict[str, Fractio
     indices = tuple(replace(i, most=sizes.get(i.name, i.most)) for i in rulebook.indices)
     rulebook = replace(rulebook, indices=indices)
     domains = {d.name: d.domain for d in (*rulebook.facts, *rulebook.settings)}
-    given: dict[str, Fraction | int | bool] = {}
+    given = prescribed(rulebook)
     for name, value in case.items():
         listed = isinstance(value, list | tuple)
         for element, one in enumerate(value if listed else [value], start=1):
