@@ -103,8 +103,9 @@ def _leaders(model: m.Model) -> dict[str, m.Quantity]:
     found: dict[str, m.Quantity] = {}
     for quantity in model.quantities:
         leader = quantity
-        while isinstance(leader.body, m.Follows) and leader.body.quantity in quantities:
-            leader = quantities[leader.body.quantity]
+        for _ in model.quantities:  # no longer than that, should a text with mistakes go round in circles
+            if isinstance(leader.body, m.Follows) and leader.body.quantity in quantities:
+                leader = quantities[leader.body.quantity]
         if isinstance(leader.body, m.Choice) and leader.body.takes:
             found[quantity.name] = leader
     return found
@@ -167,8 +168,8 @@ def _not(part: Answer, span: Span) -> Answer:
 
 @dataclass(slots=True)
 class _Maker:
-    """``choices``: quantities whose own choice nobody makes. ``values``: what settings and judgements take. ``asked``:
-    quantities whose choice is followed or asked. ``made``: quantities that stand for options, to be added."""
+    """``choices``: as ``_leaders`` gives them. ``values``: what settings and judgements take. ``asked``: quantities
+    whose own choice is followed or asked. ``made``: quantities that stand for options, to be added."""
 
     choices: Mapping[str, m.Quantity]
     values: Mapping[str, Fraction | str | bool | None]
@@ -235,15 +236,15 @@ class _Maker:
         return self._extreme(quantity, body, self._terms(quantity, body, id))
 
     def _follows(self, quantity: m.Quantity, body: m.Follows, id: str) -> m.Body:
-        quantity_led = self.choices[body.quantity]
-        leader = quantity_led.body
+        leading = self.choices[body.quantity]
+        leader = leading.body
         assert isinstance(leader, m.Choice)
         inner = {each.name: self.body(quantity, each.body, f"{id}/{each.name}") for each in body.options}
         if leader.takes not in (m.LOWEST, m.HIGHEST):
             return self._in_order(leader, inner, body.span)
         branches = []
         for number, option in enumerate(leader.options, start=1):
-            was = self._is_extreme(option.name, leader, quantity_led, body.span)
+            was = self._is_extreme(option.name, leader, leading, body.span)
             branches.append(m.When(str(number), _written(was, body.span), inner[option.name], option.span))
         return m.Cases(True, tuple(branches), body.span)
 
@@ -276,7 +277,11 @@ class _Maker:
             if isinstance(inner, m.Formula) and not asked:
                 terms[option.name] = inner.expression
                 continue
-            terms[option.name] = self._apart(quantity, option, inner, id).expression
+            whole = self._apart(quantity, option, inner, id).expression
+            terms[option.name] = whole
+            guard = self._guard(option)
+            if asked and not isinstance(guard, bool):
+                self.made.append(_distance(quantity, option, guard, whole))
         return terms
 
     def _apart(self, quantity: m.Quantity, option: m.Option, body: m.Body, id: str) -> m.Formula:
@@ -316,15 +321,21 @@ class _Maker:
     def _guard(self, option: m.Option) -> Answer:
         return self._answer(option.only_when) if option.only_when is not None else True
 
-    def _is_extreme(self, name: str, choice: m.Choice, quantity: str, index: str, span: Span) -> Answer:
+    def _is_extreme(self, name: str, choice: m.Choice, quantity: m.Quantity, span: Span) -> Answer:
         """Whether the option of that name was the lowest; of several alike the one most fit to stand for the truth."""
-        unit = self.choices[quantity].unit
-        result = m.Reference(quantity, "quantity", index, unit, span)
+
+        def reference(name: str) -> m.Reference:
+            return m.Reference(name, "quantity", quantity.index, quantity.unit, span)
 
         def equals(option: m.Option) -> Answer:
-            term = m.Reference(f"{quantity}/{option.name}", "quantity", index, unit, span)
             guard = self._guard(option)
-            return _all([guard, m.Comparison("=", result, term, span)], span)
+            if guard is False:
+                return False
+            if guard is True:
+                term = reference(f"{quantity.name}/{option.name}")
+                return m.Comparison("=", reference(quantity.name), term, span)
+            away = reference(_distance_name(quantity, option))
+            return m.Comparison("=", away, m.Number(Fraction(0), quantity.unit, span), span)
 
         parts: list[Answer] = []
         for number in by_preference(choice.options):
@@ -356,18 +367,18 @@ class _Maker:
                 return self.values[name] is True
             case m.Is(subject=subject, values=values) if subject.name in self.values:
                 return self.values[subject.name] in values
-            case m.Takes(quantity=quantity, index=index, option=option, span=span) if quantity in self.choices:
-                return self._took(option, quantity, index, span)
+            case m.Takes(quantity=quantity, option=option, span=span) if quantity in self.choices:
+                return self._took(option, self.choices[quantity], span)
             case m.Comparison(left=left, right=right):
                 return replace(condition, left=self.expression(left), right=self.expression(right))
             case _:
                 return condition
 
-    def _took(self, option: str, quantity: str, index: str, span: Span) -> Answer:
-        choice = self.choices[quantity].body
+    def _took(self, option: str, quantity: m.Quantity, span: Span) -> Answer:
+        choice = quantity.body
         assert isinstance(choice, m.Choice)
         if choice.takes in (m.LOWEST, m.HIGHEST):
-            return self._is_extreme(option, choice, quantity, index, span)
+            return self._is_extreme(option, choice, quantity, span)
         parts: list[Answer] = []
         for each in _order(choice):
             guard = self._guard(each)
@@ -391,6 +402,23 @@ class _Maker:
                 return replace(expression, body=self.expression(body))
             case _:
                 return expression
+
+
+def _distance_name(quantity: m.Quantity, option: m.Option) -> str:
+    return f"{quantity.name}/{option.name} less {quantity.name}"
+
+
+def _distance(quantity: m.Quantity, option: m.Option, guard: m.Condition, whole: m.Expression) -> m.Quantity:
+    """How far an option is from the lowest: 0 where it is that, and 1 where it is not open. A quantity of its own,
+    since a condition asks everything in it, and an option that is not open need not have a number."""
+    span = option.span
+    result = m.Reference(quantity.name, "quantity", quantity.index, quantity.unit, span)
+    away = m.Formula(m.Arithmetic("-", whole, result, quantity.unit, span), span)
+    one = m.Formula(m.Number(Fraction(1), quantity.unit, span), span)
+    branches = (m.When("1", guard, away, span), m.When("otherwise", None, one, span))
+    about = replace(quantity.about, span=span)
+    name = _distance_name(quantity, option)
+    return m.Quantity(name, quantity.unit, quantity.index, m.Cases(True, branches, span), about)
 
 
 def _order(choice: m.Choice) -> tuple[m.Option, ...]:

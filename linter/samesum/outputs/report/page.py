@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import base64
 import hashlib
+import re
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from pathlib import Path
@@ -82,7 +83,8 @@ def report_page(register: Register, text: str, extra: Extra) -> str:
     script = (folder / "report.js").read_text(encoding="utf-8")
     style = (folder / "report.css").read_text(encoding="utf-8")
     digest = base64.b64encode(hashlib.sha256(script.encode()).digest()).decode()
-    environment.filters.update(spoken=spoken, share=share, percent=exact_percent, bracket=bracket_text, path=path)
+    environment.filters.update(breakable=breakable, spoken=spoken, share=share, percent=exact_percent)
+    environment.filters.update(bracket=bracket_text, path=path)
     template = environment.get_template("report.html.j2")
     charts = () if extra.only_register else charts_of(register)
     return template.render(
@@ -134,6 +136,14 @@ def spoken(text: str) -> Markup:
     if len(parts) % 2 == 0:
         return escape(clean(text))
     return Markup("").join(Markup("<code>{}</code>").format(part) if at % 2 else part for at, part in enumerate(parts))
+
+
+def breakable(name: str) -> Markup:
+    """A name that breaks behind its joints, where there is no room for it on one line; everything in it is escaped."""
+    from markupsafe import Markup, escape
+
+    parts = re.split(r"(?<=[_/@])", clean(name))
+    return Markup("<wbr>").join(escape(part) for part in parts)
 
 
 def sentence(register: Register, extra: Extra) -> str:

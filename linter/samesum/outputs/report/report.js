@@ -57,7 +57,8 @@
     canvas.scrollLeft = middle[0] * scale / before - canvas.clientWidth / 2;
     canvas.scrollTop = middle[1] * scale / before - canvas.clientHeight / 2;
   };
-  const fitting = (canvas) => (canvas.clientWidth - 2) / chart(canvas).dataset.width;
+  const room = () => Math.min(0.78 * window.innerHeight, 860) - 44; // the canvas's own limit, less its title
+  const fitting = (canvas) => Math.min((canvas.clientWidth - 2) / chart(canvas).dataset.width, room() / chart(canvas).dataset.height);
   const shown = () => canvases.find((canvas) => !canvas.hidden);
   const show = (id) => {
     canvases.forEach((canvas) => { canvas.hidden = canvas.id !== id; });
