@@ -281,7 +281,7 @@ class _Maker:
             terms[option.name] = whole
             guard = self._guard(option)
             if asked and not isinstance(guard, bool):
-                self.made.append(_distance(quantity, option, guard, whole))
+                self.made.append(_where_open(quantity, option, guard, whole))
         return terms
 
     def _apart(self, quantity: m.Quantity, option: m.Option, body: m.Body, id: str) -> m.Formula:
@@ -331,11 +331,8 @@ class _Maker:
             guard = self._guard(option)
             if guard is False:
                 return False
-            if guard is True:
-                term = reference(f"{quantity.name}/{option.name}")
-                return m.Comparison("=", reference(quantity.name), term, span)
-            away = reference(_distance_name(quantity, option))
-            return m.Comparison("=", away, m.Number(Fraction(0), quantity.unit, span), span)
+            name = f"{quantity.name}/{option.name}" if guard is True else _where_open_name(quantity, option)
+            return m.Comparison("=", reference(quantity.name), reference(name), span)
 
         parts: list[Answer] = []
         for number in by_preference(choice.options):
@@ -404,20 +401,23 @@ class _Maker:
                 return expression
 
 
-def _distance_name(quantity: m.Quantity, option: m.Option) -> str:
-    return f"{quantity.name}/{option.name} less {quantity.name}"
+def _where_open_name(quantity: m.Quantity, option: m.Option) -> str:
+    return f"{quantity.name}/{option.name} where open"
 
 
-def _distance(quantity: m.Quantity, option: m.Option, guard: m.Condition, whole: m.Expression) -> m.Quantity:
-    """How far an option is from the lowest: 0 where it is that, and 1 where it is not open. A quantity of its own,
-    since a condition asks everything in it, and an option that is not open need not have a number."""
+def _where_open(quantity: m.Quantity, option: m.Option, guard: m.Condition, whole: m.Expression) -> m.Quantity:
+    """What an option gives where it is open, elsewhere a number that is not the lowest. A quantity of its own, since a
+    condition asks everything in it, and an option that is not open need not have a number."""
     span = option.span
     result = m.Reference(quantity.name, "quantity", quantity.index, quantity.unit, span)
-    away = m.Formula(m.Arithmetic("-", whole, result, quantity.unit, span), span)
-    one = m.Formula(m.Number(Fraction(1), quantity.unit, span), span)
-    branches = (m.When("1", guard, away, span), m.When("otherwise", None, one, span))
+    one = m.Number(Fraction(1), quantity.unit, span)
+    another = m.Arithmetic("+", result, one, quantity.unit, span)
+    branches = (
+        m.When("1", guard, m.Formula(whole, span), span),
+        m.When("otherwise", None, m.Formula(another, span), span),
+    )
     about = replace(quantity.about, span=span)
-    name = _distance_name(quantity, option)
+    name = _where_open_name(quantity, option)
     return m.Quantity(name, quantity.unit, quantity.index, m.Cases(True, branches, span), about)
 
 

@@ -173,7 +173,8 @@ def rounded(values: Array, rulebook: Rulebook) -> list[float]:
 
 
 def project(rulebook: Rulebook, case: Case) -> tuple[Rulebook, dict[str, Fraction | int | bool]]:
-    """The rulebook with as many elements as the case has, and the case's values by name of element."""
+    """The rulebook with as many elements as the case has, and the values of the case and of what the rulebook takes, by
+    name of element."""
     sizes = {f.index: len(value) for f in rulebook.facts if f.index and isinstance(value := case[f.name], list | tuple)}
     indices = tuple(replace(i, most=sizes.get(i.name, i.most)) for i in rulebook.indices)
     rulebook = replace(rulebook, indices=indices)

@@ -140,6 +140,55 @@ def test_the_lowest_of_what_is_open(tmp_path: Path) -> None:
     assert gaps_of(evidence) == ["stock"]
 
 
+def test_what_follows_a_follower(tmp_path: Path) -> None:
+    """It goes with what the first of the row takes, and so does who asks one of them."""
+    follower = SHARE.replace("share, clause 3", "discount, clause 6").replace("follows stock", "follows share")
+    asked = ASKED.replace("stock takes", "discount takes")
+    for header, plain in (("takes rough", ROUGH), ("takes lowest value", LOWEST)):
+        settled = HEAD + CHOICE.format(header=header, rough="", fine="", none="") + SHARE + follower + asked + CREDITS
+        settled = settled.replace("(1 - share)", "(1 - discount)")
+        assert figures(settled, tmp_path) == pytest.approx(figures(plain, tmp_path))
+        found = evidence_of(settled)
+        assert found.counts.per_project_most == 1 and not gaps_of(found)
+
+
+LEAST_OF_TWO = """quantity stock [t], clause 2
+    choice takes lowest value
+        option rough, only when amount > 20 [t]
+            = 1 [t] * sqrt(amount / 1 [t] - 20)
+        option fine
+            = 1.1 * amount
+quantity credits [t], clause 5
+    cases
+        when stock takes rough
+            = stock
+        otherwise
+            = 2 * stock
+"""
+
+
+def test_an_option_that_is_not_open_need_not_have_a_number(tmp_path: Path) -> None:
+    """Nor is it worked out when something asks which was the lowest."""
+    plain = """quantity credits [t], clause 5
+    cases in order
+        when amount > 20 [t]
+            = 1 [t] * sqrt(amount / 1 [t] - 20)
+        otherwise
+            = 2.2 * amount
+"""
+    assert figures(HEAD + LEAST_OF_TWO, tmp_path) == pytest.approx(figures(HEAD + plain, tmp_path))
+    found = evidence_of(HEAD + LEAST_OF_TWO)
+    assert found.counts.per_project_least == found.counts.per_project_most == 1
+    assert not gaps_of(found)
+
+
+def test_where_nothing_is_open_nobody_knows_which_was_the_lowest() -> None:
+    """A project of which `applies when` asks that is outside, as it is with a choice that somebody makes."""
+    stock = LEAST_OF_TWO.replace("option fine", "option fine, only when wet")
+    counts = evidence_of(f"{HEAD}{stock}applies when not stock takes rough\n").counts
+    assert (counts.per_project_least, counts.per_project_most) == (1, 1)
+
+
 def test_per_element_and_nested() -> None:
     """Each element has its own lowest; a choice inside an option stays one, under its own name."""
     found = evidence_of(
