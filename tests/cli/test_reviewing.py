@@ -70,7 +70,7 @@ def test_every_form_tells_of_the_same_rows(folder: Path, capsys: pytest.CaptureF
     table = said(capsys, *quick, "--all")[1]
     assert all(id in table for id in ids)
     page = said(capsys, *quick, "--as", "html")[1]
-    assert all(f"<span>{id}</span>" in page for id in ids)
+    assert all(f"<span>{id}</span>" in page.replace("<wbr>", "") for id in ids)
     assert said(capsys, *quick, "-o", "out.xlsx")[0] == 0
     assert (folder / "out.xlsx").read_bytes()[:2] == b"PK"
 

@@ -14,6 +14,7 @@ from samesum.evidence.trial.outcome import TrialEvidence
 from samesum.outputs import amounts, register_cells
 from samesum.outputs.json_text import as_json
 from samesum.outputs.page import Page, Paper, clean, paper_for, wrapped
+from samesum.outputs.tables import table_lines
 from samesum.outputs.projects import Words, as_values, given, project
 from samesum.outputs.report.measured import worst_case
 from samesum.written import number, percent, plain, whole
@@ -160,3 +161,14 @@ def test_a_project_in_the_trades_words() -> None:
     assert project(Witness((), (), (), ()), WORDS) == "any project"
     equal = Witness((("area", (Fraction(5), Fraction(5))), ("flooded", False)), (), (), ())
     assert project(equal, WORDS) == "a project with area 5 ha in every stratum and flooded no"
+
+
+def test_a_table_breaks_no_name_where_there_is_room() -> None:
+    """The columns that can be wrapped between words give way; on a page that is too narrow, names do."""
+    titles = ("what is left when it is closed", "branch point")
+    rows = [("a great deal of it, all things considered", "baseline_carbon_of_the_stratum")]
+    for width in (48, 60, 80):
+        lines = table_lines(titles, rows, Paper(width))
+        assert any("baseline_carbon_of_the_stratum" in line for line in lines)
+        assert max(map(len, lines)) <= width
+    assert max(map(len, table_lines(titles, rows, Paper(30)))) <= 30
