@@ -14,9 +14,9 @@ from samesum.evidence.trial.outcome import TrialEvidence
 from samesum.outputs import amounts, register_cells
 from samesum.outputs.json_text import as_json
 from samesum.outputs.page import Page, Paper, clean, paper_for, wrapped
-from samesum.outputs.tables import table_lines
 from samesum.outputs.projects import Words, as_values, given, project
 from samesum.outputs.report.measured import worst_case
+from samesum.outputs.tables import table_lines
 from samesum.written import number, percent, plain, whole
 
 
