@@ -299,8 +299,10 @@ def test_the_cheapest_is_tried_first_however_it_is_written() -> None:
 def test_periods() -> None:
     """Four periods of one either/or choice, errors anew: fixed at validation, three of the four have no selection in
     them. Errors that stay: what was tried is known from the second period on, which only adds."""
-    text = either_or([(0, 0.3, 0), (0, 0.1, 0)]).replace("result", "periods 4\nresult").replace(
-        "choice by developer", "choice by developer, open each period"
+    text = (
+        either_or([(0, 0.3, 0), (0, 0.1, 0)])
+        .replace("result", "periods 4\nresult")
+        .replace("choice by developer", "choice by developer, open each period")
     )
     selection = simulate(text, 8 * BLOCK)
     second = next(each for each in selection.periods if each.behaviour == "second look")
@@ -423,3 +425,18 @@ def test_a_project_without_a_value_in_a_calculation_is_said_so() -> None:
     values |= {"soil": "mineral", "salinity": Fraction(2), "discount": Fraction(1, 10), "access": True}
     with pytest.raises(NoValue):
         Calculation(graph, values).quantity("net_removals")
+
+
+def test_the_cheapest_option_for_all_has_its_closed_form() -> None:
+    """It is the option's own bias, as long as one option is the cheapest for every project."""
+    cheapest = figure(simulate(either_or([(-0.05, 0.3, 0), (0, 0.1, 1)])).figures, "mandated", "cheapest")
+    assert cheapest.closed_form == pytest.approx(-0.05, abs=1e-12)
+    assert abs(cheapest.simulated + 0.05) < 4 * cheapest.simulated_error
+    now_one_now_the_other = (
+        either_or([(-0.05, 0.3, 1), (0, 0.1, 2)])
+        .replace(
+            "fact amount [t CO2e], 1000 to 1000", "fact amount [t CO2e], 1000 to 1000\nfact dear [USD], 0 to 5_000"
+        )
+        .replace("cost 1000 [USD]", "cost dear")
+    )
+    assert figure(simulate(now_one_now_the_other).figures, "mandated", "cheapest").closed_form is None

@@ -250,6 +250,8 @@ class _Rows:
             return self.sums.tallies.get((*row, "closed"))
         if self.only is None:
             return None
+        if row[2] == "cheapest":
+            return self.sums.tallies.get((*row, "closed"))
         reference = self.only.candidates[self.only.reference]
         return self.sums.tallies.get((self.only.id, row[1], reference if row[2] == "reference" else row[2], "closed"))
 

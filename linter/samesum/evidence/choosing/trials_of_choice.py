@@ -201,6 +201,7 @@ class _Whole:
             for id, (offer, _) in self.offered[each.id].items()
         }
         record(bench, (WHOLE, MANDATED, "cheapest"), self.credited(cheapest)[0], comparison)
+        self.cheapest_closed(cheapest)
         record(bench, (WHOLE, INDIFFERENT, ""), self.credited(self.taken("indifferent"))[0], comparison)
         second = self.taken("second")
         looked, values = self.credited(second)
@@ -214,6 +215,17 @@ class _Whole:
             self.period_rows(SECOND, second, looked, later)
             self.period_rows(PICK, pick, picked, pick)
         self.closures(second, values)
+
+    def cheapest_closed(self, cheapest: Mapping[str, Array]) -> None:
+        """The closed form of a single choice's cheapest option, where that is the same one in every project."""
+        if len(self.acting) != 1 or not cheapest:
+            return
+        numbers = {int(number) for order in cheapest.values() for number in np.unique(order)}
+        [latitude] = self.acting
+        name = latitude.candidates[numbers.pop()] if len(numbers) == 1 else ""
+        found = self.bench.sums.tallies.get((latitude.id, MANDATED, name, "closed"))
+        if found is not None:
+            self.bench.sums.tallies[WHOLE, MANDATED, "cheapest", "closed"] = found
 
     def period_rows(self, behaviour: str, taken: Mapping[str, Any], first: Array, later: Mapping[str, Any]) -> None:
         """A choice that is open decides again on new errors, which is the first period over again; one that is fixed
