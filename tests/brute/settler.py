@@ -10,7 +10,7 @@ from fractions import Fraction
 
 from brute.generate import Dice, fits
 from brute.maker import Maker
-from brute.rulebooks import HIGHEST, LOWEST, Body, Choice, Condition, OneOf, Range, Rulebook, Setting, branches
+from brute.rulebooks import HIGHEST, LOWEST, Body, Choice, Condition, OneOf, Option, Range, Rulebook, Setting, branches
 from brute.taking import Taking, asked
 
 
@@ -32,12 +32,16 @@ class Settler(Maker):
         assert isinstance(made, Choice)
         if not self.maybe(65):
             return made
-        options = [
-            replace(o, only_when=self.condition(here)) if o.only_when is None and self.maybe(25) else o
-            for o in made.options
-        ]
+        options = tuple(self.option(o, here) for o in made.options)
         takes = self.pick((LOWEST, HIGHEST, *(o.name for o in options)))
-        return replace(made, options=tuple(options), takes=takes, timing="")
+        return replace(made, options=options, takes=takes, timing="")
+
+    def option(self, made: Option, here: str) -> Option:
+        if made.only_when is None and self.maybe(25):
+            made = replace(made, only_when=self.condition(here))
+        if made.error is None and self.maybe(40):
+            made = replace(made, error=Fraction(self.between(1, 8) * 5, 100))
+        return made
 
     def declare(self) -> None:
         super().declare()
