@@ -15,7 +15,8 @@ from typing import TYPE_CHECKING, Literal
 
 from samesum.reading import model as m
 from samesum.reading import walk
-from samesum.settled import settled
+from samesum.settled.maker import WHERE_OPEN
+from samesum.settled.settle import settled
 from samesum.spans import Span
 
 if TYPE_CHECKING:
@@ -64,6 +65,12 @@ class BranchPoint:
     clause: str
     wording: str
     span: Span
+
+
+    @property
+    def is_written(self) -> bool:
+        """Whether somebody wrote it; not so of what only answers which of the options was the lowest."""
+        return WHERE_OPEN not in self.quantity
 
 
 @dataclass(frozen=True, slots=True)

@@ -2,15 +2,20 @@
 
 from __future__ import annotations
 
+from fractions import Fraction
 from pathlib import Path
 
 import pytest
 
+from samesum.evidence.routes.listing import list_routes
+from samesum.evidence.subjects.numbers import jumps
 from samesum.evidence.trial.outcome import try_out
 from samesum.graph import build
+from samesum.outputs.verdict import decided
 from samesum.reading.cases import read_cases
 from samesum.reading.read import read
-from support.asking import evidence_of, gaps_of, model_of, overlaps_of, reader
+from samesum.reviewing.places import Source, places_of
+from support.asking import dead_of, evidence_of, gaps_of, model_of, overlaps_of, reader
 
 HEAD = """rulebook "Settled", draft "1"
 result credits [t], rounded down to 1, clause 1
@@ -286,3 +291,19 @@ def test_what_nothing_can_take(line: str, says: str) -> None:
     found = read(f"{HEAD}{line}\nquantity credits [t]\n    = amount\n", "test.rulebook", reader=reader())
     assert [each.says for each in found.problems] == [says]
     assert found.problems[0].span.line == 5
+
+
+def test_only_what_is_written_is_shown() -> None:
+    """Which options were open is asked by quantities that nobody wrote; no list shows them, and of sets of options
+    that are never open together no branch is called dead."""
+    found = text("takes lowest value", rough=", only when wet", fine=", only when not wet", none=", only when wet")
+    evidence = evidence_of(found)
+    assert dead_of(evidence) == [("asked", "1")]  # where it is wet, `none` is always the lower one
+    assert gaps_of(evidence) == []
+    shown = {point.id for point in evidence.graph.branch_points.values() if point.is_written}
+    assert shown == {"stock", "share", "asked"}
+    assert set(places_of(evidence.graph, Source.of(found))) == shown | {"amount", "wet", "credits"}
+    [route] = list_routes(evidence.graph, {"wet": True, "amount": Fraction(20)}, 5).first
+    assert route == (("stock", "rough and none"), ("share", "none"), ("asked", "2"))
+    assert decided(evidence)["total"] == 3
+    assert [each.name for each in jumps(evidence, 5.0)] == []

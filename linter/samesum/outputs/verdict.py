@@ -45,7 +45,8 @@ def waiting(mistakes: int) -> str:
 def decided(evidence: Evidence) -> dict[str, int]:
     """Branch points (all elements of an index as one) by who decides them: who picks, else whether somebody can
     move the conditions, else tied to another choice, else facts."""
-    kinds = {point.general_id: point.kind for point in reversed(list(evidence.graph.branch_points.values()))}
+    written = [point for point in evidence.graph.branch_points.values() if point.is_written]
+    kinds = {point.general_id: point.kind for point in reversed(written)}
     found = dict.fromkeys(("total", "developer", "verifier", "programme", "steered", "tied", "facts"), 0)
     for id, kind in kinds.items():
         control = evidence.control.get(id)

@@ -241,9 +241,12 @@ class When:
 
 @dataclass(frozen=True, slots=True)
 class Cases:
+    """``settled``: not written so, but what stands for a choice that nobody makes."""
+
     in_order: bool
     branches: tuple[When, ...]
     span: Span
+    settled: bool = False
 
 
 @dataclass(frozen=True, slots=True)

@@ -95,7 +95,8 @@ def places_of(graph: DecisionGraph, source: Source) -> dict[str, Place]:
     found: list[Place] = []
     together: dict[str, list[BranchPoint]] = {}
     for point in graph.branch_points.values():
-        together.setdefault(point.general_id, []).append(point)
+        if point.is_written:
+            together.setdefault(point.general_id, []).append(point)
     for id, points in together.items():
         found.append(_branch_point(id, points, graph, source))
     for setting in graph.model.settings:
@@ -103,9 +104,10 @@ def places_of(graph: DecisionGraph, source: Source) -> dict[str, Place]:
     for judgement in graph.model.judgements:
         found.append(_judgement(judgement))
     taken = {each.id for each in found}
-    model = graph.model
-    others: tuple[m.Fact | m.Constant | m.Table | m.Quantity | m.Index, ...]
-    others = (*model.facts, *model.constants, *model.tables, *model.quantities, *model.indices)
+    model = graph.written
+    inputs: tuple[m.Setting | m.Judgement, ...] = (*model.settings, *model.judgements)
+    others: tuple[m.Fact | m.Setting | m.Judgement | m.Constant | m.Table | m.Quantity | m.Index, ...]
+    others = (*model.facts, *inputs, *model.constants, *model.tables, *model.quantities, *model.indices)
     for other in others:
         if other.name not in taken:
             about = other.about

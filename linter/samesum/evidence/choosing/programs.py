@@ -16,7 +16,8 @@ from samesum.evidence.routes.counting import deep
 from samesum.evidence.trial import plan
 from samesum.graph import BranchPoint, DecisionGraph, Element, build
 from samesum.reading import model as m
-from samesum.settled import by_preference, reopened
+from samesum.settled.maker import by_preference
+from samesum.settled.settle import reopened
 
 LOWEST, HIGHEST = -2, -3
 """What a branch point takes whose lowest or highest option counts, in place of a branch's number."""

@@ -18,6 +18,7 @@ from samesum.evidence.routes.eliminating import COMBINE, Eliminated, eliminate, 
 from samesum.evidence.routes.layout import EVERYTHING, Layout
 from samesum.evidence.routes.network import Network, PointRelation, cone
 from samesum.evidence.routes.witness import Witness, witness_from
+from samesum.reading.model import Cases
 
 
 @dataclass(frozen=True, slots=True)
@@ -177,7 +178,10 @@ def _possible_states(network: Network) -> dict[int, frozenset[int]] | None:
 def _find_dead(
     network: Network, relation: PointRelation, working: int, seen: frozenset[int] | None, found: _Found
 ) -> None:
-    """Branches that nobody inside the rulebook can take, although their branch point can be reached."""
+    """Branches that nobody inside the rulebook can take, although their branch point can be reached. Not those that
+    stand for a choice that nobody makes: the text has no such branch."""
+    if isinstance(relation.point.body, Cases) and relation.point.body.settled:
+        return
     d = network.diagrams
     id = relation.point.id
     if seen is not None:

@@ -112,7 +112,7 @@ def _listed(network: Network, values: Mapping[str, Value], most: int) -> Routes:
         taken = []
         for relation in network.points.values():
             state = states[relation.level]
-            if state < relation.not_reached:
+            if state < relation.not_reached and relation.point.is_written:
                 taken.append((relation.point.id, relation.point.branches[state]))
         found.append(tuple(taken))
     return Routes(open_routes, layout.exact, tuple(found))

@@ -27,7 +27,8 @@ def general_points(graph: DecisionGraph) -> dict[str, BranchPoint]:
     """One branch point for all elements, by general id, in the graph's order."""
     found: dict[str, BranchPoint] = {}
     for point in graph.branch_points.values():
-        found.setdefault(point.general_id, point)
+        if point.is_written:
+            found.setdefault(point.general_id, point)
     return found
 
 

@@ -15,6 +15,7 @@ from samesum.evidence.subjects.kinds import CANNOT_TELL, AttributeValue, Subject
 from samesum.evidence.subjects.usage import used_names
 from samesum.reading import model as m
 from samesum.reading import walk
+from samesum.settled.maker import WHERE_OPEN
 from samesum.written import percent, plain
 
 _TOLD: dict[Answer, AttributeValue] = {"yes": True, "no": False, "cannot tell": CANNOT_TELL}
@@ -103,11 +104,13 @@ def overlaps(evidence: Evidence, workshop: Workshop) -> Iterator[Subject]:
 def jumps(evidence: Evidence, seconds: float) -> Iterator[Subject]:
     """One subject a threshold at which a number jumps; one that cannot be told for each place left unlooked at."""
     found = find_jumps(evidence.graph, seconds)
-    clauses = {quantity.name: quantity.about.clause for quantity in evidence.model.quantities}
+    clauses = {quantity.name: quantity.about.clause for quantity in evidence.graph.model.quantities}
     tables = {table.name: table for table in evidence.model.tables}
-    units = {quantity.name: quantity.unit.text for quantity in evidence.model.quantities}
+    units = {quantity.name: quantity.unit.text for quantity in evidence.graph.model.quantities}
     points = general_points(evidence.graph)
     for jump in found.found:
+        if WHERE_OPEN in jump.place:
+            continue  # told at the option itself
         name = points[jump.place].quantity if jump.place in points else jump.place
         clause = tables[jump.table].about.clause if jump.table else clauses[name]
         threshold = _with_unit(jump.at, jump.unit.text, share=True)
@@ -128,6 +131,8 @@ def jumps(evidence: Evidence, seconds: float) -> Iterator[Subject]:
         }
         yield Subject("jump", jump.place, _key(jump), jump.span, clause, attributes)
     for place in found.untold:
+        if WHERE_OPEN in place:
+            continue
         point = points.get(place)
         quantity = next(each for each in evidence.model.quantities if each.name == place.split("/")[0])
         attributes = {

@@ -177,7 +177,8 @@ def end_of(figures: Figures, extreme: Extreme, row: int, which: int) -> End | No
         return None
     plan = figures.batch.plan
     points = plan.graph.branch_points
-    route = tuple([(id, points[id].branches[codes[row]]) for id, codes in extreme.route.items() if codes[row] >= 0])
+    taken = ((points[id], codes[row]) for id, codes in extreme.route.items() if codes[row] >= 0)
+    route = tuple([(point.id, point.branches[code]) for point, code in taken if point.is_written])
     settings: list[tuple[str, Value | float]] = []
     for setting in plan.graph.model.settings:
         if isinstance(setting.domain, m.Range):

@@ -1,81 +1,15 @@
-"""A rulebook as it is applied, once what nobody decides any more is put where the decision stood.
-
-Takes a ``Model``, gives a ``Model`` without a choice, setting or judgement that ``takes`` something: a mandated
-option's body, the lowest or highest of the options, a prescribed value. What follows such a choice, or asks which
-option it took, gets the branch or the answer that goes with it. ``reopened`` is for whoever compares with the truth,
-for which the options that are not taken still count.
-"""
+"""What stands in the place of a choice, a setting or a judgement that nobody decides."""
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field, replace
 from fractions import Fraction
 from itertools import combinations
 
 from samesum.reading import model as m
-from samesum.reading import walk
+from samesum.settled.answers import Answer, all_of, never, not_so, written
 from samesum.spans import Span
-
-Answer = m.Condition | bool
-
-
-def settled(model: m.Model) -> m.Model:
-    """The model with everything put in its place that takes something; the same model where nothing does."""
-    settled_in = [
-        quantity
-        for quantity in model.quantities
-        if any(isinstance(body, m.Choice) and body.takes for body in walk.bodies(quantity.body))
-    ]
-    inputs: tuple[m.Setting | m.Judgement, ...] = (*model.settings, *model.judgements)
-    values = {each.name: each.takes for each in inputs if each.takes is not None}
-    if not settled_in and not values:
-        return model
-    choices = _leaders(model)
-    maker = _Maker(choices, values, frozenset(choices[name].name for name in _asked_of(model) if name in choices))
-    quantities: list[m.Quantity] = []
-    for quantity in model.quantities:
-        body = maker.body(quantity, quantity.body, quantity.name)
-        quantities += [replace(quantity, body=body), *maker.made]
-        maker.made.clear()
-    return replace(
-        model,
-        applies=tuple(replace(each, condition=maker.condition(each.condition)) for each in model.applies),
-        settings=tuple(each for each in model.settings if each.takes is None),
-        judgements=tuple(each for each in model.judgements if each.takes is None),
-        constants=(*model.constants, *_constants(model)),
-        quantities=tuple(quantities),
-    )
-
-
-@dataclass(frozen=True, slots=True)
-class Prescribed:
-    """What nobody decides: what each choice takes, by its id without an element's number, and the value of each setting
-    and judgement, by its name."""
-
-    choices: Mapping[str, str]
-    inputs: Mapping[str, Fraction | str | bool]
-
-
-def reopened(model: m.Model) -> tuple[m.Model, Prescribed]:
-    """The model with every choice, setting and judgement as if somebody decided it, and what the rulebook takes."""
-    taken: dict[str, str] = {}
-
-    def body(old: m.Body, id: str) -> m.Body:
-        if isinstance(old, m.Choice) and old.takes:
-            taken[id] = old.takes
-            old = replace(old, takes="")
-        return _with_bodies(old, tuple(body(each.body, f"{id}/{each.name}") for each in walk.branches(old)))
-
-    quantities = tuple(replace(each, body=body(each.body, each.name)) for each in model.quantities)
-    everyone: tuple[m.Setting | m.Judgement, ...] = (*model.settings, *model.judgements)
-    inputs = {each.name: each.takes for each in everyone if each.takes is not None}
-    if not taken and not inputs:
-        return model, Prescribed({}, {})
-    settings = tuple(replace(each, takes=None) for each in model.settings)
-    judgements = tuple(replace(each, takes=None) for each in model.judgements)
-    reopened = replace(model, quantities=quantities, settings=settings, judgements=judgements)
-    return reopened, Prescribed(taken, inputs)
 
 
 def by_preference(options: tuple[m.Option, ...]) -> tuple[int, ...]:
@@ -89,86 +23,11 @@ def by_preference(options: tuple[m.Option, ...]) -> tuple[int, ...]:
     return tuple(sorted(range(len(options)), key=rank))
 
 
-def _constants(model: m.Model) -> Iterator[m.Constant]:
-    for setting in model.settings:
-        if isinstance(setting.takes, Fraction):
-            number = m.Number(setting.takes, setting.unit, setting.about.name_span)
-            yield m.Constant(setting.name, setting.unit, number, setting.about)
-
-
-def _leaders(model: m.Model) -> dict[str, m.Quantity]:
-    """By the name of each quantity whose choice nobody makes, or that follows one through any number of others, the
-    quantity with that choice."""
-    quantities = {quantity.name: quantity for quantity in model.quantities}
-    found: dict[str, m.Quantity] = {}
-    for quantity in model.quantities:
-        leader = quantity
-        for _ in model.quantities:  # no longer than that, should a text with mistakes go round in circles
-            if isinstance(leader.body, m.Follows) and leader.body.quantity in quantities:
-                leader = quantities[leader.body.quantity]
-        if isinstance(leader.body, m.Choice) and leader.body.takes:
-            found[quantity.name] = leader
-    return found
-
-
-def _asked_of(model: m.Model) -> frozenset[str]:
-    """The quantities whose choice something follows, or asks what it took."""
-    found: set[str] = set()
-    conditions = [each.condition for each in model.applies]
-    for quantity in model.quantities:
-        for body in walk.bodies(quantity.body):
-            if isinstance(body, m.Follows):
-                found.add(body.quantity)
-            conditions += [condition for each in walk.branches(body) if (condition := walk.condition_of(each))]
-    for condition in conditions:
-        found |= {each.quantity for each in walk.inside(condition) if isinstance(each, m.Takes)}
-    return frozenset(found)
-
-
-def _with_bodies(body: m.Body, inner: tuple[m.Body, ...]) -> m.Body:
-    match body:
-        case m.Cases(branches=branches):
-            whens = tuple(replace(each, body=new) for each, new in zip(branches, inner, strict=True))
-            return replace(body, branches=whens)
-        case m.Choice(options=options) | m.Follows(options=options):
-            return replace(
-                body, options=tuple(replace(each, body=new) for each, new in zip(options, inner, strict=True))
-            )
-        case _:
-            return body
-
-
-# --- conditions that are always or never true ------------------------------------------------------
-
-
-def _never(span: Span) -> m.Condition:
-    return m.Comparison("=", m.Number(Fraction(0), m.PLAIN, span), m.Number(Fraction(1), m.PLAIN, span), span)
-
-
-def _always(span: Span) -> m.Condition:
-    return m.Comparison("=", m.Number(Fraction(0), m.PLAIN, span), m.Number(Fraction(0), m.PLAIN, span), span)
-
-
-def _written(answer: Answer, span: Span) -> m.Condition:
-    if isinstance(answer, bool):
-        return _always(span) if answer else _never(span)
-    return answer
-
-
-def _all(parts: list[Answer], span: Span) -> Answer:
-    if any(part is False for part in parts):
-        return False
-    left = tuple(part for part in parts if not isinstance(part, bool))
-    return m.All(left, span) if len(left) > 1 else left[0] if left else True
-
-
-def _not(part: Answer, span: Span) -> Answer:
-    return not part if isinstance(part, bool) else m.Not(part, span)
-
-
 @dataclass(slots=True)
-class _Maker:
-    """``choices``: as ``_leaders`` gives them. ``values``: what settings and judgements take. ``asked``: quantities
+class Maker:
+    """Bodies, conditions and formulas as they are once nothing is left to be taken.
+
+    ``choices``: as ``_leaders`` gives them. ``values``: what settings and judgements take. ``asked``: quantities
     whose own choice is followed or asked. ``made``: quantities that stand for options, to be added."""
 
     choices: Mapping[str, m.Quantity]
@@ -205,14 +64,14 @@ class _Maker:
             inner = self.body(quantity, when.body, f"{id}/{when.name}")
             # Of conditions without an order, one that always holds still overlaps with the others.
             surely = answer is True and (when.condition is None or body.in_order or len(asked) == 1)
-            condition = None if surely else _written(answer, when.span)
+            condition = None if surely else written(answer, when.span)
             branches.append(replace(when, condition=condition, body=inner))
             if surely:
                 break
         if not branches:
             first = body.branches[0]
             inner = self.body(quantity, first.body, f"{id}/{first.name}")
-            branches = [replace(first, condition=_never(first.span), body=inner)]
+            branches = [replace(first, condition=never(first.span), body=inner)]
         if branches[0].condition is None:
             return branches[0].body
         return replace(body, branches=tuple(branches))
@@ -222,7 +81,7 @@ class _Maker:
         return replace(
             option,
             body=self.body(quantity, option.body, f"{id}/{option.name}"),
-            only_when=None if guard is True else _written(guard, option.span),
+            only_when=None if guard is True else written(guard, option.span),
             cost=self.expression(option.cost) if option.cost is not None else None,
         )
 
@@ -243,27 +102,26 @@ class _Maker:
         if leader.takes not in (m.LOWEST, m.HIGHEST):
             return self._in_order(leader, inner, body.span)
         branches = []
-        for number, option in enumerate(leader.options, start=1):
+        for option in leader.options:
             was = self._is_extreme(option.name, leader, leading, body.span)
-            branches.append(m.When(str(number), _written(was, body.span), inner[option.name], option.span))
-        return m.Cases(True, tuple(branches), body.span)
+            branches.append(m.When(option.name, written(was, body.span), inner[option.name], option.span))
+        return settled_cases(branches, body.span)
 
     def _in_order(self, choice: m.Choice, inner: Mapping[str, m.Body], span: Span) -> m.Body:
         """The mandated option's body where it is open, else that of the first other one that is."""
         branches: list[m.When] = []
-        for number, option in enumerate(_order(choice), start=1):
+        for option in _order(choice):
             guard = self._guard(option)
             if guard is False:
                 continue
-            condition = None if guard is True else _written(guard, option.span)
-            branches.append(m.When(str(number) if condition is not None else "otherwise", condition,
-                                   inner[option.name], option.span))  # fmt: skip
+            condition = None if guard is True else written(guard, option.span)
+            branches.append(m.When(option.name, condition, inner[option.name], option.span))
             if guard is True:
                 break
         if not branches:
             first = _order(choice)[0]
-            branches = [m.When("1", _never(span), inner[first.name], first.span)]
-        return branches[0].body if branches[0].condition is None else m.Cases(True, tuple(branches), span)
+            branches = [m.When("1", never(span), inner[first.name], first.span)]
+        return branches[0].body if branches[0].condition is None else settled_cases(branches, span)
 
     # -- the lowest or highest ------------------------------------------------------------------
 
@@ -304,14 +162,14 @@ class _Maker:
                 inside = [terms[each.name] for each in body.options if each.name in always or each.name in among]
                 if not inside:
                     continue
-                asked = _all([guards[name] for name in among], body.span)
+                asked = all_of([guards[name] for name in among], body.span)
                 condition = None if isinstance(asked, bool) else asked
-                name = str(len(branches) + 1) if condition is not None else "otherwise"
+                name = " and ".join(among) if condition is not None else "otherwise"
                 branches.append(m.When(name, condition, self._one_of(quantity, body, inside), body.span))
         if not branches:
             number = m.Formula(m.Number(Fraction(0), quantity.unit, body.span), body.span)
-            branches = [m.When("1", _never(body.span), number, body.span)]
-        return branches[0].body if branches[0].condition is None else m.Cases(True, tuple(branches), body.span)
+            branches = [m.When("1", never(body.span), number, body.span)]
+        return branches[0].body if branches[0].condition is None else settled_cases(branches, body.span)
 
     def _one_of(self, quantity: m.Quantity, body: m.Choice, among: list[m.Expression]) -> m.Formula:
         function = "min" if body.takes == m.LOWEST else "max"
@@ -338,20 +196,20 @@ class _Maker:
         for number in by_preference(choice.options):
             option = choice.options[number]
             if option.name == name:
-                return _all([*parts, equals(option)], span)
-            parts.append(_not(equals(option), span))
+                return all_of([*parts, equals(option)], span)
+            parts.append(not_so(equals(option), span))
         return False
 
     # -- conditions and expressions -----------------------------------------------------------------
 
     def condition(self, condition: m.Condition) -> m.Condition:
-        return _written(self._answer(condition), condition.span)
+        return written(self._answer(condition), condition.span)
 
     def _answer(self, condition: m.Condition) -> Answer:
         """The condition as it is now, or whether it always or never holds."""
         match condition:
             case m.All(parts=parts, span=span):
-                return _all([self._answer(part) for part in parts], span)
+                return all_of([self._answer(part) for part in parts], span)
             case m.Some(parts=parts, span=span):
                 found = [self._answer(part) for part in parts]
                 if any(each is True for each in found):
@@ -359,7 +217,7 @@ class _Maker:
                 left = tuple(each for each in found if not isinstance(each, bool))
                 return m.Some(left, span) if len(left) > 1 else left[0] if left else False
             case m.Not(part=part, span=span):
-                return _not(self._answer(part), span)
+                return not_so(self._answer(part), span)
             case m.Holds(name=name) if name in self.values:
                 return self.values[name] is True
             case m.Is(subject=subject, values=values) if subject.name in self.values:
@@ -380,8 +238,8 @@ class _Maker:
         for each in _order(choice):
             guard = self._guard(each)
             if each.name == option:
-                return _all([*parts, guard], span)
-            parts.append(_not(guard, span))
+                return all_of([*parts, guard], span)
+            parts.append(not_so(guard, span))
         return False
 
     def expression(self, expression: m.Expression) -> m.Expression:
@@ -401,8 +259,16 @@ class _Maker:
                 return expression
 
 
+def settled_cases(branches: Sequence[m.When], span: Span) -> m.Cases:
+    return m.Cases(True, tuple(branches), span, settled=True)
+
+
+WHERE_OPEN = " where open"
+"""Behind the name of a quantity that nobody wrote: what an option gives where it is open."""
+
+
 def _where_open_name(quantity: m.Quantity, option: m.Option) -> str:
-    return f"{quantity.name}/{option.name} where open"
+    return f"{quantity.name}/{option.name}{WHERE_OPEN}"
 
 
 def _where_open(quantity: m.Quantity, option: m.Option, guard: m.Condition, whole: m.Expression) -> m.Quantity:
@@ -418,7 +284,7 @@ def _where_open(quantity: m.Quantity, option: m.Option, guard: m.Condition, whol
     )
     about = replace(quantity.about, span=span)
     name = _where_open_name(quantity, option)
-    return m.Quantity(name, quantity.unit, quantity.index, m.Cases(True, branches, span), about)
+    return m.Quantity(name, quantity.unit, quantity.index, settled_cases(branches, span), about)
 
 
 def _order(choice: m.Choice) -> tuple[m.Option, ...]:
