@@ -182,12 +182,14 @@ def figured(old: str, new: str) -> Comparison:
 @pytest.mark.parametrize(
     ("old", "new", "says", "aspect"),
     [
-        ("error 8 %", "error 30 %", "the error of plots grew from 8 % to 30 %", ("option plots, error", "8 %", "30 %")),
+        # sd of the difference at first: sqrt(0.35² + 0.08² - 2 · 0.5 · 0.35 · 0.08) = 0.3177
+        ("error 8 %", "error 60 %", "estimates of tabled and plots lie further apart: the standard deviation of their "
+         "difference is 52.2 %, not 31.8 %", ("option plots, error", "8 %", "60 %")),
+        ("error 8 %", "error 1 %", "difference is 34.5 %, not 31.8 %", ("option plots, error", "8 %", "1 %")),
         ("error 8 %, ", "", "error of plots (8 %) is stated no longer", ("option plots, error", "8 %", "")),
-        ("bias 2 %", "bias -3 %", "biases of the options lie further apart: 3 %, not 2 %",
+        ("bias 2 %", "bias -3 %", "biases of tabled and plots lie further apart: 3 %, not 2 %",
          ("option tabled, bias", "2 %", "-3 %")),
-        ("correlated 0.5", "correlated 0.2", "go together less: correlated 20 %, not 50 %",
-         ("errors correlated", "50 %", "20 %")),
+        ("correlated 0.5", "correlated 0.2", "difference is 34.3 %, not 31.8 %", ("errors correlated", "50 %", "20 %")),
     ],
 )  # fmt: skip
 def test_estimates_that_lie_further_apart_leave_more(
@@ -203,7 +205,7 @@ def test_estimates_that_lie_further_apart_leave_more(
 @pytest.mark.parametrize(
     ("old", "new"),
     [
-        ("error 8 %", "error 7 %"),
+        ("error 8 %", "error 9 %"),  # the wider one is 35 %: a little more of the other brings them together
         ("bias 2 %", "bias -2 %"),  # as far from the other one as before
         ("bias 2 %, ", ""),
         ("cost 30 [USD]", "cost 3 [USD]"),
@@ -216,8 +218,65 @@ def test_estimates_that_lie_no_further_apart_are_listed_and_let_pass(old: str, n
     assert found.growth == ()
 
 
+@pytest.mark.parametrize(
+    ("old", "new", "now", "then"),
+    [
+        ((0.1, 0.1, 1), (0.1, 0.01, 1), "9 %", "0 %"),
+        ((0.1, 0.2, 1), (0.2, 0.2, 1), "", ""),
+        ((0.2, 0.2, 1), (0.1, 0.2, 1), "10 %", "0 %"),
+        ((0.1, 0.2, 0.5), (0.1, 0.05, 0.4), "", ""),  # 17.3 %, then 9.2 %
+        ((0.1, 0.2, -0.5), (0.1, 0.2, 0), "", ""),
+        ((0.1, 0.2, 0), (0.1, 0.2, -0.5), "26.5 %", "22.4 %"),
+        ((0.1, 0.2, 0), (0.1, 0.2000001, 0), "22.360688", "22.360679"),
+        ((0, 0.1, 0.5), (0, 0.1, 0), "", ""),  # where one does not err, there is nothing to go together
+    ],
+)
+def test_growth_is_how_far_two_estimates_lie_apart(
+    old: tuple[float, float, float], new: tuple[float, float, float], now: str, then: str
+) -> None:
+    before, after = (
+        register(
+            DRAFT.replace("fixed at validation", f"fixed at validation, errors correlated {together}")
+            .replace("option tabled", f"option tabled, error {first}")
+            .replace("option plots", f"option plots, error {second}")
+        )
+        for first, second, together in (old, new)
+    )
+    says = [each.says for each in compare(before, after, (), 60.0).growth]
+    if not now:
+        assert says == []
+    else:
+        assert len(says) == 1 and "the estimates of tabled and plots lie further apart" in says[0]
+        assert f"is {now}" in says[0] and f"not {then}" in says[0]
+
+
+def test_of_several_pairs_any_that_lies_further_apart_counts() -> None:
+    guess = "        option guess, error 50 %\n            = 9 [t]\n"
+    third = DRAFT.replace("        option plots", f"{guess}        option plots")
+    [growth] = compare(
+        register(third.replace("option tabled", "option tabled, error 10 %")),
+        register(third.replace("option tabled", "option tabled, error 20 %")),
+        (),
+        60.0,
+    ).growth
+    # 53.9 %, not 51 %, to guess; 20 %, not 10 %, to plots
+    assert "estimates of tabled and guess lie further apart" in growth.says and "53.9 %, not 51 %" in growth.says
+
+
+def test_an_option_put_in_the_place_of_another_counts_with_its_own_error() -> None:
+    before = DRAFT.replace("option tabled", "option tabled, error 10 %")
+    wider = compare(register(before), register(before.replace("tabled, error 10 %", "guess, error 30 %")), (), 60.0)
+    assert "estimates of guess and plots lie further apart" in wider.growth[0].says
+    assert not compare(register(before), register(before.replace("tabled", "guess")), (), 60.0).grew
+
+
 def test_an_error_that_is_stated_at_last_is_no_growth() -> None:
     assert not changed(("option tabled", "option tabled, error 35 %")).grew
+    other = DRAFT.replace("option plots", "option plots, error 8 %")
+    found = compare(
+        register(other), register(other.replace("error 8 %", "error 80 %").replace("tabled", "tabled, error 35 %"))
+    )
+    assert "estimates of tabled and plots" in found.growth[0].says
 
 
 def test_having_a_result_is_not_called_growth() -> None:

@@ -16,9 +16,10 @@ if TYPE_CHECKING:
 
 LEAVES_MORE = (
     "A draft leaves more when a place to decide is new, has more options or values, lost a condition, or can be moved "
-    "by more people; when the error that an option states grew or is stated no longer, the options' biases lie further "
-    "apart or their errors are correlated less; when a project has no result any more, or more routes. A cost "
-    "that changed is listed and leaves nothing more: it moves no number, only what is tried first."
+    "by more people; when, of two options, the estimates lie further apart (by the standard deviation of their "
+    "difference, worked out from the stated errors and their correlation) or the biases do; when an error is stated no "
+    "longer; when a project has no result any more, or more routes. A cost that changed is listed and leaves nothing "
+    "more: it moves no number, only what is tried first."
 )
 
 

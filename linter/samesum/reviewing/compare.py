@@ -15,6 +15,7 @@ from samesum.evidence.routes.closing import Bracket, figures_if_given
 from samesum.evidence.routes.counting import FIGURES
 from samesum.evidence.routes.layout import Given
 from samesum.reading import model as m
+from samesum.reviewing.apart import further_apart
 from samesum.reviewing.places import changes, exact_percent
 from samesum.reviewing.rows import Register, Row, RowOption, routes_now
 
@@ -267,7 +268,7 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
         freed = [option.name for option in after.options if conditions.get(option.name) and not option.when]
         if freed:
             found.append(f"options without their condition: {', '.join(freed)}")
-        found += _more_to_pick_from(before, after)
+        found += further_apart(before, after)
         if _TIGHTNESS[after.fixed] > _TIGHTNESS[before.fixed]:
             found.append("was fixed at validation, is open each period")
     sources = {mover.source for mover in before.movers}
@@ -277,47 +278,6 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
     if before.kind == after.kind == "setting" and _wider(before.id, old, new):
         found.append("the values that may be set are more")
     return found
-
-
-def _more_to_pick_from(before: Row, after: Row) -> list[str]:
-    """Whether the estimates that one may pick from lie further apart. An error that grew, or is stated no longer;
-    biases that lie further apart, where one that all options share leaves nothing to pick; errors that go together
-    less. A cost moves no number, only what is tried first."""
-    found: list[str] = []
-    earlier = {option.name: option for option in before.options}
-    for option in after.options:
-        was = earlier[option.name].error if option.name in earlier else None
-        if was is None:
-            continue
-        if option.error is None:
-            found.append(f"the error of {option.name} ({exact_percent(was)}) is stated no longer")
-        elif option.error > was:
-            found.append(
-                f"the error of {option.name} grew from {exact_percent(was)} to {exact_percent(option.error)}, so that "
-                "its estimates lie further apart"
-            )
-    old, new = _apart(before), _apart(after)
-    if new > old:
-        found.append(f"the biases of the options lie further apart: {exact_percent(new)}, not {exact_percent(old)}")
-    together = [_correlated(row) for row in (before, after)]
-    if together[1] < together[0]:
-        found.append(
-            f"the errors of the options go together less: correlated {exact_percent(together[1])}, not "
-            f"{exact_percent(together[0])}"
-        )
-    return found
-
-
-def _apart(row: Row) -> Fraction:
-    """How far the biases lie apart; one that is not stated is 0."""
-    biases = [option.bias or Fraction(0) for option in row.options]
-    return max(biases, default=Fraction(0)) - min(biases, default=Fraction(0))
-
-
-def _correlated(row: Row) -> Fraction:
-    """How far the errors of the options go together; 0 where that is not said."""
-    body = row.place.points[0].body
-    return (body.correlated or Fraction(0)) if isinstance(body, m.Choice) else Fraction(0)
 
 
 def _wider(name: str, old: m.Model, new: m.Model) -> bool:
