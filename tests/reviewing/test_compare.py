@@ -7,7 +7,7 @@ from pathlib import Path
 import pytest
 
 from samesum.examine import examine_reading
-from samesum.outputs.comparison import comparison_text
+from samesum.outputs.comparison import comparison_json, comparison_text
 from samesum.outputs.page import Paper
 from samesum.reading.read import read
 from samesum.reviewing.compare import Comparison, compare
@@ -307,3 +307,70 @@ def test_a_change_names_what_differs_before_and_after() -> None:
         "stock": (("option tabled", "= 20 [t]", "= 21 [t]"),),
         "loss": (("clause", "5", "5.1"),),
     }
+
+
+TAKEN = """\
+rulebook "Draft", draft "1"
+result credits [t], rounded down to 1, clause 9
+fact soil, one of wet or dry
+setting margin, 5 % to 20 %, takes 12 %, clause 3
+setting strip [kg], 5 to 20, takes 6, clause 3.1
+setting method, one of simple or detailed, takes simple
+judgement near, "near the site", takes yes, clause 3
+quantity inner [t], clause 5
+    cases
+        when soil is wet
+            choice takes lowest value
+                option low
+                    = 1 [t]
+                option high
+                    = 2 [t]
+        otherwise
+            = 3 [t]
+quantity credits [t], clause 9
+    choice takes fine
+        option fine, error 10 %
+            = (inner + strip) * (1 - margin)
+        option rough, only when near and method is simple
+            = inner
+"""
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "id", "before", "after"),
+    [
+        ("takes fine", "takes rough", "credits", "takes fine", "takes rough"),
+        ("takes lowest", "takes highest", "inner/1", "takes lowest value", "takes highest value"),
+        ("takes 12 %", "takes 20 %", "margin", "takes 12 %", "takes 20 %"),
+        ("takes 12 %", "takes 12.0000001 %", "margin", "takes 12 %", "takes 12.0000001 %"),
+        ("takes 6", "takes 7", "strip", "takes 6 kg", "takes 7 kg"),
+        ("takes simple", "takes detailed", "method", "takes simple", "takes detailed"),
+        ("takes yes", "takes no", "near", "takes yes", "takes no"),
+    ],
+)
+def test_another_thing_that_is_taken_is_listed_and_leaves_nothing_more(
+    old: str, new: str, id: str, before: str, after: str
+) -> None:
+    assert TAKEN.count(old) == 1
+    found = compare(register(TAKEN), register(TAKEN.replace(old, new)), (), 60.0)
+    [(was, now)] = found.taken
+    assert (was.id, now.id, was.text, now.text) == (id, id, before, after)
+    assert found.growth == ()
+    text = comparison_text([found], Paper(100, False))
+    assert f"{before} → {after}" in text and f"~ {id} (" in text
+    assert "No branch point was added" not in text and "leaves nothing more" in text
+    [listed] = comparison_json(found)["changed"]
+    assert listed["branch_point"] == id and listed["who_decides"] == "nobody"
+    assert listed["changes"] == [{"what": "what is taken", "before": before, "after": after}]
+
+
+def test_the_same_value_in_other_words_is_nothing_else_that_is_taken() -> None:
+    other = TAKEN.replace("takes 12 %", "takes 0.12").replace(
+        "strip [kg], 5 to 20, takes 6", "strip [t], 0.005 to 0.02, takes 6 [kg]"
+    )
+    assert compare(register(TAKEN), register(other), (), 60.0).taken == ()
+
+
+def test_what_somebody_decides_again_is_opened_and_not_said_to_take_something_else() -> None:
+    found = compare(register(TAKEN), register(TAKEN.replace("choice takes fine", "choice by developer")), (), 60.0)
+    assert found.taken == () and [row.id for row in found.opened] == ["credits"]

@@ -10,6 +10,7 @@ from samesum.outputs.counts import FIGURES, title_of
 from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.register_cells import bracket_text, decider, share
 from samesum.reviewing.compare import Change, Comparison, direction
+from samesum.reviewing.places import Taken
 from samesum.reviewing.rows import Register, Row
 from samesum.written import whole
 
@@ -21,7 +22,7 @@ def comparison_json(found: Comparison) -> dict[str, Any]:
         "new": _draft(found.new),
         "added": [_row(row) for row in found.added],
         "removed": [_row(row) for row in found.removed],
-        "changed": [_change(change) for change in found.changed],
+        "changed": [*(_change(change) for change in found.changed), *(_taken(*pair) for pair in found.taken)],
         "closed": [row.id for row in found.closed],
         "opened": [row.id for row in found.opened],
         "paths": {
@@ -82,6 +83,19 @@ def _change(change: Change) -> dict[str, Any]:
     }
 
 
+def _taken(before: Taken, after: Taken) -> dict[str, Any]:
+    return {
+        "branch_point": after.id,
+        "clause": after.clause,
+        "kind": after.kind,
+        "who_decides": "nobody",
+        "wording": after.wording,
+        "closed": False,
+        "opened": False,
+        "changes": [{"what": "what is taken", "before": before.text, "after": after.text}],
+    }
+
+
 def _figure(figure: Bracket) -> Any:
     return figure.high if figure.exact else {"at_least": figure.low, "at_most": figure.high}
 
@@ -110,14 +124,18 @@ def _comparison(page: Page, found: Comparison) -> None:
     _rows(page, "No longer there", "−", [row for row in found.removed if row.id not in closed], "")
     _rows(page, "New, left to facts", "+", [row for row in found.added if row.id not in opened], "")
     other = [change for change in found.changed if not change.closed and not change.opened]
-    if other:
+    if other or found.taken:
         page.blank()
         page.line("Changed", "strong")
         for change in other:
             page.paragraph(f"~ {_place(change.after)}", indent=2, hanging=2)
             for name, before, after in change.aspects:
                 page.paragraph(f"{name}: {_said(before)} → {_said(after)}", indent=6, hanging=2, style="quiet")
-    if not (found.added or found.removed or found.changed):
+        for was, now in found.taken:
+            clause = f"clause {now.clause}" if now.clause else "no clause"
+            page.paragraph(f"~ {now.id} ({clause}; {now.kind}, nobody decides)", indent=2, hanging=2)
+            page.paragraph(f"{was.text} → {now.text}", indent=6, hanging=2, style="quiet")
+    if not (found.taken or found.added or found.removed or found.changed):
         page.blank()
         page.line("No branch point was added, removed or changed.")
     _figures(page, found)

@@ -16,7 +16,7 @@ from samesum.evidence.routes.counting import FIGURES
 from samesum.evidence.routes.layout import Given
 from samesum.reading import model as m
 from samesum.reviewing.apart import further_apart
-from samesum.reviewing.places import changes, exact_percent
+from samesum.reviewing.places import Taken, changes, exact_percent, taken_of
 from samesum.reviewing.rows import Register, Row, RowOption, routes_now
 
 ONE_PROJECT = ("per_project_most", "developer_most", "over_periods_most")
@@ -70,7 +70,8 @@ class Moved:
 
 @dataclass(frozen=True, slots=True)
 class Comparison:
-    """``figures``: each figure of ``count`` before and after. ``growth`` in a fixed order."""
+    """``figures``: each figure of ``count`` before and after. ``growth`` in a fixed order. ``taken``: what the rulebook
+    took and takes, where that differs."""
 
     old: Register
     new: Register
@@ -80,6 +81,7 @@ class Comparison:
     figures: Mapping[str, tuple[Bracket, Bracket]]
     growth: tuple[Growth, ...]
     measured: tuple[Moved, ...] = ()
+    taken: tuple[tuple[Taken, Taken], ...] = ()
 
     @property
     def grew(self) -> bool:
@@ -110,11 +112,12 @@ def compare(
     taken out by counting it as given."""
     before = {row.id: row for row in old.rows}
     after = {row.id: row for row in new.rows}
+    taken = _taken(old, new)
     changed = tuple(
         change
         for id, row in after.items()
         if id in before
-        if (change := Change(before[id], row, _aspects(before[id], row))).aspects
+        if (change := Change(before[id], row, _aspects(before[id], row, taken))).aspects
     )
     found = Comparison(
         old,
@@ -125,16 +128,28 @@ def compare(
         {name: (routes_now(old.evidence, name), routes_now(new.evidence, name)) for name in FIGURES},
         (),
         measured,
+        taken,
     )
     return replace(found, growth=_growth(found, frozenset(allow), seconds))
 
 
-def _aspects(before: Row, after: Row) -> tuple[tuple[str, str, str], ...]:
-    """What differs in the text, and in what the text amounts to (who can steer it; whether branches overlap)."""
+def _taken(old: Register, new: Register) -> tuple[tuple[Taken, Taken], ...]:
+    before, after = (taken_of(each.evidence.graph.written) for each in (old, new))
+    pairs = ((before[id], now) for id, now in after.items() if id in before)
+    return tuple((was, now) for was, now in pairs if was.value != now.value)
+
+
+def _aspects(before: Row, after: Row, taken: tuple[tuple[Taken, Taken], ...]) -> tuple[tuple[str, str, str], ...]:
+    """What differs in the text, and in what the text amounts to (who can steer it; whether branches overlap). What is
+    taken under a branch is told where it is taken."""
     found: list[tuple[str, str, str]] = []
     earlier = {option.name: option for option in before.options}
     later = {f"option {option.name}": option for option in after.options}
+    under = {now.id: (was.text, now.text) for was, now in taken}
     for name, old_text, new_text in changes(before.place, after.place):
+        inner = under.get(f"{after.id}/{name.rpartition(' ')[2]}")
+        if inner is not None and old_text == new_text.replace(f"that {inner[1]}", f"that {inner[0]}"):
+            continue
         option = later.get(name)
         if option is not None and option.name in earlier:
             found += _attributes(name, earlier[option.name], option)

@@ -15,6 +15,7 @@ from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from decimal import Context, Decimal
 from fractions import Fraction
+from typing import Literal
 
 from samesum.graph import BranchPoint, DecisionGraph
 from samesum.reading import model as m
@@ -121,6 +122,54 @@ def fingerprints(graph: DecisionGraph, text: str) -> dict[str, str]:
     return {id: place.fingerprint for id, place in places_of(graph, Source.of(text)).items()}
 
 
+@dataclass(frozen=True, slots=True)
+class Taken:
+    """What the rulebook takes where nobody decides; of a number the value in base units counts, not how it is
+    written."""
+
+    id: str
+    kind: Literal["choice", "setting", "judgement"]
+    clause: str
+    wording: str
+    span: Span
+    value: tuple[object, ...]
+    text: str
+
+
+def taken_of(written: m.Model) -> dict[str, Taken]:
+    """Every choice, setting and judgement that takes something, by id, in reading order. ``written``: the rulebook as
+    it was read, since settled it has none of them."""
+    found: list[Taken] = []
+
+    def choices(body: m.Body, id: str, about: m.About) -> None:
+        if isinstance(body, m.Choice) and body.takes:
+            text = f"takes {body.takes}"
+            found.append(Taken(id, "choice", about.clause, about.note, body.span, (body.takes,), text))
+        for branch in walk.branches(body):
+            choices(branch.body, f"{id}/{branch.name}", about)
+
+    for quantity in written.quantities:
+        choices(quantity.body, quantity.name, quantity.about)
+    for setting in written.settings:
+        if setting.takes is not None:
+            found.append(_taken(setting.name, "setting", setting.about, setting.takes, setting.unit))
+    for judgement in written.judgements:
+        if judgement.takes is not None:
+            found.append(_taken(judgement.name, "judgement", judgement.about, judgement.takes, m.PLAIN))
+    return {each.id: each for each in sorted(found, key=lambda each: (each.span, each.id))}
+
+
+def _taken(
+    name: str, kind: Literal["setting", "judgement"], about: m.About, takes: Fraction | str | bool, unit: m.Unit
+) -> Taken:
+    value: tuple[object, ...] = (takes,)
+    text = takes if isinstance(takes, str) else "yes" if takes else "no"
+    if isinstance(takes, Fraction):
+        value = (takes * unit.factor, unit.dimension)
+        text = f"{exact(takes)} {unit.text}" if unit.text else exact_percent(takes) if abs(takes) <= 1 else exact(takes)
+    return Taken(name, kind, about.clause, about.note, about.name_span, value, f"takes {text}")
+
+
 def _branch_point(id: str, points: list[BranchPoint], graph: DecisionGraph, source: Source) -> Place:
     point = points[0]
     body = point.body
@@ -140,8 +189,9 @@ def _branch_point(id: str, points: list[BranchPoint], graph: DecisionGraph, sour
             aspects["who decides"] = "its conditions, in order" if body.in_order else "its conditions"
     if index:
         aspects["per"] = index
+    settled = _settled_under(graph.written, point.quantity)
     for branch in walk.branches(body):
-        aspects[f"{branch_noun(point)} {branch.name}"] = _branch(branch, source)
+        aspects[f"{branch_noun(point)} {branch.name}"] = _branch(branch, source, settled.get(branch.span, ""))
     aspects["wording"] = " ".join(point.wording.split())
     aspects["clause"] = point.clause
     return Place(id, point.kind, point.clause, point.wording, point.span, aspects, tuple(points))
@@ -151,7 +201,19 @@ def branch_noun(point: BranchPoint) -> str:
     return "branch" if point.kind in ("cases", "cases in order") else "option"
 
 
-def _branch(branch: m.When | m.Option, source: Source) -> str:
+def _settled_under(written: m.Model, quantity: str) -> dict[Span, str]:
+    """What is taken under each branch of a quantity whose body is a choice that nobody makes, by the branch's line."""
+    name = quantity.partition("/")[0]  # an option can be a quantity of its own once the choice is settled
+    found: dict[Span, str] = {}
+    for each in written.quantities:
+        for body in walk.bodies(each.body) if each.name == name else ():
+            for branch in walk.branches(body):
+                if isinstance(branch.body, m.Choice) and branch.body.takes:
+                    found[branch.span] = branch.body.takes
+    return found
+
+
+def _branch(branch: m.When | m.Option, source: Source, takes: str) -> str:
     said = []
     condition = walk.condition_of(branch)
     if condition is not None:
@@ -166,6 +228,8 @@ def _branch(branch: m.When | m.Option, source: Source) -> str:
         if branch.reference:
             said.append("reference")
     match branch.body:
+        case _ if takes:
+            said.append(f"a choice that takes {takes}")
         case m.Formula(expression=expression):
             said.append(f"= {source.quoted(expression.span)}")
         case m.Choice() | m.Follows():
@@ -179,8 +243,12 @@ def _branch(branch: m.When | m.Option, source: Source) -> str:
 
 def exact_percent(value: Fraction) -> str:
     """``35 %``, with every digit that was written."""
-    found = Context(prec=80).divide(Decimal((value * 100).numerator), Decimal((value * 100).denominator))
-    return f"{found.normalize():f} %"
+    return f"{exact(value * 100)} %"
+
+
+def exact(value: Fraction) -> str:
+    """``0.35``, with every digit that was written."""
+    return f"{Context(prec=80).divide(Decimal(value.numerator), Decimal(value.denominator)).normalize():f}"
 
 
 def _setting(setting: m.Setting) -> Place:
