@@ -374,3 +374,97 @@ def test_the_same_value_in_other_words_is_nothing_else_that_is_taken() -> None:
 def test_what_somebody_decides_again_is_opened_and_not_said_to_take_something_else() -> None:
     found = compare(register(TAKEN), register(TAKEN.replace("choice takes fine", "choice by developer")), (), 60.0)
     assert found.taken == () and [row.id for row in found.opened] == ["credits"]
+
+
+CONDITIONED = DRAFT.replace(
+    "periods 2\n",
+    "periods 2\nindex stratum, at most 3\nfact wide [m] per stratum, 0 to 9\nfact soil, one of wet, dry or bare\n"
+    "constant limit [m] = 5\napplies when depth <= 8 [m]\n",
+)
+
+
+def conditioned(old: str, new: str, *others: tuple[str, str], text: str = CONDITIONED) -> Comparison:
+    before = text.replace("only when near", f"only when {old}")
+    after = text.replace("only when near", f"only when {new}")
+    for other in others:
+        assert other[0] in after
+        after = after.replace(*other)
+    return compare(register(before), register(after), (), 60.0)
+
+
+@pytest.mark.parametrize(
+    ("old", "new", "more"),
+    [
+        ("depth < 5 [m]", "depth < 6 [m]", True),
+        ("depth < 5 [m]", "depth <= 5 [m]", True),
+        ("depth < 5 [m]", "depth < 4 [m]", False),
+        ("depth < 5 [m]", "depth < 500 [cm]", False),
+        ("depth < 8.5 [m]", "depth < 9 [m]", False),  # the rulebook is for no project from 8 m on
+        ("depth < 5 [m]", "depth > 5 [m]", True),
+        ("near", "depth < 5 [m]", True),
+        ("near", "near and depth < 5 [m]", False),
+        ("near or soil is wet", "near or soil is not bare", True),
+        ("soil is not bare", "soil is one of wet or dry", False),
+        ("depth * (1 - margin) < 5 [m]", "depth * (1 - margin) < 6 [m]", True),
+        ("depth < limit", "depth < 5 [m]", False),
+        ("depth < limit", "depth < limit + 1 [m]", True),
+        ("sum(wide over stratum) < 20 [m]", "sum(wide over stratum) < 21 [m]", True),
+        ("sum(wide over stratum) < 20 [m]", "sum(wide over stratum) < 19 [m]", False),
+        ("loss < 5 [t]", "loss < 6 [t]", None),
+        ("10 [m] / depth < 5", "10 [m] / depth < 6", None),
+    ],
+)
+def test_a_condition_that_changed_counts_when_it_lets_more_projects_through(
+    old: str, new: str, more: bool | None
+) -> None:
+    found = conditioned(old, new)
+    [change] = [each for each in found.changed if each.after.id == "stock"]
+    assert change.wider == (("plots", more),)
+    assert any("some projects have the option plots now" in each.says for each in found.growth) is (more is True)
+    assert comparison_json(found)["changed"][0]["not_worked_out"] == ([] if more is not None else ["plots"])
+    text = comparison_text([found], Paper(100, False))
+    assert ("whether more projects have plots now was not worked out" in text) is (more is None)
+    assert ("As far as was worked out" in text) is (more is None)
+
+
+def test_a_condition_on_something_declared_otherwise_is_not_worked_out() -> None:
+    for other in (("depth [m], 0 to 10", "depth [m], 0 to 9"), ("limit [m] = 5", "limit [m] = 6")):
+        found = conditioned("depth < limit", "depth < limit and depth < 9 [m]", other)
+        assert [each.wider for each in found.changed if each.after.id == "stock"] == [(("plots", None),)]
+
+
+PER_STRATUM = CONDITIONED.replace("quantity stock [t],", "quantity stock [t] per stratum,").replace(
+    "= stock *", "= sum(stock over stratum) *"
+)
+INSIDE = CONDITIONED.replace(
+    """    choice by developer, fixed at validation
+        option tabled
+            = 20 [t]
+        option plots, only when near
+            = 30 [t]
+""",
+    """    cases
+        when depth < 3 [m]
+            choice by developer
+                option tabled
+                    = 20 [t]
+                option plots, only when near
+                    = 30 [t]
+        otherwise
+            = 9 [t]
+""",
+)
+
+
+@pytest.mark.parametrize(
+    ("text", "old", "new", "more"),
+    [
+        (PER_STRATUM, "wide < 5 [m]", "wide < 6 [m]", True),
+        (PER_STRATUM, "wide < 5 [m]", "wide < 4 [m]", False),
+        (INSIDE, "depth < 5 [m]", "depth < 4 [m]", False),
+        (INSIDE, "depth < 5 [m]", "depth < 6 [m]", None),  # nobody who gets here is that deep
+    ],
+)
+def test_a_condition_per_element_or_inside_another_branch(text: str, old: str, new: str, more: bool | None) -> None:
+    found = conditioned(old, new, text=text)
+    assert [each.wider for each in found.changed if each.wider] == [(("plots", more),)]

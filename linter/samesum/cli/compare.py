@@ -15,11 +15,12 @@ if TYPE_CHECKING:
 
 
 LEAVES_MORE = (
-    "A draft leaves more when a place to decide is new, has more options or values, lost a condition, or can be moved "
-    "by more people; when, of two options, the estimates lie further apart (by the standard deviation of their "
-    "difference, worked out from the stated errors and their correlation) or the biases do; when an error is stated no "
-    "longer; when a project has no result any more, or more routes. A cost that changed is listed and leaves nothing "
-    "more: it moves no number, only what is tried first."
+    "A draft leaves more when a place to decide is new, has more options or values, has an option whose condition is "
+    "gone or lets more projects through, or can be moved by more people; when, of two options, the estimates lie "
+    "further apart (by the standard deviation of their difference, worked out from the stated errors and their "
+    "correlation) or the biases do; when an error is stated no longer; when a project has no result any more, or more "
+    "routes. What the rulebook takes now in place of something else, and a cost that changed, are listed and leave "
+    "nothing more: a cost moves no number, only what is tried first."
 )
 
 

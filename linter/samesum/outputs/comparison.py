@@ -9,6 +9,7 @@ from samesum.evidence.routes.closing import Bracket
 from samesum.outputs.counts import FIGURES, title_of
 from samesum.outputs.page import CAUTION, Page, Paper
 from samesum.outputs.register_cells import bracket_text, decider, share
+from samesum.reading.words import listing
 from samesum.reviewing.compare import Change, Comparison, direction
 from samesum.reviewing.places import Taken
 from samesum.reviewing.rows import Register, Row
@@ -80,6 +81,7 @@ def _change(change: Change) -> dict[str, Any]:
         "closed": change.closed,
         "opened": change.opened,
         "changes": [{"what": name, "before": old, "after": new} for name, old, new in change.aspects],
+        "not_worked_out": list(change.unsure),
     }
 
 
@@ -93,6 +95,7 @@ def _taken(before: Taken, after: Taken) -> dict[str, Any]:
         "closed": False,
         "opened": False,
         "changes": [{"what": "what is taken", "before": before.text, "after": after.text}],
+        "not_worked_out": [],
     }
 
 
@@ -131,6 +134,10 @@ def _comparison(page: Page, found: Comparison) -> None:
             page.paragraph(f"~ {_place(change.after)}", indent=2, hanging=2)
             for name, before, after in change.aspects:
                 page.paragraph(f"{name}: {_said(before)} → {_said(after)}", indent=6, hanging=2, style="quiet")
+            if change.unsure:
+                options = listing(change.unsure, "and")
+                says = f"whether more projects have {options} now was not worked out"
+                page.paragraph(says, indent=6, hanging=2, style="warn")
         for was, now in found.taken:
             clause = f"clause {now.clause}" if now.clause else "no clause"
             page.paragraph(f"~ {now.id} ({clause}; {now.kind}, nobody decides)", indent=2, hanging=2)
@@ -204,7 +211,10 @@ def _how(name: str, before: Bracket, after: Bracket) -> str:
 def _verdict(page: Page, found: Comparison) -> None:
     page.blank()
     if not found.growth:
-        page.paragraph("The new draft leaves nothing more to anybody.", style="good")
+        if any(change.unsure for change in found.changed):
+            page.paragraph("As far as was worked out, the new draft leaves nothing more to anybody.", style="strong")
+        else:
+            page.paragraph("The new draft leaves nothing more to anybody.", style="good")
         return
     if found.grew:
         page.paragraph("The new draft leaves more to somebody:", style="bad")

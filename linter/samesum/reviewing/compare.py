@@ -26,11 +26,13 @@ ONE_PROJECT = ("per_project_most", "developer_most", "over_periods_most")
 @dataclass(frozen=True, slots=True)
 class Change:
     """One place that is in both drafts. ``aspects``: what differs, before and after. ``closed`` and ``opened``: whether
-    it leaves nothing, or something, to somebody only since."""
+    it leaves nothing, or something, to somebody only since. ``wider``: options whose condition changed, and whether
+    some project has them only since; None where that was not worked out."""
 
     before: Row
     after: Row
     aspects: tuple[tuple[str, str, str], ...]
+    wider: tuple[tuple[str, bool | None], ...] = ()
 
     @property
     def closed(self) -> bool:
@@ -39,6 +41,11 @@ class Change:
     @property
     def opened(self) -> bool:
         return self.after.leaves_something and not self.before.leaves_something
+
+    @property
+    def unsure(self) -> tuple[str, ...]:
+        """Options of which it was not worked out whether more projects have them now."""
+        return tuple(name for name, more in self.wider if more is None)
 
 
 @dataclass(frozen=True, slots=True)
@@ -124,7 +131,7 @@ def compare(
         new,
         tuple(row for row in new.rows if row.id not in before),
         tuple(row for row in old.rows if row.id not in after),
-        changed,
+        tuple(replace(each, wider=_wider_conditions(each, old, new, min(seconds, 2.0))) for each in changed),
         {name: (routes_now(old.evidence, name), routes_now(new.evidence, name)) for name in FIGURES},
         (),
         measured,
@@ -137,6 +144,24 @@ def _taken(old: Register, new: Register) -> tuple[tuple[Taken, Taken], ...]:
     before, after = (taken_of(each.evidence.graph.written) for each in (old, new))
     pairs = ((before[id], now) for id, now in after.items() if id in before)
     return tuple((was, now) for was, now in pairs if was.value != now.value)
+
+
+def _wider_conditions(
+    change: Change, old: Register, new: Register, seconds: float
+) -> tuple[tuple[str, bool | None], ...]:
+    if not change.before.kind == change.after.kind == "choice":
+        return ()
+    was = {option.name: option.when for option in change.before.options}
+    names = [each.name for each in change.after.options if each.when and was.get(each.name, "") not in ("", each.when)]
+    if not names:
+        return ()
+    from samesum.reviewing.wider import lets_more_through
+
+    points = [
+        (register.evidence.graph.model, row.place.points[0])
+        for register, row in ((old, change.before), (new, change.after))
+    ]
+    return tuple((name, lets_more_through(points[0], points[1], name, seconds)) for name in names)
 
 
 def _aspects(before: Row, after: Row, taken: tuple[tuple[Taken, Taken], ...]) -> tuple[tuple[str, str, str], ...]:
@@ -283,6 +308,8 @@ def _loosened(change: Change, old: m.Model, new: m.Model) -> list[str]:
         freed = [option.name for option in after.options if conditions.get(option.name) and not option.when]
         if freed:
             found.append(f"options without their condition: {', '.join(freed)}")
+        for name in [name for name, more in change.wider if more]:
+            found.append(f"some projects have the option {name} now that had not: its condition changed")
         found += further_apart(before, after)
         if _TIGHTNESS[after.fixed] > _TIGHTNESS[before.fixed]:
             found.append("was fixed at validation, is open each period")
