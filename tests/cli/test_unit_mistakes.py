@@ -78,3 +78,25 @@ def test_trial_works_no_number_out_past_a_mistake(tmp_path: Path, capsys: pytest
     assert main(["trial", written(tmp_path, "area * rate", "area * rate + spare"), *cases]) == 0
     out, err = capsys.readouterr()
     assert "6 t CO2e" in out and "dune.rulebook:10:21" in err
+
+
+@pytest.mark.parametrize(
+    "setting",
+    [
+        "setting take [t], 5 to 20, takes 10 [ha]",
+        "setting take [t], 5 to 20, by developer, takes 10 [ha]",
+        "setting take [t], takes 10 %",
+    ],
+)
+def test_a_value_that_is_taken_and_has_the_wrong_unit_is_told_once(
+    setting: str, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    path = tmp_path / "dune.rulebook"
+    path.write_text(
+        'rulebook "Dune", draft "1"\nresult total [t], rounded down to 1 [t], clause 1\n'
+        f"{setting}, clause 2\nquantity total [t], clause 3\n    = 2 * take\n",
+        encoding="utf-8",
+    )
+    assert main(["check", str(path), "--json"]) == 1
+    found = json.loads(capsys.readouterr().out)["findings"]
+    assert [each["rule"] for each in found] == ["unit-mismatch"]

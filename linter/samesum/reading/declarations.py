@@ -166,6 +166,8 @@ def resolve_setting(block: Placed, scope: Scope) -> Setting:
     nobody = "settled" in phrases and "by" not in phrases
     by = decider_of(phrases, f"the setting `{word.text}`", word, scope) if not nobody else "programme"
     takes = _taken(phrases["settled"], domain, unit, scope) if "settled" in phrases else None
+    if takes is None and "settled" in phrases:
+        takes = _some_value(domain)
     return Setting(word.text, unit or PLAIN, domain, by, about(block, phrases, scope), takes)
 
 
@@ -190,6 +192,18 @@ def _taken(phrase: tree.Phrase, domain: Domain, unit: Unit | None, scope: Scope)
         scope.report(word or phrase, says, f"write {listing(known)}", "value")
         return None
     return word.text == "yes" if isinstance(domain, YesNo) else word.text
+
+
+def _some_value(domain: Domain) -> Fraction | str | bool:
+    """A value in the place of one that could not be read: that was told, and nobody sets the value all the same."""
+    match domain:
+        case YesNo():
+            return True
+        case OneOf(values=values):
+            return values[0]
+        case Range(low=low, high=high):
+            ends = [end for end in (low, high) if end is not None]
+            return sum(ends, Fraction(0)) / len(ends) if ends else Fraction(1)
 
 
 def _domain(block: Placed, phrases: Mapping[str, tree.Phrase], unit: Unit | None, scope: Scope) -> Domain:
@@ -230,7 +244,7 @@ def resolve_judgement(block: Placed, scope: Scope) -> Judgement:
     nobody = "settled" in phrases and "by" not in phrases
     by = decider_of(phrases, f"the judgement `{word.text}`", word, scope) if not nobody else "programme"
     taken = _taken(phrases["settled"], YesNo(), None, scope) if "settled" in phrases else None
-    takes = taken if isinstance(taken, bool) else None
+    takes = (taken if isinstance(taken, bool) else True) if "settled" in phrases else None
     return Judgement(word.text, text_of(phrases, "wording"), by, about(block, phrases, scope), takes)
 
 

@@ -84,6 +84,8 @@ def _instead(phrase: tree.Phrase, kind: str, allowed: tuple[str, ...]) -> str:
         return "a fact is the same whoever reads it; declare a `setting` or a `judgement` if somebody decides it"
     if phrase.kind == "per" and kind in ("setting", "judgement", "constant", "table", "result"):
         return "only a fact or a quantity is per index"
+    if (phrase.kind, kind) in (("settled", "choice"), ("by", "choice that takes one option")):
+        return "either somebody chooses, `choice by …`, or the rulebook does, `choice takes …`"
     return f"it may have {listing([WRITTEN[each] for each in allowed], 'and')}" if allowed else "leave it out"
 
 
