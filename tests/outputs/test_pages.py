@@ -70,6 +70,23 @@ def test_a_share_is_written_alike_in_trial_register_and_report(value: float, tex
     assert f"at least {text} the reference apart" in worst_case(cast(TrialEvidence, SimpleNamespace(proof=proof)))
 
 
+@pytest.mark.parametrize(
+    ("low", "high", "texts"),
+    [
+        (0.5, 9.8, ("50 % of the reference", "980 %")),
+        (9.8, 10.0, ("9.8 times the reference", "10 times")),
+        (0.0, 12.0, ("0 times the reference", "12 times")),
+        (11.0, 1234.5, ("11 times the reference", "1,230 times")),
+        (0.5, float("inf"), ("50 % of the reference", "no bound")),
+    ],
+)
+def test_two_shares_in_one_sentence_have_one_form(low: float, high: float, texts: tuple[str, str]) -> None:
+    assert amounts.two_shares(low, high) == texts
+    proof = SimpleNamespace(low=low, high=high, unbounded="")
+    said = worst_case(cast(TrialEvidence, SimpleNamespace(proof=proof)))
+    assert f"can lie {texts[0]} apart" in said and f"at most {texts[1]} apart" in said
+
+
 def test_a_witness_has_separators_for_people_and_none_in_json() -> None:
     words = Words({"heat": "GJ"}, frozenset(), {"stock": "plot"})
     assert given("heat", Fraction(90_000), words) == "heat 90,000 GJ"

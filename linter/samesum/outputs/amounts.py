@@ -26,6 +26,16 @@ def short_share(value: float | None) -> str:
     return f"×{said.removesuffix(' times')}" if said.endswith(" times") else said
 
 
+def two_shares(first: float, second: float) -> tuple[str, str]:
+    """Two shares of the reference for one sentence, both in per cent or both in times: ``9.8 times the reference`` and
+    ``10 times``."""
+    if not any(math.isfinite(each) and abs(each) >= 10 for each in (first, second)):
+        return written.of_reference(first), share(second)
+    one, other = (f"{each:.3g}" if math.isfinite(each) else "" for each in (first, second))
+    most = f"{plain(Fraction(other))} times" if other else share(second)
+    return f"{plain(Fraction(one))} times the reference" if one else share(first), most
+
+
 def share(value: float | None) -> str:
     """``43.4 %``, ``0``; ``7 times`` from ten times on; ``not known``."""
     if value is None or math.isnan(value):

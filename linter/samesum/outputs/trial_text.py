@@ -10,7 +10,7 @@ from samesum.evidence.trial.blame import Blame
 from samesum.evidence.trial.examples import Example, described
 from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
 from samesum.evidence.trial.working import Line, in_unit
-from samesum.outputs.amounts import amount, share, short_share
+from samesum.outputs.amounts import amount, share, short_share, two_shares
 from samesum.outputs.counts import title_of
 from samesum.outputs.page import CAUTION, Page, Paper, clean, width_of
 from samesum.outputs.projects import Words, words_for
@@ -109,7 +109,8 @@ def _summary(page: Page, evidence: TrialEvidence, unit: str) -> None:
             "same number", f"{whole(sum(1 for each in known if each < 1e-12))}: one result on every route", 4, 14
         )
         middle = known[len(known) // 2]
-        page.entry("spread", f"{of_reference(middle)} in the middle, {share(known[-1])} at most", 4, 14)
+        usual, most = two_shares(middle, known[-1])
+        page.entry("spread", f"{usual} in the middle, {most} at most", 4, 14)
     order = sorted(
         (place for place in range(len(evidence)) if math.isfinite(spreads[place])), key=lambda p: (-spreads[p], p)
     )
@@ -215,8 +216,8 @@ def _proved(page: Page, evidence: TrialEvidence) -> None:
         text = "The worked example does not come out" if len(failed) == 1 else "Worked examples do not come out"
         page.paragraph(f"{text}: {listed}.", indent=4, style="bad")
     if proof.verdict != "single route" and (proof.low is not None or proof.high is not None or proof.unbounded):
-        low = of_reference(proof.low or 0.0)
-        high = "no bound was proved" if proof.high is None else f"at most {share(proof.high)}, proved by {proof.by}"
+        low, high = two_shares(proof.low or 0.0, proof.high or 0.0)
+        high = "no bound was proved" if proof.high is None else f"at most {high}, proved by {proof.by}"
         if proof.unbounded:
             high = f"there is no bound, for {proof.unbounded}"
         page.paragraph(f"Worst case over all projects: at least {low}; {high}.", indent=4)

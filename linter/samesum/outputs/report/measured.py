@@ -5,7 +5,7 @@ from __future__ import annotations
 from samesum.evidence.choosing.selection import HEADLINE, Selection
 from samesum.evidence.choosing.tally import WIDTH
 from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence
-from samesum.outputs.amounts import amount, share
+from samesum.outputs.amounts import amount, share, two_shares
 from samesum.outputs.bias_text import sentence
 from samesum.outputs.report.figures import CaseSpread, ClosingStep, Histogram
 from samesum.reviewing.measured import headline
@@ -61,7 +61,10 @@ def worst_case(trial: TrialEvidence) -> str:
         return f"{everywhere} can lie at least {low} apart; {above}."
     if proof.low == proof.high == 0:
         return f"{everywhere} are proved not to lie apart."
-    high = share(proof.high)
+    if proof.low is not None:
+        low, high = two_shares(proof.low, proof.high)
+    else:
+        high = share(proof.high)
     return f"{everywhere} can lie {low} apart, and are proved to lie at most {high} apart."
 
 
