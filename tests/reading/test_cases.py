@@ -202,6 +202,14 @@ def test_mistakes_in_tables(change: tuple[str, str], said: str, model: m.Model, 
     assert said in problems, problems
 
 
+@pytest.mark.parametrize(
+    "change", [(",120,150", ",120 t,150"), (",120,150", ",120,nan"), (",120,150", ",NA,150"), (",3,no", ",inf,no")]
+)
+def test_a_number_that_cannot_be_read_is_told_once(change: tuple[str, str], model: m.Model, tmp_path: Path) -> None:
+    _, problems = table((HEAD + ROWS).replace(*change), model, tmp_path)
+    assert len(problems) == 1 and "outside its domain" not in problems[0]
+
+
 def test_many_rows_with_one_mistake_are_summed_up(model: m.Model, tmp_path: Path) -> None:
     rows = "".join(f"P{number},120,,1,,peaty,{99 if number % 2 else 9},yes,\n" for number in range(100))
     _, problems = table(HEAD + rows, model, tmp_path)
@@ -234,8 +242,12 @@ def test_what_is_no_table_is_said(content: bytes, model: m.Model, tmp_path: Path
         path.write_bytes(content)
         columns, problems = read_columns(path, model)
         assert columns is None and problems
-    columns, problems = read_columns(tmp_path / "nowhere.parquet", model)
-    assert columns is None and problems
+    for name in ("nowhere.csv", "nowhere.parquet"):
+        columns, problems = read_columns(tmp_path / name, model)
+        assert columns is None
+        assert [(each.says, each.remedy) for each in problems] == [
+            ("there is no such file", "check the name and the folder")
+        ]
 
 
 PLAIN: dict[str, object] = {

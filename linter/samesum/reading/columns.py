@@ -45,6 +45,8 @@ def read_columns(path: Path, model: m.Model) -> tuple[Columns | None, tuple[Prob
     """The projects of a table and everything that is wrong with them; None when there is anything."""
     if path.is_dir():
         return None, (_problem(path, "this is a folder", "give the file with the projects, CSV or Parquet"),)
+    if not path.exists():
+        return None, (_problem(path, "there is no such file", "check the name and the folder"),)
     twice = _twice(path)
     if twice:
         return None, twice
@@ -56,8 +58,9 @@ def read_columns(path: Path, model: m.Model) -> tuple[Columns | None, tuple[Prob
             _problem(path, "reading CSV and Parquet needs pyarrow", "install it with samesum's extra `tables`"),
         )
     except OSError as error:
-        says = f"the file cannot be read: {error.strerror or 'it is no such file'}"
-        return None, (_problem(path, says, "check the name and that it is CSV in UTF-8, or Parquet"),)
+        why = f": {error.strerror}" if error.strerror else ""
+        says = f"the file cannot be read{why}"
+        return None, (_problem(path, says, "check that it is CSV in UTF-8, or Parquet"),)
     except ValueError:  # pyarrow's own errors about what is inside are ValueErrors; their text may hold raw bytes
         return None, (_misunderstood(path),)
     except NotImplementedError:  # a type of column that pyarrow can store and not read
@@ -234,7 +237,7 @@ class _Reader:
         has = ~np.asarray(values.is_null().to_numpy(zero_copy_only=False), dtype=bool)
         if isinstance(domain, m.Range):
             assert not isinstance(declared, m.Judgement)
-            found, has = self._numbers(declared, values, has, place)
+            found, has = self._numbers(declared, domain, values, has, place)
             numbers[id] = found
             self._inside(declared, domain, found, has, place)
         elif isinstance(domain, m.OneOf):
@@ -243,16 +246,21 @@ class _Reader:
             flags[id] = self._yes_no(declared.name, values, has, place)
         given[id] = has
 
-    def _numbers(self, declared: m.Fact | m.Setting, values: Any, has: Array, place: int) -> tuple[Array, Array]:
+    def _numbers(
+        self, declared: m.Fact | m.Setting, domain: m.Range, values: Any, has: Array, place: int
+    ) -> tuple[Array, Array]:
         import pyarrow as pa
 
+        # What could not be read is told once; a number from the domain in its place is not told a second time.
+        known_end = domain.low if domain.low is not None else domain.high
+        unread = float(known_end or 0)
         if not pa.types.is_string(values.type) and not pa.types.is_large_string(values.type):
             if pa.types.is_null(values.type):
                 return np.zeros(self.rows), has
             if pa.types.is_boolean(values.type):
                 says = f"{declared.name} is a number, and the column holds yes and no"
                 self.report(1, place, says, "write numbers")
-                return np.zeros(self.rows), has
+                return np.full(self.rows, unread), has
             found = np.asarray(values.cast(pa.float64(), safe=False).to_numpy(zero_copy_only=False), dtype=np.float64)
             finite = np.isfinite(found)
             self._told(
@@ -262,13 +270,13 @@ class _Reader:
                 "write a number, or leave the cell empty",
             )
             # a cell with nan counts as filled: it is told here, and not a second time as missing
-            return np.where(has & finite, found, 0.0), has
+            return np.where(has, np.where(finite, found, unread), 0.0), has
         texts, which = _encoded(values)
         known = np.zeros(max(1, len(texts)))
         for number, text in enumerate(texts):
             row = int(np.argmax(which == number)) + 2
             value = self.parser.read(text.strip(), declared.unit, declared.name, Span(row, place, row, place + 1))
-            known[number] = 0.0 if value is None else float(value)
+            known[number] = unread if value is None else float(value)
         self.problems += self.parser.problems
         self.parser.problems.clear()
         return np.where(has, known[np.where(has, which, 0)], 0.0), has
