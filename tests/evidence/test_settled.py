@@ -7,6 +7,10 @@ from pathlib import Path
 
 import pytest
 
+from samesum.evidence.choosing.bench import Terms
+from samesum.evidence.choosing.projects import from_batches
+from samesum.evidence.choosing.selection import select
+from samesum.evidence.given import read_given
 from samesum.evidence.routes.listing import list_routes
 from samesum.evidence.subjects.numbers import jumps
 from samesum.evidence.trial.outcome import try_out
@@ -307,3 +311,95 @@ def test_only_what_is_written_is_shown() -> None:
     assert route == (("stock", "rough and none"), ("share", "none"), ("asked", "2"))
     assert decided(evidence)["total"] == 3
     assert [each.name for each in jumps(evidence, 5.0)] == []
+
+
+PRESCRIBED = """setting share, 0 % to 20 %, by developer, takes 12 %
+setting kind, one of plain or fancy, takes fancy
+judgement way, "where so", by verifier, takes no
+quantity credits [t], clause 5
+    cases
+        when way or kind is plain
+            = amount
+        otherwise
+            = amount * (1 - share)
+"""
+
+
+@pytest.mark.parametrize(("form", "given"), [
+    ("yaml", "cases:\n  - {name: one, amount: 20, wet: no, share: 12 %, way: no, kind: fancy}\n"),
+    ("csv", "name,amount,wet,share,way,kind\none,20,no,0.12,no,fancy\n"),
+])  # fmt: skip
+def test_a_project_may_give_what_is_taken_anyway(form: str, given: str, tmp_path: Path) -> None:
+    """The file of an open draft's projects is read for the closed one; the truth is as if they had not given it."""
+    model = model_of(HEAD + PRESCRIBED)
+    path = tmp_path / f"projects.{form}"
+    path.write_text(given, encoding="utf-8")
+    found, problems = read_given(path, model)
+    assert problems == () and found is not None
+    selection = select(from_batches(model, found.batches(model)), 10, Terms(0))
+    second = next(each for each in selection.figures if each.behaviour == "second look")
+    assert second.over_issuance == pytest.approx(-0.12)  # the truth: as it is read yes
+
+
+@pytest.mark.parametrize(("form", "given", "line"), [
+    ("yaml", "cases:\n  - name: one\n    amount: 20\n    wet: no\n    share: 13 %\n    way: yes\n    kind: plain\n", 5),
+    ("csv", "name,amount,wet,share,way,kind\none,20,no,0.13,yes,plain\n", 2),
+])  # fmt: skip
+def test_a_project_that_gives_something_else_is_told_so(form: str, given: str, line: int, tmp_path: Path) -> None:
+    path = tmp_path / f"projects.{form}"
+    path.write_text(given, encoding="utf-8")
+    _, problems = read_given(path, model_of(HEAD + PRESCRIBED))
+    assert {each.says for each in problems} == {
+        "the rulebook itself takes 12 % for `share` (its line 5)",
+        "the rulebook itself takes no for `way` (its line 7)",
+        "the rulebook itself takes fancy for `kind` (its line 6)",
+    }
+    assert problems[0].span.line == line and {each.remedy for each in problems} == {"leave it out"}
+
+
+def test_a_worked_example_on_a_route_that_is_taken(tmp_path: Path) -> None:
+    path = tmp_path / "projects.yaml"
+    example = "cases:\n  - {{amount: 20, wet: no, expected: {{value: 60, route: {{stock: {}, asked: 2}}}}}}\n"
+    path.write_text(example.format("rough"), encoding="utf-8")
+    cases, problems = read_cases(path, model_of(text("takes rough")))
+    assert problems == () and cases.cases[0].expected is not None
+    assert cases.cases[0].expected.route == (("asked", "2"),)
+    for header, option in (("takes rough", "fine"), ("takes lowest value", "rough")):
+        path.write_text(example.format(option), encoding="utf-8")
+        _, problems = read_cases(path, model_of(text(header)))
+        says = f"the rulebook itself {header} at `stock`, and nobody chooses there"
+        assert [(each.says, each.remedy) for each in problems] == [(says, "leave it out of the route")]
+
+
+def test_the_lowest_of_many_that_are_open_only_sometimes() -> None:
+    """2^20 sets of options can be open together; where none is, there is a gap."""
+    facts = "".join(f"fact f{number}, yes or no, clause 1\n" for number in range(20))
+    options = "".join(f"        option o{n}, only when f{n}\n            = {n + 1} * amount\n" for n in range(20))
+    credits = f"quantity credits [t], clause 2\n    choice takes lowest value\n{options}"
+    found = evidence_of(HEAD.replace("fact wet, yes or no\n", facts) + credits)
+    assert found.counts.exact and found.counts.per_project_most == 1 and found.counts.reachable == 2**20 - 1
+    assert gaps_of(found) == ["credits"]
+
+
+def test_what_follows_the_lowest_always_has_a_branch() -> None:
+    """Also where no solver can tell which is the lowest: one of them is."""
+    found = evidence_of(
+        """rulebook "Curved", draft "1"
+result credits [t], rounded down to 1, clause 1
+fact a, 1 to 10
+quantity q, clause 2
+    choice takes lowest value
+        option x
+            = exp(a / 5) * 3
+        option y
+            = a * ln(a + 1) + a
+quantity credits [t], clause 3
+    choice follows q
+        option x
+            = 1 [t]
+        option y
+            = 2 [t]
+""",
+        5.0,
+    )
+    assert gaps_of(found) == [] and found.counts.per_project_least == 1

@@ -417,3 +417,36 @@ def test_the_command_writes_whole_files_and_only_where_asked(
     assert file.read_text(encoding="utf-8") == TIED
     assert sorted(each.name for each in tmp_path.iterdir()) == ["a.rulebook", "b.rulebook"]
     assert main(["bias", str(file), "-o", str(out)]) == 2
+
+
+CLOSED = """rulebook "Closed", draft "1"
+result credits [t CO2e]
+fact amount [t CO2e], 100 to 100
+setting share, 10 % to 20 %, by developer, takes 12 %, clause 3  # so much
+judgement odd, "odd, takes long", by verifier, takes yes
+quantity stock [t CO2e]
+    choice takes fine, errors correlated 0.2  # now
+        option rough, error 30 %
+            = amount
+        option fine, error 5 %, reference
+            = amount
+quantity credits [t CO2e]
+    cases
+        when odd
+            = stock * (1 - share)
+        otherwise
+            = stock
+"""
+
+
+def test_what_is_closed_already_can_be_closed_otherwise() -> None:
+    for closing, old, new in (
+        (Closing("mandate", "share", "13 %"), "takes 12 %", "takes 13 %"),
+        (Closing("mandate", "odd", "no"), "takes yes", "takes no"),
+        (Closing("mandate", "stock", "rough"), "takes fine", "takes rough"),
+        (Closing("lowest", "stock"), "takes fine", "takes lowest value"),
+    ):
+        assert written(CLOSED, closing).text == CLOSED.replace(old, new)
+    for kind in ("fixed", "deduct"):
+        with pytest.raises(CannotClose, match="nobody chooses at stock: the rulebook takes fine there"):
+            written(CLOSED, Closing(kind, "stock"))

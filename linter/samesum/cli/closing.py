@@ -85,15 +85,21 @@ def worked_out(reading: Reading, closing: Closing, arguments: argparse.Namespace
     from samesum.evidence.choosing.selection import HEADLINE
     from samesum.outputs.closed import find_body
     from samesum.outputs.closed_text import CannotClose
+    from samesum.reading.model import Choice
 
     assert reading.model is not None
-    find_body(reading.model, closing.id)
+    inputs = {each.name for each in reading.model.settings} | {each.name for each in reading.model.judgements}
+    if closing.id in inputs:
+        return closing  # what cannot be done with it is said where it would be written
+    body = find_body(reading.model, closing.id)[1]
+    if needs_share and isinstance(body, Choice) and body.takes:
+        return closing
     supply = supply_for(reading.model, arguments.inputs)
     if supply is None:
         raise CannotClose("the projects given could not be used")
     latitudes = {each.id: each for source in supply.sources for each in find_latitudes(source.program)}
     latitude = latitudes.get(closing.id)
-    if latitude is None or latitude.kind != "choice":
+    if latitude is None or latitude.is_input or not isinstance(body, Choice):
         raise CannotClose("it is no choice that the result depends on")
     terms = Terms(arguments.seed, arguments.price)
     if closing.kind == "lowest":

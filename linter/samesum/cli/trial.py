@@ -90,7 +90,7 @@ def _cases(graph: DecisionGraph, arguments: argparse.Namespace) -> int:
     from samesum.evidence.choosing.batches import batches_of
     from samesum.reading.cases import read_cases
 
-    cases, problems = read_cases(arguments.inputs, graph.model)
+    cases, problems = read_cases(arguments.inputs, graph.written)
     if problems:
         shared.report(problems)
         return shared.UNUSABLE
@@ -115,7 +115,7 @@ def _tables(graph: DecisionGraph, arguments: argparse.Namespace) -> int:
 
     if arguments.explain or arguments.case:
         return shared.refuse("--explain and --case need the projects in a .yaml file")
-    columns, problems = read_columns(arguments.inputs, graph.model)
+    columns, problems = read_columns(arguments.inputs, graph.written)
     if columns is None:
         shared.report(problems)
         return shared.UNUSABLE

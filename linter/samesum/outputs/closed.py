@@ -69,6 +69,8 @@ def closed(reading: Reading, closing: Closing, reader: Reader) -> Reading:
         return again(reading, _in_order(reading, body, closing), reader)
     if not isinstance(body, m.Choice):
         raise CannotClose(f"{closing.id} is no choice, and cannot be closed by `{closing.kind}`")
+    if body.takes and closing.kind in ("fixed", "deduct"):
+        raise CannotClose(f"nobody chooses at {closing.id}: the rulebook takes {body.takes} there")
     if closing.kind == "fixed":
         return again(reading, _fixed(reading, body), reader)
     if closing.kind == "deduct":
@@ -202,11 +204,21 @@ def _is_number(value: str, stands: Fraction | str | bool, setting: m.Setting) ->
     return number == stands
 
 
+_TAKES = re.compile(r",\s*takes\s+[^,]*?(?=\s*(?:,|$))")
+
+
 def _with_taken(lines: list[str], first: int, last: int, value: str) -> list[str]:
-    """A declaration with what it takes at its end; a unit behind a number gets its brackets."""
+    """A declaration with what it takes at its end, in place of what it took before; a unit behind a number gets its
+    brackets."""
     found = re.fullmatch(r"([-+]?[0-9][0-9_.]*) ?([A-Za-z][^\[\]]*)", value)
     said = f"{found[1]} [{found[2].strip()}]" if found else value
     made = list(lines[first - 1 : last])
+    for number, line in enumerate(made):
+        text = parted(line)[0]
+        before = _TAKES.search(re.sub(r'"[^"]*"', lambda quoted: "_" * len(quoted[0]), text))
+        if before is not None:
+            made[number] = f"{text[: before.start()]}, takes {said}{text[before.end() :]}{line[len(text) :]}"
+            return replaced(lines, [Replacement(first, last, tuple(made))])
     made[-1] = with_phrase(made[-1], f"takes {said}")
     return replaced(lines, [Replacement(first, last, tuple(made))])
 

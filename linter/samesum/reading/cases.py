@@ -68,7 +68,7 @@ def read_cases(path: Path, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
 
 def cases_from(tree: Node, file: str, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
     """The same from a tree that was read already."""
-    reader = _Reader(file, model, Numbers(file), branch_points(model))
+    reader = _Reader(file, model, Numbers(file), branch_points(model), _taken(model))
     found = reader.whole(tree)
     return Cases(file, tuple(found)), in_order(reader.problems)
 
@@ -120,6 +120,39 @@ def branch_points(model: m.Model) -> dict[str, tuple[str, ...]]:
         for element in range(1, sizes.get(quantity.index, 0) + 1) if quantity.index else (0,):
             inside(quantity.body, f"{quantity.name}@{element}" if quantity.index else quantity.name)
     return found
+
+
+def _taken(model: m.Model) -> dict[str, str]:
+    """What each choice takes that nobody makes, by the ids of all elements; "" for whatever else has branches."""
+    general: dict[str, str] = {}
+
+    def inside(body: m.Body, id: str) -> None:
+        general[id] = body.takes if isinstance(body, m.Choice) else ""
+        for branch in walk.branches(body):
+            inside(branch.body, f"{id}/{branch.name}")
+
+    for quantity in model.quantities:
+        inside(quantity.body, quantity.name)
+    return {id: general[re.sub(r"@\d+", "", id)] for id in branch_points(model)}
+
+
+def prescribed_for(declared: m.Setting | m.Judgement | m.Fact) -> Value | None:
+    """The value that the rulebook itself takes; None where somebody decides, or for a fact."""
+    return None if isinstance(declared, m.Fact) else declared.takes
+
+
+def prescribed_words(declared: m.Setting | m.Judgement | m.Fact) -> tuple[str, str]:
+    """What to say to whoever gives another value than the one that the rulebook takes, and what to do."""
+    takes = prescribed_for(declared)
+    if isinstance(takes, Fraction):
+        assert isinstance(declared, m.Setting)
+        domain = declared.domain
+        share = not declared.unit.text and isinstance(domain, m.Range) and domain.high is not None and domain.high <= 1
+        text = f"{as_written(100 * takes)} %" if share else f"{as_written(takes)}{_of(declared.unit)}"
+    else:
+        text = takes if isinstance(takes, str) else "yes" if takes else "no"
+    line = declared.about.span.line
+    return f"the rulebook itself takes {text} for `{declared.name}` (its line {line})", "leave it out"
 
 
 def matching(points: Mapping[str, tuple[str, ...]], id: str) -> list[str]:
@@ -177,6 +210,7 @@ class _Reader:
     model: m.Model
     parser: Numbers
     points: Mapping[str, tuple[str, ...]]
+    taken: Mapping[str, str]
     problems: list[Problem] = field(default_factory=list)
 
     def report(self, span: Span, says: str, remedy: str = "", kind: str = "value") -> None:
@@ -242,7 +276,11 @@ class _Reader:
                 self.not_declared(entry.key, tuple(declared))
             else:
                 found = self.entry(declared[key], entry, lengths)
-                if found is not None:
+                prescribed = None if isinstance(declared[key], m.Fact) else prescribed_for(declared[key])
+                if prescribed is not None and found is not None:
+                    if found != prescribed:
+                        self.prescribed(declared[key], entry)
+                elif found is not None:
                     values[key] = found
         used = used_names(self.model)
         written = {entry.key.text for entry in item}
@@ -255,6 +293,10 @@ class _Reader:
     def first(self, item: Fields) -> Span:
         entry = next(iter(item), None)
         return item.span if entry is None else entry.key.span
+
+    def prescribed(self, declared: m.Fact | m.Setting | m.Judgement, entry: Entry) -> None:
+        says, remedy = prescribed_words(declared)
+        self.report(entry.value.span, says, remedy)
 
     def not_declared(self, key: Scalar, known: tuple[str, ...]) -> None:
         others = {
@@ -382,7 +424,12 @@ class _Reader:
                 remedy = f"did you mean `{close}`?" if close else f"its branches are {listing(branches, 'and')}"
                 self.report(entry.value.span, f"`{entry.key.text}` has no branch `{branch}`", remedy, "name")
                 continue
-            found += [(point, branch) for point in points]
+            takes = self.taken.get(points[0], "")
+            if takes and takes != branch:
+                says = f"the rulebook itself takes {takes} at `{entry.key.text}`, and nobody chooses there"
+                self.report(entry.key.span, says, "leave it out of the route", "name")
+            elif not takes:
+                found += [(point, branch) for point in points]
         return found
 
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
@@ -17,7 +18,7 @@ import numpy.typing as npt
 
 from samesum.problems import Problem, in_order
 from samesum.reading import model as m
-from samesum.reading.cases import YES, Numbers, used_names
+from samesum.reading.cases import YES, Numbers, prescribed_for, prescribed_words, used_names
 from samesum.reading.numbers import as_written
 from samesum.reading.words import listing, nearest
 from samesum.spans import START, Span
@@ -168,9 +169,37 @@ class _Reader:
                 self.report(1, place, f"the column `{name}` stands here a second time", "keep one of the two", "shape")
                 continue
             self._column(declared[base], name, values, place, numbers, codes, flags, given)
+            self._prescribed(declared[base], name, place, numbers, codes, flags, given)
         sizes = self._sizes(given)
         self._missing(given, sizes)
         return Columns(self.file, names, numbers, codes, flags, given, sizes)
+
+    def _prescribed(
+        self,
+        declared: m.Fact | m.Setting | m.Judgement,
+        name: str,
+        place: int,
+        numbers: dict[str, Array],
+        codes: dict[str, Array],
+        flags: dict[str, Array],
+        given: dict[str, Array],
+    ) -> None:
+        """Takes back what the rulebook prescribes itself, and tells who gives something else."""
+        takes = prescribed_for(declared)
+        if takes is None:
+            return
+        wanted: float | int | bool
+        if isinstance(takes, Fraction):
+            column, wanted = numbers.pop(name, None), float(takes)
+        elif isinstance(takes, str):
+            assert isinstance(declared, m.Setting) and isinstance(declared.domain, m.OneOf)
+            column, wanted = codes.pop(name, None), declared.domain.values.index(takes)
+        else:
+            column, wanted = flags.pop(name, None), takes
+        has = given.pop(name, None)
+        if column is not None and has is not None:
+            says, remedy = prescribed_words(declared)
+            self._told(np.flatnonzero(has & (column != wanted)), place, lambda row: says, remedy)
 
     def _one_of_each(self, names: tuple[str, ...], place: int) -> None:
         """Reports the first project whose name another has already; projects without a name are let be."""

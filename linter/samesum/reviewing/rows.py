@@ -227,7 +227,7 @@ def _branch_point(
     row = Row(
         place=place,
         kind=kind,
-        quantity=point.quantity,
+        quantity=point.quantity.partition("/")[0],
         decides=", ".join(sorted(set(who), key=_ORDER.index)),
         fixed=fixed,
         elements=len(place.points),

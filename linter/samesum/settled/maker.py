@@ -92,7 +92,7 @@ class Maker:
                 whole = self.body(quantity, option.body, f"{id}/{option.name}")
                 inner[option.name] = whole if isinstance(whole, m.Formula) else self._apart(quantity, option, whole, id)
             return self._in_order(body, inner, body.span)
-        return self._extreme(quantity, body, self._terms(quantity, body, id))
+        return self._extreme(quantity, body, self._terms(quantity, body, id), id)
 
     def _follows(self, quantity: m.Quantity, body: m.Follows, id: str) -> m.Body:
         leading = self.choices[body.quantity]
@@ -101,10 +101,12 @@ class Maker:
         inner = {each.name: self.body(quantity, each.body, f"{id}/{each.name}") for each in body.options}
         if leader.takes not in (m.LOWEST, m.HIGHEST):
             return self._in_order(leader, inner, body.span)
-        branches = []
-        for option in leader.options:
+        branches: list[m.When] = []
+        for number, option in enumerate(leader.options, start=1):
             was = self._is_extreme(option.name, leader, leading, body.span)
-            branches.append(m.When(option.name, written(was, body.span), inner[option.name], option.span))
+            last = number == len(leader.options)  # one of them was the lowest
+            condition = None if last and branches else written(was, body.span)
+            branches.append(m.When(option.name, condition, inner[option.name], option.span))
         return settled_cases(branches, body.span)
 
     def _in_order(self, choice: m.Choice, inner: Mapping[str, m.Body], span: Span) -> m.Body:
@@ -150,12 +152,14 @@ class Maker:
         whole = m.Reference(name, "quantity", quantity.index, quantity.unit, option.span)
         return m.Formula(whole, option.span)
 
-    def _extreme(self, quantity: m.Quantity, body: m.Choice, terms: Mapping[str, m.Expression]) -> m.Body:
+    def _extreme(self, quantity: m.Quantity, body: m.Choice, terms: Mapping[str, m.Expression], id: str) -> m.Body:
         """The lowest of the options that are open. Of sets of options the larger come first: the first that is open
         altogether holds every option that is."""
         guards = {each.name: self._guard(each) for each in body.options}
         always = {name for name, guard in guards.items() if guard is True}
         sometimes = [name for name, guard in guards.items() if not isinstance(guard, bool)]
+        if len(sometimes) > MOST_SETS_OF:
+            return self._one_after_another(quantity, body, terms, id)
         branches: list[m.When] = []
         for size in range(len(sometimes), -1, -1):
             for among in combinations(sometimes, size):
@@ -170,6 +174,40 @@ class Maker:
             number = m.Formula(m.Number(Fraction(0), quantity.unit, body.span), body.span)
             branches = [m.When("1", never(body.span), number, body.span)]
         return branches[0].body if branches[0].condition is None else settled_cases(branches, body.span)
+
+    def _one_after_another(
+        self, quantity: m.Quantity, body: m.Choice, terms: Mapping[str, m.Expression], id: str
+    ) -> m.Body:
+        """The lowest where the sets of open options are too many to be told apart: each option against the lowest of
+        those before it, in quantities that nobody wrote."""
+        span = body.span
+        guards = {each.name: self._guard(each) for each in body.options}
+        always = [terms[name] for name, guard in guards.items() if guard is True]
+        sometimes = [(name, guard) for name, guard in guards.items() if not isinstance(guard, bool)]
+        before: m.Expression | None = self._one_of(quantity, body, always).expression if always else None
+        any_before: list[m.Condition] = []
+        whole: m.Body = body
+        for number, (name, guard) in enumerate(sometimes, start=1):
+            own = terms[name]
+            branches: list[m.When] = []
+            if before is not None:
+                some = None if always else m.Some(tuple(any_before), span) if len(any_before) > 1 else any_before[0]
+                both = guard if some is None else m.All((guard, some), span)
+                branches = [m.When("1", both, self._one_of(quantity, body, [before, own]), span)]
+                if some is not None:
+                    branches.append(m.When("2", guard, m.Formula(own, span), span))
+                last = "otherwise" if some is None else "3"
+                branches.append(m.When(last, some, m.Formula(before, span), span))
+            else:
+                branches = [m.When("1", guard, m.Formula(own, span), span)]
+            whole = settled_cases(branches, span)
+            any_before.append(guard)
+            if number < len(sometimes):
+                helper = f"{id}/{name}{WHERE_OPEN} or one before it"
+                about = replace(quantity.about, span=span)
+                self.made.append(m.Quantity(helper, quantity.unit, quantity.index, whole, about))
+                before = m.Reference(helper, "quantity", quantity.index, quantity.unit, span)
+        return whole
 
     def _one_of(self, quantity: m.Quantity, body: m.Choice, among: list[m.Expression]) -> m.Formula:
         function = "min" if body.takes == m.LOWEST else "max"
@@ -263,6 +301,8 @@ def settled_cases(branches: Sequence[m.When], span: Span) -> m.Cases:
     return m.Cases(True, tuple(branches), span, settled=True)
 
 
+MOST_SETS_OF = 5
+"""Up to so many options that are open only sometimes, what can be open together is told apart, which reads better."""
 WHERE_OPEN = " where open"
 """Behind the name of a quantity that nobody wrote: what an option gives where it is open."""
 

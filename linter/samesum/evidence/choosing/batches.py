@@ -66,7 +66,7 @@ def batches_of_columns(model: m.Model, columns: Columns) -> list[Batch]:
 
 
 def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
-    model = plan.graph.model
+    model = plan.graph.written  # what the rulebook prescribes itself stands as the reference has it, too
     numbers: dict[str, Array] = {}
     codes: dict[str, Array] = {}
     flags: dict[str, Array] = {}
@@ -79,7 +79,7 @@ def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
             id = f"{each.name}@{element}" if index else each.name
             given = columns.given[id][places] if id in columns.given else np.zeros(len(places), dtype=bool)
             if not isinstance(each, m.Fact):
-                free[id] = ~given
+                free[id] = ~given if each.takes is None else np.zeros(len(places), dtype=bool)
             if isinstance(domain, m.Range):
                 known = columns.numbers[id][places] if id in columns.numbers else np.zeros(len(places))
                 numbers[id] = np.where(given, known, float(middle(domain)))
@@ -95,7 +95,7 @@ def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
 def rows_of(plan: Plan, cases: Sequence[Case]) -> Rows:
     """The inputs of projects of one size. What nobody gives stands as the reference has it: a setting half-way, its
     first name or yes, a judgement yes; and is marked free."""
-    model = plan.graph.model
+    model = plan.graph.written  # what the rulebook prescribes itself stands as the reference has it, too
     numbers: dict[str, Array] = {}
     codes: dict[str, Array] = {}
     flags: dict[str, Array] = {}
@@ -108,7 +108,7 @@ def rows_of(plan: Plan, cases: Sequence[Case]) -> Rows:
             id = f"{each.name}@{element}" if index else each.name
             given = [_value(case, each.name, element) for case in cases]
             if not isinstance(each, m.Fact):
-                free[id] = np.array([value is None for value in given])
+                free[id] = np.array([value is None and each.takes is None for value in given])
             if isinstance(domain, m.Range):
                 usual = middle(domain)
                 numbers[id] = np.array([float(usual if value is None else Fraction(value)) for value in given])

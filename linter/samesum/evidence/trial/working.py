@@ -11,6 +11,7 @@ from samesum.evidence.subjects.pointwise import Calculation, NoValue
 from samesum.graph import DecisionGraph, Element, instance_id
 from samesum.reading import model as m
 from samesum.reading import walk
+from samesum.settled.maker import WHERE_OPEN
 from samesum.written import percent, plain
 
 MOST_TERMS = 6
@@ -102,7 +103,7 @@ def _visit(
         branch = walk.branches(body)[taken]
         where = f"{point_id}: {branch.name}"
         asked = walk.condition_of(branch)
-        if asked is not None:
+        if asked is not None and not _unwritten(asked, instance.elements, graph):
             where += f" ({wording.condition(asked, instance.elements)}{_but(calculation, asked, instance.elements)})"
         branches.append(where)
         body, path = branch.body, (*path, branch.name)
@@ -117,8 +118,14 @@ def _visit(
             numbers = wording.numbers(body.expression, instance.elements)
         except NoValue:
             trouble = "the calculation has no value here"
-    lines.append(Line(id, quantity.unit, quantity.about.clause, tuple(branches), formula, numbers, value, trouble))
+    if WHERE_OPEN not in quantity.name:
+        lines.append(Line(id, quantity.unit, quantity.about.clause, tuple(branches), formula, numbers, value, trouble))
     return value
+
+
+def _unwritten(asked: m.Condition, elements: Element, graph: DecisionGraph) -> bool:
+    """Whether a condition asks which option was the lowest, in words that nobody wrote."""
+    return any("/" in id for id in _needed(asked, elements, graph))
 
 
 def _but(calculation: Calculation, asked: m.Condition, elements: Element) -> str:
