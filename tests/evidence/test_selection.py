@@ -13,6 +13,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 
+from samesum.cli.main import main
 from samesum.evidence.choosing.batches import batches_of
 from samesum.evidence.choosing.bench import Terms, draw_errors
 from samesum.evidence.choosing.closed_forms import Noise, indifferent, pick_of_all, second_look
@@ -440,3 +441,24 @@ def test_the_cheapest_option_for_all_has_its_closed_form() -> None:
         .replace("cost 1000 [USD]", "cost dear")
     )
     assert figure(simulate(now_one_now_the_other).figures, "mandated", "cheapest").closed_form is None
+
+
+def test_what_is_taken_has_no_value(tmp_path: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    """The true credits are there; what is issued has none, and the gap is what has to be mended."""
+    path = tmp_path / "gap.rulebook"
+    path.write_text(
+        """rulebook "Gap", draft "1"
+result credits [t]
+fact amount [t], 10 to 100
+setting way, one of plain or fancy, takes fancy
+table factor by way, source "Table 1"
+    plain = 1
+quantity credits [t]
+    = amount * factor(way)
+""",
+        encoding="utf-8",
+    )
+    assert main(["bias", str(path), "--projects", "100"]) == 2
+    assert (
+        "no project has a result with what the rulebook takes; `samesum check` names the gap" in capsys.readouterr().err
+    )

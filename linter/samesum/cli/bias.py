@@ -83,11 +83,8 @@ def run(arguments: argparse.Namespace) -> int:
         selection = simulated(supply, arguments)
     except (CannotDraw, Unplannable) as trouble:
         return shared.refuse(f"{arguments.file}: {trouble}")
-    except NothingTrue:
-        return shared.refuse(
-            f"{arguments.file}: all projects together have no true credits above zero, so that nothing can be measured "
-            "against them; give projects with --inputs"
-        )
+    except NothingTrue as trouble:
+        return shared.refuse(f"{arguments.file}: {trouble}")
     routes = {}
     if arguments.routes:
         from samesum.cli.closing import routes_left

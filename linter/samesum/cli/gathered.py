@@ -158,6 +158,6 @@ def _simulated(
         return select(supply, projects, Terms(seed), cores())
     except CannotDraw as trouble:
         notes.append(f"over-issuance is left out: {trouble}")
-    except NothingTrue:
-        notes.append("over-issuance is left out: all projects together have no true credits above zero")
+    except NothingTrue as trouble:
+        notes.append(f"over-issuance is left out: {trouble}")
     return None

@@ -133,6 +133,13 @@ class Selection:
         return tuple(sorted(self.found, key=lambda each: (-each.per_thousand, each.latitude.id)))
 
 
+NO_TRUE_CREDITS = (
+    "all projects together have no true credits above zero, so that nothing can be measured against them; "
+    "give projects with --inputs"
+)
+NO_RESULT = "no project has a result with what the rulebook takes; `samesum check` names the gap"
+
+
 class NothingTrue(Exception):
     """The true credits of all projects together are not above zero, so that nothing can be measured against them."""
 
@@ -171,7 +178,8 @@ def select(
             progress(done, projects)
     everything = sums.tallies.get((WHOLE, MANDATED, "reference"))
     if everything is None or not everything.t > 0:
-        raise NothingTrue
+        nowhere = everything is not None and not everything.projects
+        raise NothingTrue(NO_RESULT if nowhere else NO_TRUE_CREDITS)
     rows = _Rows(sums, latitudes, terms.join)
     deductions: Mapping[tuple[str, str], Deduction] = {}
     if closures:
