@@ -168,8 +168,9 @@ class _Reader:
             if name in given:
                 self.report(1, place, f"the column `{name}` stands here a second time", "keep one of the two", "shape")
                 continue
+            before = len(self.problems)
             self._column(declared[base], name, values, place, numbers, codes, flags, given)
-            self._prescribed(declared[base], name, place, numbers, codes, flags, given)
+            self._prescribed(declared[base], name, place, numbers, codes, flags, given, len(self.problems) == before)
         sizes = self._sizes(given)
         self._missing(given, sizes)
         return Columns(self.file, names, numbers, codes, flags, given, sizes)
@@ -183,8 +184,9 @@ class _Reader:
         codes: dict[str, Array],
         flags: dict[str, Array],
         given: dict[str, Array],
+        readable: bool,
     ) -> None:
-        """Takes back what the rulebook prescribes itself, and tells who gives something else."""
+        """Takes back what the rulebook prescribes itself, and tells who gives something else, where it is readable."""
         takes = prescribed_for(declared)
         if takes is None:
             return
@@ -197,7 +199,7 @@ class _Reader:
         else:
             column, wanted = flags.pop(name, None), takes
         has = given.pop(name, None)
-        if column is not None and has is not None:
+        if column is not None and has is not None and readable:
             says, remedy = prescribed_words(declared)
             self._told(np.flatnonzero(has & (column != wanted)), place, lambda row: says, remedy)
 
