@@ -16,6 +16,7 @@ from samesum.evidence.evidence import Evidence
 from samesum.evidence.gather import gather
 from samesum.evidence.trial.outcome import Explained, TrialEvidence, explained, try_out
 from samesum.evidence.trial.plan import make_plan
+from samesum.evidence.trial.unbounded import AT_ZERO
 from samesum.evidence.trial.ways import further_apart
 from samesum.graph import DecisionGraph, build
 from samesum.reading.cases import Case, Cases, read_cases
@@ -126,10 +127,17 @@ def test_half_a_percent_is_within_one_percent_and_not_within_a_tenth(name: str, 
 
 
 def assert_shown(found: TrialEvidence) -> None:
-    """The witness, replayed as a case, has the spread it claims, on the routes it names."""
+    """The witness, replayed as a case, has the spread it claims, on the routes it names; or results that lie apart at
+    a reference of zero."""
     witness = found.proof.witness
-    assert witness is not None and witness.spread is not None and found.proof.low is not None
+    assert witness is not None and found.proof.low is not None
     again = try_out(found.graph, [Case("again", witness.values, None, START)], 20.0).case(0)
+    if found.proof.unbounded == AT_ZERO:
+        assert again.lowest is not None and again.highest is not None and again.reference is not None
+        assert witness.spread is None and again.reference.value == pytest.approx(0, abs=1e-9 * again.highest.value)
+        assert again.lowest.value < again.highest.value
+        return
+    assert witness.spread is not None
     given = witness.case != ""
     if not given:
         assert again.spread == pytest.approx(witness.spread, rel=1e-9)

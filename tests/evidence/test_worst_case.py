@@ -10,7 +10,7 @@ import pytest
 
 from samesum.evidence.trial.bracket import CLOSE, proved_worst
 from samesum.evidence.trial.figures import figures_of
-from samesum.evidence.trial.outcome import TrialEvidence, try_out
+from samesum.evidence.trial.outcome import CaseTrial, TrialEvidence, try_out
 from samesum.evidence.trial.plan import make_plan
 from samesum.evidence.trial.proof import Proof
 from samesum.evidence.trial.unbounded import AT_ZERO, THROUGH_ZERO
@@ -128,11 +128,102 @@ def test_the_bound_is_the_bound_and_not_the_tolerance() -> None:
 
 @pytest.mark.parametrize(
     ("reference", "why"),
-    [("x - 1", AT_ZERO), ("max(0, x - 1.5)", AT_ZERO), ("x - 1.35", THROUGH_ZERO)],
+    [
+        ("x - 1", AT_ZERO),
+        ("max(0, x - 1.5)", AT_ZERO),
+        # a zero at a number of few digits, and one at none (√2, √3)
+        ("x - 1.35", AT_ZERO),
+        ("x * x - 2", THROUGH_ZERO),
+        ("sqrt(x) - 3 ^ 0.25", THROUGH_ZERO),
+        # zero where two facts drawn apart meet
+        ("max(0, x - 1.99993)", AT_ZERO),
+        # a zero that is touched, and not gone through
+        ("(x - 1.35) ^ 2 / (1 + x)", AT_ZERO),
+        ("abs(x - 1.37)", AT_ZERO),
+    ],
 )
 def test_where_the_reference_can_be_zero_there_is_no_bound(reference: str, why: str) -> None:
     proof = proof_of("fact x, 1 to 2\n" + choice("y", reference, "x"))
     assert proof.high is None and proof.unbounded == why
+    shown = at_witness(proof, choice("y", reference, "x"))
+    assert shown.reference is not None and shown.lowest is not None and shown.highest is not None
+    assert abs(shown.reference.value) <= 1e-9 and shown.highest.value - shown.lowest.value >= 1
+
+
+def at_witness(proof: Proof, body: str) -> CaseTrial:
+    """The project that the proof names, tried out again."""
+    assert proof.witness is not None
+    case = Case("again", proof.witness.values, None, START)
+    return try_out(graph_of("fact x, 1 to 2\n" + body), [case], 10.0).case(0)
+
+
+def test_a_setting_whose_middle_gives_a_reference_of_zero() -> None:
+    # the reference takes s half-way (5): (a − 5)² / 6, zero at a = 5, where s = 0 gives 25
+    proof = proof_of("fact a, 1 to 10\nsetting s, 0 to 10, by developer\nquantity y\n    = (a - s) ^ 2 / (1 + s)\n")
+    assert proof.unbounded == AT_ZERO
+    assert proof.witness is not None and proof.witness.values["a"] == 5
+
+
+@pytest.mark.parametrize(
+    "other",
+    [
+        # √a·√a is a, give or take the rounding of floats: where the reference is zero the other is zero as well
+        "1.1 * max(0, a - 5) + (sqrt(a) * sqrt(a) - a)",
+        "1.1 * max(0, a - 5) + 1000000 * (sqrt(a) * sqrt(a) - a)",
+        "1.1 * max(0, a - 5) + (exp(ln(a)) - a)",
+    ],
+)
+def test_the_rounding_of_floats_is_no_difference_at_a_reference_of_zero(other: str) -> None:
+    proof = proof_of("fact a, 1 to 10\n" + choice("y", "max(0, a - 5)", other))
+    assert proof.unbounded == "" and proof.low == pytest.approx(0.1, rel=1e-5)
+
+
+def test_a_reference_that_jumps_over_zero_from_near_to_near_has_a_bound() -> None:
+    # 10⁻¹⁰ or −10⁻¹⁰, the other result 1 further: 10¹⁰, far, and no further
+    body = (
+        "fact x, 1 to 2\nquantity y\n    = step + extra\n"
+        "quantity step\n    cases\n        when x < 1.5\n            = -0.0000000001\n        when x >= 1.5\n"
+        "            = 0.0000000001\n"
+    )
+    proof = proof_of(body + choice("extra", "0 * x", "1"))
+    assert proof.unbounded == "" and proof.low == pytest.approx(1e10)
+
+
+def test_the_widest_spread_between_the_projects_drawn_is_climbed_to() -> None:
+    # a / (a² + 1) is highest at 1: 1/2; the fact has no bounds
+    proof = proof_of("fact a\n" + choice("y", "a * a + 1", "a * a + 1 + a"))
+    assert proof.low == pytest.approx(0.5, rel=1e-9)
+    assert proof.witness is not None and abs(Fraction(str(proof.witness.values["a"]))) == 1
+
+
+def test_an_overlap_on_a_line_that_two_facts_make_is_tried() -> None:
+    # Both branches are open where a + b = 2 alone: 1 and 1 + 9·a·b, which is most at a = b = 1.
+    # The first is the reference: 9.
+    body = (
+        "fact a, 0 to 4\nfact b, -1 to 3\nsetting s, 0 to 1, by developer\nquantity y\n    cases\n"
+        "        when a + b <= 2\n            = exp(0 * s)\n        when a + b >= 2\n"
+        "            = exp(0 * s) + 9 * max(0, a * b)\n"
+    )
+    proof = proof_of(body)
+    # away from the line a project has one result
+    assert proof.low == pytest.approx(9, rel=1e-6)
+
+
+def test_a_condition_that_keeps_the_reference_from_zero_is_gone_up_to() -> None:
+    # 1 / (a − b), at most where a − b is 1/1000
+    body = "fact a, 1 to 10\nfact b, 1 to 10\napplies when a >= b + 0.001\n"
+    proof = proof_of(body + choice("y", "a - b", "a - b + 1"))
+    assert proof.unbounded == "" and proof.low == pytest.approx(1000, rel=1e-6)
+
+
+def test_where_no_project_has_a_result_that_is_what_is_said() -> None:
+    body = "fact a, 1 to 10\ntable rate by x\n    up to 0.5 = 1\nquantity y\n    = rate(a) * a\n"
+    proof = proof_of(body)
+    assert proof.verdict == "gap" and proof.says == "no project has a result"
+    assert (proof.low, proof.high, proof.unbounded, proof.witness) == (None, None, "", None)
+    # one that has: 0.5 itself
+    proof = proof_of(body.replace("1 to 10", "0.5 to 10"))
+    assert proof.says != "no project has a result"
 
 
 def test_a_reference_that_jumps_over_zero_has_a_bound() -> None:

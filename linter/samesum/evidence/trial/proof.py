@@ -10,13 +10,15 @@ from fractions import Fraction
 from typing import TYPE_CHECKING, Literal
 
 from samesum.evidence.routes.conditions import Gap
+from samesum.evidence.trial.bounds import Ranges, domain_boxes
 from samesum.evidence.trial.bracket import CLOSE, proved_worst, sizes_below
 from samesum.evidence.trial.deviation import Deviations
 from samesum.evidence.trial.figures import Figures, codes_of
 from samesum.evidence.trial.plan import Plan, Unplannable, make_plan, resized
-from samesum.evidence.trial.unbounded import NEAR_ZERO, NEXT_TO_ZERO, no_bound
+from samesum.evidence.trial.projects import values_of
+from samesum.evidence.trial.unbounded import no_bound
 from samesum.evidence.trial.ways import further_apart
-from samesum.evidence.trial.worst import Worst, project_at, project_of, values_of, widest, worst_at, worst_case_of
+from samesum.evidence.trial.worst import Worst, project_at, project_of, wider, widest, worst_at, worst_case_of
 from samesum.graph import DecisionGraph
 from samesum.written import of_reference
 
@@ -31,10 +33,10 @@ Verdict = Literal["single route", "same number", "within tolerance", "agrees on 
 
 @dataclass(frozen=True, slots=True)
 class Proof:
-    """``low`` is reached by ``witness``; ``high`` is proved, None where no bound was. ``by`` says how it was proved,
-    ``unbounded`` why there can be no bound, where that is known.
-    ``gaps``: branch points at which some project has no result. ``harmless``: overlaps proved to give one number
-    (branch point, branches)."""
+    """``low`` is reached by ``witness`` (surpassed where its reference is zero, so that it has no spread); ``high`` is
+    proved, None where no bound was. ``by`` says how it was proved, ``unbounded`` why there can be no bound, where that
+    is known. ``gaps``: branch points at which some project has no result. ``harmless``: overlaps proved to give one
+    number (branch point, branches)."""
 
     verdict: Verdict
     says: str
@@ -76,15 +78,31 @@ def prove(
     settled = _single_route(evidence, stuck)
     if settled:
         return Proof("single route", settled, 0.0, 0.0, "counting", None, (), harmless, ())
+    if _without_results(plan):
+        says = "no project has a result"
+        return Proof("gap", says, None, None, "", None, evidence.conditions.gaps, harmless, stuck)
     overlapping = frozenset(overlap.branch_point for overlap in evidence.conditions.overlaps) | {
         each.branch_point for each in evidence.conditions.undecided if each.asks == "overlap"
     }
     high, by = _upper(plan, overlapping, tolerance, deadline)
     worst = _lower(plan, figures, names, at, high, tolerance, deadline)
-    high, by, worst, unbounded = _closer(plan, high, by, worst, deadline)
+    low, high, by, worst, unbounded = _closer(plan, high, by, worst, deadline)
     case = worst_case_of(figures, names)
     given = None if case is None else (case[0], case[1])
-    return _verdict(evidence, stuck, tolerance, high, by, worst, harmless, bool(len(names)), given, unbounded)
+    return _verdict(evidence, stuck, tolerance, low, high, by, worst, harmless, bool(len(names)), given, unbounded)
+
+
+def _without_results(plan: Plan) -> bool:
+    """Whether it is proved that no project has a result, whatever its size."""
+    if not _is_empty(plan):
+        return False
+    smaller = _smaller(plan)
+    return smaller is not None and all(_is_empty(each) for each in smaller)
+
+
+def _is_empty(plan: Plan) -> bool:
+    value = Ranges(plan, domain_boxes(plan)).number(plan.root).value
+    return bool(value.low[0] > value.high[0])
 
 
 def _single_route(evidence: Evidence, stuck: Sequence[str]) -> str:
@@ -167,27 +185,29 @@ def _loose(plan: Plan) -> frozenset[str]:
 
 def _closer(
     plan: Plan, high: float | None, by: str, worst: Worst | None, deadline: float
-) -> tuple[float | None, str, Worst | None, str]:
-    """Both ends of the worst case nearer to each other: the bound, by what, the widest spread found, and why there is
-    no bound where there is none."""
-    low = 0.0 if worst is None or worst.spread is None else worst.spread
-    if high is not None and high <= low * (1 + CLOSE):
-        return high, by, worst, ""
+) -> tuple[float | None, float | None, str, Worst | None, str]:
+    """Both ends of the worst case nearer to each other: the widest spread found, the bound, by what, the project that
+    shows it, and why there is no bound where there is none. A project that shows that there is none has no spread
+    where its reference is zero; it lies further apart than the widest spread found all the same."""
+    low = None if worst is None else worst.spread
+    if high is not None and high <= (low or 0.0) * (1 + CLOSE):
+        return low, high, by, worst, ""
     if high is None:
-        none = no_bound(plan)
+        none = no_bound(plan, time.monotonic() + (deadline - time.monotonic()) / 3)
         if none is not None:
-            return None, "", worst if low else worst_at(plan, none.project), none.why
+            shown = worst_at(plan, none.project)
+            return (low if shown.spread is None else shown.spread), None, "", shown, none.why
     smaller = _smaller(plan)
-    if smaller is None:
-        return high, by, worst, ""
-    proved, shown = proved_worst((plan, *smaller), low, deadline)
-    if shown is not None:
-        worst = shown
-    if proved is not None and (high is None or proved < high):
-        high, by = proved, INTERVALS
-    if high is None and worst is not None and worst.spread is not None and worst.spread > NEAR_ZERO:
-        return None, "", worst, NEXT_TO_ZERO
-    return high, by, worst, ""
+    if smaller is not None:
+        until = time.monotonic() + (deadline - time.monotonic()) * 2 / 3
+        proved, found = proved_worst((plan, *smaller), low or 0.0, until)
+        worst = worst if found is None else found
+        if proved is not None and (high is None or proved < high):
+            high, by = proved, INTERVALS
+    low = None if worst is None else worst.spread
+    if high is None or high > (low or 0.0) * (1 + CLOSE):
+        worst = wider(plan, worst, deadline) or worst
+    return None if worst is None else worst.spread, high, by, worst, ""
 
 
 def _lower(
@@ -232,6 +252,7 @@ def _verdict(
     evidence: Evidence,
     stuck: tuple[str, ...],
     tolerance: Fraction,
+    low: float | None,
     high: float | None,
     by: str,
     worst: Worst | None,
@@ -241,7 +262,6 @@ def _verdict(
     unbounded: str,
 ) -> Proof:
     gaps = evidence.conditions.gaps
-    low = worst.spread if worst is not None else None
     if high is not None and low is not None:
         # what rounding of floats makes of two equal numbers is no difference
         low = 0.0 if high == 0.0 or low < 1e-12 else min(low, high)
@@ -250,12 +270,12 @@ def _verdict(
     def made(verdict: Verdict, says: str) -> Proof:
         return Proof(verdict, says, low, high, by, witness, gaps, harmless, stuck, unbounded)
 
-    if low is not None and low > tolerance:
-        if given is not None and given[0] > max(float(tolerance), 1e-12):
-            return made("differs", f"the results of {given[1]} lie {of_reference(given[0])} apart")
-        return made("differs", f"a project was found whose results lie {of_reference(low)} apart")
-    if unbounded and not low:
+    if given is not None and given[0] > max(float(tolerance), 1e-12):
+        return made("differs", f"the results of {given[1]} lie {of_reference(given[0])} apart")
+    if unbounded and (worst is None or worst.spread is None):
         return made("differs", "a project was found whose reference result is zero and whose results lie apart")
+    if low is not None and low > tolerance:
+        return made("differs", f"a project was found whose results lie {of_reference(low)} apart")
     if gaps or stuck or (evidence.counts.exact and evidence.counts.per_project_least == 0):
         places = ", ".join(dict.fromkeys(gap.branch_point for gap in gaps))
         return made("gap", f"some project has no result at {places}" if places else "some project has no result")

@@ -13,24 +13,25 @@ from fractions import Fraction
 
 import numpy as np
 
-from samesum.evidence.choosing.batches import middle, rows_of
 from samesum.evidence.routes.witness import Value, usual
 from samesum.evidence.trial.arrays import Array
+from samesum.evidence.trial.climbing import MOST_MOVES, climbed
 from samesum.evidence.trial.extremes import Extremes, find_extremes, find_range
 from samesum.evidence.trial.figures import Figures, reference_of, spread_of
 from samesum.evidence.trial.plan import Plan
+from samesum.evidence.trial.projects import Project, clipped, reach, rows_at, values_of
+from samesum.evidence.trial.turning import at_turns
 from samesum.evidence.trial.values import Rows, TooMany
 from samesum.reading import model as m
-from samesum.reading.cases import Case
-from samesum.spans import START
 
 SEED = 20_06
 DRAWN = 96
 ROUNDS = 14
 MUTANTS = 64
-WIDE = Fraction(1000)  # how far to look where a fact has no bound
-
-Project = dict[str, Value]
+CLIMBED = 3
+SMALL = 1e-6  # of the usual reference
+NO_WIDER = 1e-9  # more of a spread than was known is the same
+CERTAIN = Fraction(1, 10**6)  # how much of a spread may be the rounding of floats
 
 
 @dataclass(frozen=True, slots=True)
@@ -67,6 +68,70 @@ def widest(plan: Plan, deadline: float, seed: int = SEED) -> Worst:
     return worst_at(plan, best[1])
 
 
+def wider(plan: Plan, start: Worst | None, deadline: float) -> Worst | None:
+    """A wider spread than ``start`` has, looked for where the plan turns and by climbing from the best projects; None
+    where none is found. Its spread is certain, for next to a reference of zero floats are not to be believed."""
+    from samesum.evidence.trial.certain import ends_of
+
+    projects = drawn(plan, random.Random(SEED))
+    if start is not None and start.spread is not None:
+        known = _project_of(plan, start.values)
+        projects += [known] if known is not None else []
+    least = _small(plan, projects)
+
+    def score(tried: Sequence[Project]) -> Array:
+        try:
+            return _spread_of(plan, tried, least)
+        except TooMany:
+            return np.full(len(tried), np.nan)
+
+    def order(tried: Sequence[Project]) -> list[Project]:
+        scores = np.nan_to_num(score(tried), nan=-1.0)
+        return [tried[place] for place in np.argsort(-scores, kind="stable").tolist() if scores[place] >= 0]
+
+    most = MOST_MOVES
+    if any(setting.name in plan.numeric for setting in plan.graph.model.settings):
+        most //= 4  # the extremes over a setting are much work
+    starts = order(projects)[:CLIMBED]
+    if time.monotonic() > deadline:
+        return None
+    starts = order([*starts, *at_turns(plan, starts)[:most]])[:CLIMBED]
+    found = [climbed(plan, each, score, deadline, most) for each in starts]
+    known_spread = -1.0 if start is None or start.spread is None else start.spread
+    for spread, project in sorted(
+        [*found, *zip(score(starts).tolist(), starts, strict=True)], key=lambda each: -each[0]
+    ):
+        if not spread > known_spread * (1 + NO_WIDER):
+            break
+        ends = ends_of(plan, project)
+        if ends is not None and ends.spread is not None and ends.spread >= Fraction(spread) * (1 - CERTAIN):
+            return worst_at(plan, project)
+    return None
+
+
+def _project_of(plan: Plan, values: Mapping[str, Value | tuple[Value, ...]]) -> Project | None:
+    """A project of full size from its values by name; None where it has another size."""
+    project: Project = {}
+    for fact in plan.graph.model.facts:
+        value = values.get(fact.name)
+        if isinstance(value, tuple):
+            project.update({f"{fact.name}@{number}": each for number, each in enumerate(value, 1)})
+            if len(value) != plan.graph.sizes.get(fact.index, 0):
+                return None
+        elif value is not None:
+            project[fact.name] = value
+        else:
+            return None
+    return project
+
+
+def _small(plan: Plan, projects: Sequence[Project]) -> float:
+    """What a reference has to be at least, so that the rounding of floats is nothing beside it."""
+    sizes = np.abs(reference_of(plan, rows_at(plan, projects)).value)
+    sizes = sizes[np.isfinite(sizes) & (sizes > 0)]
+    return SMALL * float(np.median(sizes)) if len(sizes) else 0.0
+
+
 def worst_at(plan: Plan, project: Project) -> Worst:
     """The spread of one project, with the routes that give its ends."""
     from samesum.evidence.trial.figures import codes_of
@@ -98,18 +163,6 @@ def worst_case_of(figures: Sequence[Figures], names: Sequence[str]) -> tuple[flo
     return best
 
 
-def values_of(plan: Plan, project: Project) -> dict[str, Value | tuple[Value, ...]]:
-    """A project as a case gives it: lists for facts per index."""
-    found: dict[str, Value | tuple[Value, ...]] = {}
-    for fact in plan.graph.model.facts:
-        if fact.index:
-            size = plan.graph.sizes.get(fact.index, 0)
-            found[fact.name] = tuple(project[f"{fact.name}@{element}"] for element in range(1, size + 1))
-        else:
-            found[fact.name] = project[fact.name]
-    return found
-
-
 def project_at(plan: Plan, rows: Rows, row: int) -> Project:
     """The facts of one row, by id; numbers as the shortest decimals that are these floats."""
     project: Project = {}
@@ -135,7 +188,7 @@ def project_of(plan: Plan, numbers: Mapping[str, Fraction], names: Mapping[str, 
             id = f"{fact.name}@{element}" if fact.index else fact.name
             value = usual(fact.domain)
             if id in numbers and isinstance(fact.domain, m.Range):
-                value = _clipped(numbers[id], fact.domain)
+                value = clipped(numbers[id], fact.domain)
             elif id in names:
                 code = names[id]
                 value = plan.named[id][code] if id in plan.named else bool(code)
@@ -143,30 +196,29 @@ def project_of(plan: Plan, numbers: Mapping[str, Fraction], names: Mapping[str, 
     return project
 
 
-def _clipped(value: Fraction, domain: m.Range) -> Fraction:
-    low = value if domain.low is None else max(value, domain.low)
-    return low if domain.high is None else min(low, domain.high)
-
-
 def _spreads(plan: Plan, projects: Sequence[Project]) -> tuple[Extremes, Array]:
-    cases = [Case("", values_of(plan, project), None, START) for project in projects]
-    rows = rows_of(plan, cases)
+    rows = rows_at(plan, projects)
     extremes = find_extremes(plan, rows)
     return extremes, spread_of(extremes, reference_of(plan, rows))
 
 
 def _tried(plan: Plan, projects: Sequence[Project]) -> tuple[float, Project] | None:
-    rows = rows_of(plan, [Case("", values_of(plan, project), None, START) for project in projects])
     try:
-        low, high = find_range(plan, rows, frozenset())
+        spread = _spread_of(plan, projects, 0.0)
     except TooMany:
         return None
-    size = np.abs(reference_of(plan, rows).value)
-    with np.errstate(all="ignore"):
-        spread = (high - low) / np.where(size > 0, size, np.nan)
     known = np.where(np.isfinite(spread), spread, -1.0)
     place = int(np.argmax(known))
     return (float(known[place]), projects[place]) if known[place] >= 0 else None
+
+
+def _spread_of(plan: Plan, projects: Sequence[Project], least: float) -> Array:
+    """The spread of each project; NaN where its reference is not above ``least``."""
+    rows = rows_at(plan, projects)
+    low, high = find_range(plan, rows, frozenset())
+    size = np.abs(reference_of(plan, rows).value)
+    with np.errstate(all="ignore"):
+        return np.asarray((high - low) / np.where(size > least, size, np.nan))
 
 
 def _marks(plan: Plan) -> dict[str, list[Fraction]]:
@@ -209,9 +261,7 @@ def _value(domain: m.Domain, draw: random.Random, marks: Sequence[Fraction], nea
         return domain.values[draw.randrange(len(domain.values))]
     if isinstance(domain, m.YesNo):
         return draw.random() < 0.5
-    centre = middle(domain)
-    low = domain.low if domain.low is not None else min(centre, Fraction(0)) - WIDE
-    high = domain.high if domain.high is not None else max(centre, Fraction(0)) + WIDE
+    low, high = reach(domain)
     way = draw.random()
     if way < 0.2:
         return low
