@@ -16,6 +16,7 @@ from samesum.problems import Problem, in_order
 from samesum.reading import model as m
 from samesum.reading import walk
 from samesum.reading.numbers import as_written, exact
+from samesum.reading.prescribed import prescribed_for, prescribed_words, taken_at
 from samesum.reading.units import UnitMistake, UnitTable, load_units, read_unit, same_dimension
 from samesum.reading.words import listing, nearest
 from samesum.reading.yaml_text import Entry, Fields, Listing, Node, Scalar, read_yaml
@@ -68,7 +69,7 @@ def read_cases(path: Path, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
 
 def cases_from(tree: Node, file: str, model: m.Model) -> tuple[Cases, tuple[Problem, ...]]:
     """The same from a tree that was read already."""
-    reader = _Reader(file, model, Numbers(file), branch_points(model), _taken(model))
+    reader = _Reader(file, model, Numbers(file), branch_points(model), taken_at(model, branch_points(model)))
     found = reader.whole(tree)
     return Cases(file, tuple(found)), in_order(reader.problems)
 
@@ -120,39 +121,6 @@ def branch_points(model: m.Model) -> dict[str, tuple[str, ...]]:
         for element in range(1, sizes.get(quantity.index, 0) + 1) if quantity.index else (0,):
             inside(quantity.body, f"{quantity.name}@{element}" if quantity.index else quantity.name)
     return found
-
-
-def _taken(model: m.Model) -> dict[str, str]:
-    """What each choice takes that nobody makes, by the ids of all elements; "" for whatever else has branches."""
-    general: dict[str, str] = {}
-
-    def inside(body: m.Body, id: str) -> None:
-        general[id] = body.takes if isinstance(body, m.Choice) else ""
-        for branch in walk.branches(body):
-            inside(branch.body, f"{id}/{branch.name}")
-
-    for quantity in model.quantities:
-        inside(quantity.body, quantity.name)
-    return {id: general[re.sub(r"@\d+", "", id)] for id in branch_points(model)}
-
-
-def prescribed_for(declared: m.Setting | m.Judgement | m.Fact) -> Value | None:
-    """The value that the rulebook itself takes; None where somebody decides, or for a fact."""
-    return None if isinstance(declared, m.Fact) else declared.takes
-
-
-def prescribed_words(declared: m.Setting | m.Judgement | m.Fact) -> tuple[str, str]:
-    """What to say to whoever gives another value than the one that the rulebook takes, and what to do."""
-    takes = prescribed_for(declared)
-    if isinstance(takes, Fraction):
-        assert isinstance(declared, m.Setting)
-        domain = declared.domain
-        share = not declared.unit.text and isinstance(domain, m.Range) and domain.high is not None and domain.high <= 1
-        text = f"{as_written(100 * takes)} %" if share else f"{as_written(takes)}{_of(declared.unit)}"
-    else:
-        text = takes if isinstance(takes, str) else "yes" if takes else "no"
-    line = declared.about.span.line
-    return f"the rulebook itself takes {text} for `{declared.name}` (its line {line})", "leave it out"
 
 
 def matching(points: Mapping[str, tuple[str, ...]], id: str) -> list[str]:

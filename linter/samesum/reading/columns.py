@@ -9,7 +9,6 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
-from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
@@ -18,8 +17,9 @@ import numpy.typing as npt
 
 from samesum.problems import Problem, in_order
 from samesum.reading import model as m
-from samesum.reading.cases import YES, Numbers, prescribed_for, prescribed_words, used_names
+from samesum.reading.cases import YES, Numbers, used_names
 from samesum.reading.numbers import as_written
+from samesum.reading.prescribed import prescribed_for, prescribed_words
 from samesum.reading.words import listing, nearest
 from samesum.spans import START, Span
 
@@ -170,38 +170,13 @@ class _Reader:
                 continue
             before = len(self.problems)
             self._column(declared[base], name, values, place, numbers, codes, flags, given)
-            self._prescribed(declared[base], name, place, numbers, codes, flags, given, len(self.problems) == before)
+            differs = taken_back(declared[base], name, numbers, codes, flags, given)
+            if differs is not None and len(self.problems) == before:
+                says, remedy = prescribed_words(declared[base])
+                self._told(np.flatnonzero(differs), place, lambda row, says=says: says, remedy)
         sizes = self._sizes(given)
         self._missing(given, sizes)
         return Columns(self.file, names, numbers, codes, flags, given, sizes)
-
-    def _prescribed(
-        self,
-        declared: m.Fact | m.Setting | m.Judgement,
-        name: str,
-        place: int,
-        numbers: dict[str, Array],
-        codes: dict[str, Array],
-        flags: dict[str, Array],
-        given: dict[str, Array],
-        readable: bool,
-    ) -> None:
-        """Takes back what the rulebook prescribes itself, and tells who gives something else, where it is readable."""
-        takes = prescribed_for(declared)
-        if takes is None:
-            return
-        wanted: float | int | bool
-        if isinstance(takes, Fraction):
-            column, wanted = numbers.pop(name, None), float(takes)
-        elif isinstance(takes, str):
-            assert isinstance(declared, m.Setting) and isinstance(declared.domain, m.OneOf)
-            column, wanted = codes.pop(name, None), declared.domain.values.index(takes)
-        else:
-            column, wanted = flags.pop(name, None), takes
-        has = given.pop(name, None)
-        if column is not None and has is not None and readable:
-            says, remedy = prescribed_words(declared)
-            self._told(np.flatnonzero(has & (column != wanted)), place, lambda row: says, remedy)
 
     def _one_of_each(self, names: tuple[str, ...], place: int) -> None:
         """Reports the first project whose name another has already; projects without a name are let be."""
@@ -413,6 +388,27 @@ class _Reader:
                 self._told(
                     np.flatnonzero(~given[id]), 1, lambda row, n=fact.name: f"the fact {n} is missing", "fill the cell"
                 )
+
+
+def taken_back(
+    declared: m.Fact | m.Setting | m.Judgement,
+    name: str,
+    numbers: dict[str, Array],
+    codes: dict[str, Array],
+    flags: dict[str, Array],
+    given: dict[str, Array],
+) -> Array | None:
+    """Takes a column back that the rulebook prescribes itself. Where it gives something else; None for others."""
+    takes = prescribed_for(declared)
+    if takes is None or name not in given:
+        return None
+    has = given.pop(name)
+    if isinstance(takes, bool):
+        return np.asarray(has & (flags.pop(name) != takes))
+    if isinstance(takes, str):
+        assert isinstance(declared, m.Setting) and isinstance(declared.domain, m.OneOf)
+        return np.asarray(has & (codes.pop(name) != declared.domain.values.index(takes)))
+    return np.asarray(has & (numbers.pop(name) != float(takes)))
 
 
 def _is_plain(kind: Any) -> bool:
