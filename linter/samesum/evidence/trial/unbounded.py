@@ -7,6 +7,7 @@ nearest to zero. Floats only propose them; a zero and a difference are worked ou
 from __future__ import annotations
 
 import random
+import time
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
@@ -66,6 +67,8 @@ def no_bound(plan: Plan, deadline: float) -> NoBound | None:
         zero = _at_zero_of(plan, list(_shorter(plan, last[0])))
         if zero is not None:
             return zero
+    if time.monotonic() > deadline:
+        return through
     order = [place for place in np.argsort(np.abs(reference), kind="stable").tolist() if apart[place] > 0]
     near = [projects[place] for place in order[:DESCENTS]]
     zero = _at_zero_of(plan, at_turns(plan, near[:1] + projects[:MOST_AT_TURNS]))

@@ -73,6 +73,8 @@ def wider(plan: Plan, start: Worst | None, deadline: float) -> Worst | None:
     where none is found. Its spread is certain, for next to a reference of zero floats are not to be believed."""
     from samesum.evidence.trial.certain import ends_of
 
+    if time.monotonic() > deadline:
+        return None
     projects = drawn(plan, random.Random(SEED))
     if start is not None and start.spread is not None:
         known = _project_of(plan, start.values)
