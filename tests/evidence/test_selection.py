@@ -17,6 +17,7 @@ from samesum.cli.main import main
 from samesum.evidence.choosing.batches import batches_of
 from samesum.evidence.choosing.bench import Terms, draw_errors
 from samesum.evidence.choosing.closed_forms import Noise, indifferent, pick_of_all, second_look
+from samesum.evidence.choosing.over_issuing import over_issuing
 from samesum.evidence.choosing.programs import make_program
 from samesum.evidence.choosing.projects import (
     BLOCK,
@@ -462,3 +463,19 @@ quantity credits [t]
     assert (
         "no project has a result with what the rulebook takes; `samesum check` names the gap" in capsys.readouterr().err
     )
+
+
+def test_a_written_deduction_is_held_against_the_truth() -> None:
+    """What it was solved for is gone: the place over-issues nothing, and `check` asks for no second deduction."""
+    text = either_or([(0, 0.3, 0), (0, 0.1, 1)])
+    share = second_look(Noise(0, 0.3), Noise(0, 0.1)).over_issuance
+    share = share / (1 + share)
+    deducted = text.replace(
+        "quantity stock", f"constant less = {100 * share:.6f} %, not in reference\nquantity stock"
+    ).replace("            = amount", "            = amount * (1 - less)")
+    one = found(simulate(deducted), "stock")
+    assert abs(one.per_thousand) < 4 * one.per_thousand_error and one.per_thousand_error > 0
+    [told] = over_issuing(model_of(deducted))
+    assert told.value is not None and told.error is not None and abs(told.value) < 4 * told.error
+    [told] = over_issuing(model_of(text))
+    assert told.value is not None and told.value > 0.1

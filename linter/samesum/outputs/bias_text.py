@@ -41,7 +41,11 @@ def bias_text(selection: Selection, paper: Paper, routes: Routes | None = None) 
     _over_periods(page, selection)
     page.heading("Where it comes from")
     _ranking(page, selection)
-    closable = [each for each in selection.ranking if each.closures and abs(each.per_thousand) >= 0.05]
+    closable = [
+        each
+        for each in selection.ranking
+        if each.closures and (abs(each.per_thousand) >= 0.05 or _beyond(each) not in ("0.0", "–"))
+    ]
     if closable:
         page.heading("What closing a branch point leaves")
         for found in closable[:MOST_CLOSED]:
@@ -72,7 +76,7 @@ def sentence(selection: Selection) -> str:
         f"{_tonnes(1000 + 1000 * mandated.over_issuance)} t when all have to use the reference"
     )
     first = acting[0]
-    if first.per_thousand >= 0.05:
+    if first.per_thousand >= max(0.05, 2 * first.per_thousand_error):
         said += f"; most comes from {_name(first.latitude)}, {_tonnes(first.per_thousand)} t by itself"
     return said + "."
 
@@ -256,10 +260,35 @@ def _ranking(page: Page, selection: Selection) -> None:
         page.paragraph("Nobody decides anything that moves the result.")
         return
     page.paragraph(
-        "Tonnes over-issued for 1,000 true by a second look, each by itself with everything else on its reference."
+        "Tonnes over-issued for 1,000 true by a second look, each by itself with everything else on its reference. Of "
+        "the whole, above, only what the developer decides is part."
     )
+    page.paragraph(_held_true(selection))
     titles = ("t", "±", "if all is picked", "branch point", "clause", "what", "who decides")
     page.lines += table_lines(titles, rows, page.paper, numbers=titles[:3])
+
+
+def _held_true(selection: Selection) -> str:
+    """What counts as the truth, of all that is decided here: nobody should have to guess it."""
+    kinds = {each.latitude.kind for each in selection.found}
+    said = []
+    if "choice" in kinds:
+        said.append("of a choice its reference, else the option with the lowest stated error, else the first")
+    if "overlap" in kinds:
+        said.append("of branches that overlap the first")
+    if "setting" in kinds:
+        said.append("of a free value the middle of its domain")
+    if "judgement" in kinds:
+        said.append("of a judgement yes")
+    return f"Taken as true: {'; '.join(said)}." if said else ""
+
+
+def _reference(found: Found) -> float:
+    """What is over-issued when everybody takes the reference."""
+    latitude = found.latitude
+    name = latitude.candidates[latitude.reference] if latitude.kind != "overlap" else "in order"
+    figures = (each for each in found.figures if each.behaviour == "mandated" and each.option == name)
+    return next((each.over_issuance for each in figures), 0.0)
 
 
 def _beyond(found: Found) -> str:
@@ -267,7 +296,10 @@ def _beyond(found: Found) -> str:
     picked = _of(found.figures, "pick of all")
     if picked is None:
         return "–"
-    tonnes = 1000 * picked.difference
+    exact = picked.closed_form is not None and not found.latitude.withheld
+    tonnes = 1000 * (picked.over_issuance - _reference(found) if exact else picked.difference)
+    if found.latitude.withheld:
+        tonnes = 1000 * picked.over_issuance
     return f"{tonnes:+,.1f}" if abs(tonnes) >= 0.05 else "0.0"
 
 

@@ -60,7 +60,9 @@ def over_issuing(model: m.Model) -> Iterator[OverIssuing]:
         reference = one.credited(dict.fromkeys(one.points, latitude.reference))
         looked = one.credited({id: second_look(offer) for id, (offer, _) in offers(one).items()})
         found = tally(looked, bench.truth, reference)
-        if found.t > 0:
+        if found.t > 0 and latitude.withheld:
+            yield OverIssuing(latitude.id, latitude.by, found.over_issuance, found.standard_error)
+        elif found.t > 0:
             yield OverIssuing(latitude.id, latitude.by, found.difference, found.difference_error)
         else:
             yield _unknown(latitude)

@@ -309,7 +309,10 @@ class _Rows:
         reference = latitude.candidates[latitude.reference] if latitude.kind != "overlap" else "in order"
         mandated = next((each for each in figures if each.behaviour == MANDATED and each.option == reference), None)
         more = error = 0.0
-        if headline is not None and mandated is not None:
+        if headline is not None and latitude.withheld:
+            # A deduction against this choice lowers the reference as well: what it leaves is held against the truth.
+            more, error = headline.over_issuance, headline.standard_error
+        elif headline is not None and mandated is not None:
             exact = headline.closed_form is not None and mandated.closed_form is not None
             more = headline.over_issuance - mandated.over_issuance if exact else headline.difference
             error = headline.standard_error if exact else headline.difference_error
