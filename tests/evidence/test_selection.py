@@ -468,8 +468,10 @@ quantity credits [t]
 def test_a_written_deduction_is_held_against_the_truth() -> None:
     """What it was solved for is gone: the place over-issues nothing, and `check` asks for no second deduction."""
     text = either_or([(0, 0.3, 0), (0, 0.1, 1)])
-    share = second_look(Noise(0, 0.3), Noise(0, 0.1)).over_issuance
-    share = share / (1 + share)
+    closures = found(simulate(text, closures=True), "stock").closures
+    [closure] = (each for each in closures if each.kind == "deduct" and each.behaviour == "second look")
+    assert closure.percent is not None and closure.percent.value > 0.05
+    share = closure.percent.value
     deducted = text.replace(
         "quantity stock", f"constant less = {100 * share:.6f} %, not in reference\nquantity stock"
     ).replace("            = amount", "            = amount * (1 - less)")

@@ -121,7 +121,10 @@ def _gathered(
     else:
         reading = read_file(Path(name))
     projects = arguments.projects if inputs else 0
-    asked = gathered.Wanted(inputs[0] if inputs else None, arguments.seconds, projects, arguments.seed, record=False)
+    cases = inputs[0] if inputs else None
+    more = "" if len(arguments.inputs) == 2 else "; --inputs may be given twice, once for OLD and once for NEW"
+    told = f"{cases}, as read for {name}{more}:"
+    asked = gathered.Wanted(cases, arguments.seconds, projects, arguments.seed, record=False, reading=told)
     return gathered.registered(reading, Path(name.rpartition(":")[2]), asked)
 
 

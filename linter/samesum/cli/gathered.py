@@ -28,13 +28,15 @@ UNASKED_UP_TO = 300
 @dataclass(frozen=True, slots=True)
 class Wanted:
     """What is to be gathered. ``inputs`` is the file of cases; ``projects`` to simulate, 0 for none, None for the usual
-    number where that takes a few seconds; ``record`` whether decisions are read; ``seconds`` bounds each analysis."""
+    number where that takes a few seconds; ``record`` whether decisions are read; ``seconds`` bounds each analysis.
+    ``reading``: a line that goes before what is wrong with the cases, "" for none."""
 
     inputs: Path | None
     seconds: float
     projects: int | None = None
     seed: int = 0
     record: bool = True
+    reading: str = ""
 
 
 @dataclass(frozen=True, slots=True)
@@ -115,7 +117,7 @@ def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
     trial = selection = given = None
     try:
         if asked.inputs is not None:
-            given = _projects_given(asked.inputs, evidence.model)
+            given = _projects_given(asked.inputs, evidence.model, asked.reading)
             if given is None:
                 return None
             batches, names, cases = given
@@ -133,12 +135,17 @@ def _tried(examined: Examined, asked: Wanted) -> tuple[Tried, list[str]] | None:
     return Tried(trial, selection), notes
 
 
-def _projects_given(inputs: Path, model: Model) -> tuple[Sequence[Batch], Sequence[str], Sequence[Case]] | None:
-    """The projects of a file of cases or of a table; None when there are mistakes in it, which are then said."""
+def _projects_given(
+    inputs: Path, model: Model, reading: str
+) -> tuple[Sequence[Batch], Sequence[str], Sequence[Case]] | None:
+    """The projects of a file of cases or of a table; None when there are mistakes in it, which are then said, under
+    the line ``reading``."""
     from samesum.evidence.given import read_given
 
     given, problems = read_given(inputs, model)
     if given is None:
+        if reading:
+            shared.report_line(reading)
         shared.report(problems)
         return None
     return given.batches(model), given.names, given.cases

@@ -15,7 +15,8 @@ from pathlib import Path
 from samesum.problems import Problem, in_order
 from samesum.reading import model as m
 from samesum.reading import walk
-from samesum.reading.numbers import as_written, exact
+from samesum.reading.domains import domain_words, in_percent, lies_inside, unit_behind
+from samesum.reading.numbers import as_written, exact, without_comma
 from samesum.reading.prescribed import prescribed_for, prescribed_words, taken_at
 from samesum.reading.units import UnitMistake, UnitTable, load_units, read_unit, same_dimension
 from samesum.reading.words import listing, nearest
@@ -28,6 +29,7 @@ Value = Fraction | str | bool
 _NUMBER = re.compile(
     r"([+-]?(?:\d[\d_]*(?:\.\d[\d_]*)?|\.\d[\d_]*)(?:[eE][+-]?\d+)?)(?:\s*/\s*(\d+))?\s*(.*)", re.DOTALL
 )
+_WITH_COMMA = re.compile(r"([+-]?\d[\d_]*),(\d[\d_.]*(?:,\d{3})*)(?![\d,]).*", re.DOTALL)
 YES = {"yes": True, "true": True, "no": False, "false": False}
 
 
@@ -144,10 +146,14 @@ class Numbers:
 
     def read(self, text: str, unit: m.Unit, name: str, span: Span) -> Fraction | None:
         """The number in ``unit``, converted from the unit written behind it, if one is."""
+        comma = _WITH_COMMA.fullmatch(text)
+        if comma is not None:
+            self.report(span, f"{name}: a number has no comma", without_comma(comma[1], comma[2]))
+            return None
         found = _NUMBER.fullmatch(text)
         value = exact(found[1].removeprefix("+").removeprefix("-")) if found else None
         if found is None or value is None:
-            self.report(span, f"{name}: `{text}` is no number", f"write a number, as in `{name}: 12{_of(unit)}`")
+            self.report(span, f"{name}: `{text}` is no number", f"write a number, as in `{name}: 12{unit_behind(unit)}`")
             return None
         if found[1].startswith("-"):
             value = -value
@@ -330,9 +336,12 @@ class _Reader:
             return None
         assert not isinstance(declared, m.Judgement)
         number = self.number(text, declared.unit, declared.name, node.span)
-        if number is not None and not _inside(number, domain):
-            says = f"{declared.name} is {as_written(number)}{_of(declared.unit)}, outside its domain"
-            self.report(node.span, says, f"the rulebook says {_domain(domain, declared.unit)}")
+        if number is not None and not lies_inside(number, domain):
+            says = f"{declared.name} is {as_written(number)}{unit_behind(declared.unit)}, outside its domain"
+            remedy = f"the rulebook says {domain_words(domain, declared.unit)}"
+            if in_percent(domain, declared.unit) and "%" not in text and lies_inside(number / 100, domain):
+                remedy += f"; write `{as_written(number)} %`"
+            self.report(node.span, says, remedy)
             return None
         return number
 
@@ -382,7 +391,7 @@ class _Reader:
             points = matching(self.points, entry.key.text)
             if not points:
                 close = nearest(entry.key.text, self.points)
-                remedy = f"did you mean `{close}`?" if close else "`samesum count` lists the branch points"
+                remedy = f"did you mean `{close}`?" if close else "`samesum register --all` lists the branch points"
                 self.report(entry.key.span, f"`{entry.key.text}` is no branch point", remedy, "name")
                 continue
             branches = self.points[points[0]]
@@ -399,17 +408,3 @@ class _Reader:
             elif not takes:
                 found += [(point, branch) for point in points]
         return found
-
-
-def _inside(value: Fraction, domain: m.Range) -> bool:
-    return (domain.low is None or value >= domain.low) and (domain.high is None or value <= domain.high)
-
-
-def _of(unit: m.Unit) -> str:
-    return f" {unit.text}" if unit.text else ""
-
-
-def _domain(domain: m.Range, unit: m.Unit) -> str:
-    low = "any number" if domain.low is None else as_written(domain.low)
-    high = "any number" if domain.high is None else as_written(domain.high)
-    return f"{low} to {high}{_of(unit)}"

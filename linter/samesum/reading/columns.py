@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass, field
+from fractions import Fraction
 from pathlib import Path
 from typing import Any
 
@@ -18,7 +19,7 @@ import numpy.typing as npt
 from samesum.problems import Problem, in_order
 from samesum.reading import model as m
 from samesum.reading.cases import YES, Numbers, used_names
-from samesum.reading.numbers import as_written
+from samesum.reading.domains import domain_words, in_percent, lies_inside
 from samesum.reading.prescribed import prescribed_for, prescribed_words
 from samesum.reading.words import listing, nearest
 from samesum.spans import START, Span
@@ -294,10 +295,11 @@ class _Reader:
         if domain.high is not None:
             wrong |= found > float(domain.high)
         rows = np.flatnonzero(wrong & has)
-        low = "any number" if domain.low is None else as_written(domain.low)
-        high = "any number" if domain.high is None else as_written(domain.high)
-        self._told(rows, place, lambda row: f"{declared.name} is {found[row]:g}, outside its domain",
-                   f"the rulebook says {low} to {high} {declared.unit.text}".rstrip())  # fmt: skip
+        remedy = f"the rulebook says {domain_words(domain, declared.unit)}"
+        exact = [Fraction(f"{value:.15g}") / 100 for value in found[rows[:MOST_TOLD]].tolist()]
+        if in_percent(domain, declared.unit) and all(lies_inside(value, domain) for value in exact):
+            remedy += "; write % behind the number"
+        self._told(rows, place, lambda row: f"{declared.name} is {found[row]:g}, outside its domain", remedy)
 
     def _told(self, rows: Array, place: int, says: Any, remedy: str) -> None:
         for row in rows[:MOST_TOLD].tolist():

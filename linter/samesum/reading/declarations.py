@@ -211,10 +211,12 @@ def _domain(block: Placed, phrases: Mapping[str, tree.Phrase], unit: Unit | None
     if "range" in phrases:
         phrase = phrases["range"]
         low, high = (in_unit(number, unit, scope) for number in phrase.numbers)
+        share = any(number.percent for number in phrase.numbers)
         if low is not None and high is not None and low > high:
-            scope.report(phrase, "the domain ends below its start", "write the smaller number first", "value")
+            remedy = _unit_at_both_ends(phrase, unit, scope) or "write the smaller number first"
+            scope.report(phrase, "the domain ends below its start", remedy, "value")
             return Range(None, None)
-        return Range(low, high)
+        return Range(low, high, share)
     if "yes_no" in phrases or "one_of" in phrases:
         for word in units:
             scope.report(word, "only numbers have a unit", "leave the unit out", "unit")
@@ -231,6 +233,20 @@ def _domain(block: Placed, phrases: Mapping[str, tree.Phrase], unit: Unit | None
             values[word.text] = None
         return OneOf(tuple(values))
     return Range(None, None)
+
+
+def _unit_at_both_ends(phrase: tree.Phrase, unit: Unit | None, scope: Scope) -> str:
+    """What to write for ``5 to 10 %``, where the % or the unit is meant of both ends; "" for any other range."""
+    first, second = phrase.numbers
+    if first.percent or first.unit is not None or not (second.percent or second.unit is not None):
+        return ""
+    meant = in_unit(replace(first, percent=second.percent, unit=second.unit), unit, scope)
+    high = in_unit(second, unit, scope)
+    if meant is None or high is None or meant > high:
+        return ""
+    behind = "%" if second.unit is None else f"[{second.unit.text}]"
+    ends = [f"{'-' if each.negative else ''}{each.text} {behind}" for each in (first, second)]
+    return f"write `{' to '.join(ends)}`"
 
 
 def resolve_judgement(block: Placed, scope: Scope) -> Judgement:

@@ -8,6 +8,7 @@ from __future__ import annotations
 
 import re
 
+from samesum.reading.numbers import without_comma
 from samesum.reading.sight import Mistake, Sight
 from samesum.reading.words import DECIDERS, DECLARATIONS, RESERVED, listing
 
@@ -55,7 +56,7 @@ def comparison_in_words(sight: Sight) -> Mistake | None:
 def _with_signs(found: re.Match[str]) -> str:
     parts = found.groupdict()
     if "low" in parts:
-        return f"{parts['low']} <= {parts['left']} <= {parts['high']}"
+        return f"{_in_the_unit_of(parts['low'], parts['high'])} <= {parts['left']} <= {parts['high']}"
     if "more" not in parts:
         sign = "<>" if parts["no"] else "="
     else:
@@ -103,21 +104,24 @@ def several_clauses(sight: Sight) -> Mistake | None:
 
 
 def number_with_comma(sight: Sight) -> Mistake | None:
-    """``20,000`` and ``0,5``, whether the parser stops at the comma or behind it."""
-    if sight.found == "COMMA" and re.search(r"[0-9]\Z", sight.before):
-        head = re.search(r"[0-9_]+\Z", sight.before)
-        number = _WITH_COMMA.match(sight.before + sight.rest, head.start()) if head is not None else None
-    elif "TO" in sight.expected:
+    """``20,000`` and ``0,5``, whether the parser stops at the comma, behind it or behind the whole number."""
+    number = None
+    head = re.search(r"[0-9_]+,?\Z", sight.before)
+    if head is not None and sight.found == ("NUMBER" if head[0].endswith(",") else "COMMA"):
+        number = _WITH_COMMA.match(sight.before + sight.rest, head.start())
+    if number is None and "TO" in sight.expected:
         number = re.search(_WITH_COMMA.pattern + r"\s*(?:%|\[[^\]]*\]|\s)*\Z", sight.before)
-    else:
-        number = None
     if number is None:
         return None
-    thousands = re.fullmatch(r"[0-9]{3}(?:,[0-9]{3})*(?:\.[0-9]+)?", number[2]) is not None and number[1] != "0"
-    write = number[1] + ("_" if thousands else ".") + number[2].replace(",", "_")
-    remedy = f"write `{write}`" + ("" if thousands else ", with a point")
     start = sight.line_start + number.start()
-    return Mistake(start, start + len(f"{number[1]},{number[2]}"), "a number has no comma", remedy)
+    end = start + len(f"{number[1]},{number[2]}")
+    return Mistake(start, end, "a number has no comma", without_comma(number[1], number[2]))
+
+
+def _in_the_unit_of(low: str, high: str) -> str:
+    """The lower end of a range with the % or unit that is written behind the upper end only."""
+    behind = re.search(r"%|\[[^\]]*\]", high)
+    return f"{low} {behind[0]}" if behind is not None and re.fullmatch(r"-?[0-9][0-9_.eE+-]*", low) else low
 
 
 def range_otherwise(sight: Sight) -> Mistake | None:
@@ -128,11 +132,11 @@ def range_otherwise(sight: Sight) -> Mistake | None:
     if low is not None and high is not None and in_domain:
         start = sight.line_start + low.start()
         says = "a range is written with `to`"
-        return Mistake(start, sight.at + high.end(), says, f"write `{low[1]} to {high[1]}`")
+        return Mistake(start, sight.at + high.end(), says, f"write `{_in_the_unit_of(low[1].strip(), high[1])} to {high[1]}`")
     words = re.match(rf"(?:from|between)\s+({_NUMBER})\s*(?:to|and|[-–—])\s*({_NUMBER})", sight.rest)
     if words is not None and "NUMBER" in sight.expected and "ONE" in sight.expected:
         says = f"`{sight.text}` is not said of a range"
-        return Mistake(sight.at, sight.at + words.end(), says, f"write `{words[1]} to {words[2]}`")
+        return Mistake(sight.at, sight.at + words.end(), says, f"write `{_in_the_unit_of(words[1].strip(), words[2])} to {words[2]}`")
     if sight.text in ("true", "false") and "YES" in sight.expected and "ONE" in sight.expected:
         return sight.here(f"`{sight.text}` is no word of the language", "write `yes or no`")
     return None

@@ -11,7 +11,7 @@ looks at a unit again.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from fractions import Fraction
 from typing import Literal
 
@@ -300,10 +300,12 @@ Body = Formula | Cases | Choice | Follows | Unknown
 
 @dataclass(frozen=True, slots=True)
 class Range:
-    """``LOW to HIGH``, both included, in the declared unit; None where there is no bound."""
+    """``LOW to HIGH``, both included, in the declared unit; None where there is no bound. ``share``: written in %,
+    which is for messages only and changes nothing of what the domain is."""
 
     low: Fraction | None
     high: Fraction | None
+    share: bool = field(default=False, compare=False, repr=False)
 
 
 @dataclass(frozen=True, slots=True)

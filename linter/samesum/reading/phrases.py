@@ -8,6 +8,7 @@ from fractions import Fraction
 from samesum.reading import tree
 from samesum.reading.model import Decider, Unit
 from samesum.reading.scope import Scope
+from samesum.reading.numbers import as_written
 from samesum.reading.units import conversion, same_dimension
 from samesum.reading.words import DECIDERS, listing, nearest
 
@@ -172,6 +173,20 @@ def errors_of(phrases: Mapping[str, tree.Phrase], scope: Scope) -> tuple[Fractio
             scope.report(phrases["error"], "an error is not negative", "write how much it scatters, as in `error 8 %`",
                          "value")  # fmt: skip
             error = None
+        error = _share(error, "an error", phrases["error"], scope)
     if "bias" in phrases:
         bias = plain_number(phrases["bias"].numbers[0], "a bias", scope)
+        bias = _share(bias, "a bias", phrases["bias"], scope)
     return error, bias
+
+
+def _share(value: Fraction | None, what: str, phrase: tree.Phrase, scope: Scope) -> Fraction | None:
+    """The value; None, with a problem noted, where its % was surely forgotten: 2 or more (200 %) without one."""
+    literal = phrase.numbers[0]
+    if value is None or literal.percent or abs(value) < 2:
+        return value
+    number = f"{'-' if literal.negative else ''}{literal.text}"
+    hundred = value * 100
+    percent = f"{hundred.numerator:,}" if hundred.denominator == 1 else as_written(hundred)
+    scope.report(phrase, f"{what} of {number} is {percent} %", f"write `{phrase.kind} {number} %`", "value")
+    return None

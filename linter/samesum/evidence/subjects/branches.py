@@ -126,7 +126,7 @@ def _options(point: BranchPoint, costs: Calculation) -> dict[str, AttributeValue
 def _cheap_and_dear(
     point: BranchPoint, options: Sequence[m.Option], calculation: Calculation
 ) -> tuple[m.Option, m.Option] | None:
-    """An option that costs less (for a project in the middle of its domains) and errs more than another: the
+    """An option that costs less (for a project near the middle of its domains) and errs more than another: the
     pair with the widest gap in error."""
     elements = calculation.graph.instances[point.instance].elements
     known: list[tuple[m.Option, Fraction, Fraction]] = []

@@ -1,7 +1,7 @@
 """Jumps: where a number changes at once because a project crosses a threshold.
 
 Every comparison in ``cases``, and every border between two bands of a table, is looked up at its threshold:
-one fact is moved there, everything else stays in the middle of its domain, choices take their reference
+one fact is moved there, everything else stays near the middle of its domain, choices take their reference
 option. The number is taken as the limit from either side, exactly. All elements of a fact per index move
 together, as in a project with one of them.
 """

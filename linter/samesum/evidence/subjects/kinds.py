@@ -100,6 +100,7 @@ KINDS: Mapping[str, Mapping[str, AttributeKind]] = MappingProxyType(
             "has_cost": YES,
             "other_has_error": YES,
             "other_has_cost": YES,
+            "lacking": TEXT,  # the figures that it does not state and another does: `no cost`
             "is_reference": YES,
             "conditional": YES,
             "reaches_result": YES,

@@ -48,7 +48,17 @@ def branches(evidence: Evidence, workshop: Workshop) -> Iterator[Subject]:
                 "conditional": walk.condition_of(branch) is not None,
                 "reaches_result": True if point.quantity in used else False if whole else CANNOT_TELL,
             }
+            attributes["lacking"] = _lacking(
+                not errors[number] and attributes["other_has_error"] is True,
+                not costs[number] and attributes["other_has_cost"] is True,
+            )
             yield Subject("branch", id, branch.name, branch.span, point.clause, attributes)
+
+
+def _lacking(error: bool, cost: bool) -> str:
+    if error and cost:
+        return "neither an error nor a cost"
+    return "no error" if error else "no cost" if cost else ""
 
 
 def equal_branches(evidence: Evidence, workshop: Workshop) -> Iterator[Subject]:

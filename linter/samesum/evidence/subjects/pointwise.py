@@ -18,12 +18,14 @@ from samesum.evidence.routes.witness import Value, usual
 from samesum.graph import BranchPoint, DecisionGraph, Element, instance_id
 from samesum.reading import model as m
 from samesum.reading import walk
+from samesum.written import percent, plain
 
 MOST_BITS = 20_000
 
 
 class NoValue(Exception):
-    """There is no number here: no branch open, no row, a division by zero, or a part that could not be read."""
+    """There is no number here: no branch open, no row, a division by zero, or a part that could not be read.
+    Its text says which, in a clause for people, where that is known."""
 
 
 @dataclass(slots=True)
@@ -36,7 +38,7 @@ class Decisions:
 
 
 def middle_project(graph: DecisionGraph) -> dict[str, Value]:
-    """A project in the middle of every domain, by name and element; every judgement read as yes."""
+    """A project near the middle of every domain, by name and element; every judgement read as yes."""
     values: dict[str, Value] = {}
     for fact in graph.model.facts:
         value = usual(fact.domain)
@@ -160,7 +162,7 @@ class Calculation:
             elif condition is None or self.holds(condition, elements):
                 open_ones.append(number)
         if not open_ones:
-            raise NoValue
+            raise NoValue(f"no branch of `{point.id}` is open" if point.is_written else "")
         if isinstance(point.body, m.Choice):
             return preferred(point.body.options, open_ones)
         return open_ones[0]
@@ -296,7 +298,16 @@ class Calculation:
         for number, row in enumerate(table.rows):
             if all(_answers(label, each) for label, each in zip(row.labels, given, strict=True)):
                 return number
-        raise NoValue
+        asked = ", ".join(_asked(key, each) for key, each in zip(table.keys, given, strict=True))
+        raise NoValue(f"the table `{table.name}` has no row for {asked}")
+
+
+def _asked(key: m.Key, given: str | Fraction) -> str:
+    """``water 80 cm``, ``soil clay``."""
+    if isinstance(given, str):
+        return f"{key.name} {given}"
+    number = f"{plain(given)} {key.unit.text}" if key.unit.text else percent(given) if abs(given) < 1 else plain(given)
+    return f"{key.name} {number}"
 
 
 def _answers(label: str | m.Band, given: str | Fraction) -> bool:
@@ -317,7 +328,7 @@ def _arithmetic(operator: str, a: Fraction, b: Fraction) -> Fraction:
             return a * b
         case "/":
             if b == 0:
-                raise NoValue
+                raise NoValue("it divides by zero")
             return a / b
     return _power(a, b)
 

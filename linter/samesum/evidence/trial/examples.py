@@ -13,6 +13,7 @@ from samesum.evidence.routes.witness import Value
 from samesum.evidence.trial.deciding import decision
 from samesum.evidence.trial.figures import Figures, issued
 from samesum.evidence.trial.values import Evaluator
+from samesum.evidence.trial.working import why_no_result
 from samesum.reading.cases import Case
 from samesum.spans import Span
 from samesum.written import plain
@@ -21,7 +22,8 @@ from samesum.written import plain
 @dataclass(frozen=True, slots=True)
 class Example:
     """A worked example. ``agrees``: the expected number came out, on the expected route. ``astray``: branches of the
-    expected route that are not open or not reached there. ``route`` is the whole route taken."""
+    expected route that are not open or not reached there. ``route`` is the whole route taken. ``trouble``: why there is
+    no value, "" where that is not known."""
 
     case: str
     span: Span
@@ -32,6 +34,7 @@ class Example:
     astray: tuple[tuple[str, str], ...]
     route: tuple[tuple[str, str], ...]
     inputs: Mapping[str, Value | tuple[Value, ...]]
+    trouble: str = ""
 
 
 def examples_of(figures: Sequence[Figures], at: Sequence[tuple[int, int]], cases: Sequence[Case]) -> list[Example]:
@@ -63,7 +66,8 @@ def _example(case: Case, figures: Figures, row: int) -> Example:
     result = plan.graph.model.result
     assert result is not None
     if np.isnan(value):
-        return Example(case.name, expected.span, expected.value, None, None, False, astray, route, case.values)
+        trouble = why_no_result(plan.graph, case.values, dict(expected.route))
+        return Example(case.name, expected.span, expected.value, None, None, False, astray, route, case.values, trouble)
     after = float(issued(np.array([value]), result)[0])
     agrees = not astray and (expected.value is None or _same(expected.value, expected.decimals, value, after))
     return Example(case.name, expected.span, expected.value, value, after, agrees, astray, route, case.values)
@@ -80,7 +84,8 @@ def _same(expected: Fraction, decimals: int, value: float, after: float) -> bool
 def described(example: Example) -> str:
     """What went astray, in a sentence."""
     if example.value is None:
-        return "there is no result on the route of the worked example"
+        why = f", because {example.trouble}" if example.trouble else ""
+        return f"there is no result on the route of the worked example{why}"
     if example.astray:
         id, branch = example.astray[0]
         took = dict(example.route).get(id)

@@ -60,17 +60,41 @@ def working(
     graph: DecisionGraph, values: Mapping[str, Value | tuple[Value, ...]], route: Mapping[str, str]
 ) -> list[Line]:
     """The steps to the result in the order of the calculation, on ``route`` and on the reference elsewhere. Exact."""
-    forced = {
-        id: graph.branch_points[id].branches.index(branch)
-        for id, branch in route.items()
-        if id in graph.branch_points and branch in graph.branch_points[id].branches
-    }
-    calculation = Calculation(graph, inputs_of(graph, values), forced)
+    calculation = _calculation(graph, values, route)
     assert graph.model.result is not None
     wording = _Wording(graph, calculation)
     lines: list[Line] = []
     _visit(graph.model.result.name, graph, calculation, wording, lines, set())
     return lines
+
+
+def _calculation(
+    graph: DecisionGraph, values: Mapping[str, Value | tuple[Value, ...]], route: Mapping[str, str]
+) -> Calculation:
+    forced = {
+        id: graph.branch_points[id].branches.index(branch)
+        for id, branch in route.items()
+        if id in graph.branch_points and branch in graph.branch_points[id].branches
+    }
+    return Calculation(graph, inputs_of(graph, values), forced)
+
+
+def why_no_result(
+    graph: DecisionGraph, values: Mapping[str, Value | tuple[Value, ...]], route: Mapping[str, str]
+) -> str:
+    """Why a project has no result on a route, in a clause; "" where that is not known."""
+    calculation = _calculation(graph, values, route)
+    wording = _Wording(graph, calculation)
+    try:
+        for applies in graph.model.applies:
+            if not calculation.holds(applies.condition, {}):
+                clause = f" (clause {applies.about.clause})" if applies.about.clause else ""
+                return f"`applies when {wording.condition(applies.condition, {})}`{clause} does not hold"
+        assert graph.model.result is not None
+        calculation.quantity(graph.model.result.name)
+    except NoValue as error:
+        return str(error)
+    return ""
 
 
 def _visit(
@@ -116,8 +140,9 @@ def _visit(
         try:
             value = calculation.number(body.expression, instance.elements)
             numbers = wording.numbers(body.expression, instance.elements)
-        except NoValue:
-            trouble = "the calculation has no value here"
+        except NoValue as error:
+            told = any(line.trouble == str(error) for line in lines)  # by a quantity that this one needs
+            trouble = "the calculation has no value here" if told else str(error) or "the calculation has no value here"
     if WHERE_OPEN not in quantity.name:
         lines.append(Line(id, quantity.unit, quantity.about.clause, tuple(branches), formula, numbers, value, trouble))
     return value
