@@ -196,6 +196,22 @@ def test_a_decision_that_cannot_be_written_says_why(
     assert not (folder / "tide.review.yaml").exists()
 
 
+def test_what_leaves_nothing_to_anybody_is_decided_only_where_it_has_a_finding(
+    folder: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = MARSH + "\nquantity spare [ha], clause 5.1\n    = sum(area over stratum)\n"
+    (folder / "tide.rulebook").write_text(text, encoding="utf-8")
+    status, _, err = decide(capsys, "regional_stock")
+    assert status == 2 and "`regional_stock` leaves nothing to anybody and has no finding" in err
+    assert not (folder / "tide.review.yaml").exists()
+    status, out, _ = decide(capsys, "spare")  # which leads nowhere: that is a finding
+    assert status == 0 and "its findings in `samesum check` say so, the register has no row for it" in out
+    found = json.loads(said(capsys, "check", "tide.rulebook", "--json")[1])["findings"]
+    assert [each["accepted"]["by"] for each in found if each["branch_point"] == "spare"] == ["A. Okafor"]
+    (folder / "tide.rulebook").write_text(text.replace("methane) *", "methane + 0 [t CO2e/ha] * spare) *"))
+    assert decide(capsys, "spare", "open")[0] == 0  # what was decided before may be decided otherwise
+
+
 def test_accepted_findings_stop_failing_and_stay_visible(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
     before = json.loads(said(capsys, "check", "tide.rulebook", "--json")[1])["findings"]
     for place in {finding["branch_point"] for finding in before} - {"methane"}:
@@ -281,6 +297,19 @@ def test_what_cannot_be_compared_says_why(
 ) -> None:
     status, _, err = said(capsys, "compare", *words)
     assert status == 2 and says in err
+
+
+def test_cases_that_one_draft_cannot_read_say_which(folder: Path, capsys: pytest.CaptureFixture[str]) -> None:
+    (folder / "new.rulebook").write_text(MARSH.replace("plot_mean", "plot_stock"), encoding="utf-8")
+    case = "area: [120]\n    soil: peaty\n    salinity: 12\n    plot_mean: [105]\n"
+    (folder / "cases.yaml").write_text(f"cases:\n  - name: Heron Flats\n    {case}", encoding="utf-8")
+    words = ("compare", "tide.rulebook", "new.rulebook", "--projects", "0", "--inputs", "cases.yaml")
+    status, out, err = said(capsys, *words)
+    first, *problems = err.splitlines()
+    assert (status, out) == (2, "") and any("plot_stock is missing" in each for each in problems)
+    assert first == "cases.yaml, as read for new.rulebook; --inputs may be given twice, once for OLD and once for NEW:"
+    first = said(capsys, *words, "--inputs", "cases.yaml")[2].splitlines()[0]
+    assert first == "cases.yaml, as read for new.rulebook:"
 
 
 def test_an_unknown_revision_says_so(capsys: pytest.CaptureFixture[str]) -> None:

@@ -68,6 +68,32 @@ def test_a_worked_example_that_fails_is_worked_out(tmp_path: Path, capsys: pytes
     assert "= 105.5 [t C/ha] * 120 [ha] + 98 [t C/ha] * 80 [ha]" in page
 
 
+@pytest.mark.parametrize(
+    ("old", "new", "says"),
+    [
+        (" by soil,", " by salinity,", "the table `regional_stock` has no row for salinity 12 ppt"),
+        ("soil is one of peaty or organic", "soil is organic", "no branch of `methane` is open"),
+        ("periods 8", "periods 8\napplies when salinity >= 20 [ppt], clause 2.1",
+         "`applies when salinity >= 20 [ppt]` (clause 2.1) does not hold"),
+    ],
+)  # fmt: skip
+def test_a_worked_example_without_a_result_says_why(
+    old: str, new: str, says: str, tmp_path: Path, capsys: pytest.CaptureFixture[str]
+) -> None:
+    text = Path(MARSH).read_text(encoding="utf-8")
+    assert old in text
+    text = text.replace(old, new)
+    if "salinity," in new:
+        text = text.replace("regional_stock(soil)", "regional_stock(salinity)")
+        text = text.replace("    mineral = 62\n    peaty = 90\n    organic = 118\n", "    above 20 [ppt] = 62\n")
+    (tmp_path / "draft.rulebook").write_text(text, encoding="utf-8")
+    cases = CASES.format(value=1).replace("soil_carbon: plots", "soil_carbon: regional")
+    (tmp_path / "cases.yaml").write_text(cases, encoding="utf-8")
+    assert main(["trial", str(tmp_path / "draft.rulebook"), "--inputs", str(tmp_path / "cases.yaml")]) == 1
+    page = " ".join(capsys.readouterr().out.split())
+    assert f"there is no result on the route of the worked example, because {says}." in page
+
+
 def test_explain(inputs: str, capsys: pytest.CaptureFixture[str]) -> None:
     assert main(["trial", MARSH, "--inputs", inputs, "--explain", "soil_carbon=regional"]) == 0
     page = capsys.readouterr().out

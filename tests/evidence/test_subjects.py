@@ -95,6 +95,33 @@ quantity credits [t CO2e]
 
 
 @pytest.mark.parametrize(
+    ("low", "high", "says"),
+    [
+        (", error 20 %", ", error 10 %, cost 0", "no cost"),
+        (", cost 0", ", error 10 %, cost 5 [USD]", "no error"),
+        ("", ", error 10 %, cost 5 [USD]", "neither an error nor a cost"),
+        (", error 20 %", ", error 10 %", ""),
+    ],
+)
+def test_an_option_says_which_figure_it_lacks(low: str, high: str, says: str) -> None:
+    reading = read(
+        f"""rulebook "Figures", draft "1"
+result credits [t CO2e], rounded down to 1
+quantity credits [t CO2e]
+    choice by developer
+        option low{low}
+            = 2 [t CO2e]
+        option high{high}
+            = 3 [t CO2e]
+""",
+        "figures.rulebook",
+    )
+    assert reading.model is not None and not reading.problems
+    found = {each.key: each.attributes for each in subjects_of(gather(build(reading.model))) if each.kind == "branch"}
+    assert (found["low"]["lacking"], found["high"]["lacking"]) == (says, "")
+
+
+@pytest.mark.parametrize(
     ("source", "answer"),
     [
         ("latest IPCC assessment report", True),

@@ -249,4 +249,5 @@ def test_the_rule_on_over_issuance_says_whose_choices_it_counts() -> None:
     rules, problems = load_rules([shipped_folder("rules")], reader())
     assert not problems
     [rule] = [each for each in rules.rules if each.name == "over-issuance-above-limit"]
+    assert "drawn from the declared domains" in rule.says  # also where projects are given
     assert "what the developer picks here" in rule.why and "only choices by the developer" in rule.wrong_when

@@ -68,13 +68,15 @@ def _known_place(file: Path, place: str) -> Place | None:
 
 def _can_be_decided(file: Path, place: str, places: Mapping[str, Place], reading: Reading) -> bool:
     """Whether a decision there has an effect; says so where it has none. Somebody decides there, or the register has a
-    row for it, or `check` has a finding on it; on the result there may be findings that need projects."""
+    row for it, or `check` has a finding on it; on the result there may be findings that need projects. What was decided
+    before may be decided otherwise."""
     from samesum.reading.words import nearest
+    from samesum.reviewing.record import read_record
 
     result = reading.model.result if reading.model is not None else None
     if places[place].kind != "declared" or (result is not None and result.name == place):
         return True
-    if _has_findings(file, place, reading):
+    if any(each.place == place for each in read_record(file)[0].decisions) or _has_findings(file, place, reading):
         return True
     close = nearest(place, [id for id, each in places.items() if each.kind != "declared"])
     hint = f"did you mean `{close}`?" if close else "`samesum register FILE --all` lists the places that can be decided"
@@ -92,7 +94,8 @@ def _has_findings(file: Path, place: str, reading: Reading) -> bool:
     judged = examine_reading(reading, rules=chosen.rules).judged
     if chosen.problems or judged is None:
         return True
-    return any(each.branch_point == place for each in (*judged.findings, *judged.doubts))
+    told = {each.branch_point for each in judged.findings} | {each.branch_point for each in judged.doubts}
+    return place in told
 
 
 def _write(file: Path, place: Place, fields: dict[str, str]) -> int:
@@ -119,6 +122,7 @@ def _write(file: Path, place: Place, fields: dict[str, str]) -> int:
         write_whole(path, mark + text.encode())
     except OSError as error:
         return shared.refuse(f"{path} cannot be written: {error.strerror or 'unknown reason'}")
-    where = "; `samesum check` shows it, the register has no row for it" if place.kind == "declared" else ""
+    shown = "its findings in `samesum check` say so, the register has no row for it"
+    where = f"; {shown}" if place.kind == "declared" else ""
     shared.write_line(f"{path}: {place.id} is now `{fields['decision']}`{where}")
     return 0
