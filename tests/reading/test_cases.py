@@ -111,7 +111,10 @@ def test_a_project_is_read_in_the_declared_units(model: m.Model, tmp_path: Path)
         (("value: 59000", "value: much"), "11:14 value: `much` is no number; "),
         (("value: 59000", "valu: 5"), "11:7 `valu` is no part of `expected`; did you mean `value`?"),
         (("{credits: plots}", "{credit: plots}"), "12:15 `credit` is no branch point; did you mean `credits`?"),
-        (("{credits: plots}", "{soil: peaty}"), "`samesum register --all` lists the branch points"),
+        (
+            ("{credits: plots}", "{soil: peaty}"),
+            "12:15 `soil` is no branch point; `samesum register --all` lists the branch points",
+        ),
         (("{credits: plots}", "{credits: plot}"), "12:24 `credits` has no branch `plot`; did you mean `plots`?"),
         (("cases:", "case:"), "1:1 the file has no `cases`; "),
         (("soil: peaty", "soil: [peaty"), ""),

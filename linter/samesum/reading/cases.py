@@ -153,7 +153,8 @@ class Numbers:
         found = _NUMBER.fullmatch(text)
         value = exact(found[1].removeprefix("+").removeprefix("-")) if found else None
         if found is None or value is None:
-            self.report(span, f"{name}: `{text}` is no number", f"write a number, as in `{name}: 12{unit_behind(unit)}`")
+            remedy = f"write a number, as in `{name}: 12{unit_behind(unit)}`"
+            self.report(span, f"{name}: `{text}` is no number", remedy)
             return None
         if found[1].startswith("-"):
             value = -value

@@ -106,7 +106,7 @@ def several_clauses(sight: Sight) -> Mistake | None:
 def number_with_comma(sight: Sight) -> Mistake | None:
     """``20,000`` and ``0,5``, whether the parser stops at the comma, behind it or behind the whole number."""
     number = None
-    head = re.search(r"[0-9_]+,?\Z", sight.before)
+    head = re.search(r"[0-9][0-9_]*(?:,[0-9]{3})*,?\Z", sight.before)
     if head is not None and sight.found == ("NUMBER" if head[0].endswith(",") else "COMMA"):
         number = _WITH_COMMA.match(sight.before + sight.rest, head.start())
     if number is None and "TO" in sight.expected:
@@ -124,6 +124,10 @@ def _in_the_unit_of(low: str, high: str) -> str:
     return f"{low} {behind[0]}" if behind is not None and re.fullmatch(r"-?[0-9][0-9_.eE+-]*", low) else low
 
 
+def _with_to(low: str, high: str) -> str:
+    return f"write `{_in_the_unit_of(low, high)} to {high}`"
+
+
 def range_otherwise(sight: Sight) -> Mistake | None:
     """``1-10``, ``1–10``, ``1..10``, ``from 1 to 10`` and ``between 1 and 10`` as a domain."""
     low = re.search(rf"({_NUMBER})\s*\Z", sight.before)
@@ -132,11 +136,11 @@ def range_otherwise(sight: Sight) -> Mistake | None:
     if low is not None and high is not None and in_domain:
         start = sight.line_start + low.start()
         says = "a range is written with `to`"
-        return Mistake(start, sight.at + high.end(), says, f"write `{_in_the_unit_of(low[1].strip(), high[1])} to {high[1]}`")
+        return Mistake(start, sight.at + high.end(), says, _with_to(low[1].strip(), high[1]))
     words = re.match(rf"(?:from|between)\s+({_NUMBER})\s*(?:to|and|[-–—])\s*({_NUMBER})", sight.rest)
     if words is not None and "NUMBER" in sight.expected and "ONE" in sight.expected:
         says = f"`{sight.text}` is not said of a range"
-        return Mistake(sight.at, sight.at + words.end(), says, f"write `{_in_the_unit_of(words[1].strip(), words[2])} to {words[2]}`")
+        return Mistake(sight.at, sight.at + words.end(), says, _with_to(words[1].strip(), words[2]))
     if sight.text in ("true", "false") and "YES" in sight.expected and "ONE" in sight.expected:
         return sight.here(f"`{sight.text}` is no word of the language", "write `yes or no`")
     return None

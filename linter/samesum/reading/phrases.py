@@ -7,8 +7,8 @@ from fractions import Fraction
 
 from samesum.reading import tree
 from samesum.reading.model import Decider, Unit
-from samesum.reading.scope import Scope
 from samesum.reading.numbers import as_written
+from samesum.reading.scope import Scope
 from samesum.reading.units import conversion, same_dimension
 from samesum.reading.words import DECIDERS, listing, nearest
 
