@@ -14,10 +14,10 @@ import pytest
 
 from samesum.evidence.evidence import Evidence
 from samesum.evidence.gather import gather
+from samesum.evidence.trial.apart import further_apart
 from samesum.evidence.trial.outcome import Explained, TrialEvidence, explained, try_out
 from samesum.evidence.trial.plan import make_plan
 from samesum.evidence.trial.unbounded import AT_ZERO
-from samesum.evidence.trial.ways import further_apart
 from samesum.graph import DecisionGraph, build
 from samesum.reading.cases import Case, Cases, read_cases
 from samesum.reading.read import read, read_file

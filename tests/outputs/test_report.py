@@ -23,6 +23,7 @@ if TYPE_CHECKING:
 SAMPLES = Path(__file__).parents[2] / "sample_rulebooks"
 CHROMIUM = shutil.which("chromium") or shutil.which("chromium-browser")
 DRIVER = shutil.which("chromedriver")
+# The only tests that may be left out: a browser is no Python package, and the README promises tests without one.
 browser_needed = pytest.mark.skipif(
     CHROMIUM is None or DRIVER is None,
     reason="the page is tried in a browser, and Debian's chromium and chromium-driver are not installed",

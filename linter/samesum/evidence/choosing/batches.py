@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import TYPE_CHECKING
@@ -65,57 +65,57 @@ def batches_of_columns(model: m.Model, columns: Columns) -> list[Batch]:
     return found
 
 
-def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
-    model = plan.graph.written  # what the rulebook prescribes itself stands as the reference has it, too
-    numbers: dict[str, Array] = {}
-    codes: dict[str, Array] = {}
-    flags: dict[str, Array] = {}
-    free: dict[str, Array] = {}
+def _inputs(plan: Plan) -> Iterator[tuple[m.Fact | m.Setting | m.Judgement, m.Domain, int, str]]:
+    """Every input of a project of this size: what declares it, its domain, its element (0 where it has none) and id.
+    What the rulebook prescribes itself stands there, too, as the reference has it."""
+    model = plan.graph.written
     declared: list[m.Fact | m.Setting | m.Judgement] = [*model.facts, *model.settings, *model.judgements]
     for each in declared:
         index = each.index if isinstance(each, m.Fact) else ""
         domain: m.Domain = m.YesNo() if isinstance(each, m.Judgement) else each.domain
         for element in range(1, plan.graph.sizes.get(index, 0) + 1) if index else (0,):
-            id = f"{each.name}@{element}" if index else each.name
-            given = columns.given[id][places] if id in columns.given else np.zeros(len(places), dtype=bool)
-            if not isinstance(each, m.Fact):
-                free[id] = ~given if each.takes is None else np.zeros(len(places), dtype=bool)
-            if isinstance(domain, m.Range):
-                known = columns.numbers[id][places] if id in columns.numbers else np.zeros(len(places))
-                numbers[id] = np.where(given, known, float(middle(domain)))
-            elif isinstance(domain, m.OneOf):
-                named = columns.codes[id][places] if id in columns.codes else np.zeros(len(places), dtype=np.int64)
-                codes[id] = np.where(given, named, 0)
-            else:
-                flag = columns.flags[id][places] if id in columns.flags else np.ones(len(places), dtype=bool)
-                flags[id] = np.where(given, flag, True)
+            yield each, domain, element, f"{each.name}@{element}" if index else each.name
+
+
+def _rows_of_columns(plan: Plan, columns: Columns, places: Array) -> Rows:
+    numbers: dict[str, Array] = {}
+    codes: dict[str, Array] = {}
+    flags: dict[str, Array] = {}
+    free: dict[str, Array] = {}
+    for each, domain, _, id in _inputs(plan):
+        given = columns.given[id][places] if id in columns.given else np.zeros(len(places), dtype=bool)
+        if not isinstance(each, m.Fact):
+            free[id] = ~given if each.takes is None else np.zeros(len(places), dtype=bool)
+        if isinstance(domain, m.Range):
+            known = columns.numbers[id][places] if id in columns.numbers else np.zeros(len(places))
+            numbers[id] = np.where(given, known, float(middle(domain)))
+        elif isinstance(domain, m.OneOf):
+            named = columns.codes[id][places] if id in columns.codes else np.zeros(len(places), dtype=np.int64)
+            codes[id] = np.where(given, named, 0)
+        else:
+            flag = columns.flags[id][places] if id in columns.flags else np.ones(len(places), dtype=bool)
+            flags[id] = np.where(given, flag, True)
     return Rows(len(places), numbers, codes, flags, free)
 
 
 def rows_of(plan: Plan, cases: Sequence[Case]) -> Rows:
     """The inputs of projects of one size. What nobody gives stands as the reference has it: a setting half-way, its
     first name or yes, a judgement yes; and is marked free."""
-    model = plan.graph.written  # what the rulebook prescribes itself stands as the reference has it, too
     numbers: dict[str, Array] = {}
     codes: dict[str, Array] = {}
     flags: dict[str, Array] = {}
     free: dict[str, Array] = {}
-    declared: list[m.Fact | m.Setting | m.Judgement] = [*model.facts, *model.settings, *model.judgements]
-    for each in declared:
-        index = each.index if isinstance(each, m.Fact) else ""
-        domain: m.Domain = m.YesNo() if isinstance(each, m.Judgement) else each.domain
-        for element in range(1, plan.graph.sizes.get(index, 0) + 1) if index else (0,):
-            id = f"{each.name}@{element}" if index else each.name
-            given = [_value(case, each.name, element) for case in cases]
-            if not isinstance(each, m.Fact):
-                free[id] = np.array([value is None and each.takes is None for value in given])
-            if isinstance(domain, m.Range):
-                usual = middle(domain)
-                numbers[id] = np.array([float(usual if value is None else Fraction(value)) for value in given])
-            elif isinstance(domain, m.OneOf):
-                codes[id] = np.array([0 if value is None else domain.values.index(str(value)) for value in given])
-            else:
-                flags[id] = np.array([True if value is None else bool(value) for value in given])
+    for each, domain, element, id in _inputs(plan):
+        given = [_value(case, each.name, element) for case in cases]
+        if not isinstance(each, m.Fact):
+            free[id] = np.array([value is None and each.takes is None for value in given])
+        if isinstance(domain, m.Range):
+            usual = middle(domain)
+            numbers[id] = np.array([float(usual if value is None else Fraction(value)) for value in given])
+        elif isinstance(domain, m.OneOf):
+            codes[id] = np.array([0 if value is None else domain.values.index(str(value)) for value in given])
+        else:
+            flags[id] = np.array([True if value is None else bool(value) for value in given])
     return Rows(len(cases), numbers, codes, flags, free)
 
 

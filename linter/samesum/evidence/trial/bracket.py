@@ -19,12 +19,12 @@ from samesum.evidence.routes import ranges, symbols
 from samesum.evidence.routes.ranges import Bounds
 from samesum.evidence.routes.symbols import Sum
 from samesum.evidence.trial import intervals as iv
+from samesum.evidence.trial.apart import Question, all_questions
 from samesum.evidence.trial.bounds import Boxes, Ranges
 from samesum.evidence.trial.dividing import Bracket, lowest_over
 from samesum.evidence.trial.formulas import mini_plan_under, ratio, without
 from samesum.evidence.trial.plan import Plan
 from samesum.evidence.trial.values import TooMany
-from samesum.evidence.trial.ways import Question, all_questions
 from samesum.evidence.trial.worst import Worst, project_of, worst_at
 
 CLOSE = 2e-3  # how near the two ends shall come, as a share of them

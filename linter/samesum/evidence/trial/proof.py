@@ -10,6 +10,7 @@ from fractions import Fraction
 from typing import TYPE_CHECKING, Literal
 
 from samesum.evidence.routes.conditions import Gap
+from samesum.evidence.trial.apart import further_apart
 from samesum.evidence.trial.bounds import Ranges, domain_boxes
 from samesum.evidence.trial.bracket import CLOSE, proved_worst, sizes_below
 from samesum.evidence.trial.deviation import Deviations
@@ -17,7 +18,6 @@ from samesum.evidence.trial.figures import Figures, codes_of
 from samesum.evidence.trial.plan import Plan, Unplannable, make_plan, resized
 from samesum.evidence.trial.projects import values_of
 from samesum.evidence.trial.unbounded import no_bound
-from samesum.evidence.trial.ways import further_apart
 from samesum.evidence.trial.worst import Worst, project_at, project_of, wider, widest, worst_at, worst_case_of
 from samesum.graph import DecisionGraph
 from samesum.written import of_reference

@@ -1,7 +1,6 @@
 """Every way to the result of a small rulebook, as exact sums with the conditions under which they hold.
 
-Two copies of the ways share the facts and nothing else; the solver (z3) says whether some project lets two of them
-lie further apart than a share of the reference.
+What is asked of them is in ``apart``.
 """
 
 from __future__ import annotations
@@ -9,12 +8,10 @@ from __future__ import annotations
 import time
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
-from fractions import Fraction
 from typing import Any, Literal
 
 from samesum.evidence.choosing.batches import middle
 from samesum.evidence.routes import ranges, symbols
-from samesum.evidence.routes import solver as s
 from samesum.evidence.routes.ranges import Bounds
 from samesum.evidence.routes.symbols import Sum
 from samesum.evidence.trial.deciding import preferred
@@ -22,7 +19,6 @@ from samesum.evidence.trial.plan import Node, Plan
 from samesum.reading import model as m
 
 MOST_WAYS = 240
-MOST_QUESTIONS = 4_000
 SIGNS = {"<": (-1,), "<=": (-1, 0), "=": (0,), "<>": (-1, 1), ">=": (0, 1), ">": (1,)}
 ALL_SIGNS = frozenset((-1, 0, 1))
 
@@ -64,7 +60,7 @@ class Executor:
         if root.kind == "guard":
             for each in root.args[1:]:
                 holding = [when for when, truth in self.truths(each) if truth]
-                ways = self._checked([Way(when, way.value) for way in ways for when in _merged(way.when, holding)])
+                ways = self._checked([Way(when, way.value) for way in ways for when in merged(way.when, holding)])
         found: dict[tuple[Sum, frozenset[tuple[Key, Any]]], Way] = {}
         for way in ways:
             kept = {
@@ -99,7 +95,7 @@ class Executor:
                 for branch, body in enumerate(node.args[1:]):
                     for when in self.taken(node.args[0], branch):
                         for way in self.values(body):
-                            for together in _merged(when, [way.when]):
+                            for together in merged(when, [way.when]):
                                 yield Way(together, way.value)
             case "lookup":
                 yield from self._rows(node)
@@ -126,7 +122,7 @@ class Executor:
                     (together, [*values, way.value])
                     for when, values in found
                     for way in ways
-                    for together in _merged(when, [way.when])
+                    for together in merged(when, [way.when])
                 ]
             )
         return found
@@ -136,7 +132,7 @@ class Executor:
         for row in table.rows:
             whens: list[Conditions] = [{}]
             for label, key, arg in zip(row.labels, table.keys, node.args, strict=True):
-                whens = [each for when in whens for each in _merged(when, self._answering(label, key, arg))]
+                whens = [each for when in whens for each in merged(when, self._answering(label, key, arg))]
             for when in whens:
                 yield Way(when, symbols.number(row.value))
 
@@ -153,7 +149,7 @@ class Executor:
             for bound, operator in ((label.low, ">"), (label.high, "<=")):
                 if bound is not None:
                     sign = self._sign(symbols.add(way.value, symbols.number(-bound)), SIGNS[operator])
-                    whens = [each for when in whens for each in _merged(when, [] if sign is None else [sign])]
+                    whens = [each for when in whens for each in merged(when, [] if sign is None else [sign])]
             found += whens
         return found
 
@@ -227,7 +223,7 @@ class Executor:
                     for signs, truth in ((holding, True), (tuple(ALL_SIGNS - set(holding)), False)):
                         sign = self._sign(difference, signs)
                         if sign is not None:
-                            found += [(together, truth) for together in _merged(when, [sign])]
+                            found += [(together, truth) for together in merged(when, [sign])]
                 return found
             case "not":
                 return [(when, not truth) for when, truth in self.truths(node.args[0])]
@@ -240,7 +236,7 @@ class Executor:
                             (together, (truth and more) if whole else (truth or more))
                             for when, truth in made
                             for other, more in self.truths(each)
-                            for together in _merged(when, [other])
+                            for together in merged(when, [other])
                         ]
                     )
                 return made
@@ -271,11 +267,11 @@ class Executor:
     def _holding(self, whens: list[Conditions], needed: Sequence[tuple[int, bool]]) -> list[Conditions]:
         for condition, wanted in needed:
             truths = [when for when, truth in self.truths(condition) if truth == wanted]
-            whens = self._checked([together for when in whens for together in _merged(when, truths)])
+            whens = self._checked([together for when in whens for together in merged(when, truths)])
         return whens
 
 
-def _merged(when: Conditions, others: Sequence[Conditions]) -> Iterator[Conditions]:
+def merged(when: Conditions, others: Sequence[Conditions]) -> Iterator[Conditions]:
     """``when`` together with each of the others, where they do not exclude each other."""
     for other in others:
         made = dict(when)
@@ -309,102 +305,3 @@ def _operated(node: Node, parts: Sequence[Sum]) -> Sum:
     if made is None or len(made.terms) > 200:
         raise TooManyWays
     return made
-
-
-# --- the questions ---------------------------------------------------------------------------
-
-
-@dataclass(frozen=True, slots=True)
-class Apart:
-    """``answer``: whether some project has two results further apart than a share of the reference; ``point`` gives
-    its numeric facts and ``names`` its named ones, {name: code or yes/no}."""
-
-    answer: Answer
-    point: Mapping[str, Fraction] = field(default_factory=dict)
-    names: Mapping[str, int | bool] = field(default_factory=dict)
-
-
-@dataclass(frozen=True, slots=True)
-class Question:
-    """Two results that one project can have, ``high`` and ``low``, its ``reference``, and under ``when``."""
-
-    when: Conditions
-    high: Sum
-    low: Sum
-    reference: Sum
-
-
-def all_questions(plan: Plan, deadline: float) -> tuple[list[Question], dict[str, Bounds]] | None:
-    """Every pair of results that one project can have, and the domains of the names in them; settings of ``low`` end
-    in ``'``, those of the reference are numbers. None when there are too many."""
-    box: dict[str, Bounds] = {}
-    try:
-        first = Executor(plan, False, "", box, deadline).result()
-        second = Executor(plan, False, "'", box, deadline).result()
-        references = Executor(plan, True, "", box, deadline).result()
-        return list(_questions(first, second, references)), box
-    except TooManyWays:
-        return None
-
-
-def further_apart(plan: Plan, tolerance: Fraction, deadline: float) -> Apart:
-    """Whether results can lie further apart than ``tolerance`` × |reference|, by the solver. "no" is a proof."""
-    asked = all_questions(plan, deadline)
-    if asked is None:
-        return Apart("cannot tell")
-    questions, box = asked
-    answer: Answer = "no"
-    solver = s.Solver(box, deadline)
-    for each in questions:
-        found = _ask(solver, plan, each.when, each.high, each.low, each.reference, tolerance)
-        if found.answer == "yes":
-            return found
-        if found.answer == "cannot tell":
-            answer = "cannot tell"
-    return Apart(answer)
-
-
-def _questions(first: Sequence[Way], second: Sequence[Way], references: Sequence[Way]) -> Iterator[Question]:
-    count = 0
-    for one in first:
-        for other in second:
-            if one.value == other.value:
-                continue
-            for both in _merged(one.when, [other.when]):
-                for reference in references:
-                    for when in _merged(both, [reference.when]):
-                        count += 1
-                        if count > MOST_QUESTIONS:
-                            raise TooManyWays
-                        yield Question(when, one.value, other.value, reference.value)
-
-
-def _ask(
-    solver: s.Solver, plan: Plan, when: Conditions, high: Sum, low: Sum, reference: Sum, tolerance: Fraction
-) -> Apart:
-    codes = {name: min(value) for (kind, name), value in when.items() if kind in ("code", "flag")}
-    signs = [(key[1], value) for key, value in when.items() if key[0] == "sign"]
-    difference = symbols.subtract(high, low)
-    answer: Answer = "no"
-    for side in (1, -1):
-        beyond = symbols.subtract(difference, symbols.scale(reference, tolerance * side))
-        assumed = [_signed(solver, value, allowed) for value, allowed in signs]
-        assumed.append(solver.sign(beyond, s.POSITIVE))
-        if tolerance:
-            assumed.append(solver.negated(solver.sign(reference, s.NEGATIVE if side > 0 else s.POSITIVE)))
-        found = solver.check(*assumed)
-        if found == "yes":
-            return Apart("yes", solver.point(), codes)
-        if found == "cannot tell":
-            answer = "cannot tell"
-        if not tolerance:
-            break
-    return Apart(answer)
-
-
-def _signed(solver: s.Solver, value: Sum, allowed: frozenset[int]) -> Any:
-    told = {-1: s.NEGATIVE, 0: s.ZERO, 1: s.POSITIVE}
-    if len(allowed) == 1:
-        return solver.sign(value, told[next(iter(allowed))])
-    [other] = ALL_SIGNS - allowed
-    return solver.negated(solver.sign(value, told[other]))
