@@ -481,3 +481,9 @@ def test_a_written_deduction_is_held_against_the_truth() -> None:
     assert told.value is not None and told.error is not None and abs(told.value) < 4 * told.error
     [told] = over_issuing(model_of(text))
     assert told.value is not None and told.value > 0.1
+
+
+def test_more_of_what_is_below_zero_is_less_of_it_taken_away() -> None:
+    """A tenth more of −1000 lowers the credits; a higher value still credits more."""
+    below_zero = either_or([(0, 0.3, 0), (0, 0.1, 1)], formula="3000 [t CO2e] + stock").replace("= amount", "= -amount")
+    assert found(simulate(below_zero, closures=True), "stock").latitude.leaning == 1
